@@ -1,0 +1,65 @@
+// The arbiter: decides which detection becomes a trigger, and names the one rule that refused each of the others.
+// Works in sample time alone, so that a session can be run again from its samples and its journal.
+#pragma once
+
+#include "arbiter/arbiter_settings.hpp"
+#include "base/event.hpp"
+#include "base/units.hpp"
+
+#include <vector>
+
+namespace millpond {
+
+/// What the detector knew about one crossing.
+struct Candidate {
+    SampleIndex at;
+    bool settling = false;
+    bool unsettled = false;
+    bool vetoed = false;
+    bool scheduled = false; ///< asked for by the control schedule, not by the detector
+};
+
+/// Thread: loop for everything but make. Allocates after make: never.
+class Arbiter {
+  public:
+    /// `schedule`: places of a control schedule in ascending order, empty without one.
+    static Arbiter make(const ArbiterSettings& settings, Hertz rate, std::vector<SampleIndex> schedule = {});
+
+    /// Rule::none where the candidate is a trigger, which then counts for lock-out and limits.
+    [[nodiscard]] Rule judge(const Candidate& candidate) noexcept;
+
+    /// Next place of the schedule at or after what was already played; UINT64_MAX where there is none.
+    [[nodiscard]] SampleIndex next_scheduled() const noexcept;
+    void schedule_played() noexcept;
+
+    [[nodiscard]] ArmState state() const noexcept { return state_; }
+    /// Arming while faulted is allowed: whoever arms says that the fault is mended.
+    void set_state(ArmState state) noexcept { state_ = state; }
+
+    /// False where no gate has that name.
+    bool set_gate(std::string_view name, bool open) noexcept;
+    [[nodiscard]] bool gates_open() const noexcept;
+
+    [[nodiscard]] std::uint32_t triggers() const noexcept { return triggers_; }
+    [[nodiscard]] Condition condition() const noexcept { return condition_; }
+
+  private:
+    struct Gate {
+        std::string name;
+        bool open;
+    };
+
+    Condition condition_ = Condition::disrupt;
+    ArmState state_ = ArmState::not_armed;
+    std::vector<Gate> gates_;
+    std::vector<SampleIndex> schedule_;
+    std::size_t next_in_schedule_ = 0;
+    std::uint64_t lockout_frames_ = 0;
+    std::uint64_t second_frames_ = 0;
+    std::uint32_t session_limit_ = 0;
+    std::uint32_t triggers_ = 0;
+    std::vector<SampleIndex> recent_; // ring of the last max_pulses_per_second triggers
+    std::size_t oldest_recent_ = 0;
+};
+
+} // namespace millpond

@@ -1,0 +1,214 @@
+// What happened, as one fixed-size value: the language in which the loop tells the journal, the dry run and the audit.
+// Thread: made in the loop (and in pulse and control for their own kinds); plain bytes, so it may cross any ring.
+#pragma once
+
+#include "base/units.hpp"
+
+#include <array>
+#include <cstdint>
+#include <string_view>
+#include <type_traits>
+
+namespace millpond {
+
+/// Values are part of the session format: never renumber, only add.
+enum class EventKind : std::uint8_t {
+    session_start = 1, ///< first event of a session
+    session_end = 2,   ///< last event of a session that was closed; where it is absent the session was cut
+    detection = 3,     ///< the detector crossed; a trigger or a withheld follows at the same sample
+    trigger = 4,       ///< the arbiter let a detection, or a place in a control schedule, through
+    withheld = 5,      ///< the arbiter refused it; `code` is the Rule
+    pulse = 6,         ///< the order was written to the output
+    pulse_end = 7,     ///< the line was ordered low again
+    gap = 8,           ///< frames are missing from here; `code` is the GapCause
+    floor = 9,         ///< one site's floor, once a second
+    latency_bins = 10, ///< counts to add to one latency histogram; `code` is the LatencyPart
+    note = 11,         ///< up to 38 characters of an operator's mark; longer marks continue in the next event
+    state = 12,        ///< the arbiter's state changed; `code` is the new ArmState
+    gate = 13,         ///< a gate opened or closed
+    packet_count = 14, ///< packets counted by cause since the last such event; `code` is the PacketCause
+    dropped = 15,      ///< events or frames that the journal had to drop because its ring was full
+};
+
+/// Why a detection was refused: exactly one rule each, the first that applies in this order.
+/// Values are part of the session format.
+enum class Rule : std::uint8_t {
+    none = 0,          ///< not refused
+    faulted = 1,       ///< an output, the journal or the stream failed: mend it, then arm again
+    not_armed = 2,     ///< pulses are not allowed: arm when the protocol says so
+    gap = 3,           ///< filters are settling after missing frames: look at packets lost
+    unsettled = 4,     ///< the floor has not seen enough clean signal yet: wait
+    veto = 5,          ///< the reference channel rose too: most likely not a ripple
+    gate = 6,          ///< a gate is closed
+    condition = 7,     ///< the session's condition gives this detection no pulse
+    lock_out = 8,      ///< too soon after the trigger before it
+    second_limit = 9,  ///< as many pulses as allowed in one second
+    session_limit = 10, ///< as many pulses as allowed in one session: end it
+};
+inline constexpr std::size_t rule_count = 11;
+
+enum class GapCause : std::uint8_t {
+    packet_loss = 1,   ///< packets never arrived, or too late: check the network and the sender
+    non_finite = 2,    ///< the source delivered not-a-number or infinity
+    source_restart = 3, ///< the sender began anew; the length is estimated from this computer's clock
+};
+
+/// Values are part of the session format.
+enum class ArmState : std::uint8_t {
+    not_armed = 0, ///< detects, never pulses
+    armed = 1,     ///< pulses are allowed
+    faulted = 2,   ///< something failed; pulses are refused until it is mended and armed anew
+};
+
+/// What moved the state. Values are part of the session format.
+enum class StateCause : std::uint8_t {
+    start = 0,         ///< as the settings say
+    command = 1,       ///< a command by OSC
+    stale_stream = 2,  ///< no packet for longer than stream.stale_after_ms
+    output_failed = 3, ///< the output refused an order
+    journal_failed = 4, ///< disk full, or the journal could not keep up
+    session_end = 5,   ///< the session is ending
+};
+
+/// Parts of the closed loop, each with its own histogram. Values are part of the session format.
+enum class LatencyPart : std::uint8_t {
+    packing = 0,   ///< decision sample to the last sample of its packet
+    transport = 1, ///< packet sent to packet arrived; only where the sender stamps its packets
+    wake = 2,      ///< packet arrived to loop begins on it
+    compute = 3,   ///< loop begins to decision made
+    output = 4,    ///< decision made to write returned
+    loop = 5,      ///< packet arrived to loop done with it, every packet
+    pulse_end = 6, ///< how late the end of a pulse was ordered
+};
+inline constexpr std::size_t latency_part_count = 7;
+
+/// Packets by what became of them. Values are part of the session format.
+enum class PacketCause : std::uint8_t {
+    accepted = 0,
+    truncated = 1,          ///< shorter than its header says
+    wrong_version = 2,      ///< RTP version is not 2
+    wrong_payload_type = 3, ///< not the payload type of the settings or the SDP file
+    wrong_source = 4,       ///< another SSRC while the known one is alive
+    wrong_length = 5,       ///< payload is not a whole number of frames
+    oversized = 6,          ///< more than the receive buffer holds
+    repeated = 7,           ///< its frames had been taken already
+    late = 8,               ///< its frames had been given up as a gap
+    reordered = 9,          ///< arrived out of order and was put right
+    lost = 10,              ///< never seen, by the sequence numbers
+    restarted = 11,         ///< first packet of a sender that began anew
+};
+inline constexpr std::size_t packet_cause_count = 12;
+
+struct DetectionDetail {
+    float envelope;  ///< uV, of the deciding site (the largest above its floor) or of the mean over sites
+    float floor;     ///< uV
+    float deviation; ///< uV
+    float threshold; ///< uV
+    std::uint16_t votes; ///< ripple sites above their thresholds
+    std::uint16_t site;  ///< channel in the stream, 65535 for the mean over sites
+};
+
+struct TriggerDetail {
+    std::uint64_t detected_at; ///< decision sample; equals the trigger's own sample where the pulse follows at once
+    std::uint32_t number;      ///< 1 for the session's first trigger
+    std::uint32_t from_schedule; ///< 1 where a control schedule asked for it, else 0
+};
+
+/// Parts in ns; a part that was not measured is `not_measured`, never 0.
+struct PulseDetail {
+    static constexpr std::int64_t not_measured = INT64_MIN;
+    std::int64_t packing_ns, transport_ns, wake_ns, compute_ns, output_ns;
+};
+
+struct PulseEndDetail {
+    std::int64_t width_ns; ///< order to rise until order to fall, by this computer's clock
+    std::int64_t late_ns;  ///< order to fall after the time planned for it
+};
+
+struct GapDetail {
+    std::uint64_t frames;
+};
+
+struct FloorDetail {
+    double mean, deviation; ///< uV
+    float threshold;        ///< uV
+    std::uint16_t site;     ///< channel in the stream, 65535 for the mean over sites
+    std::uint16_t settled;  ///< 1 once enough clean signal was seen
+    std::uint64_t frames;   ///< frames the statistics have taken
+};
+
+struct LatencyBins {
+    struct Bin {
+        std::uint32_t bin, count; ///< bin of base/histogram.hpp; count 0 ends the list
+    };
+    std::array<Bin, 5> bins;
+};
+
+struct NoteDetail {
+    std::uint8_t length;   ///< characters used
+    std::uint8_t continues; ///< 1 where the next note event goes on with this text
+    std::array<char, 38> text;
+};
+
+struct StateDetail {
+    std::uint8_t before; ///< ArmState
+    std::uint8_t cause;  ///< StateCause
+};
+
+struct GateDetail {
+    std::uint8_t open;
+    std::array<char, 32> name; ///< zero-terminated
+};
+
+struct CountDetail {
+    std::uint64_t count;
+};
+
+/// Trivially copyable, 64 bytes, no padding left unset by the factories below.
+struct Event {
+    EventKind kind{};
+    std::uint8_t code = 0; ///< Rule, GapCause, ArmState, LatencyPart or PacketCause, by kind
+    std::uint16_t reserved = 0;
+    std::uint32_t sequence = 0; ///< set by the journal: counts the session's events from 0
+    SampleIndex sample;         ///< where in the stream
+    std::int64_t time_ns = 0;   ///< UTC since 1970, by this computer; 0 in a dry run
+    std::array<std::uint8_t, 40> detail{};
+
+    template <class Detail> static Event make(EventKind kind, std::uint8_t code, SampleIndex at, const Detail& what) noexcept {
+        static_assert(std::is_trivially_copyable_v<Detail> && sizeof(Detail) <= sizeof(detail));
+        Event event;
+        event.kind = kind;
+        event.code = code;
+        event.sample = at;
+        __builtin_memcpy(event.detail.data(), &what, sizeof(Detail));
+        return event;
+    }
+
+    template <class Detail> [[nodiscard]] Detail as() const noexcept {
+        static_assert(std::is_trivially_copyable_v<Detail> && sizeof(Detail) <= sizeof(detail));
+        Detail what;
+        __builtin_memcpy(&what, detail.data(), sizeof(Detail));
+        return what;
+    }
+
+    bool operator==(const Event&) const = default;
+};
+static_assert(std::is_trivially_copyable_v<Event> && sizeof(Event) == 64);
+
+/// Takes events one by one, in order.  Thread: that of whoever runs the engine.  Blocks, allocates, throws: never in the loop.
+class EventSink {
+  public:
+    virtual ~EventSink() = default;
+    virtual void take(const Event& event) noexcept = 0;
+};
+
+// One word for one thing: what every table, report and log line calls them.
+[[nodiscard]] std::string_view name_of(EventKind kind) noexcept;
+[[nodiscard]] std::string_view name_of(Rule rule) noexcept;
+[[nodiscard]] std::string_view name_of(GapCause cause) noexcept;
+[[nodiscard]] std::string_view name_of(ArmState state) noexcept;
+[[nodiscard]] std::string_view name_of(StateCause cause) noexcept;
+[[nodiscard]] std::string_view name_of(LatencyPart part) noexcept;
+[[nodiscard]] std::string_view name_of(PacketCause cause) noexcept;
+
+} // namespace millpond

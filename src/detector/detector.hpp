@@ -1,0 +1,90 @@
+// The detector: band-pass, envelope, floor, threshold, vote and veto over all channels, frame by frame.
+// Decisions depend on the samples alone: not on block size, processor, vector width or optimisation level.
+#pragma once
+
+#include "base/channels.hpp"
+#include "base/event.hpp"
+#include "base/frames.hpp"
+#include "detector/bandpass_design.hpp"
+#include "detector/detector_settings.hpp"
+
+#include <memory>
+#include <optional>
+#include <string>
+#include <vector>
+
+namespace millpond {
+
+/// One crossing of the threshold by the vote.
+struct Crossing {
+    SampleIndex at;         ///< decision sample
+    DetectionDetail detail;
+    bool settling;          ///< filters are still settling after a gap or the start
+    bool unsettled;         ///< the floor has not seen enough clean signal
+    bool vetoed;            ///< a reference channel was above its threshold within the veto window
+};
+
+/// One channel's floor, to carry from one session into the next. uV.
+struct FloorState {
+    double mean = 0.0;
+    double deviation = 0.0;
+    std::uint64_t frames = 0; ///< frames taken into the statistics
+};
+
+/// Vector width of the kernel; all give the same bits.
+enum class KernelWidth : std::uint8_t { automatic, sse2, avx2, avx512 };
+
+class Detector {
+  public:
+    /// Thread: control. Allocates all it will ever need. Refuses settings that contradict each other or the rate.
+    static Detector make(const DetectorSettings& settings, const Channels& channels, Hertz rate,
+                         KernelWidth width = KernelWidth::automatic, const std::string& where = "detector");
+    Detector(Detector&&) noexcept;
+    Detector& operator=(Detector&&) noexcept;
+    ~Detector();
+
+    /// Runs over the block from its start and stops after the first crossing.
+    /// Returns the frames consumed; the crossing, if any, is that of the last frame consumed.
+    /// A block that does not begin where the last one ended must be announced by `gap` first.
+    /// Thread: loop. Fixed work a frame; allocates, locks and throws nothing.
+    std::size_t run(const FrameBlock& block, std::optional<Crossing>& crossing) noexcept;
+
+    /// Frames are missing: filters start anew and settle, the floor keeps what it knows. Thread: loop.
+    void gap(SampleIndex resumes_at) noexcept;
+
+    /// Holds all state from `from` for the blanking time: a pulse goes out there. Thread: loop.
+    void blank(SampleIndex from) noexcept;
+
+    /// As new. Thread: loop.
+    void reset() noexcept;
+
+    /// Starts from floors of an earlier session, one for each ripple and reference channel in stream order, then, with
+    /// rule mean, that of the mean. Thread: control, before the first block.
+    void warm_start(const std::vector<FloorState>& floors);
+
+    /// Number of floors: ripple and reference channels, and one more with rule mean.
+    [[nodiscard]] std::size_t floor_count() const noexcept;
+    /// The floor `i` as an event detail. Thread: loop.
+    [[nodiscard]] FloorDetail floor(std::size_t i) const noexcept;
+
+    [[nodiscard]] bool settled() const noexcept;
+    /// Group delay of the band-pass at the band's centre, in samples.
+    [[nodiscard]] double filter_delay_samples() const noexcept;
+    /// The same and the smoother's delay.
+    [[nodiscard]] double delay_samples() const noexcept;
+    [[nodiscard]] const BandpassDesign& bandpass() const noexcept;
+    /// The vector width in use.
+    [[nodiscard]] KernelWidth width() const noexcept;
+
+    /// Watches every frame's envelopes, for pictures and tests; slow, never in a live session. Empty: nobody watches.
+    /// Called with the frame's place and one envelope for each floor (uV).
+    using Watcher = void (*)(void* context, SampleIndex at, std::span<const double> envelopes);
+    void watch(Watcher watcher, void* context) noexcept;
+
+  private:
+    struct State;
+    explicit Detector(std::unique_ptr<State> state) noexcept;
+    std::unique_ptr<State> state_;
+};
+
+} // namespace millpond

@@ -1,0 +1,81 @@
+// The one engine of every command: detector and arbiter, samples and commands in, events and pulse orders out.
+// Live, dry run, tuning and audit differ only in where samples come from and where orders go.
+#pragma once
+
+#include "arbiter/arbiter.hpp"
+#include "base/channels.hpp"
+#include "base/event.hpp"
+#include "base/frames.hpp"
+#include "detector/detector.hpp"
+
+#include <string_view>
+#include <vector>
+
+namespace millpond {
+
+/// Takes the order for a pulse the moment it is decided, before anything is journaled.  Thread: loop.
+class PulsePort {
+  public:
+    virtual ~PulsePort() = default;
+    virtual void fire(const Event& trigger) noexcept = 0;
+};
+
+/// For runs without a line: every order is forgotten.
+class NoPulsePort : public PulsePort {
+  public:
+    void fire(const Event& /*trigger*/) noexcept override {}
+};
+
+struct EngineSettings {
+    DetectorSettings detector;
+    ArbiterSettings arbiter;
+
+    bool operator==(const EngineSettings&) const = default;
+};
+
+/// Thread: one, whoever owns it (the loop, in a session). After make nothing here allocates, locks, throws or formats.
+class Engine {
+  public:
+    /// Emits nothing yet. The engine keeps references to `sink` and `port`; they must outlive it.
+    Engine(Detector detector, Arbiter arbiter, Hertz rate, EventSink& sink, PulsePort& port) noexcept;
+
+    /// First call of a session or run: emits the starting state and the gates. `armed`: start armed.
+    void start(SampleIndex at, bool armed) noexcept;
+
+    /// Runs over a block. Frames missing between the end of the last block and the start of this one are taken as a gap
+    /// of `cause`. Frames with a non-finite value on a used channel are taken as a gap of their own.
+    void process(const FrameBlock& block, GapCause cause = GapCause::packet_loss) noexcept;
+
+    /// Commands take effect before the next frame, `next_sample()`, and are journaled there.
+    void set_state(ArmState state, StateCause cause) noexcept;
+    /// False, and nothing happens, where no gate has that name.
+    bool set_gate(std::string_view name, bool open) noexcept;
+    /// The operator's text into the journal, cut into as many note events as it needs.
+    void note(std::string_view text) noexcept;
+
+    [[nodiscard]] SampleIndex next_sample() const noexcept { return next_; }
+    [[nodiscard]] Detector& detector() noexcept { return detector_; }
+    [[nodiscard]] const Arbiter& arbiter() const noexcept { return arbiter_; }
+    [[nodiscard]] std::uint64_t detections() const noexcept { return detections_; }
+
+  private:
+    void run_finite(FrameBlock block) noexcept;
+    void run_detector(FrameBlock block) noexcept;
+    void on_crossing(const Crossing& crossing) noexcept;
+    void judge(const Candidate& candidate) noexcept;
+    void play_schedule(SampleIndex before) noexcept;
+    void skip(std::uint64_t frames, GapCause cause) noexcept;
+    void journal_floors(SampleIndex upto) noexcept;
+
+    Detector detector_;
+    Arbiter arbiter_;
+    EventSink& sink_;
+    PulsePort& port_;
+    std::size_t channels_;
+    std::uint64_t second_frames_;
+    SampleIndex next_{};
+    SampleIndex next_floor_{};
+    std::uint64_t detections_ = 0;
+};
+
+} // namespace millpond

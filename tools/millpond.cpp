@@ -1,0 +1,37 @@
+// The program: reads the command line, runs one command, turns a refusal into one line and exit status 2.
+#include "app/commands.hpp"
+#include "base/refusal.hpp"
+
+#include <CLI/CLI.hpp>
+
+#include <cstdio>
+#include <exception>
+
+#ifndef MILLPOND_VERSION
+#error "MILLPOND_VERSION comes from CMake"
+#endif
+
+int main(int argc, char** argv) {
+    CLI::App program{"millpond: finds hippocampal ripples in a running LFP stream and orders pulses to stop them.\n"
+                     "A research tool, not a medical device: follow the approved protocol, local rules and the\n"
+                     "licensed veterinarian's advice."};
+    program.name("millpond");
+    program.set_version_flag("--version", std::string(MILLPOND_VERSION));
+    try {
+        millpond::add_commands(program);
+        program.parse(argc, argv);
+    } catch (const CLI::ParseError& trouble) {
+        if (trouble.get_exit_code() == static_cast<int>(CLI::ExitCodes::Success)) {
+            return program.exit(trouble); // help or version
+        }
+        std::fprintf(stderr, "millpond: command line: %s (millpond --help lists what is allowed)\n", trouble.what());
+        return 2;
+    } catch (const millpond::Refusal& refusal) {
+        std::fprintf(stderr, "millpond: %s\n", refusal.what());
+        return 2;
+    } catch (const std::exception& trouble) {
+        std::fprintf(stderr, "millpond: failed: %s\n", trouble.what());
+        return 1;
+    }
+    return 0;
+}
