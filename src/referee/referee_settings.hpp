@@ -4,7 +4,9 @@
 //   envelope  150-250 Hz, squared, summed over sites, Gaussian of SD 4 ms, square root, as in Gillespie et al. 2024
 //             (eLife 90944);
 //   floor     clipped before mean and SD are taken; peak at 5 SD, edges at 1 SD; events nearer than 15 ms merged,
-//             shorter than 15 ms dropped, as in Stark et al. 2014 (Neuron 83:467; from memory);
+//             shorter than 15 ms dropped, as in Stark et al. 2014 (Neuron 83:467; from memory), but clipped at 3 SD,
+//             not 4, and again until nothing moves: ripples that fill a share p of the time raise the SD by 1/sqrt(1 -
+//             c^2 p) with clipping at c SD (derived), for p = 5 % by 1.3 at 3 SD and by 2.2 at 4;
 //   order     3, forward and backward: chosen here, so that 120 Hz comes out below 2 %.
 // On Gaussian noise alone the default finds up to 0.9 events a minute with one site and 0.2 with four (NumPy, an hour
 // at 1250 Hz). Published thresholds span 2-7 SD and give rates 100-fold apart (Liu et al. 2022, Nat Commun 13:6000):
@@ -20,7 +22,7 @@ struct RefereeSettings {
     double high_hz = 250.0;
     int order = 3;
     double smoothing_ms = 4.0;
-    double clip_deviations = 4.0;
+    double clip_deviations = 3.0;
     double peak_deviations = 5.0;
     double edge_deviations = 1.0;
     double min_duration_ms = 15.0;
