@@ -166,11 +166,11 @@ TEST(FullDisk, SamplesStopAtAWholeFrameAndLostFramesAreCounted) {
     auto settings = session_in(temp, StoreSamples::rf64);
     settings.folder = temp.path() / "disk";
     auto writer = SessionWriter::open(settings, about_stream(3));
-    const std::vector<float> block(3 * 10'000, 1.0F);
+    const std::vector<float> block(3 * 2000, 1.0F);
     std::uint64_t stored = 0;
     ASSERT_TRUE(wait_for([&] {
         writer->store({SampleIndex{stored}, 3, block});
-        stored += 10'000;
+        stored += 2000;
         return writer->failed();
     }));
     EXPECT_TRUE(writer->trouble() == JournalTrouble::disk_full || writer->trouble() == JournalTrouble::little_space);
