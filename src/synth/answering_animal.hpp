@@ -10,7 +10,7 @@
 namespace millpond {
 
 struct AnswerSettings {
-    double artefact_uv = 15000.0;   ///< 100 times the default background's rms
+    double artefact_uv = 25000.0;   ///< 100 times the default background's rms
     double phase_ms = 0.2;          ///< of each of the two phases; at least one frame
     double recovery_share = 0.3;    ///< what is left of the artefact after both
     double recovery_ms = 5.0;       ///< time constant in which that goes

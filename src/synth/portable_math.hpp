@@ -58,7 +58,7 @@ inline double portable_sin_turns(double turns) noexcept {
 }
 
 inline double portable_cos_turns(double turns) noexcept {
-    return portable_sin_turns(turns + 0.25);
+    return portable_sin_turns(turns - std::floor(turns + 0.5) + 0.25);
 }
 
 } // namespace millpond

@@ -9,7 +9,7 @@
 namespace millpond {
 
 struct BackgroundSettings {
-    double rms_uv = 150.0;
+    double rms_uv = 250.0;
     double slope = 1.5;
     double corner_hz = 0.5;
     double shared = 0.7;
