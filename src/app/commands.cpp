@@ -10,7 +10,7 @@ void add_commands(CLI::App& program) {
     add_sham_command(program);
     add_live_command(program);
     // add_audit_command(program);
-    // add_synth_command(program);
+    add_synth_command(program);
     // add_feed_command(program);
     program.require_subcommand(1);
 }
