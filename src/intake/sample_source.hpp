@@ -11,19 +11,19 @@
 namespace millpond {
 
 enum class Received : std::uint8_t {
-    frames,   ///< `arrival` holds a block
-    nothing,  ///< the time ran out
-    ended,    ///< the source will deliver no more (end of standard input)
-    failed    ///< the source is broken; the stream is lost
+    frames,  ///< `arrival` holds a block
+    nothing, ///< the time ran out
+    ended,   ///< the source will deliver no more (end of standard input)
+    failed   ///< the source is broken; the stream is lost
 };
 
 /// One block as it came in. The samples stay valid until the next call of `receive`.
 struct Arrival {
-    FrameBlock block;                     ///< microvolts; `first` counts missing frames too
+    FrameBlock block;                           ///< microvolts; `first` counts missing frames too
     GapCause gap_cause = GapCause::packet_loss; ///< of frames missing before `block`, if any are
-    std::int64_t arrived_ns = 0;          ///< kernel receive stamp, UTC since 1970; 0 where there is none
-    std::int64_t sent_ns = 0;             ///< sender's stamp, UTC since 1970; 0 where the packet carries none
-    bool counts_changed = false;          ///< a cause other than `accepted` was counted since the last block
+    std::int64_t arrived_ns = 0;                ///< kernel receive stamp, UTC since 1970; 0 where there is none
+    std::int64_t sent_ns = 0;                   ///< sender's stamp, UTC since 1970; 0 where the packet carries none
+    bool counts_changed = false;                ///< a cause other than `accepted` was counted since the last block
 };
 
 /// Packets by what became of them, since the start; index is PacketCause.
