@@ -3,7 +3,7 @@
 
 #include "base/clock.hpp"
 #include "base/event.hpp"
-#include "journal/spsc_ring.hpp"
+#include "base/spsc_ring.hpp"
 
 namespace millpond {
 

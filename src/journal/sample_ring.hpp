@@ -2,7 +2,7 @@
 #pragma once
 
 #include "base/frames.hpp"
-#include "journal/spsc_ring.hpp"
+#include "base/spsc_ring.hpp"
 
 #include <algorithm>
 #include <vector>
