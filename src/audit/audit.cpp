@@ -74,12 +74,11 @@ void add_score(const AuditInput& input, const SessionReader& session, AuditResul
     }
     AuditScore known;
     known.truth = input.labels.empty() ? "referee" : input.labels.string();
-    known.ripples = input.labels.empty() ? ask_referee(input, session, *samples)
-                                         : read_labels(input.labels, session.rate());
+    known.ripples =
+        input.labels.empty() ? ask_referee(input, session, *samples) : read_labels(input.labels, session.rate());
     known.detections = detections_to_score(session.events());
     known.pulses_given = result.figures.pulses > 0;
-    const auto upto =
-        input.labels.empty() ? std::min(result.end, SampleIndex{samples->frames()}) : result.end;
+    const auto upto = input.labels.empty() ? std::min(result.end, SampleIndex{samples->frames()}) : result.end;
     known.detector = score_as(input, session, known, false, upto);
     known.session = score_as(input, session, known, true, upto);
     result.score = std::move(known);

@@ -18,9 +18,9 @@ namespace millpond {
 
 struct AuditInput {
     std::filesystem::path session;
-    EngineSettings settings;       ///< as the session used them
-    std::string settings_name;     ///< for messages: the file they came from
-    std::filesystem::path labels;  ///< events table of ripples; empty: the referee over the stored samples is the truth
+    EngineSettings settings;      ///< as the session used them
+    std::string settings_name;    ///< for messages: the file they came from
+    std::filesystem::path labels; ///< events table of ripples; empty: the referee over the stored samples is the truth
     RefereeSettings referee;
     /// Told now and then what is being done and its share, 0 to 1.
     std::function<void(const char* doing, double share)> progress;
@@ -28,11 +28,11 @@ struct AuditInput {
 
 /// Detections against ripples, read in two ways (see referee/eligible_time.hpp).
 struct AuditScore {
-    std::string truth;      ///< the table's name, or "referee"
+    std::string truth; ///< the table's name, or "referee"
     Ripples ripples;
     std::vector<SampleIndex> detections;
-    Score detector;         ///< over all time in which the detector was fit to detect
-    Score session;          ///< over the time in which a trigger was possible
+    Score detector;            ///< over all time in which the detector was fit to detect
+    Score session;             ///< over the time in which a trigger was possible
     bool pulses_given = false; ///< pulses change the very signal that the truth is taken from
 };
 

@@ -85,9 +85,9 @@ std::vector<Difference> compare_events(const std::vector<Event>& journaled, cons
     auto left = journaled.begin();
     auto right = again.begin();
     while (left != journaled.end() || right != again.end()) {
-        const auto at = right == again.end()                                          ? left->sample
+        const auto at = right == again.end()                                      ? left->sample
                         : left == journaled.end() || right->sample < left->sample ? right->sample
-                                                                                      : left->sample;
+                                                                                  : left->sample;
         const auto there = [at](const Event& event) { return event.sample != at; };
         const auto left_end = std::find_if(left, journaled.end(), there);
         const auto right_end = std::find_if(right, again.end(), there);

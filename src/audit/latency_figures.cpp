@@ -49,7 +49,7 @@ std::optional<LatencySummary> summary_of(const OverPackets& packets, LatencyPart
     if (counted.count() == 0) {
         return std::nullopt;
     }
-    return LatencySummary{counted.count(),          counted.quantile_ns(0.5),   counted.quantile_ns(0.9),
+    return LatencySummary{counted.count(),           counted.quantile_ns(0.5),   counted.quantile_ns(0.9),
                           counted.quantile_ns(0.99), counted.quantile_ns(0.999), counted.max_ns()};
 }
 

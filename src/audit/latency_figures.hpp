@@ -11,8 +11,8 @@
 
 namespace millpond {
 
-/// ns. Over pulses: exact, nearest rank (smallest value with at least that share at or below it). Over packets: from the
-/// session's histograms, the upper end of a bin 3 % wide.
+/// ns. Over pulses: exact, nearest rank (smallest value with at least that share at or below it). Over packets: from
+/// the session's histograms, the upper end of a bin 3 % wide.
 struct LatencySummary {
     std::uint64_t count = 0;
     std::int64_t p50 = 0, p90 = 0, p99 = 0, p999 = 0, max = 0;
@@ -21,9 +21,9 @@ struct LatencySummary {
 };
 
 struct LatencyRow {
-    std::string part; ///< packing, transport, wake, compute, output, line, loop, pulse end
-    std::string over; ///< "pulses" or "packets"
-    std::string span; ///< from what to what
+    std::string part;                      ///< packing, transport, wake, compute, output, line, loop, pulse end
+    std::string over;                      ///< "pulses" or "packets"
+    std::string span;                      ///< from what to what
     std::optional<LatencySummary> figures; ///< empty: not measured
 };
 

@@ -1,5 +1,7 @@
 #include "audit/rerun.hpp"
 
+#include "journal/journal_sink.hpp"
+
 #include <algorithm>
 
 namespace millpond {
@@ -178,9 +180,8 @@ void run(const SessionReader& session, SampleFileReader& samples, const EngineSe
 
 std::vector<Event> compared_part(const std::vector<Event>& events, const Rerun& rerun) {
     std::vector<Event> part;
-    std::copy_if(events.begin(), events.end(), std::back_inserter(part), [&rerun](const Event& event) {
-        return decided_by_the_engine(event) && event.sample < rerun.upto;
-    });
+    std::copy_if(events.begin(), events.end(), std::back_inserter(part),
+                 [&rerun](const Event& event) { return decided_by_the_engine(event) && event.sample < rerun.upto; });
     std::stable_sort(part.begin(), part.end(), [](const Event& a, const Event& b) { return a.sample < b.sample; });
     return part;
 }
@@ -211,8 +212,8 @@ Rerun rerun_session(const SessionReader& session, const EngineSettings& settings
     const auto journaled = compared_part(session.events(), rerun);
     rerun.differences = compare_events(journaled, compared_part(sink.events, rerun));
     rerun.compared = journaled.size();
-    rerun.decisions = static_cast<std::uint64_t>(
-        std::count_if(journaled.begin(), journaled.end(), [](const Event& event) {
+    rerun.decisions =
+        static_cast<std::uint64_t>(std::count_if(journaled.begin(), journaled.end(), [](const Event& event) {
             return event.kind == EventKind::detection || event.kind == EventKind::trigger ||
                    event.kind == EventKind::withheld;
         }));

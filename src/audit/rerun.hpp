@@ -2,8 +2,9 @@
 // Thread: cold.
 //
 // Samples come from the session's sample file; commands, failures and gaps come from its journal, each applied at the
-// place where it was journaled. A control schedule's places are those that the journal says were due. All else the engine
-// has to find by itself: detections, triggers, withheld, gaps of non-finite samples, floors, starting state and gates.
+// place where it was journaled. A control schedule's places are those that the journal says were due. All else the
+// engine has to find by itself: detections, triggers, withheld, gaps of non-finite samples, floors, starting state and
+// gates.
 #pragma once
 
 #include "base/channels.hpp"
@@ -27,10 +28,10 @@ struct Difference {
 
 struct Rerun {
     bool done = false;
-    std::string why_not;       ///< where it was not done
-    SampleIndex from, upto;    ///< events in [from, upto) were compared
-    std::string upto_why;      ///< what ended the comparison
-    std::uint64_t compared = 0; ///< journaled events that were looked at
+    std::string why_not;         ///< where it was not done
+    SampleIndex from, upto;      ///< events in [from, upto) were compared
+    std::string upto_why;        ///< what ended the comparison
+    std::uint64_t compared = 0;  ///< journaled events that were looked at
     std::uint64_t decisions = 0; ///< of them detections, triggers and withheld
     std::vector<Difference> differences;
 

@@ -6,8 +6,7 @@
 namespace millpond {
 namespace {
 
-template <std::size_t N>
-void add(std::array<std::uint64_t, N>& counts, std::uint8_t code, std::uint64_t count) {
+template <std::size_t N> void add(std::array<std::uint64_t, N>& counts, std::uint8_t code, std::uint64_t count) {
     if (code < N) {
         counts[code] += count;
     }
