@@ -20,6 +20,8 @@ int main(int argc, char** argv) {
     try {
         millpond::add_commands(program);
         program.parse(argc, argv);
+    } catch (const CLI::RuntimeError& verdict) {
+        return verdict.get_exit_code(); // a command's own verdict; it has said why
     } catch (const CLI::ParseError& trouble) {
         if (trouble.get_exit_code() == static_cast<int>(CLI::ExitCodes::Success)) {
             return program.exit(trouble); // help or version

@@ -5,6 +5,7 @@
 #include "journal/record_file.hpp"
 #include "journal/session_support.hpp"
 #include "journal/session_writer.hpp"
+#include "settings/settings.hpp"
 
 #include <cmath>
 #include <functional>
@@ -46,7 +47,8 @@ class HandMadeLoop {
   public:
     HandMadeLoop(const TempFolder& temp, EngineSettings settings, std::vector<SampleIndex> schedule = {},
                  StoreSamples samples = StoreSamples::rf64, std::vector<FloorDetail> warm_start = {})
-        : settings_(std::move(settings)), writer_(SessionWriter::open(session_in(temp, samples), about(warm_start))),
+        : settings_(std::move(settings)),
+          writer_(SessionWriter::open(session_in(temp, samples), about(settings_, warm_start))),
           engine_(detector(warm_start), Arbiter::make(settings_.arbiter, test_rate, std::move(schedule)), test_rate,
                   writer_->loop_sink(), port_) {
         engine_.start(SampleIndex{}, settings_.arbiter.start_armed);
@@ -76,8 +78,12 @@ class HandMadeLoop {
     }
 
   private:
-    static SessionAbout about(const std::vector<FloorDetail>& warm_start) {
+    static SessionAbout about(const EngineSettings& engine, const std::vector<FloorDetail>& warm_start) {
         auto about = about_stream(2, test_rate.value);
+        Settings settings;
+        settings.detector = engine.detector;
+        settings.arbiter = engine.arbiter;
+        about.settings_text = settings_to_yaml(settings);
         about.warm_start = warm_start;
         return about;
     }
