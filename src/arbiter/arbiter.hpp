@@ -43,7 +43,15 @@ class Arbiter {
     [[nodiscard]] std::uint32_t triggers() const noexcept { return triggers_; }
     [[nodiscard]] Condition condition() const noexcept { return condition_; }
 
+    [[nodiscard]] std::size_t gate_count() const noexcept { return gates_.size(); }
+    [[nodiscard]] std::string_view gate_name(std::size_t i) const noexcept { return gates_[i].name; }
+    [[nodiscard]] bool gate_open(std::size_t i) const noexcept { return gates_[i].open; }
+
   private:
+    [[nodiscard]] Rule refusal(const Candidate& candidate) const noexcept;
+    [[nodiscard]] Rule limit(SampleIndex at) const noexcept;
+    [[nodiscard]] SampleIndex newest() const noexcept;
+
     struct Gate {
         std::string name;
         bool open;
@@ -59,7 +67,6 @@ class Arbiter {
     std::uint32_t session_limit_ = 0;
     std::uint32_t triggers_ = 0;
     std::vector<SampleIndex> recent_; // ring of the last max_pulses_per_second triggers
-    std::size_t oldest_recent_ = 0;
 };
 
 } // namespace millpond

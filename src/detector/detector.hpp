@@ -49,6 +49,9 @@ class Detector {
     /// Thread: loop. Fixed work a frame; allocates, locks and throws nothing.
     std::size_t run(const FrameBlock& block, std::optional<Crossing>& crossing) noexcept;
 
+    /// Frames from the block's start that have no non-finite value on a looked-at channel. Thread: loop.
+    [[nodiscard]] std::size_t finite_frames(const FrameBlock& block) const noexcept;
+
     /// Frames are missing: filters start anew and settle, the floor keeps what it knows. Thread: loop.
     void gap(SampleIndex resumes_at) noexcept;
 
@@ -67,7 +70,10 @@ class Detector {
     /// The floor `i` as an event detail. Thread: loop.
     [[nodiscard]] FloorDetail floor(std::size_t i) const noexcept;
 
+    /// The floor has seen enough clean signal.
     [[nodiscard]] bool settled() const noexcept;
+    /// The filters are still settling after a gap or the start.
+    [[nodiscard]] bool settling() const noexcept;
     /// Group delay of the band-pass at the band's centre, in samples.
     [[nodiscard]] double filter_delay_samples() const noexcept;
     /// The same and the smoother's delay.

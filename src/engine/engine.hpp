@@ -60,18 +60,20 @@ class Engine {
 
   private:
     void run_finite(FrameBlock block) noexcept;
-    void run_detector(FrameBlock block) noexcept;
+    std::size_t run_detector(const FrameBlock& block) noexcept;
+    [[nodiscard]] std::size_t broken_frames(const FrameBlock& block, std::size_t from) const noexcept;
     void on_crossing(const Crossing& crossing) noexcept;
-    void judge(const Candidate& candidate) noexcept;
-    void play_schedule(SampleIndex before) noexcept;
+    void play_schedule() noexcept;
     void skip(std::uint64_t frames, GapCause cause) noexcept;
-    void journal_floors(SampleIndex upto) noexcept;
+    void journal_floors() noexcept;
+    void journal_gate(std::string_view name, bool open) noexcept;
+    [[nodiscard]] Event trigger_event(const Candidate& candidate) const noexcept;
+    [[nodiscard]] static Event withheld_event(const Candidate& candidate, Rule rule) noexcept;
 
     Detector detector_;
     Arbiter arbiter_;
     EventSink& sink_;
     PulsePort& port_;
-    std::size_t channels_;
     std::uint64_t second_frames_;
     SampleIndex next_{};
     SampleIndex next_floor_{};

@@ -1,0 +1,267 @@
+#include "detector/detector.hpp"
+
+#include "detector/detector_state.hpp"
+
+#include <algorithm>
+#include <cmath>
+
+#include <xmmintrin.h>
+
+namespace millpond {
+namespace {
+
+// A deviation is the running mean distance from the mean, scaled so that a Gaussian law's is its SD.
+constexpr double deviation_per_spread = 1.2533141373155003;
+
+// Numbers below 1e-308 count as zero while the kernel runs: a flat channel would otherwise slow it a hundredfold. Set
+// here, not by the thread, so that every command computes the same.
+class TinyIsZero {
+  public:
+    TinyIsZero() noexcept : before_(_mm_getcsr()) { _mm_setcsr(before_ | 0x8040U); }
+    ~TinyIsZero() { _mm_setcsr(before_); }
+    TinyIsZero(const TinyIsZero&) = delete;
+    TinyIsZero& operator=(const TinyIsZero&) = delete;
+
+  private:
+    unsigned before_;
+};
+
+} // namespace
+
+Detector::Detector(std::unique_ptr<State> state) noexcept : state_(std::move(state)) {}
+Detector::Detector(Detector&&) noexcept = default;
+Detector& Detector::operator=(Detector&&) noexcept = default;
+Detector::~Detector() = default;
+
+std::size_t Detector::run(const FrameBlock& block, std::optional<Crossing>& crossing) noexcept {
+    const TinyIsZero tiny_is_zero;
+    auto& s = *state_;
+    crossing.reset();
+    std::size_t used = 0;
+    const std::size_t count = block.frames();
+    while (used < count) {
+        if (s.position >= s.blank_from) {
+            used += s.skip_blanked(count - used);
+            continue;
+        }
+        used += s.advance(block.part(used, count - used), crossing);
+        if (crossing) {
+            break;
+        }
+    }
+    return used;
+}
+
+std::size_t Detector::State::skip_blanked(std::size_t frames) noexcept {
+    const auto skipped = std::min<std::uint64_t>(frames, blank_until - position);
+    if (position < settling_until) {
+        settling_until += skipped; // filters that see nothing do not settle
+    }
+    position += skipped;
+    if (position >= blank_until) {
+        blank_from = UINT64_MAX;
+    }
+    resume = true;
+    return static_cast<std::size_t>(skipped);
+}
+
+std::size_t Detector::State::advance(const FrameBlock& block, std::optional<Crossing>& crossing) noexcept {
+    const auto order = next_order(block);
+    const auto result = kernel(lanes, order);
+    resume = false;
+    if (result.last_reference != SIZE_MAX) {
+        newest_reference = position + result.last_reference;
+    }
+    position += result.frames;
+    if (order.weight > 0.0) {
+        floor_frames += result.frames;
+    }
+    if (watcher != nullptr) {
+        watcher(watcher_context, SampleIndex{position - 1}, {envelope.data(), lanes.channel_lanes + mean_lanes()});
+    }
+    if (!start.done()) {
+        start_floor();
+        return result.frames;
+    }
+    if (decide(result.tally)) {
+        crossing = crossing_here(result.tally);
+    }
+    return result.frames;
+}
+
+// As many frames as share one treatment: the floor's weight, and what the kernel waits for.
+KernelOrder Detector::State::next_order(const FrameBlock& block) const noexcept {
+    KernelOrder order;
+    order.frames = block.data.data();
+    order.method = method;
+    order.resume = resume;
+    std::uint64_t limit = std::min<std::uint64_t>(block.frames(), blank_from - position);
+    const std::uint64_t still_until = std::max(settling_until, frozen_until);
+    const bool still = position < still_until;
+    if (still) {
+        limit = std::min(limit, still_until - position);
+    }
+    if (!start.done()) {
+        order.count = 1;
+        return order;
+    }
+    if (!still) {
+        const bool full = floor_frames >= full_frames;
+        order.weight = full ? least_weight : 1.0 / static_cast<double>(floor_frames + 1);
+        limit = full ? limit : 1; // the weight changes from frame to frame until one time constant is full
+    }
+    order.count = watcher != nullptr ? 1 : static_cast<std::size_t>(limit);
+    order.stop_at_votes = spent ? 0 : votes_needed;
+    order.stop_below_rearm = spent ? votes_needed : 0;
+    if (above_run > 0) {
+        order.count = 1;
+    }
+    return order;
+}
+
+void Detector::State::start_floor() noexcept {
+    if (position <= settling_until || !start.take(envelope.data())) {
+        return;
+    }
+    start.read(mean.data(), spread.data());
+    floor_frames = start.frames();
+}
+
+// True where the crossing is due at the last frame.
+bool Detector::State::decide(Tally tally) noexcept {
+    if (spent) {
+        spent = tally.rearm_votes() >= votes_needed;
+        return false;
+    }
+    above_run = tally.votes() >= votes_needed ? above_run + 1 : 0;
+    if (above_run < min_above) {
+        return false;
+    }
+    above_run = 0;
+    spent = true;
+    frozen_until = std::max(frozen_until, position + freeze);
+    return true;
+}
+
+Crossing Detector::State::crossing_here(Tally tally) const noexcept {
+    std::size_t site = 0;
+    double furthest = -1.0;
+    for (std::size_t lane = 0; lane < lanes.lanes; ++lane) {
+        const double over = envelope[lane] - (mean[lane] + above[lane] * spread[lane]);
+        if (above_adds[lane] == Tally::vote && over > furthest * spread[lane]) {
+            site = lane;
+            furthest = over / spread[lane];
+        }
+    }
+    Crossing crossing{};
+    const std::uint64_t at = position - 1;
+    crossing.at = SampleIndex{at};
+    crossing.settling = at < settling_until;
+    crossing.unsettled = floor_frames < settle_frames;
+    crossing.vetoed = newest_reference != UINT64_MAX && at - newest_reference <= veto_window;
+    crossing.detail = {static_cast<float>(envelope[site]),
+                       static_cast<float>(mean[site]),
+                       static_cast<float>(spread[site] * deviation_per_spread),
+                       static_cast<float>(mean[site] + above[site] * spread[site]),
+                       static_cast<std::uint16_t>(tally.votes()),
+                       channel_at(site)};
+    return crossing;
+}
+
+std::size_t Detector::finite_frames(const FrameBlock& block) const noexcept {
+    return millpond::finite_frames(block.data.data(), block.frames(), state_->lanes);
+}
+
+void Detector::gap(SampleIndex resumes_at) noexcept {
+    auto& s = *state_;
+    s.clear_filters();
+    s.position = resumes_at.value;
+    s.settling_until = s.position + s.filter_settle;
+    s.above_run = 0;
+    s.resume = true; // the level starts at the first sample: no step into the fresh filter
+    if (s.blank_until <= s.position) {
+        s.blank_from = UINT64_MAX;
+    }
+    if (!s.start.done()) {
+        s.start.reset();
+    }
+}
+
+void Detector::blank(SampleIndex from) noexcept {
+    auto& s = *state_;
+    if (s.blanking == 0) {
+        return;
+    }
+    s.blank_from = std::min(s.blank_from, from.value);
+    s.blank_until = std::max(s.blank_until, from.value + s.blanking);
+}
+
+void Detector::reset() noexcept {
+    auto& s = *state_;
+    s.mean.fill(0.0);
+    s.spread.fill(0.0);
+    s.start.reset();
+    s.floor_frames = 0;
+    s.frozen_until = 0;
+    s.blank_from = UINT64_MAX;
+    s.blank_until = 0;
+    s.newest_reference = UINT64_MAX;
+    s.spent = false;
+    gap(SampleIndex{0});
+}
+
+void Detector::State::clear_filters() noexcept {
+    for (auto* values : {&section_states, &history, &level, &last, &in_phase, &turned, &smooth1, &smooth2, &envelope}) {
+        values->fill(0.0);
+    }
+    lanes.history_at = 0;
+}
+
+std::uint16_t Detector::State::channel_at(std::size_t lane) const noexcept {
+    return lane < channel_of.size() ? static_cast<std::uint16_t>(channel_of[lane]) : std::uint16_t{65535};
+}
+
+std::size_t Detector::floor_count() const noexcept {
+    return state_->lanes.channel_lanes + state_->mean_lanes();
+}
+
+FloorDetail Detector::floor(std::size_t i) const noexcept {
+    const auto& s = *state_;
+    return {s.mean[i],
+            s.spread[i] * deviation_per_spread,
+            static_cast<float>(s.mean[i] + s.above[i] * s.spread[i]),
+            s.channel_at(i),
+            static_cast<std::uint16_t>(settled() ? 1 : 0),
+            s.floor_frames};
+}
+
+bool Detector::settled() const noexcept {
+    return state_->start.done() && state_->floor_frames >= state_->settle_frames;
+}
+
+bool Detector::settling() const noexcept {
+    return state_->position < state_->settling_until;
+}
+
+double Detector::filter_delay_samples() const noexcept {
+    return state_->design.group_delay_samples(band_centre(state_->settings.filter), state_->rate);
+}
+
+double Detector::delay_samples() const noexcept {
+    return filter_delay_samples() + state_->settings.envelope.smoothing_ms * state_->rate.value / 1000.0;
+}
+
+const BandpassDesign& Detector::bandpass() const noexcept {
+    return state_->design;
+}
+
+KernelWidth Detector::width() const noexcept {
+    return state_->width;
+}
+
+void Detector::watch(Watcher watcher, void* context) noexcept {
+    state_->watcher = watcher;
+    state_->watcher_context = context;
+}
+
+} // namespace millpond

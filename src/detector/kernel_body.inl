@@ -1,0 +1,184 @@
+// The text of the kernel, compiled once for each vector width by the three files beside this one.
+// Before including it: MILLPOND_LANES (doubles in a vector), MILLPOND_SQRT(v), MILLPOND_KERNEL (the function's name).
+// Nothing here may call a function of the standard library: it would be compiled for this width and could replace
+// the common copy in the linked program.
+
+namespace millpond {
+namespace {
+
+using Doubles = double __attribute__((vector_size(MILLPOND_LANES * sizeof(double))));
+using Floats = float __attribute__((vector_size(MILLPOND_LANES * sizeof(float))));
+using Words = std::int64_t __attribute__((vector_size(MILLPOND_LANES * sizeof(std::int64_t))));
+constexpr std::size_t width = MILLPOND_LANES;
+constexpr std::size_t vectors_in_group = lane_group / width;
+
+inline Doubles& at(double* values, std::size_t lane) { return *reinterpret_cast<Doubles*>(values + lane); }
+inline const Doubles& at(const double* values, std::size_t lane) {
+    return *reinterpret_cast<const Doubles*>(values + lane);
+}
+inline const Words& at(const std::uint64_t* values, std::size_t lane) {
+    return *reinterpret_cast<const Words*>(values + lane);
+}
+inline Doubles magnitude(Doubles value) { return value < 0.0 ? -value : value; }
+
+inline void take_frame(KernelState& state, const float* frame) {
+    if (state.in_stream_order) {
+        for (std::size_t lane = 0; lane < state.channel_lanes; ++lane) {
+            state.raw[lane] = frame[lane];
+        }
+    } else {
+        for (std::size_t lane = 0; lane < state.channel_lanes; ++lane) {
+            state.raw[lane] = frame[state.channel_of[lane]];
+        }
+    }
+}
+
+inline Doubles filter_sections(KernelState& state, std::size_t lane, Doubles value) {
+    const std::size_t group = lane / lane_group;
+    double* states = state.section_states + group * state.sections * 2 * lane_group + lane % lane_group;
+    const double* c = state.coefficients;
+    for (std::size_t i = 0; i < state.sections; ++i, states += 2 * lane_group, c += 5) {
+        Doubles& first = at(states, 0);
+        Doubles& second = at(states, lane_group);
+        const Doubles out = c[0] * value + first;
+        first = (c[1] * value + second) - c[3] * out;
+        second = c[2] * value - c[4] * out;
+        value = out;
+    }
+    return value;
+}
+
+inline Doubles filter_taps(KernelState& state, std::size_t lane, Doubles value) {
+    at(state.history + state.history_at * state.lanes, lane) = value;
+    at(state.history + (state.history_at + state.taps) * state.lanes, lane) = value;
+    const double* newest = state.history + (state.history_at + state.taps) * state.lanes;
+    Doubles sum = state.tap_values[0] * value;
+    for (std::size_t i = 1; i < state.taps; ++i) {
+        sum += state.tap_values[i] * at(newest - i * state.lanes, lane);
+    }
+    return sum;
+}
+
+// The analytic magnitude needs the band signal turned by 90 degrees: a first-order all-pass does so at the centre.
+inline Doubles energy_with_turned(KernelState& state, std::size_t lane, Doubles band) {
+    Doubles& before = at(state.in_phase, lane);
+    Doubles& turned = at(state.turned, lane);
+    turned = state.quadrature * (band - turned) + before;
+    before = band;
+    return band * band + turned * turned;
+}
+
+template <KernelEnvelope method> inline Doubles envelope_of(KernelState& state, std::size_t lane, Doubles band) {
+    Doubles size;
+    if constexpr (method == KernelEnvelope::rectify) {
+        size = magnitude(band);
+    } else if constexpr (method == KernelEnvelope::energy) {
+        size = band * band;
+    } else {
+        size = MILLPOND_SQRT(energy_with_turned(state, lane, band));
+    }
+    Doubles& first = at(state.smooth1, lane);
+    Doubles& second = at(state.smooth2, lane);
+    first += state.smoothing * (size - first);
+    second += state.smoothing * (first - second);
+    if constexpr (method == KernelEnvelope::energy) {
+        return MILLPOND_SQRT(second);
+    } else {
+        return second;
+    }
+}
+
+// Eight partial sums whatever the width, then one fixed order: the mean over sites has the same bits at every width.
+inline double mean_of_sites(const KernelState& state) {
+    Doubles sums[vectors_in_group] = {};
+    for (std::size_t lane = 0; lane < state.lanes; lane += lane_group) {
+        for (std::size_t v = 0; v < vectors_in_group; ++v) {
+            sums[v] += at(state.mean_weight, lane + v * width) * at(state.envelope, lane + v * width);
+        }
+    }
+    alignas(64) double part[lane_group];
+    for (std::size_t v = 0; v < vectors_in_group; ++v) {
+        at(part, v * width) = sums[v];
+    }
+    return ((part[0] + part[4]) + (part[2] + part[6])) + ((part[1] + part[5]) + (part[3] + part[7]));
+}
+
+inline Tally compare_to_floor(KernelState& state, double weight) {
+    Words tally = {};
+    for (std::size_t lane = 0; lane < state.lanes; lane += width) {
+        const Doubles envelope = at(state.envelope, lane);
+        Doubles& mean = at(state.mean, lane);
+        Doubles& spread = at(state.spread, lane);
+        if (weight > 0.0) {
+            const Doubles ceiling = mean + state.clip * spread;
+            const Doubles taken = envelope < ceiling ? envelope : ceiling;
+            const Doubles off = taken - mean;
+            mean += weight * off;
+            spread += weight * (magnitude(off) - spread);
+        }
+        const Words above = envelope > mean + at(state.above, lane) * spread;
+        const Words rearm = envelope > mean + at(state.rearm, lane) * spread;
+        tally += (above & at(state.above_adds, lane)) + (rearm & at(state.rearm_adds, lane));
+    }
+    std::uint64_t sum = 0;
+    for (std::size_t i = 0; i < width; ++i) {
+        sum += static_cast<std::uint64_t>(tally[i]);
+    }
+    return Tally{sum};
+}
+
+template <KernelEnvelope method> inline void envelopes_of_frame(KernelState& state, bool resume) {
+    for (std::size_t lane = 0; lane < state.lanes; lane += width) {
+        const Doubles raw = __builtin_convertvector(*reinterpret_cast<const Floats*>(state.raw + lane), Doubles);
+        Doubles& level = at(state.level, lane);
+        Doubles& last = at(state.last, lane);
+        if (resume) {
+            level = raw - last;
+        }
+        last = raw - level;
+        const Doubles band =
+            state.taps == 0 ? filter_sections(state, lane, last) : filter_taps(state, lane, last);
+        at(state.envelope, lane) = envelope_of<method>(state, lane, band);
+    }
+    if (state.taps != 0) {
+        state.history_at = state.history_at + 1 == state.taps ? 0 : state.history_at + 1;
+    }
+}
+
+template <KernelEnvelope method> inline KernelResult run_method(KernelState& state, const KernelOrder& order) {
+    KernelResult result;
+    bool resume = order.resume;
+    for (const float* frame = order.frames; result.frames < order.count; frame += state.channels) {
+        take_frame(state, frame);
+        envelopes_of_frame<method>(state, resume);
+        resume = false;
+        if (state.mean_weight != nullptr) {
+            state.envelope[state.channel_lanes] = mean_of_sites(state);
+        }
+        result.tally = compare_to_floor(state, order.weight);
+        if (result.tally.references() != 0) {
+            result.last_reference = result.frames;
+        }
+        ++result.frames;
+        if ((order.stop_at_votes != 0 && result.tally.votes() >= order.stop_at_votes) ||
+            result.tally.rearm_votes() < order.stop_below_rearm) {
+            break;
+        }
+    }
+    return result;
+}
+
+} // namespace
+
+KernelResult MILLPOND_KERNEL(KernelState& state, const KernelOrder& order) noexcept {
+    switch (order.method) {
+    case KernelEnvelope::rectify:
+        return run_method<KernelEnvelope::rectify>(state, order);
+    case KernelEnvelope::energy:
+        return run_method<KernelEnvelope::energy>(state, order);
+    default:
+        return run_method<KernelEnvelope::analytic>(state, order);
+    }
+}
+
+} // namespace millpond

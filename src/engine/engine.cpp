@@ -1,0 +1,166 @@
+#include "engine/engine.hpp"
+
+#include <algorithm>
+
+namespace millpond {
+
+Engine::Engine(Detector detector, Arbiter arbiter, Hertz rate, EventSink& sink, PulsePort& port) noexcept
+    : detector_(std::move(detector)), arbiter_(std::move(arbiter)), sink_(sink), port_(port),
+      second_frames_(frames_in_ms(1000.0, rate)) {}
+
+void Engine::start(SampleIndex at, bool armed) noexcept {
+    next_ = at;
+    next_floor_ = at + second_frames_;
+    detector_.gap(at);
+    for (std::size_t i = 0; i < arbiter_.gate_count(); ++i) {
+        journal_gate(arbiter_.gate_name(i), arbiter_.gate_open(i));
+    }
+    set_state(armed ? ArmState::armed : ArmState::not_armed, StateCause::start);
+}
+
+void Engine::process(const FrameBlock& block, GapCause cause) noexcept {
+    if (block.first > next_) {
+        skip(block.first - next_, cause);
+    }
+    std::size_t used = 0;
+    const std::size_t count = block.frames();
+    while (used < count) {
+        const auto rest = block.part(used, count - used);
+        const std::size_t finite = detector_.finite_frames(rest);
+        run_finite(rest.part(0, finite));
+        used += finite;
+        const std::size_t broken = broken_frames(block, used);
+        if (broken > 0) {
+            skip(broken, GapCause::non_finite);
+            used += broken;
+        }
+    }
+}
+
+// Frames from `from` on that have a non-finite value: one gap, not one each.
+std::size_t Engine::broken_frames(const FrameBlock& block, std::size_t from) const noexcept {
+    std::size_t broken = 0;
+    while (from + broken < block.frames() && detector_.finite_frames(block.part(from + broken, 1)) == 0) {
+        ++broken;
+    }
+    return broken;
+}
+
+// Stops at every place where something is due by the clock of samples: a scheduled pulse, the floor's journal entry.
+void Engine::run_finite(FrameBlock block) noexcept {
+    while (block.frames() > 0) {
+        const SampleIndex end = block.first + block.frames();
+        const SampleIndex stop = std::min({end, std::max(next_ + 1, arbiter_.next_scheduled()), next_floor_});
+        if (arbiter_.next_scheduled() <= next_) {
+            play_schedule();
+        }
+        const std::size_t frames = run_detector(block.part(0, static_cast<std::size_t>(stop - block.first)));
+        block = block.part(frames, block.frames() - frames);
+        if (next_ >= next_floor_) {
+            journal_floors();
+        }
+    }
+}
+
+std::size_t Engine::run_detector(const FrameBlock& block) noexcept {
+    std::optional<Crossing> crossing;
+    const std::size_t frames = detector_.run(block, crossing);
+    next_ = next_ + frames;
+    if (crossing) {
+        on_crossing(*crossing);
+    }
+    return frames;
+}
+
+void Engine::on_crossing(const Crossing& crossing) noexcept {
+    ++detections_;
+    const Candidate candidate{crossing.at, crossing.settling, crossing.unsettled, crossing.vetoed, false};
+    // The verdict comes first and the pulse with it: what is written down can wait.
+    const Rule rule = arbiter_.judge(candidate);
+    const Event trigger = trigger_event(candidate);
+    if (rule == Rule::none) {
+        port_.fire(trigger);
+        detector_.blank(crossing.at + 1);
+    }
+    sink_.take(Event::make(EventKind::detection, 0, crossing.at, crossing.detail));
+    sink_.take(rule == Rule::none ? trigger : withheld_event(candidate, rule));
+}
+
+void Engine::play_schedule() noexcept {
+    const Candidate candidate{next_, detector_.settling(), !detector_.settled(), false, true};
+    arbiter_.schedule_played();
+    const Rule rule = arbiter_.judge(candidate);
+    const Event trigger = trigger_event(candidate);
+    if (rule == Rule::none) {
+        port_.fire(trigger);
+        detector_.blank(candidate.at);
+    }
+    sink_.take(rule == Rule::none ? trigger : withheld_event(candidate, rule));
+}
+
+Event Engine::trigger_event(const Candidate& candidate) const noexcept {
+    return Event::make(EventKind::trigger, 0, candidate.at,
+                       TriggerDetail{candidate.at.value, arbiter_.triggers(), candidate.scheduled ? 1U : 0U});
+}
+
+Event Engine::withheld_event(const Candidate& candidate, Rule rule) noexcept {
+    return Event::make(EventKind::withheld, static_cast<std::uint8_t>(rule), candidate.at,
+                       TriggerDetail{candidate.at.value, 0, candidate.scheduled ? 1U : 0U});
+}
+
+void Engine::skip(std::uint64_t frames, GapCause cause) noexcept {
+    sink_.take(Event::make(EventKind::gap, static_cast<std::uint8_t>(cause), next_, GapDetail{frames}));
+    next_ = next_ + frames;
+    detector_.gap(next_);
+    // A place of the schedule that fell into the gap is refused there, so that the plan's count stays whole.
+    while (arbiter_.next_scheduled() < next_) {
+        const Candidate missed{arbiter_.next_scheduled(), true, false, false, true};
+        arbiter_.schedule_played();
+        sink_.take(withheld_event(missed, Rule::gap));
+    }
+    if (next_ >= next_floor_) {
+        journal_floors();
+    }
+}
+
+void Engine::journal_floors() noexcept {
+    for (std::size_t i = 0; i < detector_.floor_count(); ++i) {
+        sink_.take(Event::make(EventKind::floor, 0, next_, detector_.floor(i)));
+    }
+    next_floor_ = next_ + second_frames_;
+}
+
+void Engine::set_state(ArmState state, StateCause cause) noexcept {
+    const StateDetail detail{static_cast<std::uint8_t>(arbiter_.state()), static_cast<std::uint8_t>(cause)};
+    arbiter_.set_state(state);
+    sink_.take(Event::make(EventKind::state, static_cast<std::uint8_t>(state), next_, detail));
+}
+
+bool Engine::set_gate(std::string_view name, bool open) noexcept {
+    if (!arbiter_.set_gate(name, open)) {
+        return false;
+    }
+    journal_gate(name, open);
+    return true;
+}
+
+void Engine::journal_gate(std::string_view name, bool open) noexcept {
+    GateDetail detail{};
+    detail.open = open ? 1 : 0;
+    std::copy_n(name.begin(), std::min(name.size(), detail.name.size() - 1), detail.name.begin());
+    sink_.take(Event::make(EventKind::gate, 0, next_, detail));
+}
+
+void Engine::note(std::string_view text) noexcept {
+    do {
+        NoteDetail detail{};
+        const std::size_t length = std::min(text.size(), detail.text.size());
+        std::copy_n(text.begin(), length, detail.text.begin());
+        text.remove_prefix(length);
+        detail.length = static_cast<std::uint8_t>(length);
+        detail.continues = text.empty() ? 0 : 1;
+        sink_.take(Event::make(EventKind::note, 0, next_, detail));
+    } while (!text.empty());
+}
+
+} // namespace millpond

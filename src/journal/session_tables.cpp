@@ -1,0 +1,155 @@
+#include "journal/session_tables.hpp"
+
+#include "recording/whole_file.hpp"
+
+#include <fmt/format.h>
+#include <nlohmann/json.hpp>
+
+namespace millpond {
+namespace {
+
+std::string site_text(std::uint16_t site) {
+    return site == 65535 ? "mean" : fmt::format("{}", site);
+}
+
+void add_nanos(TableEvent& row, const char* column, std::int64_t ns) {
+    if (ns != PulseDetail::not_measured) {
+        row.extra[column] = fmt::format("{:.3f}", static_cast<double>(ns) / 1000.0);
+    }
+}
+
+void fill_detection(TableEvent& row, const DetectionDetail& detail) {
+    row.extra["envelope_uv"] = fmt::format("{}", detail.envelope);
+    row.extra["floor_uv"] = fmt::format("{}", detail.floor);
+    row.extra["threshold_uv"] = fmt::format("{}", detail.threshold);
+    row.extra["site"] = site_text(detail.site);
+    row.extra["votes"] = fmt::format("{}", detail.votes);
+}
+
+void fill_pulse(TableEvent& row, const PulseDetail& detail) {
+    add_nanos(row, "packing_us", detail.packing_ns);
+    add_nanos(row, "transport_us", detail.transport_ns);
+    add_nanos(row, "wake_us", detail.wake_ns);
+    add_nanos(row, "compute_us", detail.compute_ns);
+    add_nanos(row, "output_us", detail.output_ns);
+}
+
+// Empty trial_type where the event has no row.
+TableEvent row_of(const Event& event, Hertz rate) {
+    TableEvent row;
+    row.onset_s = seconds_at(event.sample, rate);
+    row.sample = static_cast<std::int64_t>(event.sample.value);
+    switch (event.kind) {
+    case EventKind::detection:
+        fill_detection(row, event.as<DetectionDetail>());
+        break;
+    case EventKind::trigger:
+        row.extra["number"] = fmt::format("{}", event.as<TriggerDetail>().number);
+        row.extra["scheduled"] = event.as<TriggerDetail>().from_schedule != 0 ? "1" : "0";
+        break;
+    case EventKind::withheld:
+        row.extra["rule"] = name_of(static_cast<Rule>(event.code));
+        break;
+    case EventKind::pulse:
+        fill_pulse(row, event.as<PulseDetail>());
+        break;
+    case EventKind::gap:
+        row.duration_s = static_cast<double>(event.as<GapDetail>().frames) / rate.value;
+        row.extra["cause"] = name_of(static_cast<GapCause>(event.code));
+        break;
+    default:
+        return row;
+    }
+    row.trial_type = name_of(event.kind);
+    return row;
+}
+
+TableEvent row_of(const Note& note, Hertz rate) {
+    TableEvent row;
+    row.onset_s = seconds_at(note.sample, rate);
+    row.sample = static_cast<std::int64_t>(note.sample.value);
+    row.trial_type = name_of(EventKind::note);
+    auto text = note.text;
+    for (auto& c : text) {
+        c = static_cast<unsigned char>(c) < 0x20 ? ' ' : c; // a tab would make a column
+    }
+    row.extra["text"] = text;
+    return row;
+}
+
+nlohmann::json dictionary() {
+    const auto column = [](const char* what, const char* units = nullptr) {
+        nlohmann::json entry{{"Description", what}};
+        if (units != nullptr) {
+            entry["Units"] = units;
+        }
+        return entry;
+    };
+    nlohmann::json json{
+        {"onset", column("Place in the stream, from the session's first sample", "s")},
+        {"duration", column("Pulse: order to rise until order to fall; gap: frames missing; else 0", "s")},
+        {"sample", column("Place in the stream, counted in frames from 0; missing frames are counted too")},
+        {"rule", column("The one rule that refused a withheld detection")},
+        {"cause", column("Why frames are missing")},
+        {"number", column("Count of the session's triggers, from 1")},
+        {"scheduled", column("1 where a control schedule asked for the trigger, else 0")},
+        {"site", column("Channel in the stream that decided, or `mean` for the mean over sites")},
+        {"votes", column("Ripple sites above their thresholds")},
+        {"envelope_uv", column("Envelope at the decision sample", "uV")},
+        {"floor_uv", column("Running mean of the envelope", "uV")},
+        {"threshold_uv", column("Threshold at the decision sample", "uV")},
+        {"packing_us", column("Decision sample to the last sample of its packet; n/a: not measured", "us")},
+        {"transport_us", column("Packet sent to packet arrived; n/a: not measured", "us")},
+        {"wake_us", column("Packet arrived to loop begins on it; n/a: not measured", "us")},
+        {"compute_us", column("Loop begins to decision made; n/a: not measured", "us")},
+        {"output_us", column("Decision made to write returned; n/a: not measured", "us")},
+        {"text", column("The operator's mark")}};
+    json["trial_type"] = column("What happened");
+    json["trial_type"]["Levels"] = {{"detection", "The detector crossed"},
+                                    {"trigger", "A detection, or a place in a control schedule, that was let through"},
+                                    {"withheld", "A detection that was refused"},
+                                    {"pulse", "The order was written to the output"},
+                                    {"gap", "Frames are missing from here"},
+                                    {"note", "The operator's mark"}};
+    return json;
+}
+
+} // namespace
+
+const std::vector<std::string>& session_table_columns() {
+    static const std::vector<std::string> columns{
+        "rule",         "cause",      "number",       "scheduled", "site",       "votes",     "envelope_uv", "floor_uv",
+        "threshold_uv", "packing_us", "transport_us", "wake_us",   "compute_us", "output_us", "text"};
+    return columns;
+}
+
+std::vector<TableEvent> session_table(std::span<const Event> events, Hertz rate) {
+    std::vector<TableEvent> rows;
+    constexpr auto none = static_cast<std::size_t>(-1);
+    auto pulse = none; // the row that waits for its end
+    for (const auto& event : events) {
+        if (event.kind == EventKind::pulse_end && pulse != none) {
+            rows[pulse].duration_s = static_cast<double>(event.as<PulseEndDetail>().width_ns) / 1e9;
+            pulse = none;
+            continue;
+        }
+        auto row = row_of(event, rate);
+        if (!row.trial_type.empty()) {
+            if (event.kind == EventKind::pulse) {
+                pulse = rows.size();
+            }
+            rows.push_back(std::move(row));
+        }
+    }
+    for (const auto& note : notes_in(events)) {
+        rows.push_back(row_of(note, rate));
+    }
+    return rows;
+}
+
+void write_session_tables(const SessionReader& session, const std::filesystem::path& folder) {
+    write_events_table(folder / "events.tsv", session_table(session.events(), session.rate()), session_table_columns());
+    write_whole_file(folder / "events.json", dictionary().dump(2) + "\n");
+}
+
+} // namespace millpond

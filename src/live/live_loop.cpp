@@ -1,0 +1,149 @@
+#include "live/live_loop.hpp"
+
+#include "base/clock.hpp"
+
+namespace millpond {
+namespace {
+
+// How long a quiet loop sleeps before it looks for commands and trouble again.
+constexpr Nanos patience{5'000'000};
+// Packet counts go to the journal this often even when nothing but `accepted` grows.
+constexpr std::uint64_t packets_between_counts = 1024;
+
+} // namespace
+
+void LiveLoop::run() noexcept {
+    engine_.start(SampleIndex{0}, settings_.start_armed);
+    for (bool going = true; going && !stopping_.load(std::memory_order_relaxed);) {
+        Arrival arrival;
+        const auto received = source_.receive(settings_.spin ? Nanos{0} : patience, arrival);
+        const Nanos began = monotonic_now();
+        take_commands();
+        look_for_trouble();
+        if (received == Received::frames) {
+            on_frames(arrival, began);
+        } else {
+            on_silence();
+        }
+        going = keep_on(received);
+    }
+    engine_.set_state(ArmState::not_armed, StateCause::session_end);
+    line_.fall_now();
+    journal_counts();
+    auto running = LoopEnd::running;
+    end_.compare_exchange_strong(running, LoopEnd::stopped, std::memory_order_release);
+}
+
+bool LiveLoop::keep_on(Received received) noexcept {
+    if (received == Received::ended || received == Received::failed) {
+        end_.store(received == Received::ended ? LoopEnd::ended : LoopEnd::failed, std::memory_order_release);
+        return false;
+    }
+    return true;
+}
+
+void LiveLoop::on_frames(const Arrival& arrival, Nanos began) noexcept {
+    arrival_ = &arrival;
+    began_ = began;
+    last_frames_ = began;
+    stale_ = false;
+    // Both stamps are UTC by this computer's clock; `began` was read a moment ago by the other clock.
+    const std::int64_t begun_utc = (realtime_now() - (monotonic_now() - began)).count();
+    wake_ns_ = arrival.arrived_ns != 0 ? begun_utc - arrival.arrived_ns : PulseDetail::not_measured;
+    transport_ns_ = arrival.arrived_ns != 0 && arrival.sent_ns != 0 ? arrival.arrived_ns - arrival.sent_ns
+                                                                    : PulseDetail::not_measured;
+    engine_.process(arrival.block, arrival.gap_cause);
+    const std::int64_t worked_ns = (monotonic_now() - began).count();
+    // Stored after the pulse: copying the block must not make it late.
+    journal_.store(arrival.block);
+    journal_.time_packet(transport_ns_, wake_ns_,
+                         wake_ns_ == PulseDetail::not_measured ? PulseDetail::not_measured : wake_ns_ + worked_ns);
+    if (++packets_ % packets_between_counts == 0 || arrival.counts_changed) {
+        journal_counts();
+    }
+    if (output_failed_) {
+        output_failed_ = false;
+        engine_.set_state(ArmState::faulted, StateCause::output_failed);
+    }
+}
+
+void LiveLoop::fire(const Event& trigger) noexcept {
+    const Nanos decided = monotonic_now();
+    if (!line_.rise(trigger.sample)) {
+        output_failed_ = true;
+    }
+    const Nanos written = monotonic_now();
+    const double frames_after = static_cast<double>(arrival_->block.first + arrival_->block.frames() - trigger.sample - 1);
+    PulseDetail detail{};
+    detail.packing_ns = static_cast<std::int64_t>(frames_after / source_.rate().value * 1e9);
+    detail.transport_ns = transport_ns_;
+    detail.wake_ns = wake_ns_;
+    detail.compute_ns = (decided - began_).count();
+    detail.output_ns = (written - decided).count();
+    journal_.take(Event::make(EventKind::pulse, 0, trigger.sample, detail));
+}
+
+void LiveLoop::take_commands() noexcept {
+    for (Command command; commands_.pop(command);) {
+        obey(command);
+    }
+}
+
+void LiveLoop::obey(const Command& command) noexcept {
+    switch (command.kind) {
+    case CommandKind::arm:
+        line_.mended();
+        engine_.set_state(ArmState::armed, StateCause::command);
+        break;
+    case CommandKind::disarm:
+        engine_.set_state(ArmState::not_armed, StateCause::command);
+        line_.fall_now();
+        break;
+    case CommandKind::mark:
+        engine_.note(command.words());
+        break;
+    case CommandKind::open_gate:
+    case CommandKind::close_gate:
+        engine_.set_gate(command.words(), command.kind == CommandKind::open_gate);
+        break;
+    }
+}
+
+void LiveLoop::look_for_trouble() noexcept {
+    if (engine_.arbiter().state() == ArmState::faulted) {
+        return;
+    }
+    if (journal_.failed()) {
+        engine_.set_state(ArmState::faulted, StateCause::journal_failed);
+        line_.fall_now();
+    } else if (line_.failed()) {
+        engine_.set_state(ArmState::faulted, StateCause::output_failed);
+        line_.fall_now();
+    }
+}
+
+void LiveLoop::on_silence() noexcept {
+    // A stream that has not begun is not stale: nothing is settled yet, and nothing can be let through.
+    if (stale_ || last_frames_ == Nanos{0} || monotonic_now() - last_frames_ < settings_.stale_after) {
+        return;
+    }
+    stale_ = true;
+    if (engine_.arbiter().state() == ArmState::armed) {
+        engine_.set_state(ArmState::not_armed, StateCause::stale_stream);
+        line_.fall_now();
+    }
+    journal_counts();
+}
+
+void LiveLoop::journal_counts() noexcept {
+    const auto& counts = source_.counts();
+    for (std::size_t cause = 0; cause < counts.size(); ++cause) {
+        if (counts[cause] != counted_[cause]) {
+            journal_.take(Event::make(EventKind::packet_count, static_cast<std::uint8_t>(cause), engine_.next_sample(),
+                                      CountDetail{counts[cause] - counted_[cause]}));
+        }
+    }
+    counted_ = counts;
+}
+
+} // namespace millpond
