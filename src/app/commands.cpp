@@ -11,7 +11,7 @@ void add_commands(CLI::App& program) {
     // add_live_command(program);
     // add_audit_command(program);
     // add_synth_command(program);
-    // add_feed_command(program);
+    add_feed_command(program);
     program.require_subcommand(1);
 }
 
