@@ -239,6 +239,10 @@ bool Detector::settled() const noexcept {
     return state_->start.done() && state_->floor_frames >= state_->settle_frames;
 }
 
+std::uint64_t Detector::filter_settle_frames() const noexcept {
+    return state_->filter_settle;
+}
+
 bool Detector::settling() const noexcept {
     return state_->position < state_->settling_until;
 }

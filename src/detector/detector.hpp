@@ -74,6 +74,8 @@ class Detector {
     [[nodiscard]] bool settled() const noexcept;
     /// The filters are still settling after a gap or the start.
     [[nodiscard]] bool settling() const noexcept;
+    /// Frames that filters and smoother need after a gap before a crossing counts.
+    [[nodiscard]] std::uint64_t filter_settle_frames() const noexcept;
     /// Group delay of the band-pass at the band's centre, in samples.
     [[nodiscard]] double filter_delay_samples() const noexcept;
     /// The same and the smoother's delay.

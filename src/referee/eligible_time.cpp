@@ -10,7 +10,11 @@ namespace {
 // Stretches in which something stood in the way; `open_since` is where one began that has not ended yet.
 class Obstacles {
   public:
-    void add(SampleIndex from, SampleIndex to) { found_.push_back({from, to}); }
+    void add(SampleIndex from, SampleIndex to) {
+        if (from < to) {
+            found_.push_back({from, to});
+        }
+    }
 
     [[nodiscard]] Intervals outside(SampleIndex from, SampleIndex to) {
         std::sort(found_.begin(), found_.end(), [](const Interval& a, const Interval& b) { return a.from < b.from; });
@@ -64,20 +68,19 @@ class Walk {
   public:
     Walk(const EligibleRules& rules, Hertz rate, SampleIndex from)
         : rules_(rules), rate_(rate), settled_(false, from), armed_(!rules.session, from), gates_(true, from) {
-        obstacles_.add(from, from + frames_in_ms(rules.settle_ms, rate));
+        obstacles_.add(from, from + rules.settle_frames);
     }
 
     void take(const Event& event) {
         switch (event.kind) {
         case EventKind::gap:
-            obstacles_.add(event.sample,
-                           event.sample + event.as<GapDetail>().frames + frames_in_ms(rules_.settle_ms, rate_));
+            obstacles_.add(event.sample, event.sample + event.as<GapDetail>().frames + rules_.settle_frames);
             break;
         case EventKind::floor:
             take_floor(event.as<FloorDetail>(), event.sample);
             break;
         case EventKind::trigger:
-            take_trigger(event.sample);
+            take_trigger(event.sample, event.as<TriggerDetail>().from_schedule != 0);
             break;
         case EventKind::state:
             armed_.set(!rules_.session || event.code == static_cast<std::uint8_t>(ArmState::armed), event.sample,
@@ -106,9 +109,12 @@ class Walk {
         settled_.set(all, at, obstacles_);
     }
 
-    void take_trigger(SampleIndex at) {
-        const double held_ms = std::max(rules_.blanking_ms, rules_.session ? rules_.lockout_ms : 0.0);
-        obstacles_.add(at + 1, at + std::max<std::uint64_t>(1, frames_in_ms(held_ms, rate_)));
+    void take_trigger(SampleIndex at, bool scheduled) {
+        const SampleIndex blanked = scheduled ? at : at + 1;
+        obstacles_.add(blanked, blanked + frames_in_ms(rules_.blanking_ms, rate_));
+        if (rules_.session) {
+            obstacles_.add(at + 1, at + std::max<std::uint64_t>(1, frames_in_ms(rules_.lockout_ms, rate_)));
+        }
     }
 
     void take_gate(const GateDetail& gate, SampleIndex at) {

@@ -28,14 +28,15 @@ struct Interval {
 using Intervals = std::vector<Interval>;
 
 struct EligibleRules {
-    double settle_ms = 0.0;   ///< filters settle this long after the start and after a gap
-    double blanking_ms = 0.0; ///< the detector holds its state this long after a trigger
-    bool session = false;     ///< the session's reading; else the detector's
-    double lockout_ms = 0.0;  ///< session only
+    std::uint64_t settle_frames = 0; ///< filters settle this long after the start and after a gap
+    double blanking_ms = 0.0;        ///< the detector holds its state this long after a trigger
+    bool session = false;            ///< the session's reading; else the detector's
+    double lockout_ms = 0.0;         ///< session only
 };
 
 /// Within [from, to). `events` in journal order. Where they hold no floor event nothing is eligible.
-/// The frame of a trigger is itself eligible; blanking and lock-out begin with the next one.
+/// The frame of a trigger is itself eligible; blanking and lock-out begin with the next one. Blanking after a place of
+/// a control schedule begins with that place.
 [[nodiscard]] Intervals eligible_time(std::span<const Event> events, const EligibleRules& rules, Hertz rate,
                                       SampleIndex from, SampleIndex to);
 
@@ -44,7 +45,9 @@ struct EligibleRules {
 [[nodiscard]] Intervals intersection(const Intervals& a, const Intervals& b);
 
 /// Decision samples of the detector: its crossings, without those that it refused itself (rules gap, unsettled, veto).
-/// Those that the arbiter refused stay: whether the detector was right does not depend on what was allowed.
+/// Those that the arbiter refused stay: whether the detector was right does not depend on what was allowed. While not
+/// armed or faulted the journal does not say whether the detector refused: eligible time leaves gaps and settling out,
+/// but a vetoed crossing stays in.
 [[nodiscard]] std::vector<SampleIndex> detections_to_score(std::span<const Event> events);
 
 } // namespace millpond

@@ -57,7 +57,7 @@ TEST(EligibleTime, IsNoneWhereNothingWasEverSettled) {
 
 TEST(EligibleTime, LeavesOutAGapAndTheSettlingOfTheFiltersAfterIt) {
     EligibleRules rules;
-    rules.settle_ms = 30.0;
+    rules.settle_frames = 30;
     EXPECT_EQ(eligible({floor_at(0, true), gap_at(5000, 100)}, rules),
               (Intervals{from_to(30, 5000), from_to(5130, 60000)}));
 }
@@ -66,7 +66,7 @@ TEST(EligibleTime, LeavesOutBlankingButNotTheFrameOfTheTriggerItself) {
     EligibleRules rules;
     rules.blanking_ms = 25.0;
     EXPECT_EQ(eligible({floor_at(0, true), trigger_at(5000)}, rules),
-              (Intervals{from_to(0, 5001), from_to(5025, 60000)}));
+              (Intervals{from_to(0, 5001), from_to(5026, 60000)}));
 }
 
 TEST(EligibleTime, OfASessionLeavesOutLockOut) {

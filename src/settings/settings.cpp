@@ -1,0 +1,78 @@
+#include "settings/settings.hpp"
+
+#include "base/refusal.hpp"
+#include "settings/reference_writer.hpp"
+#include "settings/yaml_reader.hpp"
+#include "settings/yaml_writer.hpp"
+
+#include <algorithm>
+
+namespace millpond {
+namespace {
+
+// Files that a settings file names lie where it says, seen from the settings file, whatever folder the program runs in.
+void make_absolute(std::string& path, const std::filesystem::path& folder) {
+    if (!path.empty()) {
+        path = std::filesystem::weakly_canonical(folder / path).string();
+    }
+}
+
+void check_gates(const std::vector<GateSettings>& gates, const std::string& file) {
+    for (std::size_t i = 0; i < gates.size(); ++i) {
+        const auto where = file + ": arbiter.gates[" + std::to_string(i) + "].name";
+        if (gates[i].name.empty() || gates[i].name.size() > 31) {
+            throw Refusal(where, "'" + gates[i].name + "'", "1 to 31 characters");
+        }
+        if (std::count_if(gates.begin(), gates.end(), [&](const auto& gate) { return gate.name == gates[i].name; }) > 1) {
+            throw Refusal(where, "'" + gates[i].name + "' twice", "each name once");
+        }
+    }
+}
+
+void check_together(const Settings& settings, const std::string& file) {
+    if (settings.detector.threshold.rearm_deviations > settings.detector.threshold.deviations) {
+        throw Refusal(file + ": detector.threshold.rearm_deviations",
+                      shortest(settings.detector.threshold.rearm_deviations),
+                      "at most detector.threshold.deviations, " + shortest(settings.detector.threshold.deviations));
+    }
+    if (settings.detector.filter.low_hz >= settings.detector.filter.high_hz) {
+        throw Refusal(file + ": detector.filter.low_hz", shortest(settings.detector.filter.low_hz),
+                      "less than detector.filter.high_hz, " + shortest(settings.detector.filter.high_hz));
+    }
+    const double train_ms = (settings.output.train_pulses - 1) * settings.output.train_period_ms + settings.output.width_ms;
+    // A trigger while the line is still busy could not be played; the lock-out makes sure that there is none.
+    if (settings.arbiter.lockout_ms <= train_ms) {
+        throw Refusal(file + ": arbiter.lockout_ms", shortest(settings.arbiter.lockout_ms),
+                      "more than a whole pulse or train lasts, " + shortest(train_ms));
+    }
+    if (settings.arbiter.condition == Condition::schedule && settings.arbiter.schedule_file.empty()) {
+        throw Refusal(file + ": arbiter.schedule_file", "none", "a control schedule (condition: schedule)");
+    }
+    check_gates(settings.arbiter.gates, file);
+}
+
+} // namespace
+
+Settings load_settings(const std::filesystem::path& file) {
+    auto settings = read_yaml_file<Settings>(file);
+    const auto folder = std::filesystem::absolute(file).parent_path();
+    for (auto* path : {&settings.stream.sdp_file, &settings.arbiter.schedule_file,
+                       &settings.detector.floor.warm_start_session, &settings.session.folder}) {
+        make_absolute(*path, folder);
+    }
+    check_together(settings, file.string());
+    return settings;
+}
+
+std::string settings_to_yaml(const Settings& settings) {
+    return to_yaml(settings);
+}
+
+std::string settings_reference() {
+    ReferenceWriter reference;
+    Settings defaults;
+    describe(reference, defaults);
+    return "| key | allowed | default | meaning |\n| --- | --- | --- | --- |\n" + reference.table();
+}
+
+} // namespace millpond

@@ -1,0 +1,96 @@
+#include "settings/settings.hpp"
+
+#include "base/refusal.hpp"
+
+#include <gtest/gtest.h>
+
+#include <fstream>
+
+#include <unistd.h>
+
+namespace millpond {
+namespace {
+
+class SettingsFile : public testing::Test {
+  protected:
+    std::filesystem::path folder =
+        std::filesystem::temp_directory_path() / ("millpond_settings_" + std::to_string(getpid()));
+    std::filesystem::path file = folder / "rig.yaml";
+
+    void SetUp() override { std::filesystem::create_directories(folder); }
+    void TearDown() override { std::filesystem::remove_all(folder); }
+
+    Settings load(const std::string& text) {
+        std::ofstream(file) << text;
+        return load_settings(file);
+    }
+    /// The one line that says why `text` was refused; empty where it was not.
+    std::string refusal(const std::string& text) {
+        try {
+            load(text);
+        } catch (const Refusal& refused) {
+            return refused.what();
+        }
+        return {};
+    }
+};
+
+TEST_F(SettingsFile, EmptyGivesTheDefaults) {
+    EXPECT_EQ(settings_to_yaml(load("{}")).substr(0, 7), "stream:");
+    EXPECT_EQ(load("").detector, DetectorSettings{});
+}
+
+TEST_F(SettingsFile, WrittenOutReadsBackToTheSameValues) {
+    auto settings = load("channels: [{name: a}, {name: b, role: reference}]\n"
+                         "detector: {filter: {family: elliptic, low_hz: 130.123456789}}\n"
+                         "arbiter: {gates: [{name: immobile, starts_open: false}]}\n");
+    const auto text = settings_to_yaml(settings);
+    const auto again = load(text);
+    EXPECT_EQ(settings_to_yaml(again), text);
+    EXPECT_EQ(again.detector, settings.detector);
+    EXPECT_EQ(again.channels, settings.channels);
+    EXPECT_EQ(again.arbiter, settings.arbiter);
+}
+
+TEST_F(SettingsFile, UnknownKeyIsRefusedWithFileLineAndNearestKnownKey) {
+    const auto line = refusal("detector:\n  threshold:\n    deviatons: 4\n");
+    EXPECT_NE(line.find("rig.yaml:3: detector.threshold.deviatons"), std::string::npos) << line;
+    EXPECT_NE(line.find("did you mean 'deviations'?"), std::string::npos) << line;
+}
+
+TEST_F(SettingsFile, ValuesOutOfRangeOfTheWrongKindOrTwiceAreRefused) {
+    for (const auto* text : {"detector: {filter: {order: 99}}", "detector: {filter: {order: 2.5}}",
+                             "detector: {filter: {low_hz: many}}", "detector: {filter: {low_hz: .nan}}",
+                             "detector: {filter: {family: bessel}}", "detector: 3", "[1, 2]", "arbiter: {start_armed: 7}",
+                             "channels: {name: a}", "detector: {blanking_ms: 1, blanking_ms: 2}", "detector: {filter: [}"}) {
+        const auto line = refusal(text);
+        EXPECT_NE(line.find("; allowed: "), std::string::npos) << text << " -> " << line;
+        EXPECT_NE(line.find("rig.yaml:1"), std::string::npos) << line;
+        EXPECT_EQ(line.find('\n'), std::string::npos) << line;
+    }
+}
+
+TEST_F(SettingsFile, RoomsThatContradictEachOtherAreRefused) {
+    EXPECT_NE(refusal("detector: {threshold: {deviations: 3, rearm_deviations: 4}}").find("rearm_deviations"), std::string::npos);
+    EXPECT_NE(refusal("detector: {filter: {low_hz: 260}}").find("low_hz"), std::string::npos);
+    EXPECT_NE(refusal("{arbiter: {lockout_ms: 20}, output: {width_ms: 30}}").find("lockout_ms"), std::string::npos);
+    EXPECT_NE(refusal("arbiter: {condition: schedule}").find("schedule_file"), std::string::npos);
+    EXPECT_NE(refusal("arbiter: {gates: [{name: a}, {name: a}]}").find("gates[0]"), std::string::npos);
+}
+
+TEST_F(SettingsFile, MissingFileIsRefused) {
+    EXPECT_THROW((void)load_settings(folder / "none.yaml"), Refusal);
+}
+
+TEST_F(SettingsFile, PathsAreSeenFromTheSettingsFile) {
+    EXPECT_EQ(load("session: {folder: here}").session.folder, std::filesystem::weakly_canonical(folder / "here").string());
+}
+
+TEST(SettingsReference, NamesEveryKeyWithItsDefault) {
+    const auto reference = settings_reference();
+    EXPECT_NE(reference.find("| `detector.threshold.deviations` | 0.1 to 100 | 4 |"), std::string::npos) << reference;
+    EXPECT_NE(reference.find("| `arbiter.gates[].name` |"), std::string::npos);
+}
+
+} // namespace
+} // namespace millpond

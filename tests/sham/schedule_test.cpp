@@ -1,0 +1,196 @@
+#include "base/refusal.hpp"
+#include "sham/random.hpp"
+#include "sham/schedule.hpp"
+#include "support/scipy.hpp"
+
+#include <gtest/gtest.h>
+
+#include <fstream>
+
+namespace millpond {
+namespace {
+
+using test::ask_scipy;
+using test::TemporaryFolder;
+
+constexpr Hertz rate{1000.0}; // a frame is 1 ms
+
+Schedule at(std::initializer_list<std::uint64_t> frames) {
+    Schedule places;
+    for (const auto frame : frames) {
+        places.push_back(SampleIndex{frame});
+    }
+    return places;
+}
+
+std::vector<double> intervals_s(const Schedule& places, Hertz sampling = rate) {
+    std::vector<double> intervals;
+    for (std::size_t i = 1; i < places.size(); ++i) {
+        intervals.push_back(static_cast<double>(places[i] - places[i - 1]) / sampling.value);
+    }
+    return intervals;
+}
+
+TEST(SplitMix64, GivesTheWidelyPrintedNumbersOfSeed1234567) {
+    SplitMix64 random(1234567); // from memory: the numbers that published ports of the algorithm check themselves by
+    EXPECT_EQ(random.next(), 6457827717110365317U);
+    EXPECT_EQ(random.next(), 3203168211198807973U);
+    EXPECT_EQ(random.next(), 9817491932198370423U);
+}
+
+TEST(DelayedSchedule, PutsEachTriggerLaterByAFixedDelay) {
+    DelayedPlan plan;
+    plan.least_ms = plan.most_ms = 200.0;
+    const auto made = delayed_schedule(at({1000, 2000, 5000}), plan, rate);
+    EXPECT_EQ(made.places, at({1200, 2200, 5200}));
+    EXPECT_EQ(made.put_off, 0U);
+}
+
+TEST(DelayedSchedule, DrawsDelaysUniformlyBetweenItsEnds) {
+    MILLPOND_NEEDS_SCIPY();
+    Schedule triggers;
+    for (std::uint64_t i = 1; i <= 3000; ++i) {
+        triggers.push_back(SampleIndex{i * 60000});
+    }
+    const Hertz fine{30000.0};
+    const auto made = delayed_schedule(triggers, {}, fine);
+    std::vector<double> delays;
+    for (std::size_t i = 0; i < triggers.size(); ++i) {
+        delays.push_back(static_cast<double>(made.places[i] - triggers[i]) / fine.value);
+    }
+    const auto p = ask_scipy("tell(stats.kstest(x, stats.uniform(0.150, 0.100).cdf).pvalue)", delays);
+    ASSERT_EQ(p.size(), 1U);
+    EXPECT_GT(p[0], 0.01);
+}
+
+TEST(DelayedSchedule, KeepsTheMinimumIntervalByPuttingOffSoThatTheCountStaysMatched) {
+    DelayedPlan plan;
+    plan.least_ms = 0.0;
+    plan.most_ms = 0.0;
+    plan.max_pulses_per_second = 100;
+    const auto made = delayed_schedule(at({1000, 1100, 3000}), plan, rate);
+    EXPECT_EQ(made.places, at({1000, 1150, 3000}));
+    EXPECT_EQ(made.put_off, 1U);
+    EXPECT_DOUBLE_EQ(made.longest_put_off_ms, 50.0);
+}
+
+TEST(DelayedSchedule, KeepsTheMostPulsesASecondByPuttingOff) {
+    DelayedPlan plan;
+    plan.least_ms = plan.most_ms = 0.0;
+    plan.max_pulses_per_second = 2;
+    EXPECT_EQ(delayed_schedule(at({1000, 1200, 1400}), plan, rate).places, at({1000, 1200, 2000}));
+}
+
+TEST(RateMatchedSchedule, IntervalsFollowTheShiftedExponentialLaw) {
+    MILLPOND_NEEDS_SCIPY();
+    RateMatchedPlan plan;
+    plan.rate_per_s = 0.6;
+    plan.duration_s = 7200.0;
+    plan.max_pulses_per_second = 1000;
+    const Hertz fine{30000.0};
+    const auto made = rate_matched_schedule(plan, fine);
+    EXPECT_EQ(made.put_off, 0U);
+    // Mean interval 1/0.6 s, of which 0.150 s is dead time.
+    const auto p = ask_scipy("tell(stats.kstest(x, stats.expon(0.150, 1/0.6 - 0.150).cdf).pvalue)",
+                             intervals_s(made.places, fine));
+    ASSERT_EQ(p.size(), 1U);
+    EXPECT_GT(p[0], 0.01);
+    EXPECT_NEAR(static_cast<double>(made.places.size()) / 7200.0, 0.6, 0.03);
+}
+
+TEST(RateMatchedSchedule, NeverBreaksTheLimitsItWasGiven) {
+    RateMatchedPlan plan;
+    plan.rate_per_s = 3.0;
+    plan.duration_s = 600.0;
+    const auto made = rate_matched_schedule(plan, rate);
+    EXPECT_GT(made.put_off, 0U);
+    EXPECT_NO_THROW(check_schedule(made.places, {}, rate, "made"));
+    EXPECT_LT(made.places.back().value, 600000U + 1000U);
+}
+
+TEST(RateMatchedSchedule, KeepsAwayFromRipplesAndKeepsItsRate) {
+    RateMatchedPlan plan;
+    plan.rate_per_s = 0.5;
+    plan.duration_s = 3600.0;
+    plan.keep_away_ms = 100.0;
+    plan.max_pulses_per_second = 1;
+    for (std::uint64_t i = 0; i < 1800; ++i) {
+        plan.keep_away_from.push_back(
+            {SampleIndex{i * 2000}, SampleIndex{i * 2000 + 40}, SampleIndex{i * 2000 + 80}, 0.0});
+    }
+    const auto made = rate_matched_schedule(plan, rate);
+    for (const auto place : made.places) {
+        const auto within = place.value % 2000;
+        EXPECT_TRUE(within > 180 && within <= 1900) << place.value;
+    }
+    EXPECT_GT(made.put_off, 0U); // so that places put off are among those looked at
+    EXPECT_NEAR(static_cast<double>(made.places.size()) / 3600.0, 0.5, 0.06);
+}
+
+TEST(RateMatchedSchedule, IsTheSameForTheSameSeedAndAnotherForAnother) {
+    RateMatchedPlan plan;
+    const auto first = rate_matched_schedule(plan, rate).places;
+    EXPECT_EQ(rate_matched_schedule(plan, rate).places, first);
+    plan.seed = 2;
+    EXPECT_NE(rate_matched_schedule(plan, rate).places, first);
+}
+
+TEST(RateMatchedSchedule, RefusesARateThatTheMinimumIntervalCannotGive) {
+    RateMatchedPlan plan;
+    plan.rate_per_s = 7.0;
+    EXPECT_THROW(static_cast<void>(rate_matched_schedule(plan, rate)), Refusal);
+}
+
+TEST(TriggerRate, IsTakenBetweenTheFirstAndTheLast) {
+    EXPECT_DOUBLE_EQ(trigger_rate_per_s(at({1000, 2000, 5000}), rate, "x"), 0.5);
+    EXPECT_THROW(static_cast<void>(trigger_rate_per_s(at({1000}), rate, "x")), Refusal);
+}
+
+TEST(ScheduleCheck, RefusesAPlaceWithinTheLockOutOrTooManyWithinASecond) {
+    EXPECT_NO_THROW(check_schedule(at({0, 150, 300, 450, 1000}), {}, rate, "x"));
+    EXPECT_THROW(check_schedule(at({0, 149}), {}, rate, "x"), Refusal);
+    EXPECT_THROW(check_schedule(at({0, 150, 300, 450, 999}), {}, rate, "x"), Refusal);
+}
+
+TEST(ScheduleFile, ReadsBackWhatWasWritten) {
+    const TemporaryFolder folder;
+    const auto file = folder / "schedule.tsv";
+    const Hertz odd{30000.0};
+    const auto places = at({0, 4501, 1234567, 98765432});
+    write_schedule(file, places, odd);
+    EXPECT_EQ(read_schedule(file, odd), places);
+}
+
+TEST(ScheduleFile, IsATableWithOnsetAndDurationFirstAsInBids) {
+    const TemporaryFolder folder;
+    write_schedule(folder / "schedule.tsv", at({1500}), rate);
+    std::ifstream file(folder / "schedule.tsv");
+    std::string header, row;
+    std::getline(file, header);
+    std::getline(file, row);
+    EXPECT_EQ(header, "onset\tduration\ttrial_type\tsample");
+    EXPECT_EQ(row, "1.5\t0\tscheduled\t1500");
+}
+
+void expect_refused(const std::string& rows, const std::string& said) {
+    const TemporaryFolder folder;
+    std::ofstream(folder / "schedule.tsv") << rows;
+    try {
+        static_cast<void>(read_schedule(folder / "schedule.tsv", rate));
+        ADD_FAILURE() << "taken: " << rows;
+    } catch (const Refusal& refusal) {
+        EXPECT_NE(std::string(refusal.what()).find(said), std::string::npos) << refusal.what();
+    }
+}
+
+TEST(ScheduleFile, RefusesWhatIsNoSchedule) {
+    expect_refused("onset\tduration\ttrial_type\n1\t0\tripple\n", "trial_type");
+    expect_refused("onset\tduration\ttrial_type\n-1\t0\tscheduled\n", "0 or more");
+    expect_refused("onset\tduration\ttrial_type\n2\t0\tscheduled\n1\t0\tscheduled\n", "ascending");
+    expect_refused("onset\tduration\ttrial_type\n2\t0\tscheduled\n2\t0\tscheduled\n", "ascending");
+    expect_refused("onset\tduration\ttrial_type\nnan\t0\tscheduled\n", "onset");
+    expect_refused("onset\tduration\ttrial_type\tsample\n2\t0\tscheduled\t2500\n", "made for this stream");
+}
+
+} // namespace
+} // namespace millpond
