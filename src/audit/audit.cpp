@@ -68,7 +68,10 @@ Score score_as(const AuditInput& input, const SessionReader& session, const Audi
 
 void add_score(const AuditInput& input, const SessionReader& session, AuditResult& result) {
     auto samples = session.open_samples();
-    if (input.labels.empty() && (!samples || samples->frames() == 0)) {
+    if (samples && (samples->frames() == 0 || samples->channels() != session.provenance().about.channels.size())) {
+        samples.reset(); // the re-run says so
+    }
+    if (input.labels.empty() && !samples) {
         result.why_no_score = "neither labels (--labels) nor stored samples for the referee";
         return;
     }

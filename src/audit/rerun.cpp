@@ -118,8 +118,7 @@ class Feed {
         case EventKind::gate: {
             frames_upto(event.sample);
             const auto gate = event.as<GateDetail>();
-            const auto end = std::find(gate.name.begin(), gate.name.end(), '\0');
-            engine_.set_gate({gate.name.data(), static_cast<std::size_t>(end - gate.name.begin())}, gate.open != 0);
+            engine_.set_gate(gate_name(gate), gate.open != 0);
             break;
         }
         case EventKind::gap:
