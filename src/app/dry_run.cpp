@@ -1,0 +1,139 @@
+#include "app/dry_run.hpp"
+
+#include "app/progress.hpp"
+#include "app/truth.hpp"
+#include "base/clock.hpp"
+#include "base/refusal.hpp"
+#include "journal/session_reader.hpp"
+#include "recording/recording_reader.hpp"
+#include "settings/yaml_reader.hpp"
+#include "sham/schedule.hpp"
+
+#include <fmt/format.h>
+
+#include <cstdio>
+
+namespace millpond {
+namespace {
+
+std::vector<SampleIndex> schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
+    return arbiter.condition == Condition::schedule ? read_schedule(arbiter.schedule_file, rate)
+                                                    : std::vector<SampleIndex>{};
+}
+
+void notice_rate(const Settings& settings, Hertz rate) {
+    if (settings.stream.rate_hz > 0.0 && settings.stream.rate_hz != rate.value) {
+        fmt::print(stderr, "note: the recording has {} Hz, the settings' stream {} Hz; the recording's rate is used\n",
+                   rate.value, settings.stream.rate_hz);
+    }
+}
+
+// One pass feeds the engine and, where it is the truth, the referee. Returns the time that the engine took.
+Nanos run_over(RecordingReader& reader, std::size_t packet_frames, OfflineEngine& engine, Referee* referee) {
+    const auto& info = reader.info();
+    Progress progress("dry run", static_cast<double>(info.frames));
+    std::vector<float> buffer(std::max<std::size_t>(packet_frames, 4096) / packet_frames * packet_frames *
+                              info.channels.size());
+    SampleIndex at{0};
+    Nanos engine_time{0};
+    while (const std::size_t frames = reader.read(buffer)) {
+        const FrameBlock block{at, info.channels.size(), std::span(buffer).first(frames * info.channels.size())};
+        const auto before = monotonic_now();
+        for (std::size_t from = 0; from < frames; from += packet_frames) {
+            engine.process(block.part(from, std::min(packet_frames, frames - from)));
+        }
+        engine_time += monotonic_now() - before;
+        if (referee != nullptr) {
+            referee->add(block);
+        }
+        at = at + frames;
+        progress.at(static_cast<double>(at.value));
+    }
+    return engine_time;
+}
+
+void count_events(DryRun& run) {
+    for (const auto& event : run.events) {
+        if (event.kind == EventKind::withheld) {
+            ++run.withheld[event.code];
+        } else if (event.kind == EventKind::gap) {
+            ++run.gaps;
+            run.gap_frames += event.as<GapDetail>().frames;
+        }
+    }
+}
+
+} // namespace
+
+Channels channels_for(const Settings& settings, const Channels& recorded, const std::string& where) {
+    if (settings.channels.empty()) {
+        return recorded;
+    }
+    if (settings.channels.size() != recorded.size()) {
+        throw Refusal(where + ": channels", fmt::format("{} channels", settings.channels.size()),
+                      fmt::format("as many as the recording has, {}, or none", recorded.size()));
+    }
+    return settings.channels;
+}
+
+std::vector<FloorState> warm_start_floors(const DetectorSettings& detector) {
+    std::vector<FloorState> floors;
+    if (!detector.floor.warm_start_session.empty()) {
+        for (const auto& floor : last_floors(SessionReader(detector.floor.warm_start_session).events())) {
+            floors.push_back({floor.mean, floor.deviation, floor.frames});
+        }
+    }
+    return floors;
+}
+
+std::string settings_hash(const Settings& settings) {
+    std::uint64_t hash = 0xCBF29CE484222325U; // Fowler, Noll and Vo's offset basis and, below, prime
+    for (const char c : settings_to_yaml(settings)) {
+        hash = (hash ^ static_cast<unsigned char>(c)) * 0x100000001B3U;
+    }
+    return fmt::format("{:016x}", hash);
+}
+
+DryRun dry_run(const DryRunPlan& plan) {
+    const auto settings = load_settings(plan.settings);
+    const auto reader = open_recording(plan.recording, plan.sidecar);
+    DryRun run;
+    run.recording = plan.recording.filename().string();
+    run.format = reader->info().format;
+    run.rate = reader->info().rate;
+    run.frames = reader->info().frames;
+    run.channels = channels_for(settings, reader->info().channels, plan.settings.string());
+    run.settings_hash = settings_hash(settings);
+    run.armed = plan.armed;
+    run.pulse_width_ms = settings.output.width_ms;
+    notice_rate(settings, run.rate);
+
+    std::optional<Referee> referee;
+    if (plan.labels.empty()) {
+        run.referee_settings = plan.referee.empty() ? RefereeSettings{} : read_yaml_file<RefereeSettings>(plan.referee);
+        referee = Referee::make(*run.referee_settings, run.channels, run.rate,
+                                plan.referee.empty() ? "referee" : plan.referee.string());
+        run.truth = "referee";
+    } else {
+        run.findings.ripples = ripples_from_table(plan.labels, run.rate, run.frames);
+        run.truth = plan.labels.filename().string();
+    }
+    auto engine = OfflineEngine::make({settings.detector, settings.arbiter}, run.channels, run.rate,
+                                      schedule_for(settings.arbiter, run.rate), warm_start_floors(settings.detector));
+    engine.start(plan.armed);
+    const auto took = run_over(*reader, plan.packet_frames, engine, referee ? &*referee : nullptr);
+    run.real_pace = seconds_at(SampleIndex{run.frames}, run.rate) / std::chrono::duration<double>(took).count();
+    run.events = engine.events();
+    run.orders = engine.orders();
+    run.filter_delay_ms = engine.detector().filter_delay_samples() * 1000.0 / run.rate.value;
+    run.delay_ms = engine.detector().delay_samples() * 1000.0 / run.rate.value;
+    count_events(run);
+    if (referee) {
+        run.findings = referee->finish();
+    }
+    run.score = score(run.findings.ripples, detections_to_score(run.events), engine.eligible(),
+                      referee ? referee_early_ms : 0.0, run.rate);
+    return run;
+}
+
+} // namespace millpond

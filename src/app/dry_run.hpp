@@ -1,0 +1,60 @@
+// A dry run: the engine over a recording, as fast as it goes, scored against labels or the referee. Thread: cold.
+#pragma once
+
+#include "base/channels.hpp"
+#include "recording/events_table.hpp"
+#include "referee/referee.hpp"
+#include "referee/scoring.hpp"
+#include "settings/settings.hpp"
+#include "tuning/offline_engine.hpp"
+
+#include <array>
+#include <filesystem>
+#include <optional>
+#include <string>
+#include <vector>
+
+namespace millpond {
+
+struct DryRunPlan {
+    std::filesystem::path recording, sidecar, settings, labels, referee;
+    bool armed = true;
+    std::size_t packet_frames = 4096; ///< frames given to the engine at a time; decisions do not depend on it
+};
+
+struct DryRun {
+    std::string recording; ///< file name
+    std::string format;
+    Hertz rate;
+    Channels channels;
+    std::uint64_t frames = 0;
+    std::string settings_hash;
+    double filter_delay_ms = 0.0; ///< group delay of the band-pass at the band's centre
+    double delay_ms = 0.0;        ///< the same and the smoother's delay
+    double real_pace = 0.0;       ///< recording's length over the time the engine took
+    bool armed = true;
+    double pulse_width_ms = 0.0;
+    std::vector<Event> events, orders;
+    std::array<std::uint64_t, rule_count> withheld{};
+    std::uint64_t gaps = 0, gap_frames = 0;
+
+    std::string truth; ///< `referee`, or the name of the labels' file
+    std::optional<RefereeSettings> referee_settings;
+    RefereeFindings findings; ///< from labels: ripples alone
+    Score score;
+};
+
+/// Refuses settings that do not fit the recording, and labels of another one. Notices go to standard error.
+[[nodiscard]] DryRun dry_run(const DryRunPlan& plan);
+
+/// Channels that a run over a recording uses: the settings' where they list some, else the recording's own.
+/// Refuses a list of another length.
+[[nodiscard]] Channels channels_for(const Settings& settings, const Channels& recorded, const std::string& where);
+
+/// Floors that the settings want to start from; empty where they name no session.
+[[nodiscard]] std::vector<FloorState> warm_start_floors(const DetectorSettings& detector);
+
+/// 16 hexadecimal digits: FNV-1a, 64 bits, of the settings as settings_to_yaml writes them.
+[[nodiscard]] std::string settings_hash(const Settings& settings);
+
+} // namespace millpond
