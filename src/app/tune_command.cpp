@@ -156,7 +156,7 @@ void run_command(Options& options) {
 
 void add_grid(CLI::App& command, TuneGrid& grid) {
     const auto list = [&](const char* name, auto& values, const char* what) {
-        command.add_option(name, values, what)->delimiter(',')->capture_default_str();
+        command.add_option(name, values, what)->delimiter(',')->allow_extra_args(false)->capture_default_str();
     };
     list("--threshold-deviations", grid.threshold_deviations, "thresholds to try, separated by commas");
     list("--low-hz", grid.low_hz, "lower edges of the band to try");
@@ -176,7 +176,7 @@ void add_tune_command(CLI::App& program) {
         "the 2nd, 4th, 6th ... are held out. Settings at N or fewer on the training parts are ranked by hit rate\n"
         "there (then by median onset latency, then false per minute); the first of them that is at N or fewer on the\n"
         "held-out parts too is picked. Engine and scoring are those of dryrun, armed and from an unsettled floor;\n"
-        "the first settings-given seconds only settle the floor. Recordings are held in memory, 4 bytes a sample.");
+        "the time that the floor needs to settle is not scored. Recordings are held in memory, 4 bytes a sample.");
     command.add_option("RECORDING", options->recordings, "one or more recordings of the same rate")->required();
     command.add_option("--out", options->out, "settings file to write")->required();
     command.add_option("--settings", options->base, "settings to start from; without it the defaults");
@@ -184,7 +184,7 @@ void add_tune_command(CLI::App& program) {
         command.add_option("--labels", options->labels,
                            "events tables with the ripples, one for each recording in their order, separated\n"
                            "by commas; without them the referee");
-    labels->delimiter(',');
+    labels->delimiter(',')->allow_extra_args(false);
     command.add_option("--referee", options->referee, "YAML file with the referee's settings; else its defaults")
         ->excludes(labels);
     command.add_option("--max-false-per-minute", options->max_false_per_minute, "N of the rule above")
