@@ -1,5 +1,6 @@
 // The program: reads the command line, runs one command, turns a refusal into one line and exit status 2.
 #include "app/commands.hpp"
+#include "app/wiring.hpp"
 #include "base/refusal.hpp"
 
 #include <CLI/CLI.hpp>
@@ -7,19 +8,17 @@
 #include <cstdio>
 #include <exception>
 
-#ifndef MILLPOND_VERSION
-#error "MILLPOND_VERSION comes from CMake"
-#endif
-
 int main(int argc, char** argv) {
     CLI::App program{"millpond: finds hippocampal ripples in a running LFP stream and orders pulses to stop them.\n"
                      "A research tool, not a medical device: follow the approved protocol, local rules and the\n"
                      "licensed veterinarian's advice."};
     program.name("millpond");
-    program.set_version_flag("--version", std::string(MILLPOND_VERSION));
+    program.set_version_flag("--version", millpond::program_name());
     try {
         millpond::add_commands(program);
         program.parse(argc, argv);
+    } catch (const CLI::RuntimeError& outcome) {
+        return outcome.get_exit_code(); // a command ran and has said what it found
     } catch (const CLI::ParseError& trouble) {
         if (trouble.get_exit_code() == static_cast<int>(CLI::ExitCodes::Success)) {
             return program.exit(trouble); // help or version

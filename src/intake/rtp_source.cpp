@@ -19,7 +19,7 @@ namespace {
 namespace asio = boost::asio;
 
 constexpr std::size_t reorder_buffers = 64;
-constexpr Nanos blocking_read = std::chrono::milliseconds{10};
+constexpr Nanos shortest_blocking_read = std::chrono::milliseconds{2};
 constexpr Nanos oldest_stamp = std::chrono::seconds{60}; // an older one tells that the clock was set
 
 OrderSettings order_settings(const StreamSettings& settings) {
@@ -83,8 +83,6 @@ void RtpSource::open(const StreamSettings& settings) {
         setsockopt(handle_, SOL_SOCKET, SO_RXQ_OVFL, &on, sizeof on) != 0) {
         throw Refusal("stream", "a kernel without receive time stamps", "Linux with SO_TIMESTAMPNS and SO_RXQ_OVFL");
     }
-    const timeval read_time{0, std::chrono::duration_cast<std::chrono::microseconds>(blocking_read).count()};
-    setsockopt(handle_, SOL_SOCKET, SO_RCVTIMEO, &read_time, sizeof read_time);
     if (socket_.bind(here, trouble); trouble) {
         throw Refusal("stream.listen_address, stream.port",
                       settings.listen_address + ":" + std::to_string(settings.port) + " (" + trouble.message() + ")",
@@ -111,7 +109,9 @@ Received RtpSource::receive(Nanos timeout, Arrival& arrival) noexcept {
             arrival.counts_changed = tell_troubles();
             return Received::nothing;
         }
-        switch (take_packet(std::max(Nanos{0}, deadline - now))) {
+        const bool whole_wait = first_try && deadline == until;
+        switch (whole_wait && timeout >= shortest_blocking_read ? block_for_packet(timeout)
+                                                                : poll_for_packet(deadline - now)) {
         case Took::failed:
             return Received::failed;
         case Took::interrupted:
@@ -124,12 +124,21 @@ Received RtpSource::receive(Nanos timeout, Arrival& arrival) noexcept {
     }
 }
 
-// A blocking read is one system call a packet, where asking, polling and reading are three; but it keeps time only to
-// the kernel's tick, so the last part of a wait, and every short one, is polled.
-RtpSource::Took RtpSource::take_packet(Nanos wait) noexcept {
-    if (wait >= 2 * blocking_read) {
-        return read_packet(0);
+// One system call a packet where asking, polling and reading are three; but the kernel keeps this time to its tick
+// only, so that short waits and the rest of a wait are polled.
+RtpSource::Took RtpSource::block_for_packet(Nanos wait) noexcept {
+    if (wait != read_time_) {
+        const auto micros = std::chrono::duration_cast<std::chrono::microseconds>(wait).count();
+        const timeval time{micros / 1'000'000, micros % 1'000'000};
+        if (setsockopt(handle_, SOL_SOCKET, SO_RCVTIMEO, &time, sizeof time) != 0) {
+            return poll_for_packet(wait);
+        }
+        read_time_ = wait;
     }
+    return read_packet(0);
+}
+
+RtpSource::Took RtpSource::poll_for_packet(Nanos wait) noexcept {
     const Took took = read_packet(MSG_DONTWAIT);
     if (took != Took::nothing || wait <= Nanos{0}) {
         return took;

@@ -20,8 +20,8 @@ class RtpSource final : public SampleSource {
     /// Listens at once. `settings` is what `resolved` returned.
     explicit RtpSource(const StreamSettings& settings);
 
-    /// Packets that cannot be used are counted and waited past, within the same `timeout`. A signal ends the wait
-    /// early.
+    /// Packets that cannot be used are counted and waited past, within the same `timeout`. A signal ends the wait early;
+    /// a wait of 2 ms or more may end late by the kernel's tick (1 to 10 ms) where nothing comes.
     Received receive(Nanos timeout, Arrival& arrival) noexcept override;
 
     [[nodiscard]] const PacketCounts& counts() const noexcept override { return counts_; }
@@ -47,7 +47,8 @@ class RtpSource final : public SampleSource {
     };
 
     void open(const StreamSettings& settings);
-    [[nodiscard]] Took take_packet(Nanos wait) noexcept;
+    [[nodiscard]] Took block_for_packet(Nanos wait) noexcept;
+    [[nodiscard]] Took poll_for_packet(Nanos wait) noexcept;
     [[nodiscard]] Took read_packet(int flags) noexcept;
     [[nodiscard]] static Took took_nothing_because(int error) noexcept;
     void take_in(std::size_t bytes, std::int64_t arrived_ns) noexcept;
@@ -65,6 +66,7 @@ class RtpSource final : public SampleSource {
     boost::asio::io_context context_;
     boost::asio::ip::udp::socket socket_{context_};
     int handle_ = -1;
+    Nanos read_time_{0}; // what a blocking read waits at most
     PacketCounts counts_{};
     StreamOrder order_;
     std::vector<std::uint8_t> bytes_;

@@ -203,7 +203,7 @@ class Parser {
         }
         for (const auto type : payload_types) {
             for (const auto& map : known) {
-                if (map.payload_type == type) {
+                if (map.payload_type == type && type != 0) { // 0 is PCMU for good (RFC 3551, table 4)
                     stream.payload_type = type;
                     stream.encoding = map.encoding;
                     stream.rate_hz = map.rate_hz;

@@ -51,6 +51,7 @@ StreamOrder::Offer StreamOrder::offer(const PacketPlace& place, std::uint32_t bu
     }
     if (has_candidate_ && continues_candidate(place)) {
         restart();
+        last_arrived_ = std::max(last_arrived_, place.arrived);
         return insert(placed(place, buffer));
     }
     if (place.ssrc != ssrc_) {

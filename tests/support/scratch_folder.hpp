@@ -59,14 +59,20 @@ inline Ran run(const std::string& command) {
     return ran;
 }
 
-/// A Python that has SciPy: the first one on the path, or Debian's own.
-inline std::string python_with_scipy() {
-    for (const std::string python : {"python3", "/usr/bin/python3"}) {
-        if (run(python + " -c 'import scipy.signal' 2>/dev/null").status == 0) {
-            return python;
+/// A Python that has SciPy: the first one on the path, or Debian's own. Looked for without loading SciPy, which is
+/// slow.
+inline const std::string& python_with_scipy() {
+    static const std::string found = [] {
+        for (const std::string python : {"python3", "/usr/bin/python3"}) {
+            const auto look =
+                " -c 'import importlib.util as u, sys; sys.exit(u.find_spec(\"scipy\") is None)' 2>/dev/null";
+            if (run(python + look).status == 0) {
+                return python;
+            }
         }
-    }
-    return {};
+        return std::string{};
+    }();
+    return found;
 }
 
 /// The folder of outside recordings, or empty.

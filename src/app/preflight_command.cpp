@@ -1,0 +1,117 @@
+// millpond preflight: is this computer fit for a session with these settings? Nothing is armed and no pulse is ordered.
+#include "app/commands.hpp"
+#include "app/dry_run.hpp"
+#include "app/wiring.hpp"
+#include "base/refusal.hpp"
+#include "realtime/fitness.hpp"
+
+#include <CLI/CLI.hpp>
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <memory>
+
+namespace millpond {
+namespace {
+
+constexpr double wake_seconds = 1.5;
+
+Finding refused(const std::string& about, const Refusal& refusal) {
+    return {Fitness::bad, about, refusal.what()};
+}
+
+/// Runs `work`, which says what is good; a refusal becomes a finding.
+template <class Work> Finding tried(const std::string& about, Work work) {
+    try {
+        return {Fitness::good, about, work()};
+    } catch (const Refusal& refusal) {
+        return refused(about, refusal);
+    }
+}
+
+std::string try_engine(const Settings& settings, const StreamSettings& stream, const std::string& file) {
+    const auto channels = channels_for(settings, ripple_channels(stream.channels), file);
+    const Hertz rate{stream.rate_hz};
+    const auto detector = make_detector(settings, channels, rate);
+    (void)make_arbiter(settings, rate);
+    (void)pulse_shape(settings.output);
+    return fmt::format("{} channels at {} Hz; band-pass delays {:.1f} ms at its centre, with smoothing {:.1f} ms",
+                       channels.size(), stream.rate_hz, detector.filter_delay_samples() / rate.value * 1e3,
+                       detector.delay_samples() / rate.value * 1e3);
+}
+
+std::string try_stream(const StreamSettings& stream) {
+    if (stream.source == SourceKind::pipe) {
+        return "samples will come on standard input";
+    }
+    (void)open_source(stream);
+    return fmt::format("{}:{} is free", stream.listen_address, stream.port);
+}
+
+std::string try_control(const Settings& settings) {
+    if (!settings.control.listen) {
+        return "not asked for (control.listen)";
+    }
+    boost::asio::io_context context;
+    CommandRing commands(4);
+    const CommandListener listener(context, settings.control, {}, commands, [](const std::string&) {});
+    return fmt::format("{}:{} is free", settings.control.listen_address, settings.control.port);
+}
+
+std::string try_output(const OutputSettings& output) {
+    (void)make_output(output);
+    return output.kind == OutputKind::silent
+               ? "silent: orders are journaled and go nowhere"
+               : fmt::format("OSC to {}:{} {}; whether anybody listens there cannot be asked", output.host, output.port,
+                             output.address);
+}
+
+double bytes_per_second(const Settings& settings, const StreamSettings& stream) {
+    const double samples = settings.session.store_samples == StoreSamples::none ? 0.0 : stream.rate_hz * stream.channels * 4.0;
+    const double records = 72.0 * (20.0 + stream.channels); // floors once a second, latencies, some events
+    return samples + records;
+}
+
+std::vector<Finding> findings_for(const std::string& file) {
+    const auto settings = load_settings(file);
+    const auto stream = resolved(settings.stream, file);
+    std::vector<Finding> findings{{Fitness::good, "settings", file + " is valid"}};
+    const auto add = [&](std::vector<Finding> more) { findings.insert(findings.end(), more.begin(), more.end()); };
+    findings.push_back(tried("engine", [&] { return try_engine(settings, stream, file); }));
+    findings.push_back(tried("stream port", [&] { return try_stream(stream); }));
+    findings.push_back(tried("command port", [&] { return try_control(settings); }));
+    findings.push_back(tried("output", [&] { return try_output(settings.output); }));
+    add(check_rights(settings.realtime));
+    findings.push_back(check_throttling(settings.realtime));
+    findings.push_back(check_wake(settings.realtime, wake_seconds));
+    add(check_clock());
+    add(check_disk(settings.session.folder, bytes_per_second(settings, stream), settings.session.min_free_mb));
+    return findings;
+}
+
+void run_preflight(const std::string& file) {
+    const auto findings = findings_for(file);
+    for (const auto& finding : findings) {
+        const auto* word = finding.fitness == Fitness::good ? "good" : finding.fitness == Fitness::caution ? "caution" : "BAD";
+        fmt::print("{:8}{:18}{}\n", word, finding.about, finding.found);
+    }
+    const auto bad = std::count_if(findings.begin(), findings.end(), [](const auto& finding) { return finding.fitness == Fitness::bad; });
+    const auto cautions = std::count_if(findings.begin(), findings.end(), [](const auto& finding) { return finding.fitness == Fitness::caution; });
+    fmt::print("{}: {} bad, {} cautions\n", bad == 0 ? "fit" : "NOT FIT", bad, cautions);
+    if (bad > 0) {
+        throw CLI::RuntimeError(1);
+    }
+}
+
+} // namespace
+
+void add_preflight_command(CLI::App& program) {
+    auto* command = program.add_subcommand("preflight", "is this computer fit for a session with these settings?");
+    auto file = std::make_shared<std::string>();
+    command->add_option("settings", *file, "settings file")->required();
+    add_example(*command, "build/millpond preflight config/live.yaml");
+    command->footer(command->get_footer() + "\nExit status: 0 fit (read the cautions), 1 not fit, 2 settings refused.");
+    command->callback([file] { run_preflight(*file); });
+}
+
+} // namespace millpond

@@ -1,0 +1,38 @@
+#include "app/status_line.hpp"
+
+#include <fmt/format.h>
+
+namespace millpond {
+namespace {
+
+std::string loop_latency(const LiveFigures& figures) {
+    if (!figures.loop_p50_ns || !figures.loop_p99_ns) {
+        return "not measured";
+    }
+    return fmt::format("{:.0f}/{:.0f} us", static_cast<double>(*figures.loop_p50_ns) / 1e3,
+                       static_cast<double>(*figures.loop_p99_ns) / 1e3);
+}
+
+std::string floor_and_threshold(const LiveFigures& figures) {
+    if (figures.floors.empty()) {
+        return "floor not yet";
+    }
+    const auto& decides = figures.floors.back(); // the mean over sites where it votes, else the last site
+    return fmt::format("floor {:.1f} uV, threshold {:.1f} uV{}", decides.mean, decides.threshold,
+                       decides.settled != 0 ? "" : " (settling)");
+}
+
+} // namespace
+
+std::string status_line(const LiveFigures& figures, Hertz rate) {
+    const auto lost = figures.packets[static_cast<std::size_t>(PacketCause::lost)];
+    auto line = fmt::format("{} | {:g} Hz, {:.0f} s | lost {} | {} | detections {}, pulses {} | loop p50/p99 {}",
+                            name_of(figures.state), rate.value, seconds_at(figures.upto, rate), lost,
+                            floor_and_threshold(figures), figures.detections, figures.pulses, loop_latency(figures));
+    if (!figures.trouble.empty()) {
+        line += " | TROUBLE: " + figures.trouble;
+    }
+    return line;
+}
+
+} // namespace millpond

@@ -1,0 +1,14 @@
+// One line that says how a running session is. Thread: control.
+#pragma once
+
+#include "base/units.hpp"
+#include "journal/live_figures.hpp"
+
+#include <string>
+
+namespace millpond {
+
+/// State, rate, packets lost, floor, threshold, detections, pulses, loop latency p50/p99; and trouble where there is any.
+[[nodiscard]] std::string status_line(const LiveFigures& figures, Hertz rate);
+
+} // namespace millpond

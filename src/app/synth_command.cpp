@@ -1,0 +1,139 @@
+// millpond synth: an invented recording with known ripples, its sidecar and its truth.
+#include "app/commands.hpp"
+#include "app/described_options.hpp"
+#include "base/refusal.hpp"
+#include "recording/events_table.hpp"
+#include "recording/recording_writer.hpp"
+#include "settings/yaml_reader.hpp"
+#include "synth/scene.hpp"
+
+#include <fmt/format.h>
+
+#include <chrono>
+#include <cstdio>
+
+namespace millpond {
+namespace {
+
+struct StorageSettings {
+    Encoding encoding = Encoding::int16;
+    double microvolts_per_count = 0.2;
+};
+
+template <class Visitor> void describe(Visitor& visit, StorageSettings& storage) {
+    visit.choice("encoding", storage.encoding, encodings, "how samples are stored");
+    visit.number("microvolts_per_count", storage.microvolts_per_count, {1e-6, 1e6}, "scale of integer samples");
+}
+
+struct SynthRequest {
+    std::string recording;
+    std::string scene_file;
+    bool overwrite = false;
+    DescribedOptions scene_options;
+    DescribedOptions storage_options;
+};
+
+/// Prints how far the work is, every second, from the third second on.
+class Progress {
+  public:
+    void at(std::uint64_t done, std::uint64_t all) {
+        const auto now = std::chrono::steady_clock::now();
+        if (now - last_ >= std::chrono::seconds{shown_ ? 1 : 2}) {
+            std::fprintf(stderr, "\rsynth: %3.0f %%", 100.0 * static_cast<double>(done) / static_cast<double>(all));
+            std::fflush(stderr);
+            last_ = now;
+            shown_ = true;
+        }
+    }
+    ~Progress() {
+        if (shown_) {
+            std::fputs("\n", stderr);
+        }
+    }
+
+  private:
+    std::chrono::steady_clock::time_point last_ = std::chrono::steady_clock::now();
+    bool shown_ = false;
+};
+
+void refuse_existing(const std::filesystem::path& file) {
+    if (std::filesystem::exists(file)) {
+        throw Refusal(file.string(), "a file that exists", "a new name, or --overwrite");
+    }
+}
+
+TableEvent event_of(const RippleTruth& ripple, Hertz rate) {
+    TableEvent event;
+    event.onset_s = seconds_at(ripple.onset, rate);
+    event.duration_s = static_cast<double>(ripple.end - ripple.onset) / rate.value;
+    event.trial_type = "ripple";
+    event.sample = static_cast<std::int64_t>(ripple.onset.value);
+    event.extra = {{"peak_sample", std::to_string(ripple.peak.value)},
+                   {"end_sample", std::to_string(ripple.end.value)},
+                   {"amplitude_uv", fmt::format("{:.2f}", ripple.amplitude_uv)},
+                   {"frequency_hz", fmt::format("{:.2f}", ripple.frequency_hz)}};
+    return event;
+}
+
+void write_truth(const std::filesystem::path& file, const Scene& scene) {
+    std::vector<TableEvent> events;
+    for (const auto& ripple : scene.truth()) {
+        events.push_back(event_of(ripple, scene.rate()));
+    }
+    write_events_table(file, std::move(events), {"peak_sample", "end_sample", "amplitude_uv", "frequency_hz"});
+}
+
+void write_samples(RecordingWriter& writer, Scene& scene) {
+    std::vector<float> frames(4096 * scene.channels().size());
+    Progress progress;
+    while (const auto made = scene.next(frames)) {
+        writer.write(std::span(frames).first(made * scene.channels().size()));
+        progress.at(writer.frames(), scene.frames());
+    }
+}
+
+void run_synth(const SynthRequest& request) {
+    const std::filesystem::path recording = request.recording;
+    auto settings = request.scene_file.empty() ? SceneSettings{} : read_yaml_file<SceneSettings>(request.scene_file);
+    request.scene_options.apply(settings);
+    StorageSettings storage;
+    request.storage_options.apply(storage);
+    if (!request.overwrite) {
+        for (const auto& file : {recording, sidecar_path(recording), truth_path(recording)}) {
+            refuse_existing(file);
+        }
+    }
+    auto scene = Scene::make(settings, request.scene_file.empty() ? "command line" : request.scene_file);
+    RecordingWriter writer(recording,
+                           {container_for(recording), storage.encoding, storage.microvolts_per_count, WriteMode::whole},
+                           scene.channels(), scene.rate(), request.overwrite);
+    write_samples(writer, scene);
+    write_truth(truth_path(recording), scene);
+    writer.finish();
+    fmt::print("recording\t{}\nsidecar\t{}\ntruth\t{}\nframes\t{}\nripples\t{}\n", recording.string(),
+               sidecar_path(recording).string(), truth_path(recording).string(), writer.frames(), scene.truth().size());
+    if (writer.clipped() > 0) {
+        fmt::print(stderr,
+                   "synth: {} samples were beyond the range of the encoding and were clipped; raise "
+                   "--microvolts-per-count\n",
+                   writer.clipped());
+    }
+}
+
+} // namespace
+
+void add_synth_command(CLI::App& program) {
+    auto* command = program.add_subcommand(
+        "synth", "Make an invented recording with known ripples, its sidecar and a table of the truth");
+    const auto request = std::make_shared<SynthRequest>();
+    command->add_option("recording", request->recording, "file to make: .wav, .rf64, .w64, .flac or .raw")->required();
+    command->add_option("--scene", request->scene_file, "settings of the scene (YAML); options override it");
+    command->add_flag("--overwrite", request->overwrite, "replace a recording of that name");
+    request->storage_options.declare(*command, StorageSettings{});
+    request->scene_options.declare(*command, SceneSettings{});
+    add_example(*command,
+                "build/millpond synth rest.flac --duration-s 120 --sites 4 --reference --rate-hz 1250 --seed 1");
+    command->callback([request] { run_synth(*request); });
+}
+
+} // namespace millpond

@@ -1,0 +1,190 @@
+#include "app/wiring.hpp"
+
+#include "app/dry_run.hpp"
+#include "base/refusal.hpp"
+#include "outputs/osc_output.hpp"
+#include "outputs/silent_output.hpp"
+#include "realtime/realtime.hpp"
+#include "sham/schedule.hpp"
+
+namespace millpond {
+namespace {
+
+std::string word_of(KernelWidth width) {
+    switch (width) {
+    case KernelWidth::avx512:
+        return "avx512";
+    case KernelWidth::avx2:
+        return "avx2";
+    default:
+        return "sse2";
+    }
+}
+
+LiveLoopSettings loop_settings(const Settings& settings, const StreamSettings& stream) {
+    return {Nanos{static_cast<std::int64_t>(stream.stale_after_ms * 1e6)}, settings.realtime.spin,
+            settings.arbiter.start_armed};
+}
+
+// What a session keeps of its settings: all but the secret, which is nobody's evidence.
+std::string settings_to_keep(Settings settings, const StreamSettings& stream, const Channels& channels) {
+    settings.stream = stream;
+    settings.channels = channels;
+    if (!settings.control.secret.empty()) {
+        settings.control.secret = "(not kept in the session folder)";
+    }
+    return settings_to_yaml(settings);
+}
+
+SessionAbout about(const Settings& settings, const StreamSettings& stream, const Channels& channels, Detector& detector) {
+    SessionAbout about;
+    about.program = program_name();
+    about.rate = Hertz{stream.rate_hz};
+    about.channels = channels;
+    about.floor_count = static_cast<std::uint32_t>(detector.floor_count());
+    about.kernel_width = word_of(detector.width());
+    about.filter_delay_samples = detector.filter_delay_samples();
+    about.delay_samples = detector.delay_samples();
+    if (!settings.detector.floor.warm_start_session.empty()) {
+        for (std::size_t i = 0; i < detector.floor_count(); ++i) {
+            about.warm_start.push_back(detector.floor(i));
+        }
+    }
+    about.settings_text = settings_to_keep(settings, stream, channels);
+    return about;
+}
+
+std::vector<std::string> gate_names(const ArbiterSettings& arbiter) {
+    std::vector<std::string> names;
+    for (const auto& gate : arbiter.gates) {
+        names.push_back(gate.name);
+    }
+    return names;
+}
+
+// Locks memory and makes sure that the loop's rights will be had when the session starts.
+RealtimeSettings granted(const RealtimeSettings& settings) {
+    lock_memory(settings);
+    std::thread trial([] {});
+    try {
+        make_realtime(trial, settings);
+    } catch (...) {
+        trial.join();
+        throw;
+    }
+    trial.join();
+    return settings;
+}
+
+std::unique_ptr<CommandListener> listen(const Settings& settings, boost::asio::io_context& context,
+                                        CommandRing& commands, std::function<void(const std::string&)> refused) {
+    if (!settings.control.listen) {
+        return nullptr;
+    }
+    return std::make_unique<CommandListener>(context, settings.control, gate_names(settings.arbiter), commands,
+                                             std::move(refused));
+}
+
+} // namespace
+
+std::string program_name() {
+    return MILLPOND_VERSION;
+}
+
+Detector make_detector(const Settings& settings, const Channels& channels, Hertz rate) {
+    auto detector = Detector::make(settings.detector, channels, rate);
+    if (const auto floors = warm_start_floors(settings.detector); !floors.empty()) {
+        detector.warm_start(floors);
+    }
+    return detector;
+}
+
+Arbiter make_arbiter(const Settings& settings, Hertz rate) {
+    std::vector<SampleIndex> schedule;
+    if (settings.arbiter.condition == Condition::schedule) {
+        schedule = read_schedule(settings.arbiter.schedule_file, rate);
+        check_schedule(schedule, {settings.arbiter.lockout_ms, settings.arbiter.max_pulses_per_second}, rate,
+                       settings.arbiter.schedule_file);
+    }
+    return Arbiter::make(settings.arbiter, rate, std::move(schedule));
+}
+
+std::unique_ptr<Output> make_output(const OutputSettings& settings) {
+    if (settings.kind == OutputKind::osc) {
+        return std::make_unique<OscOutput>(settings);
+    }
+    return std::make_unique<SilentOutput>();
+}
+
+/// The session writer as the loop knows it.
+class LiveSession::Journal : public LoopJournal {
+  public:
+    explicit Journal(SessionWriter& writer) : writer_(writer) {}
+    void take(const Event& event) noexcept override { writer_.loop_sink().take(event); }
+    void store(const FrameBlock& block) noexcept override { writer_.store(block); }
+    void time_packet(std::int64_t transport_ns, std::int64_t wake_ns, std::int64_t loop_ns) noexcept override {
+        writer_.time_packet({transport_ns, wake_ns, loop_ns});
+    }
+    [[nodiscard]] bool failed() const noexcept override { return writer_.failed(); }
+
+  private:
+    SessionWriter& writer_;
+};
+
+LiveSession::LiveSession(const Settings& settings, const std::filesystem::path& settings_file,
+                         std::function<void(const std::string&)> refused_command)
+    : stream_(resolved(settings.stream, settings_file)), realtime_(granted(settings.realtime)), rate_{stream_.rate_hz},
+      channels_(channels_for(settings, ripple_channels(stream_.channels), settings_file.string())),
+      detector_(make_detector(settings, channels_, rate_)), arbiter_(make_arbiter(settings, rate_)),
+      listener_(listen(settings, control_, commands_, std::move(refused_command))), source_(open_source(stream_)),
+      output_(make_output(settings.output)),
+      writer_(SessionWriter::open(settings.session, about(settings, stream_, channels_, detector_))),
+      journal_(std::make_unique<Journal>(*writer_)),
+      line_(*output_, pulse_shape(settings.output), writer_->pulse_sink(), settings.realtime.priority),
+      loop_(loop_settings(settings, stream_), *source_, line_, *journal_, commands_,
+            [this](EventSink& sink, PulsePort& port) {
+                return Engine(std::move(detector_), std::move(arbiter_), rate_, sink, port);
+            }) {
+    guard_line_against_crashes(output_.get());
+}
+
+LiveSession::~LiveSession() {
+    if (thread_.joinable()) {
+        loop_.stop();
+        thread_.join();
+    }
+    guard_line_against_crashes(nullptr);
+}
+
+void LiveSession::start() {
+    thread_ = std::thread([this] {
+        may_run_.wait();
+        if (granted_) {
+            loop_.run();
+        }
+    });
+    try {
+        make_realtime(thread_, realtime_);
+        granted_ = true;
+    } catch (...) {
+        may_run_.count_down();
+        thread_.join();
+        throw;
+    }
+    may_run_.count_down();
+}
+
+void LiveSession::finish() {
+    loop_.stop();
+    if (thread_.joinable()) {
+        thread_.join();
+    }
+    line_.fall_now();
+    writer_->close(loop_.engine().next_sample());
+}
+
+double LiveSession::delay_ms() noexcept {
+    return loop_.engine().detector().delay_samples() / rate_.value * 1000.0;
+}
+
+} // namespace millpond

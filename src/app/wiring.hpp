@@ -1,0 +1,77 @@
+// The whole arrow on one screen: which part of the settings makes which part of the house. Only this file knows all rooms.
+// Thread: control. Everything here may throw Refusal.
+#pragma once
+
+#include "control/command_listener.hpp"
+#include "engine/engine.hpp"
+#include "intake/open_source.hpp"
+#include "journal/session_writer.hpp"
+#include "live/live_loop.hpp"
+#include "outputs/output.hpp"
+#include "outputs/pulse_line.hpp"
+#include "settings/settings.hpp"
+
+#include <functional>
+#include <latch>
+#include <memory>
+#include <string>
+
+namespace millpond {
+
+/// The name, version, build type and compiler of this program.
+[[nodiscard]] std::string program_name();
+
+[[nodiscard]] Detector make_detector(const Settings& settings, const Channels& channels, Hertz rate);
+[[nodiscard]] Arbiter make_arbiter(const Settings& settings, Hertz rate);
+[[nodiscard]] std::unique_ptr<Output> make_output(const OutputSettings& settings);
+
+/// A session from the first packet to the closed folder: samples -> engine -> pulses, with everything journaled.
+class LiveSession {
+  public:
+    /// Takes the ports, makes the folder, orders the line low; no sample is read yet.
+    LiveSession(const Settings& settings, const std::filesystem::path& settings_file,
+                std::function<void(const std::string&)> refused_command);
+    ~LiveSession();
+    LiveSession(const LiveSession&) = delete;
+    LiveSession& operator=(const LiveSession&) = delete;
+
+    /// Commands are taken inside this context.
+    [[nodiscard]] boost::asio::io_context& control() noexcept { return control_; }
+
+    void start();
+    /// Thread: any.
+    void stop() noexcept { loop_.stop(); }
+    [[nodiscard]] LoopEnd end() const noexcept { return loop_.end(); }
+    /// Waits for the loop, lets the line fall and closes the folder.
+    void finish();
+
+    [[nodiscard]] LiveFigures figures() const { return writer_->snapshot(); }
+    [[nodiscard]] const std::filesystem::path& folder() const noexcept { return writer_->folder(); }
+    [[nodiscard]] const StreamSettings& stream() const noexcept { return stream_; }
+    [[nodiscard]] double delay_ms() noexcept;
+
+  private:
+    class Journal;
+
+    // Made in this order: what may be refused comes before the session folder, so that a refusal leaves no trace.
+    StreamSettings stream_;
+    RealtimeSettings realtime_;
+    Hertz rate_;
+    Channels channels_;
+    Detector detector_; // until the loop's engine takes it
+    Arbiter arbiter_;   // likewise
+    boost::asio::io_context control_;
+    SpscRing<Command> commands_{1024};
+    std::unique_ptr<CommandListener> listener_;
+    std::unique_ptr<SampleSource> source_;
+    std::unique_ptr<Output> output_;
+    std::unique_ptr<SessionWriter> writer_;
+    std::unique_ptr<Journal> journal_;
+    PulseLine line_;
+    LiveLoop loop_;
+    std::latch may_run_{1};
+    bool granted_ = false;
+    std::thread thread_;
+};
+
+} // namespace millpond

@@ -1,0 +1,62 @@
+// The audit of a session: what happened, how fast, how right, and whether the engine decides the same again.
+// Thread: cold.
+#pragma once
+
+#include "audit/latency_figures.hpp"
+#include "audit/rerun.hpp"
+#include "audit/session_figures.hpp"
+#include "referee/referee.hpp"
+#include "referee/scoring.hpp"
+
+#include <filesystem>
+#include <functional>
+#include <optional>
+#include <string>
+#include <vector>
+
+namespace millpond {
+
+struct AuditInput {
+    std::filesystem::path session;
+    EngineSettings settings;      ///< as the session used them
+    std::string settings_name;    ///< for messages: the file they came from
+    std::filesystem::path labels; ///< events table of ripples; empty: the referee over the stored samples is the truth
+    RefereeSettings referee;
+    /// Told now and then what is being done and its share, 0 to 1.
+    std::function<void(const char* doing, double share)> progress;
+};
+
+/// Detections against ripples, read in two ways (see referee/eligible_time.hpp).
+struct AuditScore {
+    std::string truth; ///< the table's name, or "referee"
+    Ripples ripples;
+    std::vector<SampleIndex> detections;
+    Score detector;            ///< over all time in which the detector was fit to detect
+    Score session;             ///< over the time in which a trigger was possible
+    bool pulses_given = false; ///< pulses change the very signal that the truth is taken from
+};
+
+struct AuditResult {
+    std::filesystem::path session;
+    Provenance provenance;
+    bool cut = false;
+    std::uint64_t records = 0; ///< intact ones
+    std::uint64_t torn_bytes = 0;
+    std::vector<RecordDamage> damage;
+    SampleIndex end;
+    std::optional<std::uint64_t> frames_stored; ///< empty: the session stored none
+    SessionFigures figures;
+    std::vector<LatencyRow> latency;
+    Rerun rerun;
+    std::optional<AuditScore> score;
+    std::string why_no_score;
+
+    /// What speaks against the session, one line each; empty: decisions reproduced as far as they could be re-run, all
+    /// records intact, nothing dropped.
+    [[nodiscard]] std::vector<std::string> objections() const;
+};
+
+/// Refuses what is no session, and settings or labels that do not fit it.
+[[nodiscard]] AuditResult audit_session(const AuditInput& input);
+
+} // namespace millpond

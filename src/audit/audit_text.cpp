@@ -1,0 +1,204 @@
+#include "audit/audit_text.hpp"
+
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <cmath>
+
+namespace millpond {
+namespace {
+
+constexpr std::size_t most_listed = 10;
+
+std::string at_text(SampleIndex at, Hertz rate) {
+    return fmt::format("{:.3f} s (sample {})", seconds_at(at, rate), at.value);
+}
+
+std::string micros(std::int64_t ns) {
+    return fmt::format("{:.1f}", static_cast<double>(ns) / 1000.0);
+}
+
+std::string figure(double value, int digits = 2) {
+    return std::isfinite(value) ? fmt::format("{:.{}f}", value, digits) : "not known";
+}
+
+std::string share(const Proportion& part) {
+    if (part.of == 0) {
+        return "not known (0 of 0)";
+    }
+    return fmt::format("{:.1f} % ({} of {}; 95 %: {:.1f} to {:.1f} %)", 100 * part.share, part.count, part.of,
+                       100 * part.low, 100 * part.high);
+}
+
+std::string site_text(std::uint16_t site, const AuditResult& result) {
+    const auto& channels = result.provenance.about.channels;
+    return site == 65535 ? "mean of sites" : site < channels.size() ? channels[site].name : fmt::format("{}", site);
+}
+
+// One line each, the first few of many.
+template <class Items, class Line> std::string listed(const Items& items, Line line) {
+    std::string text;
+    for (std::size_t i = 0; i < std::min(items.size(), most_listed); ++i) {
+        text += "  " + line(items[i]) + "\n";
+    }
+    if (items.size() > most_listed) {
+        text += fmt::format("  ... and {} more (all of them: --json or --out)\n", items.size() - most_listed);
+    }
+    return text;
+}
+
+std::string head(const AuditResult& r) {
+    const auto& about = r.provenance.about;
+    auto text = fmt::format("Session {}\n", r.session.string());
+    text += fmt::format("  {} on {} ({}, {}), clock {}\n", about.program, r.provenance.machine, r.provenance.cpu,
+                        r.provenance.kernel, r.provenance.clock_source);
+    text += fmt::format("  began {}, {} channels at {} Hz, {:.1f} s of stream\n", utc_text(r.provenance.start_utc_ns),
+                        about.channels.size(), about.rate.value, seconds_at(r.end, about.rate));
+    text += fmt::format("  detector delay {:.2f} ms at the band's centre, band-pass alone {:.2f} ms\n",
+                        1000 * about.delay_samples / about.rate.value,
+                        1000 * about.filter_delay_samples / about.rate.value);
+    text += r.cut ? "  CUT: the session never came to its end; what follows is what was written until then\n"
+                  : "  closed\n";
+    text += fmt::format("  {} intact records, {} damaged", r.records, r.damage.size());
+    text += r.torn_bytes > 0 ? fmt::format(", the last one torn ({} bytes of it)\n", r.torn_bytes) : "\n";
+    text += listed(r.damage, [](const RecordDamage& damage) {
+        return damage.record == UINT64_MAX
+                   ? damage.what
+                   : fmt::format("record {} (byte {}): {}", damage.record, damage.byte, damage.what);
+    });
+    text +=
+        r.frames_stored ? fmt::format("  {} frames of samples stored\n", *r.frames_stored) : "  no samples stored\n";
+    return text;
+}
+
+std::string rerun_text(const AuditResult& r) {
+    if (!r.rerun.done) {
+        return fmt::format("\nRe-run\n  not done: {}\n", r.rerun.why_not);
+    }
+    auto text = fmt::format("\nRe-run\n  {} events compared, {} decisions among them, up to {}: {}\n", r.rerun.compared,
+                            r.rerun.decisions, at_text(r.rerun.upto, r.provenance.about.rate), r.rerun.upto_why);
+    text += r.rerun.reproduced() ? "  every decision reproduced\n"
+                                 : fmt::format("  {} DIFFERENCES\n", r.rerun.differences.size());
+    return text + listed(r.rerun.differences, [](const Difference& difference) { return difference.what; });
+}
+
+std::string latency_text(const AuditResult& r) {
+    auto text = fmt::format("\nLatency by part, us\n  {:<10} {:<8} {:>8} {:>9} {:>9} {:>9} {:>9} {:>9}  {}\n", "part",
+                            "over", "count", "p50", "p90", "p99", "p99.9", "max", "from what to what");
+    for (const auto& row : r.latency) {
+        text += row.figures ? fmt::format("  {:<10} {:<8} {:>8} {:>9} {:>9} {:>9} {:>9} {:>9}  {}\n", row.part,
+                                          row.over, row.figures->count, micros(row.figures->p50),
+                                          micros(row.figures->p90), micros(row.figures->p99), micros(row.figures->p999),
+                                          micros(row.figures->max), row.span)
+                            : fmt::format("  {:<10} {:<8} {:>58}  {}\n", row.part, row.over, "not measured", row.span);
+    }
+    return text + "  over pulses: exact, nearest rank; over packets: upper end of a bin 3 % wide\n";
+}
+
+std::string one_score(const char* reading, const Score& s) {
+    return fmt::format("  {}: {:.2f} eligible minutes\n"
+                       "    hits {}, misses {}, false {}, repeats {}, outside {}\n"
+                       "    hit rate {}\n    precision {}\n    false per minute {}\n"
+                       "    onset latency, ms: median {}, quartiles {} to {}, p90 {}, p99 {}\n"
+                       "    before half of the ripple: {}\n",
+                       reading, s.eligible_minutes, s.hits, s.misses, s.false_detections, s.repeats, s.outside,
+                       share(s.hit_rate), share(s.precision), figure(s.false_per_minute),
+                       figure(s.onset_latency_ms.median, 1), figure(s.onset_latency_ms.quartile1, 1),
+                       figure(s.onset_latency_ms.quartile3, 1), figure(s.onset_latency_ms.p90, 1),
+                       figure(s.onset_latency_ms.p99, 1), share(s.before_half));
+}
+
+std::string score_text(const AuditResult& r) {
+    if (!r.score) {
+        return fmt::format("\nDetections against ripples\n  not known: {}\n", r.why_no_score);
+    }
+    auto text = fmt::format("\nDetections against ripples ({}: {} ripples; early {} ms)\n", r.score->truth,
+                            r.score->ripples.size(), r.score->detector.early_ms);
+    text += one_score("detector, while it was fit to detect", r.score->detector);
+    text += one_score("session, while a trigger was possible", r.score->session);
+    if (r.score->pulses_given) {
+        text +=
+            "  Pulses were given: they change the signal that the truth is taken from. Estimate hit and false rates\n"
+            "  from sessions without pulses or with a control schedule.\n";
+    }
+    return text;
+}
+
+template <std::size_t N, class Code> std::string counted(const std::array<std::uint64_t, N>& counts) {
+    std::string text;
+    for (std::size_t i = 0; i < N; ++i) {
+        if (counts[i] > 0) {
+            text += fmt::format("  {:<20} {}\n", name_of(static_cast<Code>(i)), counts[i]);
+        }
+    }
+    return text.empty() ? "  none\n" : text;
+}
+
+std::string decisions_text(const AuditResult& r) {
+    const auto& f = r.figures;
+    auto text = fmt::format("\nDecisions\n  {} detections, {} triggers ({} by a control schedule), {} pulses, {} pulse "
+                            "ends\n",
+                            f.detections, f.triggers, f.scheduled_triggers, f.pulses, f.pulse_ends);
+    text += "\nWithheld by rule\n" + counted<rule_count, Rule>(f.withheld);
+    text += "\nPackets by cause\n" + counted<packet_cause_count, PacketCause>(f.packets);
+    return text;
+}
+
+std::string stream_text(const AuditResult& r) {
+    const auto rate = r.provenance.about.rate;
+    const auto& f = r.figures;
+    auto text = fmt::format("\nGaps: {}, {} frames missing\n", f.gaps.size(), f.frames_missing());
+    text += listed(f.gaps, [rate](const GapFigure& gap) {
+        return fmt::format("{}: {} frames ({:.1f} ms), {}", at_text(gap.at, rate), gap.frames,
+                           1000.0 * static_cast<double>(gap.frames) / rate.value, name_of(gap.cause));
+    });
+    text += fmt::format("\nStates: {}, gates: {}\n", f.states.size(), f.gates.size());
+    text += listed(f.states, [rate](const StateFigure& state) {
+        return fmt::format("{}: {} to {} ({}), {}", at_text(state.at, rate), name_of(state.before),
+                           name_of(state.after), name_of(state.cause), utc_text(state.time_ns));
+    });
+    text += listed(f.gates, [rate](const GateFigure& gate) {
+        return fmt::format("{}: gate {} {}", at_text(gate.at, rate), gate.name, gate.open ? "open" : "closed");
+    });
+    text += fmt::format("\nNotes: {}\n", f.notes.size());
+    text += listed(f.notes,
+                   [rate](const Note& note) { return fmt::format("{}: {}", at_text(note.sample, rate), note.text); });
+    return text;
+}
+
+std::string floor_text(const AuditResult& r) {
+    std::string text = "\nFloor, uV\n";
+    for (const auto& floor : r.figures.floors) {
+        text += fmt::format("  {}: mean {:.2f} (least {:.2f}, most {:.2f}), last {:.2f}, deviation {:.2f}, threshold "
+                            "{:.2f}; {}\n",
+                            site_text(floor.site, r), floor.mean_median, floor.mean_least, floor.mean_most,
+                            floor.mean_last, floor.deviation_last, floor.threshold_last,
+                            floor.settled ? "settled at " + at_text(floor.settled_at, r.provenance.about.rate)
+                                          : std::string("never settled"));
+    }
+    return r.figures.floors.empty() ? text + "  none journaled\n" : text;
+}
+
+std::string verdict_text(const AuditResult& r) {
+    const auto objections = r.objections();
+    auto text = fmt::format("\nDropped by the journal: {} events, {} frames, {} packet timings\n", r.figures.dropped[0],
+                            r.figures.dropped[1], r.figures.dropped[2]);
+    text += "\nVerdict\n";
+    for (const auto& objection : objections) {
+        text += "  NOT GOOD: " + objection + "\n";
+    }
+    if (objections.empty()) {
+        text += r.rerun.done ? "  every decision reproduced, all records intact\n"
+                             : "  all records intact; decisions were NOT run again: " + r.rerun.why_not + "\n";
+    }
+    return text + (r.cut ? "  the session was cut\n" : "");
+}
+
+} // namespace
+
+std::string audit_text(const AuditResult& r) {
+    return head(r) + rerun_text(r) + decisions_text(r) + score_text(r) + latency_text(r) + stream_text(r) +
+           floor_text(r) + verdict_text(r);
+}
+
+} // namespace millpond

@@ -1,0 +1,224 @@
+#include "audit/rerun.hpp"
+
+#include "journal/journal_sink.hpp"
+
+#include <algorithm>
+
+namespace millpond {
+namespace {
+
+bool decided_by_the_engine(const Event& event) {
+    switch (event.kind) {
+    case EventKind::detection:
+    case EventKind::trigger:
+    case EventKind::withheld:
+    case EventKind::gap:
+    case EventKind::state:
+    case EventKind::gate:
+    case EventKind::floor:
+        return true;
+    default:
+        return false;
+    }
+}
+
+class Collector final : public EventSink {
+  public:
+    void take(const Event& event) noexcept override {
+        if (decided_by_the_engine(event)) {
+            events.push_back(event);
+        }
+    }
+    std::vector<Event> events;
+};
+
+bool is_start(const Event& event) {
+    return event.kind == EventKind::state &&
+           event.as<StateDetail>().cause == static_cast<std::uint8_t>(StateCause::start);
+}
+
+// Places at which a control schedule was due, as journaled.
+std::vector<SampleIndex> schedule_of(const SessionReader& session) {
+    std::vector<SampleIndex> places;
+    for (const auto& event : session.events()) {
+        const bool verdict = event.kind == EventKind::trigger || event.kind == EventKind::withheld;
+        if (verdict && event.as<TriggerDetail>().from_schedule != 0) {
+            places.push_back(event.sample);
+        }
+    }
+    std::sort(places.begin(), places.end());
+    return places;
+}
+
+std::vector<FloorState> warm_start_of(const SessionReader& session) {
+    std::vector<FloorState> floors;
+    for (const auto& floor : session.provenance().about.warm_start) {
+        floors.push_back({floor.mean, floor.deviation, floor.frames});
+    }
+    return floors;
+}
+
+Detector make_detector(const SessionReader& session, const EngineSettings& settings, const std::string& where) {
+    auto detector = Detector::make(settings.detector, session.provenance().about.channels, session.rate(),
+                                   KernelWidth::automatic, where + ": detector");
+    if (const auto floors = warm_start_of(session); !floors.empty()) {
+        detector.warm_start(floors);
+    }
+    return detector;
+}
+
+// Where both the journal and the samples can be believed.
+void limit(const SessionReader& session, std::uint64_t stored_frames, Rerun& rerun) {
+    rerun.upto = session.end();
+    rerun.upto_why = session.cut() ? "the journal was cut there" : "the session ended there";
+    for (const auto& event : session.events()) {
+        if (event.kind == EventKind::dropped && event.code == static_cast<std::uint8_t>(Dropped::frames) &&
+            event.sample < rerun.upto) {
+            rerun.upto = event.sample;
+            rerun.upto_why = "frames were dropped there";
+        }
+    }
+    if (SampleIndex{stored_frames} < rerun.upto) {
+        rerun.upto = SampleIndex{stored_frames};
+        rerun.upto_why = "the stored samples end there";
+    }
+}
+
+/// Feeds the stored samples, and what came from outside where it came.
+class Feed {
+  public:
+    Feed(SampleFileReader& samples, Engine& engine, const Rerun& rerun, const Progress& progress)
+        : samples_(samples), engine_(engine), rerun_(rerun), progress_(progress), next_(rerun.from),
+          buffer_(4096 * samples.channels()) {
+        samples_.seek(next_);
+    }
+
+    void frames_upto(SampleIndex to) {
+        to = std::min(to, rerun_.upto);
+        while (next_ < to) {
+            const auto wanted = std::min<std::uint64_t>(4096, to - next_);
+            const std::span<float> part(buffer_.data(), wanted * samples_.channels());
+            const auto got = samples_.read(part);
+            if (got == 0) {
+                return; // shorter than its header says; the comparison shows it
+            }
+            engine_.process({next_, samples_.channels(), part.first(got * samples_.channels())}, cause_);
+            next_ = next_ + got;
+            tell();
+        }
+    }
+
+    void event(const Event& event) {
+        switch (event.kind) {
+        case EventKind::state:
+            frames_upto(event.sample);
+            engine_.set_state(static_cast<ArmState>(event.code),
+                              static_cast<StateCause>(event.as<StateDetail>().cause));
+            break;
+        case EventKind::gate: {
+            frames_upto(event.sample);
+            const auto gate = event.as<GateDetail>();
+            const auto end = std::find(gate.name.begin(), gate.name.end(), '\0');
+            engine_.set_gate({gate.name.data(), static_cast<std::size_t>(end - gate.name.begin())}, gate.open != 0);
+            break;
+        }
+        case EventKind::gap:
+            frames_upto(event.sample);
+            gap(event.sample + event.as<GapDetail>().frames, static_cast<GapCause>(event.code));
+            break;
+        default:
+            break;
+        }
+    }
+
+  private:
+    void gap(SampleIndex to, GapCause cause) {
+        if (cause == GapCause::non_finite) {
+            // The engine finds it by itself; as one gap where the block ends as it did then.
+            frames_upto(to);
+            return;
+        }
+        if (to > next_) {
+            cause_ = cause;
+            next_ = to;
+            samples_.seek(next_);
+        }
+    }
+
+    void tell() {
+        if (progress_ && ++blocks_ % 64 == 0) {
+            progress_(static_cast<double>(next_ - rerun_.from) / static_cast<double>(rerun_.upto - rerun_.from));
+        }
+    }
+
+    SampleFileReader& samples_;
+    Engine& engine_;
+    const Rerun& rerun_;
+    const Progress& progress_;
+    SampleIndex next_;
+    GapCause cause_ = GapCause::packet_loss;
+    std::vector<float> buffer_;
+    std::uint64_t blocks_ = 0;
+};
+
+void run(const SessionReader& session, SampleFileReader& samples, const EngineSettings& settings,
+         const std::string& where, Rerun& rerun, Collector& sink, const Progress& progress) {
+    NoPulsePort port;
+    Engine engine(make_detector(session, settings, where),
+                  Arbiter::make(settings.arbiter, session.rate(), schedule_of(session)), session.rate(), sink, port);
+    engine.start(rerun.from, settings.arbiter.start_armed);
+    Feed feed(samples, engine, rerun, progress);
+    const auto& events = session.events();
+    // Gates and state as they were at the start are the engine's own words, not commands.
+    auto from = std::find_if(events.begin(), events.end(), is_start);
+    from = from == events.end() ? events.begin() : from + 1;
+    for (auto event = from; event != events.end() && event->sample < rerun.upto; ++event) {
+        feed.event(*event);
+    }
+    feed.frames_upto(rerun.upto);
+}
+
+std::vector<Event> compared_part(const std::vector<Event>& events, const Rerun& rerun) {
+    std::vector<Event> part;
+    std::copy_if(events.begin(), events.end(), std::back_inserter(part),
+                 [&rerun](const Event& event) { return decided_by_the_engine(event) && event.sample < rerun.upto; });
+    std::stable_sort(part.begin(), part.end(), [](const Event& a, const Event& b) { return a.sample < b.sample; });
+    return part;
+}
+
+} // namespace
+
+Rerun rerun_session(const SessionReader& session, const EngineSettings& settings, const std::string& where,
+                    const Progress& progress) {
+    Rerun rerun;
+    auto samples = session.open_samples();
+    if (!samples) {
+        rerun.why_not = "the session stored no samples (session.store_samples: none)";
+        return rerun;
+    }
+    if (samples->channels() != session.provenance().about.channels.size()) {
+        rerun.why_not = "the stored samples do not have the session's channels";
+        return rerun;
+    }
+    const auto start = std::find_if(session.events().begin(), session.events().end(), is_start);
+    rerun.from = start == session.events().end() ? SampleIndex{} : start->sample;
+    limit(session, samples->frames(), rerun);
+    if (rerun.upto <= rerun.from) {
+        rerun.why_not = "the session has no stretch with both samples and records";
+        return rerun;
+    }
+    Collector sink;
+    run(session, *samples, settings, where, rerun, sink, progress);
+    const auto journaled = compared_part(session.events(), rerun);
+    rerun.differences = compare_events(journaled, compared_part(sink.events, rerun));
+    rerun.compared = journaled.size();
+    rerun.decisions =
+        static_cast<std::uint64_t>(std::count_if(journaled.begin(), journaled.end(), [](const Event& event) {
+            return event.kind == EventKind::detection || event.kind == EventKind::trigger ||
+                   event.kind == EventKind::withheld;
+        }));
+    rerun.done = true;
+    return rerun;
+}
+
+} // namespace millpond

@@ -1,0 +1,109 @@
+#include "audit/session_figures.hpp"
+
+#include <algorithm>
+#include <map>
+
+namespace millpond {
+namespace {
+
+template <std::size_t N> void add(std::array<std::uint64_t, N>& counts, std::uint8_t code, std::uint64_t count) {
+    if (code < N) {
+        counts[code] += count;
+    }
+}
+
+void count(SessionFigures& figures, const Event& event) {
+    switch (event.kind) {
+    case EventKind::detection:
+        ++figures.detections;
+        break;
+    case EventKind::trigger:
+        ++figures.triggers;
+        figures.scheduled_triggers += event.as<TriggerDetail>().from_schedule != 0 ? 1 : 0;
+        break;
+    case EventKind::withheld:
+        add(figures.withheld, event.code, 1);
+        break;
+    case EventKind::pulse:
+        ++figures.pulses;
+        break;
+    case EventKind::pulse_end:
+        ++figures.pulse_ends;
+        break;
+    case EventKind::packet_count:
+        add(figures.packets, event.code, event.as<CountDetail>().count);
+        break;
+    case EventKind::dropped:
+        add(figures.dropped, event.code, event.as<CountDetail>().count);
+        break;
+    default:
+        break;
+    }
+}
+
+void list(SessionFigures& figures, const Event& event) {
+    if (event.kind == EventKind::gap) {
+        figures.gaps.push_back({event.sample, static_cast<GapCause>(event.code), event.as<GapDetail>().frames});
+    } else if (event.kind == EventKind::state) {
+        const auto state = event.as<StateDetail>();
+        figures.states.push_back({event.sample, event.time_ns, static_cast<ArmState>(state.before),
+                                  static_cast<ArmState>(event.code), static_cast<StateCause>(state.cause)});
+    } else if (event.kind == EventKind::gate) {
+        const auto gate = event.as<GateDetail>();
+        const auto end = std::find(gate.name.begin(), gate.name.end(), '\0');
+        figures.gates.push_back({event.sample, {gate.name.begin(), end}, gate.open != 0});
+    }
+}
+
+FloorFigure figure_of(const std::vector<Event>& floors) {
+    FloorFigure figure;
+    std::vector<double> means;
+    for (const auto& event : floors) {
+        const auto floor = event.as<FloorDetail>();
+        if (floor.settled != 0 && !figure.settled) {
+            figure.settled = true;
+            figure.settled_at = event.sample;
+        }
+        means.push_back(floor.mean);
+    }
+    const auto last = floors.back().as<FloorDetail>();
+    figure.site = last.site;
+    figure.events = floors.size();
+    figure.mean_last = last.mean;
+    figure.deviation_last = last.deviation;
+    figure.threshold_last = static_cast<double>(last.threshold);
+    std::sort(means.begin(), means.end());
+    figure.mean_least = means.front();
+    figure.mean_median = means[(means.size() - 1) / 2];
+    figure.mean_most = means.back();
+    return figure;
+}
+
+} // namespace
+
+std::uint64_t SessionFigures::frames_missing() const noexcept {
+    std::uint64_t frames = 0;
+    for (const auto& gap : gaps) {
+        frames += gap.frames;
+    }
+    return frames;
+}
+
+SessionFigures session_figures(std::span<const Event> events) {
+    SessionFigures figures;
+    std::map<std::uint16_t, std::vector<Event>> floors;
+    for (const auto& event : events) {
+        count(figures, event);
+        list(figures, event);
+        if (event.kind == EventKind::floor) {
+            floors[event.as<FloorDetail>().site].push_back(event);
+        }
+    }
+    for (const auto& [site, of_site] : floors) {
+        figures.floors.push_back(figure_of(of_site));
+    }
+    figures.notes = notes_in(events);
+    return figures;
+}
+
+} // namespace millpond

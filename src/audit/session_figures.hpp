@@ -1,0 +1,60 @@
+// What a session's events add up to. Thread: cold.
+#pragma once
+
+#include "base/event.hpp"
+#include "journal/session_reader.hpp"
+
+#include <array>
+#include <cstdint>
+#include <span>
+#include <string>
+#include <vector>
+
+namespace millpond {
+
+struct GapFigure {
+    SampleIndex at;
+    GapCause cause{};
+    std::uint64_t frames = 0;
+};
+
+struct StateFigure {
+    SampleIndex at;
+    std::int64_t time_ns = 0;
+    ArmState before{}, after{};
+    StateCause cause{};
+};
+
+struct GateFigure {
+    SampleIndex at;
+    std::string name;
+    bool open = false;
+};
+
+/// One site's floor over the session, from its events once a second. uV.
+struct FloorFigure {
+    std::uint16_t site = 0; ///< 65535: mean over sites
+    std::uint64_t events = 0;
+    bool settled = false;
+    SampleIndex settled_at; ///< first event that says settled
+    double mean_least = 0.0, mean_median = 0.0, mean_most = 0.0, mean_last = 0.0;
+    double deviation_last = 0.0, threshold_last = 0.0;
+};
+
+struct SessionFigures {
+    std::uint64_t detections = 0, triggers = 0, scheduled_triggers = 0, pulses = 0, pulse_ends = 0;
+    std::array<std::uint64_t, rule_count> withheld{};        ///< by Rule
+    std::array<std::uint64_t, packet_cause_count> packets{}; ///< by PacketCause
+    std::array<std::uint64_t, 3> dropped{};                  ///< by Dropped
+    std::vector<GapFigure> gaps;
+    std::vector<StateFigure> states;
+    std::vector<GateFigure> gates;
+    std::vector<Note> notes;
+    std::vector<FloorFigure> floors;
+
+    [[nodiscard]] std::uint64_t frames_missing() const noexcept;
+};
+
+[[nodiscard]] SessionFigures session_figures(std::span<const Event> events);
+
+} // namespace millpond

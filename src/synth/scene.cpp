@@ -1,0 +1,102 @@
+#include "synth/scene.hpp"
+
+#include "base/refusal.hpp"
+#include "synth/artefacts.hpp"
+#include "synth/background.hpp"
+#include "synth/rhythms.hpp"
+
+#include <cmath>
+
+namespace millpond {
+namespace {
+
+void check(const SceneSettings& settings, const std::string& where) {
+    const auto& ripples = settings.ripples;
+    const auto refuse_unless = [&](bool good, const char* key, const std::string& found, const std::string& allowed) {
+        if (!good) {
+            throw Refusal(where + ": " + key, found, allowed);
+        }
+    };
+    const double busy_s = (ripples.duration_ms + ripples.min_gap_ms) / 1000.0;
+    refuse_unless(ripples.rate_per_s * busy_s < 0.9, "ripples.rate_per_s", std::to_string(ripples.rate_per_s),
+                  "at most 0.9 / (duration + min_gap), here " + std::to_string(0.9 / busy_s));
+    refuse_unless(settings.sharp_wave.duration_ms <= 2.0 * ripples.min_gap_ms, "sharp_wave.duration_ms",
+                  std::to_string(settings.sharp_wave.duration_ms), "at most twice ripples.min_gap_ms");
+    const double highest_hz = std::max(ripples.start_hz, ripples.end_hz) + 3.0 * ripples.frequency_sd_hz;
+    refuse_unless(highest_hz < 0.45 * settings.rate_hz, "ripples.start_hz, end_hz, frequency_sd_hz",
+                  "ripples up to " + std::to_string(highest_hz) + " Hz", "below 0.45 of rate_hz");
+    refuse_unless(5.0 * settings.mains.frequency_hz < 0.5 * settings.rate_hz || settings.mains.amplitude_uv == 0.0,
+                  "mains.frequency_hz", "a fifth harmonic above half of rate_hz", "a lower frequency, or no mains");
+}
+
+Channels channels_of(const SceneSettings& settings) {
+    Channels channels;
+    for (int i = 1; i <= settings.sites; ++i) {
+        channels.push_back({"site" + std::to_string(i), ChannelRole::ripple});
+    }
+    if (settings.reference) {
+        channels.push_back({"reference", ChannelRole::reference});
+    }
+    return channels;
+}
+
+} // namespace
+
+std::vector<ChannelGains> channel_gains(const SceneSettings& settings) {
+    std::vector<ChannelGains> gains;
+    for (int i = 0; i < settings.sites; ++i) {
+        const double below_um = (i - 0.5 * (settings.sites - 1)) * settings.site_spacing_um;
+        const double spread = below_um / settings.ripples.spread_um;
+        const double depth = below_um / settings.sharp_wave.depth_um;
+        // The sharp wave turns its sign in the layer, and is largest one depth below (negative) and above (positive).
+        gains.push_back({portable_exp(-0.5 * spread * spread), -depth * portable_exp(0.5 - 0.5 * depth * depth), 1.0});
+    }
+    if (settings.reference) {
+        gains.push_back({0.0, 0.0, 0.5});
+    }
+    return gains;
+}
+
+Scene Scene::make(const SceneSettings& settings, const std::string& where) {
+    check(settings, where);
+    return Scene(settings);
+}
+
+Scene::Scene(const SceneSettings& settings)
+    : channels_(channels_of(settings)), rate_{settings.rate_hz},
+      frames_(static_cast<std::uint64_t>(std::llround(settings.duration_s * settings.rate_hz))),
+      frame_(channels_.size()) {
+    const auto gains = channel_gains(settings);
+    elements_.push_back(std::make_unique<Background>(settings, channels_.size()));
+    auto ripples = std::make_unique<Ripples>(settings, gains);
+    ripples_ = ripples.get();
+    elements_.push_back(std::move(ripples));
+    if (settings.theta.amplitude_uv > 0.0) {
+        elements_.push_back(std::make_unique<Theta>(settings, gains));
+    }
+    if (settings.mains.amplitude_uv > 0.0) {
+        elements_.push_back(std::make_unique<Mains>(settings));
+    }
+    if (settings.artefacts.steps_per_min > 0.0) {
+        elements_.push_back(std::make_unique<Steps>(settings));
+    }
+    if (settings.artefacts.muscle_per_min > 0.0) {
+        elements_.push_back(std::make_unique<Muscle>(settings));
+    }
+}
+
+std::size_t Scene::next(std::span<float> frames) {
+    const auto wanted = std::min<std::uint64_t>(frames.size() / frame_.size(), frames_ - next_.value);
+    for (std::size_t i = 0; i < wanted; ++i) {
+        std::fill(frame_.begin(), frame_.end(), 0.0);
+        for (const auto& element : elements_) {
+            element->add(next_, frame_);
+        }
+        std::transform(frame_.begin(), frame_.end(), frames.begin() + static_cast<std::ptrdiff_t>(i * frame_.size()),
+                       [](double value) { return static_cast<float>(value); });
+        next_ = next_ + 1;
+    }
+    return wanted;
+}
+
+} // namespace millpond

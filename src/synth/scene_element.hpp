@@ -1,0 +1,48 @@
+// The role of everything that a scene is made of: each element adds its share to every frame.
+// Thread: one, whoever owns the scene. Works frame by frame, so that block sizes cannot matter.
+#pragma once
+
+#include "base/units.hpp"
+#include "synth/scene_settings.hpp"
+
+#include <cstdint>
+#include <span>
+#include <vector>
+
+namespace millpond {
+
+/// Stream numbers of the elements: never change or reuse one, or old seeds give other recordings.
+enum class RandomStream : std::uint64_t {
+    ripples = 1,
+    theta = 2,
+    mains = 3,
+    steps = 4,
+    muscle = 5,
+    background_shared = 6,
+    background_own = 1000, ///< and one more for each channel
+    amplifier = 2000,      ///< likewise
+};
+
+constexpr std::uint64_t number_of(RandomStream stream, std::size_t channel = 0) noexcept {
+    return static_cast<std::uint64_t>(stream) + channel;
+}
+
+class SceneElement {
+  public:
+    virtual ~SceneElement() = default;
+
+    /// Adds to the frame at `at`, one value a channel, microvolts. Called once for each place in turn.
+    virtual void add(SampleIndex at, std::span<double> frame) = 0;
+};
+
+/// Where a channel lies and how large things are there. The reference lies far away: ripples and sharp waves are 0.
+struct ChannelGains {
+    double ripple;
+    double sharp_wave;
+    double theta;
+};
+
+/// Sites first, evenly about the pyramidal layer, from above to below; the reference, if any, last.
+[[nodiscard]] std::vector<ChannelGains> channel_gains(const SceneSettings& settings);
+
+} // namespace millpond

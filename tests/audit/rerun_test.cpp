@@ -1,0 +1,180 @@
+#include "audit/hand_made_session.hpp"
+#include "audit/rerun.hpp"
+#include "audit/session_figures.hpp"
+
+#include <gtest/gtest.h>
+
+#include <algorithm>
+
+namespace millpond {
+namespace {
+
+std::string all(const Rerun& rerun) {
+    std::string text = rerun.why_not;
+    for (const auto& difference : rerun.differences) {
+        text += difference.what + "\n";
+    }
+    return text;
+}
+
+TEST(Rerun, ReproducesEveryDecisionOfAnEventfulSession) {
+    const TempFolder temp;
+    HandMadeLoop loop(temp, test_engine_settings());
+    run_eventful(loop);
+    const SessionReader session(loop.close());
+    const auto rerun = rerun_session(session, loop.settings(), "test");
+    EXPECT_TRUE(rerun.reproduced()) << all(rerun);
+    EXPECT_EQ(rerun.upto, session.end());
+
+    // The session had something to reproduce.
+    const auto figures = session_figures(session.events());
+    EXPECT_GT(figures.triggers, 0U);
+    for (const auto rule : {Rule::faulted, Rule::not_armed, Rule::gate, Rule::lock_out}) {
+        EXPECT_GT(figures.withheld[static_cast<std::size_t>(rule)], 0U) << name_of(rule);
+    }
+    EXPECT_GE(figures.gaps.size(), 3U) << "lost packets, and not-a-number over several blocks";
+    EXPECT_GT(rerun.decisions, 20U);
+}
+
+TEST(Rerun, ReproducesASessionThatStartedArmedFromAnEarlierFloor) {
+    const TempFolder temp;
+    auto settings = test_engine_settings();
+    settings.arbiter.start_armed = true;
+    settings.detector.vote.rule = VoteRule::count;
+    const std::vector<FloorDetail> floors{{17.123456789, 6.1, 0.0F, 0, 0, 99'999}, {16.9, 6.0, 0.0F, 1, 0, 99'999}};
+    HandMadeLoop loop(temp, settings, {}, StoreSamples::w64, floors);
+    run_eventful(loop);
+    const SessionReader session(loop.close());
+    const auto rerun = rerun_session(session, settings, "test");
+    EXPECT_TRUE(rerun.reproduced()) << all(rerun);
+    EXPECT_GT(rerun.decisions, 20U);
+}
+
+TEST(Rerun, ReproducesAControlScheduleFromThePlacesTheJournalNames) {
+    const TempFolder temp;
+    auto settings = test_engine_settings();
+    settings.arbiter.start_armed = true;
+    settings.arbiter.condition = Condition::schedule;
+    const std::vector<SampleIndex> schedule{{4'001}, {8'000}, {14'100}, {20'000}}; // the third lies in the gap
+    HandMadeLoop loop(temp, settings, schedule);
+    run_eventful(loop);
+    const SessionReader session(loop.close());
+    const auto rerun = rerun_session(session, settings, "test");
+    EXPECT_TRUE(rerun.reproduced()) << all(rerun);
+    EXPECT_EQ(session_figures(session.events()).scheduled_triggers, 2U) << "one in the gap, one after the fault";
+}
+
+TEST(Rerun, CutSessionIsReproducedAsFarAsItsRecordsGo) {
+    const TempFolder temp;
+    HandMadeLoop loop(temp, test_engine_settings());
+    run_eventful(loop);
+    const auto settings = loop.settings();
+    const SessionReader session(loop.cut());
+    const auto rerun = rerun_session(session, settings, "test");
+    EXPECT_TRUE(session.cut());
+    EXPECT_TRUE(rerun.reproduced()) << all(rerun);
+    EXPECT_EQ(rerun.upto_why, "the journal was cut there");
+    EXPECT_GT(rerun.decisions, 20U);
+}
+
+TEST(Rerun, SamplesThatEndBeforeTheJournalEndTheComparison) {
+    const TempFolder temp;
+    HandMadeLoop loop(temp, test_engine_settings());
+    const auto data = bursts(10'000);
+    loop.block(SampleIndex{0}, std::span(data).first(2 * 6'000));
+    loop.stop_storing();
+    loop.block(SampleIndex{6'000}, std::span(data).subspan(2 * 6'000));
+    const SessionReader session(loop.close());
+    const auto rerun = rerun_session(session, loop.settings(), "test");
+    EXPECT_TRUE(rerun.reproduced()) << all(rerun);
+    EXPECT_EQ(rerun.upto, SampleIndex{6'000});
+    EXPECT_EQ(rerun.upto_why, "the stored samples end there");
+}
+
+TEST(Rerun, FramesThatTheJournalDroppedEndTheComparison) {
+    const TempFolder temp;
+    HandMadeLoop loop(temp, test_engine_settings());
+    const auto data = bursts(10'000);
+    loop.block(SampleIndex{0}, std::span(data).first(2 * 5'000));
+    loop.stop_storing(); // as if the ring had been full
+    loop.block(SampleIndex{5'000}, std::span(data).subspan(2 * 5'000, 2 * 100));
+    loop.writer().loop_sink().take(Event::make(EventKind::dropped, static_cast<std::uint8_t>(Dropped::frames),
+                                               SampleIndex{5'000}, CountDetail{100}));
+    const SessionReader session(loop.close());
+    const auto rerun = rerun_session(session, loop.settings(), "test");
+    EXPECT_TRUE(rerun.reproduced()) << all(rerun);
+    EXPECT_EQ(rerun.upto, SampleIndex{5'000});
+}
+
+TEST(Rerun, ForgedVerdictIsReportedAsADifference) {
+    const TempFolder temp;
+    HandMadeLoop loop(temp, test_engine_settings());
+    run_eventful(loop);
+    const auto folder = loop.close();
+    const auto events = SessionReader(folder).events();
+    auto forged = *std::find_if(events.begin(), events.end(),
+                                [](const Event& event) { return event.kind == EventKind::trigger; });
+    forged.kind = EventKind::withheld;
+    forged.code = static_cast<std::uint8_t>(Rule::veto);
+    forge_record(folder, forged);
+    const SessionReader session(folder);
+    EXPECT_TRUE(session.damage().empty()) << "the checksum was forged too";
+    const auto rerun = rerun_session(session, loop.settings(), "test");
+    ASSERT_EQ(rerun.differences.size(), 1U) << all(rerun);
+    EXPECT_EQ(rerun.differences[0].at, forged.sample);
+    const auto at = std::to_string(forged.sample.value);
+    EXPECT_EQ(rerun.differences[0].what, "journal: withheld at " + at + " (veto); re-run: trigger at " + at);
+}
+
+TEST(Rerun, OneChangedBitOfADetectionsDetailIsADifference) {
+    const TempFolder temp;
+    HandMadeLoop loop(temp, test_engine_settings());
+    run_eventful(loop);
+    const auto folder = loop.close();
+    const auto events = SessionReader(folder).events();
+    auto forged = *std::find_if(events.begin(), events.end(),
+                                [](const Event& event) { return event.kind == EventKind::detection; });
+    forged.detail[0] ^= 1; // the last bit of the envelope
+    forge_record(folder, forged);
+    EXPECT_EQ(rerun_session(SessionReader(folder), loop.settings(), "test").differences.size(), 1U);
+}
+
+TEST(Rerun, OtherSettingsThanTheSessionsGiveDifferences) {
+    const TempFolder temp;
+    HandMadeLoop loop(temp, test_engine_settings());
+    run_eventful(loop);
+    const SessionReader session(loop.close());
+    auto settings = loop.settings();
+    settings.detector.threshold.deviations += 0.5;
+    EXPECT_FALSE(rerun_session(session, settings, "test").reproduced());
+}
+
+TEST(Rerun, SessionWithoutSamplesIsNotRunAgainAndSaysSo) {
+    const TempFolder temp;
+    HandMadeLoop loop(temp, test_engine_settings(), {}, StoreSamples::none);
+    run_eventful(loop);
+    const auto rerun = rerun_session(SessionReader(loop.close()), loop.settings(), "test");
+    EXPECT_FALSE(rerun.done);
+    EXPECT_FALSE(rerun.reproduced());
+    EXPECT_NE(rerun.why_not.find("stored no samples"), std::string::npos);
+}
+
+TEST(CompareEvents, SaysWhichSideLacksWhat) {
+    const auto detection = Event::make(EventKind::detection, 0, SampleIndex{5}, DetectionDetail{});
+    const auto gap = Event::make(EventKind::gap, 1, SampleIndex{9}, GapDetail{3});
+    const auto found = compare_events({detection}, {gap});
+    ASSERT_EQ(found.size(), 2U);
+    EXPECT_EQ(found[0].what, "only in the journal: detection at 5");
+    EXPECT_EQ(found[1].what, "only in the re-run: gap at 9 (packet loss, 3 frames)");
+}
+
+TEST(CompareEvents, TimeStampsAndSequenceNumbersDoNotCount) {
+    auto a = Event::make(EventKind::detection, 0, SampleIndex{5}, DetectionDetail{});
+    auto b = a;
+    b.time_ns = 17;
+    b.sequence = 3;
+    EXPECT_TRUE(compare_events({a}, {b}).empty());
+}
+
+} // namespace
+} // namespace millpond
