@@ -17,9 +17,13 @@
 namespace millpond {
 namespace {
 
-std::vector<SampleIndex> schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
-    return arbiter.condition == Condition::schedule ? read_schedule(arbiter.schedule_file, rate)
-                                                    : std::vector<SampleIndex>{};
+Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
+    Schedule schedule;
+    if (arbiter.condition == Condition::schedule) {
+        schedule = read_schedule(arbiter.schedule_file, rate);
+        check_schedule(schedule, {arbiter.lockout_ms, arbiter.max_pulses_per_second}, rate, arbiter.schedule_file);
+    }
+    return schedule;
 }
 
 void notice_rate(const Settings& settings, Hertz rate) {

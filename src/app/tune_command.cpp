@@ -201,8 +201,9 @@ void add_tune_command(CLI::App& program) {
     command.add_option("--show", options->show, "lines of the table to print, best first")->capture_default_str();
     command.add_option("--table", options->table, "file for the whole table, tab-separated");
     command.add_flag("--overwrite", options->overwrite, "replace --out where it exists");
-    add_example(command, "build/millpond tune replay_files/demo.wav --labels replay_files/demo.truth.tsv "
-                         "--settings config/dryrun.yaml --out tuned.yaml");
+    add_example(command, "build/millpond tune replay_files/four_sites_90s.flac --labels "
+                         "replay_files/four_sites_90s.flac.truth.tsv --settings config/live.yaml --block-s 15 "
+                         "--out tuned.yaml");
     command.callback([options] { run_command(*options); });
 }
 
