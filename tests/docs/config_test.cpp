@@ -7,6 +7,8 @@
 
 #include <gtest/gtest.h>
 
+#include <algorithm>
+
 namespace millpond::testing {
 namespace {
 
@@ -23,7 +25,8 @@ std::vector<std::filesystem::path> settings_files() {
 }
 
 bool is_for_a_stream(const std::filesystem::path& file) {
-    return has("\n" + text_of(file), "\nstream:");
+    const auto lines = lines_of(text_of(file));
+    return std::any_of(lines.begin(), lines.end(), [](const auto& line) { return line.starts_with("stream:"); });
 }
 
 TEST(Config, HasAFileForEachUse) {

@@ -1,6 +1,7 @@
 // Reads the project's own texts for the tests that hold them to the code.
 #pragma once
 
+#include <algorithm>
 #include <filesystem>
 #include <fstream>
 #include <iterator>
