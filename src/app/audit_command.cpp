@@ -1,8 +1,9 @@
 // `millpond audit SESSION`: what happened in a session, and whether the engine decides the same again.
 #include "app/commands.hpp"
+#include "app/progress.hpp"
+#include "app/truth.hpp"
 #include "audit/audit.hpp"
 #include "audit/audit_text.hpp"
-#include "base/clock.hpp"
 #include "journal/session_reader.hpp"
 #include "settings/settings.hpp"
 #include "settings/yaml_reader.hpp"
@@ -11,7 +12,7 @@
 
 #include <cstdio>
 #include <memory>
-#include <unistd.h>
+#include <optional>
 
 namespace millpond {
 namespace {
@@ -21,29 +22,20 @@ struct AuditOptions {
     bool json = false, overwrite = false;
 };
 
-// On stderr, once the work has taken 2 s; a line that rewrites itself on a terminal, one every 5 s elsewhere.
-class ProgressLine {
+// One line for each stage that takes long.
+class Stages {
   public:
     void show(const char* doing, double share) {
-        const auto now = monotonic_now();
-        const auto pause = terminal_ ? std::chrono::milliseconds{200} : std::chrono::milliseconds{5000};
-        if (now - began_ < std::chrono::seconds{2} || now - shown_ < pause) {
-            return;
+        if (doing != doing_) {
+            doing_ = doing;
+            line_.emplace(doing, 1.0);
         }
-        shown_ = now;
-        std::fprintf(stderr, terminal_ ? "\r%s: %3.0f %%  " : "%s: %3.0f %%\n", doing, 100.0 * share);
-        std::fflush(stderr);
-    }
-    void end() const {
-        if (terminal_ && shown_ > Nanos{}) {
-            std::fprintf(stderr, "\r                    \r");
-        }
+        line_->at(share);
     }
 
   private:
-    bool terminal_ = ::isatty(STDERR_FILENO) != 0;
-    Nanos began_ = monotonic_now();
-    Nanos shown_{};
+    std::string doing_;
+    std::optional<Progress> line_;
 };
 
 AuditResult audit_with(const AuditOptions& options) {
@@ -53,15 +45,16 @@ AuditResult audit_with(const AuditOptions& options) {
     input.session = options.session;
     input.settings = {settings.detector, settings.arbiter};
     input.settings_name = session.settings_file().string();
-    input.labels = options.labels;
+    if (!options.labels.empty()) {
+        input.labels = ripples_from_table(options.labels, session.rate(), session.end().value);
+        input.labels_name = options.labels;
+    }
     if (!options.referee.empty()) {
         input.referee = read_yaml_file<RefereeSettings>(options.referee);
     }
-    ProgressLine line;
-    input.progress = [&line](const char* doing, double share) { line.show(doing, share); };
-    auto result = audit_session(input);
-    line.end();
-    return result;
+    Stages stages;
+    input.progress = [&stages](const char* doing, double share) { stages.show(doing, share); };
+    return audit_session(input);
 }
 
 void run_audit(const AuditOptions& options) {

@@ -6,7 +6,7 @@ void add_commands(CLI::App& program) {
     // In the order of an experiment: before, during, after; then the stand-ins.
     add_preflight_command(program);
     add_dryrun_command(program);
-    // add_tune_command(program);
+    add_tune_command(program);
     add_sham_command(program);
     add_live_command(program);
     add_audit_command(program);

@@ -7,6 +7,7 @@
 #include "journal/session_reader.hpp"
 #include "recording/recording_reader.hpp"
 #include "settings/yaml_reader.hpp"
+#include "settings/yaml_writer.hpp"
 #include "sham/schedule.hpp"
 
 #include <fmt/format.h>
@@ -16,9 +17,13 @@
 namespace millpond {
 namespace {
 
-std::vector<SampleIndex> schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
-    return arbiter.condition == Condition::schedule ? read_schedule(arbiter.schedule_file, rate)
-                                                    : std::vector<SampleIndex>{};
+Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
+    Schedule schedule;
+    if (arbiter.condition == Condition::schedule) {
+        schedule = read_schedule(arbiter.schedule_file, rate);
+        check_schedule(schedule, {arbiter.lockout_ms, arbiter.max_pulses_per_second}, rate, arbiter.schedule_file);
+    }
+    return schedule;
 }
 
 void notice_rate(const Settings& settings, Hertz rate) {
@@ -86,9 +91,13 @@ std::vector<FloorState> warm_start_floors(const DetectorSettings& detector) {
     return floors;
 }
 
-std::string settings_hash(const Settings& settings) {
+std::string settings_hash(const Settings& settings, const Channels& channels) {
+    auto text = to_yaml(settings.detector) + to_yaml(settings.arbiter);
+    for (const auto& channel : channels) {
+        text += to_yaml(channel);
+    }
     std::uint64_t hash = 0xCBF29CE484222325U; // Fowler, Noll and Vo's offset basis and, below, prime
-    for (const char c : settings_to_yaml(settings)) {
+    for (const char c : text) {
         hash = (hash ^ static_cast<unsigned char>(c)) * 0x100000001B3U;
     }
     return fmt::format("{:016x}", hash);
@@ -103,7 +112,7 @@ DryRun dry_run(const DryRunPlan& plan) {
     run.rate = reader->info().rate;
     run.frames = reader->info().frames;
     run.channels = channels_for(settings, reader->info().channels, plan.settings.string());
-    run.settings_hash = settings_hash(settings);
+    run.settings_hash = settings_hash(settings, run.channels);
     run.armed = plan.armed;
     run.pulse_width_ms = settings.output.width_ms;
     notice_rate(settings, run.rate);

@@ -54,7 +54,8 @@ struct DryRun {
 /// Floors that the settings want to start from; empty where they name no session.
 [[nodiscard]] std::vector<FloorState> warm_start_floors(const DetectorSettings& detector);
 
-/// 16 hexadecimal digits: FNV-1a, 64 bits, of the settings as settings_to_yaml writes them.
-[[nodiscard]] std::string settings_hash(const Settings& settings);
+/// 16 hexadecimal digits: FNV-1a, 64 bits, of what decides: detector, arbiter and channels as YAML. Places of files
+/// that the settings name enter by name, not by content.
+[[nodiscard]] std::string settings_hash(const Settings& settings, const Channels& channels);
 
 } // namespace millpond

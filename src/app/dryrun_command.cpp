@@ -82,7 +82,8 @@ void add_dryrun_command(CLI::App& program) {
         ->check(CLI::Range(std::size_t{1}, std::size_t{1000000}))
         ->capture_default_str();
     command.add_flag("--overwrite", options->overwrite, "write into --out where it exists");
-    add_example(command, "build/millpond dryrun replay_files/demo.wav --settings config/dryrun.yaml --out dry");
+    add_example(command, "build/millpond dryrun replay_files/four_sites_90s.flac --settings config/live.yaml "
+                         "--labels replay_files/four_sites_90s.flac.truth.tsv --out dry");
     command.callback([options] { run_command(*options); });
 }
 

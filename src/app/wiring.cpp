@@ -2,6 +2,7 @@
 
 #include "app/dry_run.hpp"
 #include "base/refusal.hpp"
+#include "journal/session_reader.hpp"
 #include "outputs/osc_output.hpp"
 #include "outputs/silent_output.hpp"
 #include "realtime/realtime.hpp"
@@ -46,9 +47,8 @@ SessionAbout about(const Settings& settings, const StreamSettings& stream, const
     about.filter_delay_samples = detector.filter_delay_samples();
     about.delay_samples = detector.delay_samples();
     if (!settings.detector.floor.warm_start_session.empty()) {
-        for (std::size_t i = 0; i < detector.floor_count(); ++i) {
-            about.warm_start.push_back(detector.floor(i));
-        }
+        // As they were given: the detector's own words about them may differ in the last bit.
+        about.warm_start = last_floors(SessionReader(settings.detector.floor.warm_start_session).events());
     }
     about.settings_text = settings_to_keep(settings, stream, channels);
     return about;

@@ -1,41 +1,17 @@
 #include "audit/audit.hpp"
 
-#include "recording/events_table.hpp"
-
 #include <fmt/format.h>
 
 #include <algorithm>
-#include <cmath>
 
 namespace millpond {
 namespace {
 
-Progress progress_of(const AuditInput& input, const char* doing) {
+ShareDone progress_of(const AuditInput& input, const char* doing) {
     if (!input.progress) {
         return {};
     }
     return [&input, doing](double share) { input.progress(doing, share); };
-}
-
-SampleIndex place(double samples) {
-    return SampleIndex{static_cast<std::uint64_t>(std::max(0.0, std::round(samples)))};
-}
-
-// Rows of type ripple; where a table calls none so, all of its rows.
-Ripples read_labels(const std::filesystem::path& table, Hertz rate) {
-    const auto rows = read_events_table(table, rate.value);
-    const auto is_ripple = [](const TableEvent& row) { return row.trial_type == "ripple"; };
-    const bool named = std::any_of(rows.begin(), rows.end(), is_ripple);
-    Ripples ripples;
-    for (const auto& row : rows) {
-        if (!named || is_ripple(row)) {
-            const auto onset = place(static_cast<double>(row.sample));
-            const auto end = place(static_cast<double>(row.sample) + row.duration_s * rate.value);
-            ripples.push_back({onset, onset + (end - onset) / 2, end, 0.0});
-        }
-    }
-    std::sort(ripples.begin(), ripples.end(), [](const Ripple& a, const Ripple& b) { return a.onset < b.onset; });
-    return ripples;
 }
 
 Ripples ask_referee(const AuditInput& input, const SessionReader& session, SampleFileReader& samples) {
@@ -62,23 +38,24 @@ Score score_as(const AuditInput& input, const SessionReader& session, const Audi
     rules.session = as_session;
     rules.lockout_ms = input.settings.arbiter.lockout_ms;
     const auto eligible = eligible_time(session.events(), rules, session.rate(), SampleIndex{}, upto);
-    return score(known.ripples, known.detections, eligible, known.truth == "referee" ? referee_early_ms : 0.0,
-                 session.rate());
+    return score(known.ripples, known.detections, eligible, input.labels ? 0.0 : referee_early_ms, session.rate());
 }
 
 void add_score(const AuditInput& input, const SessionReader& session, AuditResult& result) {
     auto samples = session.open_samples();
-    if (input.labels.empty() && (!samples || samples->frames() == 0)) {
+    if (samples && (samples->frames() == 0 || samples->channels() != session.provenance().about.channels.size())) {
+        samples.reset(); // the re-run says so
+    }
+    if (!input.labels && !samples) {
         result.why_no_score = "neither labels (--labels) nor stored samples for the referee";
         return;
     }
     AuditScore known;
-    known.truth = input.labels.empty() ? "referee" : input.labels.string();
-    known.ripples =
-        input.labels.empty() ? ask_referee(input, session, *samples) : read_labels(input.labels, session.rate());
+    known.truth = input.labels ? input.labels_name : "referee";
+    known.ripples = input.labels ? *input.labels : ask_referee(input, session, *samples);
     known.detections = detections_to_score(session.events());
     known.pulses_given = result.figures.pulses > 0;
-    const auto upto = input.labels.empty() ? std::min(result.end, SampleIndex{samples->frames()}) : result.end;
+    const auto upto = input.labels ? result.end : std::min(result.end, SampleIndex{samples->frames()});
     known.detector = score_as(input, session, known, false, upto);
     known.session = score_as(input, session, known, true, upto);
     result.score = std::move(known);

@@ -18,9 +18,10 @@ namespace millpond {
 
 struct AuditInput {
     std::filesystem::path session;
-    EngineSettings settings;      ///< as the session used them
-    std::string settings_name;    ///< for messages: the file they came from
-    std::filesystem::path labels; ///< events table of ripples; empty: the referee over the stored samples is the truth
+    EngineSettings settings;       ///< as the session used them
+    std::string settings_name;     ///< for messages: the file they came from
+    std::optional<Ripples> labels; ///< empty: the referee over the stored samples is the truth
+    std::string labels_name;       ///< the table that they came from
     RefereeSettings referee;
     /// Told now and then what is being done and its share, 0 to 1.
     std::function<void(const char* doing, double share)> progress;

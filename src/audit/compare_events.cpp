@@ -71,7 +71,7 @@ std::string told(const Event& event) {
         return fmt::format("{} at {} ({})", name, at, name_of(static_cast<ArmState>(event.code)));
     case EventKind::gate: {
         const auto gate = event.as<GateDetail>();
-        return fmt::format("{} at {} ({} {})", name, at, gate.name.data(), gate.open != 0 ? "open" : "closed");
+        return fmt::format("{} at {} ({} {})", name, at, gate_name(gate), gate.open != 0 ? "open" : "closed");
     }
     case EventKind::floor:
         return fmt::format("{} at {} (site {})", name, at, event.as<FloorDetail>().site);

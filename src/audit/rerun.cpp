@@ -87,7 +87,7 @@ void limit(const SessionReader& session, std::uint64_t stored_frames, Rerun& rer
 /// Feeds the stored samples, and what came from outside where it came.
 class Feed {
   public:
-    Feed(SampleFileReader& samples, Engine& engine, const Rerun& rerun, const Progress& progress)
+    Feed(SampleFileReader& samples, Engine& engine, const Rerun& rerun, const ShareDone& progress)
         : samples_(samples), engine_(engine), rerun_(rerun), progress_(progress), next_(rerun.from),
           buffer_(4096 * samples.channels()) {
         samples_.seek(next_);
@@ -118,8 +118,7 @@ class Feed {
         case EventKind::gate: {
             frames_upto(event.sample);
             const auto gate = event.as<GateDetail>();
-            const auto end = std::find(gate.name.begin(), gate.name.end(), '\0');
-            engine_.set_gate({gate.name.data(), static_cast<std::size_t>(end - gate.name.begin())}, gate.open != 0);
+            engine_.set_gate(gate_name(gate), gate.open != 0);
             break;
         }
         case EventKind::gap:
@@ -154,7 +153,7 @@ class Feed {
     SampleFileReader& samples_;
     Engine& engine_;
     const Rerun& rerun_;
-    const Progress& progress_;
+    const ShareDone& progress_;
     SampleIndex next_;
     GapCause cause_ = GapCause::packet_loss;
     std::vector<float> buffer_;
@@ -162,7 +161,7 @@ class Feed {
 };
 
 void run(const SessionReader& session, SampleFileReader& samples, const EngineSettings& settings,
-         const std::string& where, Rerun& rerun, Collector& sink, const Progress& progress) {
+         const std::string& where, Rerun& rerun, Collector& sink, const ShareDone& progress) {
     NoPulsePort port;
     Engine engine(make_detector(session, settings, where),
                   Arbiter::make(settings.arbiter, session.rate(), schedule_of(session)), session.rate(), sink, port);
@@ -189,7 +188,7 @@ std::vector<Event> compared_part(const std::vector<Event>& events, const Rerun& 
 } // namespace
 
 Rerun rerun_session(const SessionReader& session, const EngineSettings& settings, const std::string& where,
-                    const Progress& progress) {
+                    const ShareDone& progress) {
     Rerun rerun;
     auto samples = session.open_samples();
     if (!samples) {

@@ -39,11 +39,11 @@ struct Rerun {
 };
 
 /// Told the share that is done, 0 to 1, now and then.
-using Progress = std::function<void(double share)>;
+using ShareDone = std::function<void(double share)>;
 
 /// `where` names the settings for messages. Refuses settings that the session's stream cannot have.
 [[nodiscard]] Rerun rerun_session(const SessionReader& session, const EngineSettings& settings,
-                                  const std::string& where, const Progress& progress = {});
+                                  const std::string& where, const ShareDone& progress = {});
 
 /// Compares two lists of events, each ascending by sample; time stamps and sequence numbers do not count.
 [[nodiscard]] std::vector<Difference> compare_events(const std::vector<Event>& journaled,

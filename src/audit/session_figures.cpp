@@ -50,8 +50,7 @@ void list(SessionFigures& figures, const Event& event) {
                                   static_cast<ArmState>(event.code), static_cast<StateCause>(state.cause)});
     } else if (event.kind == EventKind::gate) {
         const auto gate = event.as<GateDetail>();
-        const auto end = std::find(gate.name.begin(), gate.name.end(), '\0');
-        figures.gates.push_back({event.sample, {gate.name.begin(), end}, gate.open != 0});
+        figures.gates.push_back({event.sample, gate_name(gate), gate.open != 0});
     }
 }
 

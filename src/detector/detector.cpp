@@ -218,7 +218,7 @@ void Detector::State::clear_filters() noexcept {
 }
 
 std::uint16_t Detector::State::channel_at(std::size_t lane) const noexcept {
-    return lane < channel_of.size() ? static_cast<std::uint16_t>(channel_of[lane]) : std::uint16_t{65535};
+    return lane < lanes.channel_lanes ? static_cast<std::uint16_t>(channel_of[lane]) : std::uint16_t{65535};
 }
 
 std::size_t Detector::floor_count() const noexcept {

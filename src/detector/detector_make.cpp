@@ -97,10 +97,16 @@ void Detector::State::choose_lanes(const Channels& channels) {
     }
     lanes.channels = channels.size();
     lanes.channel_lanes = channel_of.size();
-    lanes.channel_of = channel_of.data();
     lanes.in_stream_order = channel_of.back() + 1 == channel_of.size();
     const std::size_t used = lanes.channel_lanes + mean_lanes();
     lanes.lanes = (used + lane_group - 1) / lane_group * lane_group;
+    channel_of.resize(lanes.lanes);
+    lanes.channel_of = channel_of.data();
+    lane_used = Lanes<std::uint64_t>(lanes.lanes);
+    for (std::size_t lane = 0; lane < lanes.channel_lanes; ++lane) {
+        lane_used[lane] = UINT64_MAX;
+    }
+    lanes.lane_used = lane_used.data();
 }
 
 void Detector::State::allocate_filter() {
@@ -123,8 +129,6 @@ void Detector::State::allocate_filter() {
 }
 
 void Detector::State::allocate_envelope() {
-    raw = Lanes<float>(lanes.lanes);
-    lanes.raw = raw.data();
     const auto lane_array = [&](Lanes<double>& values) {
         values = Lanes<double>(lanes.lanes);
         return values.data();

@@ -67,10 +67,9 @@ struct Detector::State {
 
     std::vector<std::uint32_t> channel_of;
     Lanes<double> coefficients, section_states, tap_values, history;
-    Lanes<float> raw;
     Lanes<double> level, last, in_phase, turned, smooth1, smooth2, envelope, mean_weight;
     Lanes<double> mean, spread, above, rearm;
-    Lanes<std::uint64_t> above_adds, rearm_adds;
+    Lanes<std::uint64_t> lane_used, above_adds, rearm_adds;
 
     FloorStart start;               // the floor's first second
     std::uint64_t floor_frames = 0; // frames in the floor's statistics

@@ -16,8 +16,9 @@ struct KernelState {
     std::size_t lanes = 0;          // a multiple of lane_group
     std::size_t channel_lanes = 0;  // lanes that read a channel; the mean's lane, if any, is the next one
     std::size_t channels = 0;       // values a frame in the stream
-    const std::uint32_t* channel_of = nullptr; // [channel_lanes]
-    bool in_stream_order = false;   // channel_of[i] == i
+    const std::uint32_t* channel_of = nullptr; // [lanes]; 0 for lanes without a channel
+    const std::uint64_t* lane_used = nullptr;  // all ones for lanes with a channel, else 0
+    bool in_stream_order = false;   // channel_of[i] == i for all that are used
 
     std::size_t sections = 0;
     const double* coefficients = nullptr; // [sections][5]: b0 b1 b2 a1 a2
@@ -27,7 +28,6 @@ struct KernelState {
     double* history = nullptr;            // [2 * taps][lanes]: written twice, so that the last `taps` are one run
     std::size_t history_at = 0;
 
-    float* raw = nullptr;        // the frame in lane order
     double* level = nullptr;     // taken off every sample: the band-pass ignores it, and a splice makes no step
     double* last = nullptr;      // the last sample, less its level
     double quadrature = 0.0;     // all-pass coefficient: 90 degrees at the centre of the band

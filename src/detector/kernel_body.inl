@@ -21,16 +21,19 @@ inline const Words& at(const std::uint64_t* values, std::size_t lane) {
 }
 inline Doubles magnitude(Doubles value) { return value < 0.0 ? -value : value; }
 
-inline void take_frame(KernelState& state, const float* frame) {
-    if (state.in_stream_order) {
-        for (std::size_t lane = 0; lane < state.channel_lanes; ++lane) {
-            state.raw[lane] = frame[lane];
-        }
+// A whole vector straight from the frame where all of it is memory that may be read; what lies beyond the looked-at
+// channels is masked away. Else value by value: at the end of a block, and where roles leave gaps between channels.
+inline Doubles raw_lanes(const KernelState& state, const float* frame, std::size_t lane, bool whole_vectors) {
+    Floats raw;
+    if (whole_vectors) {
+        __builtin_memcpy(&raw, frame + lane, sizeof raw);
     } else {
-        for (std::size_t lane = 0; lane < state.channel_lanes; ++lane) {
-            state.raw[lane] = frame[state.channel_of[lane]];
+        for (std::size_t i = 0; i < width; ++i) {
+            raw[i] = frame[state.channel_of[lane + i]];
         }
     }
+    const Doubles value = __builtin_convertvector(raw, Doubles);
+    return reinterpret_cast<Doubles>(reinterpret_cast<Words>(value) & at(state.lane_used, lane));
 }
 
 inline Doubles filter_sections(KernelState& state, std::size_t lane, Doubles value) {
@@ -127,9 +130,10 @@ inline Tally compare_to_floor(KernelState& state, double weight) {
     return Tally{sum};
 }
 
-template <KernelEnvelope method> inline void envelopes_of_frame(KernelState& state, bool resume) {
+template <KernelEnvelope method>
+inline void envelopes_of_frame(KernelState& state, const float* frame, bool whole_vectors, bool resume) {
     for (std::size_t lane = 0; lane < state.lanes; lane += width) {
-        const Doubles raw = __builtin_convertvector(*reinterpret_cast<const Floats*>(state.raw + lane), Doubles);
+        const Doubles raw = raw_lanes(state, frame, lane, whole_vectors);
         Doubles& level = at(state.level, lane);
         Doubles& last = at(state.last, lane);
         if (resume) {
@@ -149,8 +153,9 @@ template <KernelEnvelope method> inline KernelResult run_method(KernelState& sta
     KernelResult result;
     bool resume = order.resume;
     for (const float* frame = order.frames; result.frames < order.count; frame += state.channels) {
-        take_frame(state, frame);
-        envelopes_of_frame<method>(state, resume);
+        const bool whole_vectors =
+            state.in_stream_order && (order.count - result.frames) * state.channels >= state.lanes;
+        envelopes_of_frame<method>(state, frame, whole_vectors, resume);
         resume = false;
         if (state.mean_weight != nullptr) {
             state.envelope[state.channel_lanes] = mean_of_sites(state);

@@ -128,7 +128,12 @@ Provenance read_provenance(const std::filesystem::path& file) {
         throw Refusal(file.string(), "no file that can be read", "the provenance.json of a session");
     }
     try {
-        return from_json(nlohmann::json::parse(in));
+        auto provenance = from_json(nlohmann::json::parse(in));
+        if (!(provenance.about.rate.value > 0.0) || provenance.about.channels.empty()) {
+            throw Refusal(file.string(), "a stream without rate or channels",
+                          "rate_hz above 0 and at least one channel");
+        }
+        return provenance;
     } catch (const nlohmann::json::exception& trouble) {
         throw Refusal(file.string(), trouble.what(), "the provenance.json of a session, as the program wrote it");
     }

@@ -21,10 +21,17 @@ const std::filesystem::path& checked(const std::filesystem::path& folder) {
     return folder;
 }
 
+// Other kinds carry the place up to which samples had come, which the engine's own words may not have reached.
+bool said_by_the_engine(EventKind kind) {
+    return kind == EventKind::detection || kind == EventKind::trigger || kind == EventKind::withheld ||
+           kind == EventKind::gap || kind == EventKind::floor || kind == EventKind::state || kind == EventKind::gate ||
+           kind == EventKind::note;
+}
+
 SampleIndex end_of(const ReadRecords& records) {
     SampleIndex end{};
     for (const auto& event : records.events) {
-        end = std::max(end, event.sample);
+        end = said_by_the_engine(event.kind) ? std::max(end, event.sample) : end;
     }
     return records.closed ? records.events.back().sample : end;
 }
@@ -62,6 +69,10 @@ std::vector<FloorDetail> last_floors(std::span<const Event> events) {
         floors.push_back(floor);
     }
     return floors;
+}
+
+std::string gate_name(const GateDetail& gate) {
+    return {gate.name.begin(), std::find(gate.name.begin(), gate.name.end(), '\0')};
 }
 
 std::vector<Note> notes_in(std::span<const Event> events) {

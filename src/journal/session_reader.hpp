@@ -46,6 +46,9 @@ class SessionReader {
 /// The newest floor of each site, by site, the mean over sites (65535) last: what a later session can start from.
 [[nodiscard]] std::vector<FloorDetail> last_floors(std::span<const Event> events);
 
+/// Up to its zero, or all 32 characters.
+[[nodiscard]] std::string gate_name(const GateDetail& gate);
+
 /// A note's whole text and where it stood, put together again.
 struct Note {
     SampleIndex sample;

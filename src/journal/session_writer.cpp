@@ -4,6 +4,7 @@
 #include "journal/session_folder.hpp"
 #include "journal/session_reader.hpp"
 #include "journal/session_tables.hpp"
+#include "recording/sidecar.hpp"
 
 #include <chrono>
 #include <condition_variable>
@@ -56,6 +57,11 @@ std::unique_ptr<SessionWriter> SessionWriter::open(const SessionSettings& settin
     NewSessionFolder folder(settings, start_ns);
     folder.write_text(settings_name, about.settings_text);
     folder.write_text(provenance_name, to_json(gather_provenance(about, start_ns)).dump(2) + "\n");
+    if (settings.store_samples != StoreSamples::none) {
+        // So that every command that takes a recording takes the session's samples too, by their names and roles.
+        write_sidecar(sidecar_path(folder.working() / sample_file_name(settings.store_samples)),
+                      {.microvolts_per_unit = 1.0, .channels = about.channels});
+    }
     auto state = std::make_unique<State>();
     state->drain = std::make_unique<JournalDrain>(folder.working(), settings, about, start_ns);
     state->folder = folder.commit();

@@ -26,13 +26,14 @@ class ToldSession : public ::testing::Test {
         tell(EventKind::floor, 0, at,
              FloorDetail{mean, 2.0, 25.0F, 0, static_cast<std::uint16_t>(settled ? 1 : 0), at});
     }
-    AuditResult audit(const std::filesystem::path& labels = {}) {
+    AuditResult audit(const std::optional<Ripples>& labels = {}) {
         AuditInput input;
         input.session = writer_->folder();
         writer_->close(SampleIndex{end});
         input.settings = test_engine_settings();
         input.settings_name = "test";
         input.labels = labels;
+        input.labels_name = "labels.tsv";
         return audit_session(input);
     }
     static const LatencyRow& row(const AuditResult& result, const std::string& part, const std::string& over) {
@@ -146,8 +147,10 @@ TEST_F(ToldSession, LabelsGiveHitsMissesFalseAndRepeats) {
     detect(5'025); // first of the first ripple: 20 ms after its onset
     detect(5'050); // a repeat
     detect(8'000); // of none
-    const auto labels = temp_.path() / "labels.tsv";
-    std::ofstream(labels) << "onset\tduration\ttrial_type\n4.0\t0.1\tripple\n8.0\t0.1\tripple\n6.4\t0.1\tartefact\n";
+    const auto ripple = [](std::uint64_t onset) {
+        return Ripple{SampleIndex{onset}, SampleIndex{onset + 60}, SampleIndex{onset + 125}, 0.0};
+    };
+    const Ripples labels{ripple(5'000), ripple(10'000)};
     const auto result = audit(labels);
     ASSERT_TRUE(result.score.has_value());
     const auto& s = result.score->detector;

@@ -79,6 +79,15 @@ TEST(AuditCommand, WhatIsNoSessionEndsWithStatus2InOneLine) {
     EXPECT_EQ(std::count(ran.err.begin(), ran.err.end(), '\n'), 1);
 }
 
+TEST(AuditCommand, LabelsTakeTheRefereesPlace) {
+    const TempFolder temp;
+    const auto labels = temp.path() / "labels.tsv";
+    std::ofstream(labels) << "onset\tduration\ttrial_type\n9.8\t0.06\tripple\n9.0\t0.06\tartefact\n";
+    const auto ran = audit(temp, eventful_session(temp) + " --labels " + labels.string());
+    EXPECT_EQ(ran.status, 0) << ran.err;
+    EXPECT_NE(ran.out.find("labels.tsv: 1 ripples; early 0 ms"), std::string::npos) << ran.out;
+}
+
 TEST(AuditCommand, OutWritesAuditJsonAndRefusesToReplaceIt) {
     const TempFolder temp;
     const auto session = eventful_session(temp);

@@ -1,5 +1,5 @@
-#include "journal/sample_ring.hpp"
 #include "base/spsc_ring.hpp"
+#include "journal/sample_ring.hpp"
 
 #include <gtest/gtest.h>
 

@@ -1,6 +1,7 @@
 #include "journal/sample_file.hpp"
 #include "journal/session_reader.hpp"
 #include "journal/session_support.hpp"
+#include "recording/recording_reader.hpp"
 
 #include <gtest/gtest.h>
 
@@ -98,6 +99,21 @@ TEST_P(StoredSamples, AreReadableWithoutEverBeingClosed) {
     const SampleFileReader reader(copy);
     EXPECT_GE(reader.frames(), 500U);
     EXPECT_LE(reader.frames(), 503U);
+}
+
+TEST_P(StoredSamples, OpenAsARecordingWithTheSessionsNamesAndRoles) {
+    const TempFolder temp;
+    auto about = about_stream();
+    about.channels = {{"CA1", ChannelRole::ripple}, {"cortex", ChannelRole::reference}};
+    auto writer = SessionWriter::open(session_in(temp, GetParam()), about);
+    const auto data = ramp(0, 100);
+    writer->store({SampleIndex{10}, 2, data});
+    writer->close(SampleIndex{110});
+    const auto recording = load_recording(writer->folder() / sample_file_name(GetParam()));
+    EXPECT_EQ(recording.info.channels, about.channels);
+    ASSERT_EQ(recording.info.frames, 110U);
+    EXPECT_TRUE(std::isnan(recording.data[0])) << "the ten frames that never came";
+    EXPECT_TRUE(std::equal(data.begin(), data.end(), recording.data.begin() + 20));
 }
 
 INSTANTIATE_TEST_SUITE_P(BothFormats, StoredSamples, ::testing::Values(StoreSamples::rf64, StoreSamples::w64),

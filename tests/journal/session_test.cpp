@@ -10,6 +10,7 @@
 
 #include <cmath>
 #include <cstring>
+#include <thread>
 
 namespace millpond {
 namespace {
@@ -236,6 +237,31 @@ TEST(SessionFolder, DiskWithLessThanTheMinimumIsRefused) {
     auto settings = session_in(temp);
     settings.min_free_mb = 1e9;
     EXPECT_THROW(SessionWriter::open(settings, about_stream()), Refusal);
+}
+
+TEST(SessionReader, CutSessionEndsWhereTheEngineLastSpoke) {
+    const TempFolder temp;
+    std::filesystem::path folder;
+    {
+        auto writer = SessionWriter::open(session_in(temp, StoreSamples::rf64), about_stream());
+        writer->loop_sink().take(detection_at(40));
+        writer->store({SampleIndex{0}, 2, std::vector<float>(200, 1.0F)});
+        writer->time_packet({1, 2, 3});
+        std::this_thread::sleep_for(
+            std::chrono::milliseconds{150}); // latencies are told, at the end of the stored block
+        folder = writer->folder();
+    }
+    EXPECT_EQ(SessionReader(folder).end(), SampleIndex{40});
+}
+
+TEST(SessionReader, ProvenanceWithoutARateIsRefused) {
+    const TempFolder temp;
+    auto writer = SessionWriter::open(session_in(temp), about_stream());
+    writer->close(SampleIndex{1});
+    auto json = nlohmann::json::parse(text_of(writer->folder() / "provenance.json"));
+    json["rate_hz"] = 0;
+    std::ofstream(writer->folder() / "provenance.json") << json;
+    EXPECT_THROW(SessionReader{writer->folder()}, Refusal);
 }
 
 TEST(SessionReader, DryRunOutputIsRefusedAndSaysWhatItIs) {

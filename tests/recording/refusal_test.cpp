@@ -8,12 +8,9 @@
 #include <gtest/gtest.h>
 
 #include <cstring>
-#include <gmock/gmock.h>
 
 namespace millpond {
 namespace {
-
-using ::testing::HasSubstr;
 
 class Unfit : public ::testing::Test {
   protected:
@@ -39,7 +36,7 @@ TEST_F(Unfit, IntegersWithoutAScaleAreRefused) {
     for (const char* name : {"a.wav", "a.flac"}) {
         const auto file = written(name, Encoding::int16);
         std::filesystem::remove(sidecar_path(file));
-        EXPECT_THAT(refusal(file), HasSubstr("integer samples of no known scale; allowed: microvolts_per_unit"));
+        EXPECT_TRUE(testing::says(refusal(file), "integer samples of no known scale; allowed: microvolts_per_unit"));
     }
 }
 
@@ -58,35 +55,39 @@ TEST_F(Unfit, FloatsAreScaledWhereTheSidecarSays) {
 
 TEST_F(Unfit, UnknownSidecarKeysAreRefusedWithTheNearest) {
     const auto file = written("a.wav", Encoding::float32);
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "microvolt_per_unit: 2\n")),
-                HasSubstr("s.yaml:1: microvolt_per_unit: found an unknown key; allowed: did you mean "
-                          "'microvolts_per_unit'?"));
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "channels:\n  - {name: a, rule: ripple}\n  - {name: b}\n")),
-                HasSubstr("channels[0].rule"));
+    EXPECT_TRUE(testing::says(refusal(file, scratch_.file("s.yaml", "microvolt_per_unit: 2\n")),
+                              "s.yaml:1: microvolt_per_unit: found an unknown key; allowed: did you mean "
+                              "'microvolts_per_unit'?"));
+    EXPECT_TRUE(
+        testing::says(refusal(file, scratch_.file("s.yaml", "channels:\n  - {name: a, rule: ripple}\n  - {name: b}\n")),
+                      "channels[0].rule"));
 }
 
 TEST_F(Unfit, SidecarsThatDoNotFitTheFileAreRefused) {
     const auto file = written("a.wav", Encoding::float32);
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "channels: [{name: a}]\n")),
-                HasSubstr("s.yaml: channels: found 1 channels; allowed: the recording's 2"));
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "channels: [{name: a}, {name: a}]\n")), HasSubstr("'a' twice"));
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "channels: [{name: a}, {role: unused}]\n")),
-                HasSubstr("a channel without a name"));
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "rate_hz: 1000\n")), HasSubstr("rate_hz: found 1000"));
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "channel_count: 3\n")), HasSubstr("channel_count: found 3"));
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "encoding: int16\n")), HasSubstr("only raw files need one"));
-    EXPECT_THAT(refusal(file, scratch_ / "none.yaml"), HasSubstr("none.yaml: found no file"));
+    EXPECT_TRUE(testing::says(refusal(file, scratch_.file("s.yaml", "channels: [{name: a}]\n")),
+                              "s.yaml: channels: found 1 channels; allowed: the recording's 2"));
+    EXPECT_TRUE(
+        testing::says(refusal(file, scratch_.file("s.yaml", "channels: [{name: a}, {name: a}]\n")), "'a' twice"));
+    EXPECT_TRUE(testing::says(refusal(file, scratch_.file("s.yaml", "channels: [{name: a}, {role: unused}]\n")),
+                              "a channel without a name"));
+    EXPECT_TRUE(testing::says(refusal(file, scratch_.file("s.yaml", "rate_hz: 1000\n")), "rate_hz: found 1000"));
+    EXPECT_TRUE(testing::says(refusal(file, scratch_.file("s.yaml", "channel_count: 3\n")), "channel_count: found 3"));
+    EXPECT_TRUE(testing::says(refusal(file, scratch_.file("s.yaml", "encoding: int16\n")), "only raw files need one"));
+    EXPECT_TRUE(testing::says(refusal(file, scratch_ / "none.yaml"), "none.yaml: found no file"));
 }
 
 TEST_F(Unfit, RawWithoutItsShapeIsRefused) {
     const auto file = scratch_.file("a.raw", std::string(1000, 'x'));
-    EXPECT_THAT(refusal(file), HasSubstr("rate_hz, channel_count and encoding in"));
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "rate_hz: 1250\nencoding: float32\n")),
-                HasSubstr("channel_count"));
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "rate_hz: 1250\nencoding: int12\nchannel_count: 2\n")),
-                HasSubstr("'int12'; allowed: one of int16, int24, int32, float32"));
-    EXPECT_THAT(refusal(file, scratch_.file("s.yaml", "rate_hz: 1250\nencoding: float32\nchannel_count: 3\n")),
-                HasSubstr("1000 bytes; allowed: whole frames of 12 bytes"));
+    EXPECT_TRUE(testing::says(refusal(file), "rate_hz, channel_count and encoding in"));
+    EXPECT_TRUE(
+        testing::says(refusal(file, scratch_.file("s.yaml", "rate_hz: 1250\nencoding: float32\n")), "channel_count"));
+    EXPECT_TRUE(
+        testing::says(refusal(file, scratch_.file("s.yaml", "rate_hz: 1250\nencoding: int12\nchannel_count: 2\n")),
+                      "'int12'; allowed: one of int16, int24, int32, float32"));
+    EXPECT_TRUE(
+        testing::says(refusal(file, scratch_.file("s.yaml", "rate_hz: 1250\nencoding: float32\nchannel_count: 3\n")),
+                      "1000 bytes; allowed: whole frames of 12 bytes"));
     EXPECT_EQ(refusal(file, scratch_.file("s.yaml", "rate_hz: 1250\nencoding: float32\nchannel_count: 2\n")), "");
 }
 
@@ -104,11 +105,11 @@ TEST_F(Unfit, FilesCutShortAreRefused) {
     for (const char* name : {"a.wav", "a.rf64", "a.w64"}) {
         const auto file = written(name, Encoding::float32);
         std::filesystem::resize_file(file, std::filesystem::file_size(file) / 2);
-        EXPECT_THAT(refusal(file), HasSubstr("a file cut short")) << name;
+        EXPECT_TRUE(testing::says(refusal(file), "a file cut short")) << name;
     }
     const auto flac = written("a.flac", Encoding::int16, 50'000);
     std::filesystem::resize_file(flac, std::filesystem::file_size(flac) / 2);
-    EXPECT_THAT(refusal(flac), HasSubstr("a.flac: found"));
+    EXPECT_TRUE(testing::says(refusal(flac), "a.flac: found"));
 }
 
 TEST_F(Unfit, CutFilesAreReadAsTheyAreWhereThatIsAskedFor) {
@@ -123,19 +124,19 @@ TEST_F(Unfit, CutFilesAreReadAsTheyAreWhereThatIsAskedFor) {
 }
 
 TEST_F(Unfit, OtherFilesAreRefused) {
-    EXPECT_THAT(refusal(scratch_ / "none.wav"), HasSubstr("none.wav: found no such file"));
-    EXPECT_THAT(refusal(scratch_ / ""), HasSubstr("no regular file"));
-    EXPECT_THAT(refusal(scratch_.file("a.wav", "")), HasSubstr("a.wav: found no recording"));
-    EXPECT_THAT(refusal(scratch_.file("a.wav", "hello, I am a text")), HasSubstr("a.wav: found no recording"));
-    EXPECT_THAT(refusal(scratch_.file("a.wav", "RIFF")), HasSubstr("a.wav: found"));
+    EXPECT_TRUE(testing::says(refusal(scratch_ / "none.wav"), "none.wav: found no such file"));
+    EXPECT_TRUE(testing::says(refusal(scratch_ / ""), "no regular file"));
+    EXPECT_TRUE(testing::says(refusal(scratch_.file("a.wav", "")), "a.wav: found no recording"));
+    EXPECT_TRUE(testing::says(refusal(scratch_.file("a.wav", "hello, I am a text")), "a.wav: found no recording"));
+    EXPECT_TRUE(testing::says(refusal(scratch_.file("a.wav", "RIFF")), "a.wav: found"));
 }
 
 TEST_F(Unfit, OtherKindsOfSoundAreRefused) {
     ASSERT_EQ(testing::run("sox -n -r 8000 '" + (scratch_ / "a.aiff").string() + "' synth 0.1 sine 100").status, 0);
-    EXPECT_THAT(refusal(scratch_ / "a.aiff"), HasSubstr("another kind of sound file"));
+    EXPECT_TRUE(testing::says(refusal(scratch_ / "a.aiff"), "another kind of sound file"));
     ASSERT_EQ(testing::run("sox -n -r 8000 -e a-law '" + (scratch_ / "a.wav").string() + "' synth 0.1 sine 100").status,
               0);
-    EXPECT_THAT(refusal(scratch_ / "a.wav"), HasSubstr("samples of another kind"));
+    EXPECT_TRUE(testing::says(refusal(scratch_ / "a.wav"), "samples of another kind"));
 }
 
 TEST(OutsideRecording, RatWavHasTheStatedShape) {

@@ -11,14 +11,12 @@
 #include <cmath>
 #include <csignal>
 #include <cstring>
-#include <gmock/gmock.h>
 #include <sys/wait.h>
 #include <unistd.h>
 
 namespace millpond {
 namespace {
 
-using ::testing::HasSubstr;
 using testing::run;
 using testing::ScratchFolder;
 
@@ -165,8 +163,8 @@ TEST(RecordingWriter, RoundsToTheNearestCount) {
 TEST(RecordingWriter, RefusesAnExistingRecordingUnlessToldToOverwrite) {
     ScratchFolder scratch;
     const auto file = write(scratch / "a.wav", Encoding::float32, some_floats(10));
-    EXPECT_THAT(testing::line_of<Refusal>([&] { write(file, Encoding::float32, some_floats(20)); }),
-                HasSubstr("a.wav: found a recording that exists"));
+    EXPECT_TRUE(testing::says(testing::line_of<Refusal>([&] { write(file, Encoding::float32, some_floats(20)); }),
+                              "a.wav: found a recording that exists"));
     RecordingWriter writer(file, {}, two_channels, Hertz{1250.0}, true);
     writer.write(some_floats(20));
     EXPECT_EQ(load_recording(file).info.frames, 10u) << "the old one stays until the new one is whole";
@@ -180,17 +178,18 @@ TEST(RecordingWriter, RefusesWhatTheFormatCannotHold) {
         return testing::line_of<Refusal>(
             [&] { RecordingWriter(scratch / name, format, ripple_channels(channels), Hertz{rate}); });
     };
-    EXPECT_THAT(refusal("a.flac", {Container::flac, Encoding::float32, 1.0, WriteMode::whole}, 2, 1250.0),
-                HasSubstr("int16 or int24"));
-    EXPECT_THAT(refusal("a.flac", {Container::flac, Encoding::int16, 1.0, WriteMode::whole}, 9, 1250.0),
-                HasSubstr("at most 8 channels"));
-    EXPECT_THAT(refusal("a.flac", {Container::flac, Encoding::int16, 1.0, WriteMode::crash_safe}, 2, 1250.0),
-                HasSubstr("survive a crash"));
-    EXPECT_THAT(refusal("a.wav", {Container::wav, Encoding::int16, 0.0, WriteMode::whole}, 2, 1250.0),
-                HasSubstr("above 0"));
-    EXPECT_THAT(refusal("a.wav", {}, 2, 1250.5), HasSubstr("1250.5 frames a second"));
-    EXPECT_THAT(refusal("none/a.wav", {}, 2, 1250.0), HasSubstr("no way to write it"));
-    EXPECT_THAT(testing::line_of<Refusal>([] { static_cast<void>(container_for("a.mp3")); }), HasSubstr("'.mp3'"));
+    EXPECT_TRUE(testing::says(refusal("a.flac", {Container::flac, Encoding::float32, 1.0, WriteMode::whole}, 2, 1250.0),
+                              "int16 or int24"));
+    EXPECT_TRUE(testing::says(refusal("a.flac", {Container::flac, Encoding::int16, 1.0, WriteMode::whole}, 9, 1250.0),
+                              "at most 8 channels"));
+    EXPECT_TRUE(
+        testing::says(refusal("a.flac", {Container::flac, Encoding::int16, 1.0, WriteMode::crash_safe}, 2, 1250.0),
+                      "survive a crash"));
+    EXPECT_TRUE(testing::says(refusal("a.wav", {Container::wav, Encoding::int16, 0.0, WriteMode::whole}, 2, 1250.0),
+                              "above 0"));
+    EXPECT_TRUE(testing::says(refusal("a.wav", {}, 2, 1250.5), "1250.5 frames a second"));
+    EXPECT_TRUE(testing::says(refusal("none/a.wav", {}, 2, 1250.0), "no way to write it"));
+    EXPECT_TRUE(testing::says(testing::line_of<Refusal>([] { static_cast<void>(container_for("a.mp3")); }), "'.mp3'"));
 }
 
 TEST(RecordingWriter, RawKeepsAFractionalRate) {

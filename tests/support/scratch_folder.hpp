@@ -1,6 +1,8 @@
 // A folder of its own for one test, gone afterwards, and other programs run in it.
 #pragma once
 
+#include <gtest/gtest.h>
+
 #include <array>
 #include <cstdio>
 #include <cstdlib>
@@ -79,6 +81,13 @@ inline const std::string& python_with_scipy() {
 inline std::filesystem::path outside_recordings() {
     const char* folder = std::getenv("MILLPOND_RECORDINGS");
     return folder == nullptr ? std::filesystem::path{} : std::filesystem::path(folder);
+}
+
+/// Whether `text` has `part` in it; shows the text where it has not.
+inline ::testing::AssertionResult says(const std::string& text, const std::string& part) {
+    return text.find(part) != std::string::npos
+               ? ::testing::AssertionSuccess()
+               : ::testing::AssertionFailure() << "no '" << part << "' in '" << text << "'";
 }
 
 /// The one line of the Refusal that `act` throws; empty where it throws none.

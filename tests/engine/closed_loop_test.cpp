@@ -1,0 +1,128 @@
+// The engine in a loop with an invented animal whose recording shows each pulse as an artefact a hundred times the signal.
+#include "engine/engine.hpp"
+#include "synth/answering_animal.hpp"
+
+#include <gtest/gtest.h>
+
+#include <vector>
+
+namespace millpond {
+namespace {
+
+/// A loop of `latency_ms` from decision to pulse, as a rig has.
+class ClosedLoop : public EventSink, public PulsePort {
+  public:
+    ClosedLoop(const SceneSettings& scene, const AnswerSettings& answer, const EngineSettings& settings,
+               std::vector<SampleIndex> schedule, double latency_ms)
+        : animal_(AnsweringAnimal::make(scene, answer)), latency_(frames_in_ms(latency_ms, animal_.rate())),
+          engine_(Detector::make(settings.detector, animal_.channels(), animal_.rate()),
+                  Arbiter::make(settings.arbiter, animal_.rate(), std::move(schedule)), animal_.rate(), *this, *this) {}
+
+    void run(double seconds) {
+        engine_.start(SampleIndex{0}, true);
+        std::vector<float> frame(animal_.channels().size());
+        const auto frames = static_cast<std::uint64_t>(seconds * animal_.rate().value);
+        for (std::uint64_t i = 0; i < frames; ++i) {
+            animal_.next(frame);
+            engine_.process({SampleIndex{i}, frame.size(), frame});
+        }
+    }
+
+    void take(const Event& event) noexcept override {
+        if (event.kind == EventKind::detection) {
+            detections.push_back(event.sample.value);
+        }
+    }
+    void fire(const Event& trigger) noexcept override {
+        pulses.push_back(trigger.sample.value);
+        animal_.pulse(trigger.sample + 1 + latency_);
+    }
+
+    /// Detections within `ms` after any pulse, the one that caused it not counted.
+    [[nodiscard]] std::size_t detections_soon_after_pulses(double ms) const {
+        const auto window = frames_in_ms(ms, animal_.rate());
+        std::size_t count = 0;
+        for (const auto detection : detections) {
+            for (const auto pulse : pulses) {
+                count += detection > pulse && detection - pulse <= window ? 1 : 0;
+            }
+        }
+        return count;
+    }
+
+    std::vector<std::uint64_t> detections, pulses;
+
+  private:
+    AnsweringAnimal animal_;
+    std::uint64_t latency_;
+    Engine engine_;
+};
+
+SceneSettings quiet_animal(double rate_hz) {
+    SceneSettings scene;
+    scene.rate_hz = rate_hz;
+    scene.duration_s = 1e5;
+    scene.sites = 4;
+    scene.reference = false; // no veto: nothing but blanking stands between an artefact and a pulse
+    scene.ripples.rate_per_s = 0.0;
+    scene.seed = 5;
+    return scene;
+}
+
+/// A pulse every two seconds, whatever the detector says.
+ClosedLoop scheduled_pulses(const SceneSettings& scene, double blanking_ms, double artefact_uv) {
+    EngineSettings settings;
+    settings.detector.blanking_ms = blanking_ms;
+    settings.arbiter.condition = Condition::schedule;
+    std::vector<SampleIndex> schedule;
+    for (double at_s = 20.0; at_s < 118.0; at_s += 2.0) {
+        schedule.push_back(SampleIndex{static_cast<std::uint64_t>(at_s * scene.rate_hz)});
+    }
+    AnswerSettings answer;
+    answer.artefact_uv = artefact_uv;
+    ClosedLoop loop(scene, answer, settings, std::move(schedule), 2.0);
+    loop.run(120.0);
+    return loop;
+}
+
+TEST(ClosedLoop, ArtefactsOfAHundredTimesTheSignalAreNeverDetected) {
+    for (const double rate : {1250.0, 30000.0}) {
+        const auto scene = quiet_animal(rate);
+        const auto with_artefact = scheduled_pulses(scene, DetectorSettings{}.blanking_ms, 25000.0);
+        ASSERT_EQ(with_artefact.pulses.size(), 49U);
+        // The same pulses without any artefact: what chance alone puts after them.
+        const auto without = scheduled_pulses(scene, DetectorSettings{}.blanking_ms, 0.0);
+        EXPECT_LE(with_artefact.detections_soon_after_pulses(150.0), without.detections_soon_after_pulses(150.0) + 1)
+            << rate << " Hz";
+    }
+}
+
+TEST(ClosedLoop, WithoutBlankingTheSameArtefactsAreDetected) {
+    const auto loop = scheduled_pulses(quiet_animal(1250.0), 0.0, 25000.0);
+    EXPECT_GT(loop.detections_soon_after_pulses(150.0), 40U) << "else the test above could not fail";
+}
+
+TEST(ClosedLoop, PulsesDoNotBreedPulses) {
+    // Disrupting, with as little in the way of a runaway as settings allow: lock-out just above the pulse.
+    EngineSettings settings;
+    settings.arbiter.lockout_ms = 2.0;
+    settings.arbiter.max_pulses_per_second = 1000;
+    settings.arbiter.max_pulses_per_session = 1000000;
+    auto scene = quiet_animal(1250.0);
+    scene.ripples.rate_per_s = 0.5;
+    const auto run = [&](double artefact_uv) {
+        AnswerSettings answer;
+        answer.artefact_uv = artefact_uv;
+        ClosedLoop loop(scene, answer, settings, {}, 2.0);
+        loop.run(300.0);
+        return loop;
+    };
+    const auto with_artefact = run(25000.0), without = run(0.0);
+    EXPECT_GT(without.pulses.size(), 100U);
+    EXPECT_NEAR(static_cast<double>(with_artefact.pulses.size()), static_cast<double>(without.pulses.size()),
+                0.1 * static_cast<double>(without.pulses.size()));
+    EXPECT_LE(with_artefact.detections_soon_after_pulses(100.0), without.detections_soon_after_pulses(100.0) + 5);
+}
+
+} // namespace
+} // namespace millpond
