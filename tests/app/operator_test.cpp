@@ -64,9 +64,9 @@ class Commands : public ::testing::Test {
 
 TEST_F(Commands, ArmDisarmMarkAndGateAreObeyedInTheirOrderAndJournaled) {
     begin();
-    send_and_read("/arm", "millpond: armed\n");
-    send_and_read("/disarm", "millpond: not armed\n");
-    send_and_read("/arm i 1", "millpond: armed\n", 2);
+    send_and_read("/arm", "millpond: armed (command)\n");
+    send_and_read("/disarm", "millpond: not armed (command)\n");
+    send_and_read("/arm i 1", "millpond: armed (command)\n", 2);
     send("/gate si immobile 0");
     mark_and_wait("/mark s 'rat lies down, a text that is longer than one record of the journal takes'",
                   "rat lies down, a text that is longer than one record of the journal takes");
@@ -109,8 +109,8 @@ TEST_F(Commands, WithASecretOnlyItsOwnerIsObeyedAndItIsKeptNowhere) {
     const std::string line = "found no secret or a wrong one; allowed: the secret of the settings as first argument\n";
     send_and_read("/arm", line);
     send_and_read("/arm s drowssap-8", line, 2);
-    send_and_read("/arm s drowssap-7", "millpond: armed\n");
-    send_and_read("/disarm s drowssap-7", "millpond: not armed\n");
+    send_and_read("/arm s drowssap-7", "millpond: armed (command)\n");
+    send_and_read("/disarm s drowssap-7", "millpond: not armed (command)\n");
     mark_and_wait("/mark ss drowssap-7 cage", "cage");
     const auto folder = Rig::folder_of(*session_);
     end();

@@ -9,7 +9,7 @@ namespace {
 /// A session on a disk that fills up, streamed until well after; gives what it printed and left behind.
 void expect_faulted_but_watching(Rig& rig, Process& session, const std::string& why) {
     const auto sender = rig.feed(rig.recording(60.0), {"--speed", "8", "--loop"});
-    ASSERT_TRUE(session.says("millpond: faulted\n")) << session.err();
+    ASSERT_TRUE(session.says("millpond: faulted (journal failed)\n")) << session.err();
     ASSERT_TRUE(session.says(why)) << session.err();
     // Goes on detecting: withheld by rule `faulted` is told in the summary; detections go on counting in the status
     // line.
@@ -72,14 +72,14 @@ TEST(StaleStream, DisarmsAndStaysNotArmedUntilToldByCommand) {
     const auto session = rig.live(rig.settings(want));
     const auto folder = Rig::folder_of(*session);
     EXPECT_EQ(rig.feed(recording, {"--speed", "8"})->status(), 0);
-    ASSERT_TRUE(session->says("millpond: not armed\n")) << session->err();
+    ASSERT_TRUE(session->says("millpond: not armed (stale stream)\n")) << session->err();
 
     const auto before = Rig::frames_stored(folder);
     EXPECT_EQ(rig.feed(recording, {"--speed", "8"})->status(), 0);
     ASSERT_TRUE(wait_until([&] { return Rig::frames_stored(folder) >= before + 25000; }));
     const auto before_command = Rig::frames_stored(folder);
     rig.shell("oscsend localhost " + std::to_string(rig.control_port()) + " /arm");
-    ASSERT_TRUE(session->says("millpond: armed\n")) << session->err();
+    ASSERT_TRUE(session->says("millpond: armed (command)\n")) << session->err();
     EXPECT_EQ(rig.feed(recording, {"--speed", "8"})->status(), 0);
     ASSERT_TRUE(wait_until([&] { return Rig::frames_stored(folder) >= before_command + 25000; }));
     session->send(SIGINT);
