@@ -158,7 +158,7 @@ void pipe_and_compare(Rig& rig, const std::string& recording, const std::string&
     want.stream = "  source: pipe\n  rate_hz: 1250\n  channels: 5\n" + stream;
     const auto settings = rig.settings(want);
     const auto dry = dry_run(rig, recording, settings);
-    const auto ran = rig.shell("ffmpeg -hide_banner -loglevel error -nostdin -i " + recording + " -f " + format +
+    const auto ran = rig.shell("ffmpeg -hide_banner -loglevel error -nostdin -readrate 8 -i " + recording + " -f " + format +
                                " - | " + MILLPOND_PROGRAM + " live " + settings);
     EXPECT_EQ(ran.status, 0) << ran.err;
     std::filesystem::path session;
