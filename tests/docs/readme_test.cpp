@@ -83,6 +83,37 @@ TEST(Readme, SettingsReferenceIsTheOneOfTheCode) {
     EXPECT_TRUE(block == settings_reference()) << "run tools/update-readme, which writes it anew";
 }
 
+/// What a command of the tour answers, as README shows it: indented, without its speed, in a folder of the test's own.
+std::string answer_of(const std::string& command, const std::filesystem::path& folder) {
+    const auto start = fmt::format("    build/millpond {} ", command);
+    for (const auto& line : lines_of(joined(document("README.md")))) {
+        if (line.starts_with(start)) {
+            const auto there = std::regex_replace(line, std::regex("build/tour"), folder.string());
+            auto said = run(fmt::format("cd {} && {} {} 2>/dev/null", source_folder.string(), MILLPOND_PROGRAM,
+                                        there.substr(start.find(command))))
+                            .output;
+            said = std::regex_replace(said, std::regex(folder.string()), "build/tour");
+            said = std::regex_replace(said, std::regex("[0-9]+ times real pace"), "many times real pace");
+            return std::regex_replace(said, std::regex("(^|\n)(?=.)"), "$1    ");
+        }
+    }
+    return {};
+}
+
+TEST(Readme, AnswersInTheTourAreThoseOfTheProgram) {
+    const ScratchFolder scratch;
+    const auto folder = scratch / "tour";
+    std::filesystem::create_directory(folder);
+    ASSERT_FALSE(answer_of("synth", folder).empty());
+    for (const std::string command : {"dryrun", "tune"}) {
+        const auto shown =
+            between(document("README.md"),
+                    fmt::format("<!-- answer of {}: begin. Written by tools/update-readme -->\n\n", command),
+                    fmt::format("\n<!-- answer of {}: end -->", command));
+        EXPECT_EQ(shown, answer_of(command, folder)) << "run tools/update-readme, which writes it anew";
+    }
+}
+
 TEST(Readme, NamesEveryCommandAndNoOther) {
     const auto named = all_matches(document("README.md"), "millpond ([a-z]+)[ `\n]", 1);
     std::set<std::string> there;
