@@ -46,6 +46,16 @@ double milliseconds(Nanos time) {
     return static_cast<double>(time.count()) / 1e6;
 }
 
+constexpr int last_round = 4;
+
+/// A decision is on the disk, and something later.
+bool has_decided(const std::filesystem::path& folder) {
+    const SessionReader read(folder);
+    return std::any_of(read.events().begin(), read.events().end(), [&](const Event& event) {
+        return event.kind == EventKind::detection && event.sample < read.end();
+    });
+}
+
 class KilledSession : public ::testing::TestWithParam<unsigned> {};
 
 // Five sessions a batch, four batches: twenty.
@@ -56,12 +66,15 @@ TEST_P(KilledSession, AllButTheLast100MsIsReadableSaysThatItWasCutAndDecidesTheS
     std::mt19937 random(GetParam());
     StallProbe probe;
     std::vector<Kill> kills;
-    for (int round = 0; round < 5; ++round) {
+    for (int round = 0; round <= last_round; ++round) {
         RigSettings want;
         want.folder = "sessions" + std::to_string(round); // a folder's name has no more than the second of its start
         const auto session = rig.live(rig.settings(want));
         const auto folder = Rig::folder_of(*session);
         ASSERT_TRUE(wait_until([&] { return Rig::frames_stored(folder) > 0; })) << session->err();
+        if (round == last_round) {
+            ASSERT_TRUE(wait_until([&] { return has_decided(folder); })) << session->err();
+        }
         std::this_thread::sleep_for(std::chrono::milliseconds{std::uniform_int_distribution{0, 1500}(random)});
         probe.longest();
         std::this_thread::sleep_for(
@@ -76,14 +89,24 @@ TEST_P(KilledSession, AllButTheLast100MsIsReadableSaysThatItWasCutAndDecidesTheS
         EXPECT_TRUE(read.damage().empty());
         ASSERT_FALSE(read.events().empty());
         kills.push_back({milliseconds(killed - Nanos{read.events().back().time_ns}), milliseconds(stall)});
-        EXPECT_LE(kills.back().lost_ms, 100.0 + kills.back().stall_ms) << "round " << round;
+        // What one thread is made to wait, the journal's may have to wait twice: before it reads and before it writes.
+        EXPECT_LE(kills.back().lost_ms, 100.0 + 2.0 * kills.back().stall_ms) << "round " << round;
         // Samples go with the records: no record speaks of a place more than 100 ms (at twice the pace) behind them.
         EXPECT_GE(Rig::frames_stored(folder) + 250, read.end().value);
 
         const auto audit = rig.audit(folder);
         EXPECT_TRUE(audit.at("cut"));
-        EXPECT_TRUE(audit.at("rerun").at("done")) << audit.at("rerun");
-        EXPECT_TRUE(audit.at("rerun").at("reproduced")) << audit.at("rerun");
+        const auto& again = audit.at("rerun");
+        if (read.end().value == 0) { // killed before the engine had said anything: nothing is there to decide again
+            EXPECT_EQ(again.at("why_not"), "the session has no stretch with both samples and records");
+        } else {
+            EXPECT_TRUE(again.at("done")) << again;
+            EXPECT_TRUE(again.at("reproduced")) << again;
+            EXPECT_EQ(again.at("upto_sample"), std::min(read.end().value, Rig::frames_stored(folder)));
+        }
+        if (round == last_round) {
+            EXPECT_GE(again.at("decisions_compared"), 1) << again;
+        }
         EXPECT_NE(rig.millpond("audit " + folder.string()).out.find("CUT"), std::string::npos);
     }
     for (const auto& kill : kills) {

@@ -78,6 +78,8 @@ TEST(StaleStream, DisarmsAndStaysNotArmedUntilToldByCommand) {
     EXPECT_EQ(rig.feed(recording, {"--speed", "8"})->status(), 0);
     ASSERT_TRUE(wait_until([&] { return Rig::frames_stored(folder) >= before + 25000; }));
     const auto before_command = Rig::frames_stored(folder);
+    // A sender that begins anew is believed once the one before was silent for stream.restart_after_ms, 1 s.
+    std::this_thread::sleep_for(std::chrono::milliseconds{1200});
     rig.shell("oscsend localhost " + std::to_string(rig.control_port()) + " /arm");
     ASSERT_TRUE(session->says("millpond: armed (command)\n")) << session->err();
     EXPECT_EQ(rig.feed(recording, {"--speed", "8"})->status(), 0);
