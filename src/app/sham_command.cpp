@@ -47,7 +47,7 @@ void add_making(CLI::App& command, CommonOptions& options, double& min_interval_
                     "shortest interval between two places; not below the lock-out")
         ->check(CLI::Range(0.0, 60000.0))
         ->capture_default_str();
-    command.add_option("--seed", seed, "seed of the random numbers (SplitMix64): the same seed, the same schedule")
+    command.add_option("--seed", seed, "seed of the random numbers (xoshiro256++): the same seed, the same schedule")
         ->capture_default_str();
     command.add_option("--out", options.out, "schedule to write: an events table with trial_type scheduled")
         ->required();
