@@ -25,8 +25,8 @@ class SplitMix64 {
     std::uint64_t state_;
 };
 
-/// xoshiro256++ (Blackman & Vigna 2019), its state filled by SplitMix64 from a seed and the number of a stream: whatever
-/// draws numbers has a stream of its own, so that something new changes nothing else.
+/// xoshiro256++ (Blackman & Vigna 2019), its state filled by SplitMix64 from a seed and the number of a stream:
+/// whatever draws numbers has a stream of its own, so that something new changes nothing else.
 class Random {
   public:
     Random(std::uint64_t seed, std::uint64_t stream) noexcept {
