@@ -3,7 +3,7 @@
 
 #include <sys/mount.h>
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 /// A session on a disk that fills up, streamed until well after; gives what it printed and left behind.
@@ -27,7 +27,7 @@ void expect_faulted_but_watching(Rig& rig, Process& session, const std::string& 
 }
 
 void expect_readable(Rig& rig, const std::filesystem::path& folder) {
-    const auto ran = rig.millpond("audit " + folder.string() + " --json");
+    const auto ran = run_millpond("audit " + folder.string() + " --json");
     ASSERT_TRUE(ran.status == 0 || ran.status == 1) << ran.err;
     const auto audit = nlohmann::json::parse(ran.out);
     EXPECT_GT(audit.at("records").at("intact").get<int>(), 10);
@@ -80,7 +80,7 @@ TEST(StaleStream, DisarmsAndStaysNotArmedUntilToldByCommand) {
     const auto before_command = Rig::frames_stored(folder);
     // A sender that begins anew is believed once the one before was silent for stream.restart_after_ms, 1 s.
     std::this_thread::sleep_for(std::chrono::milliseconds{1200});
-    rig.shell("oscsend localhost " + std::to_string(rig.control_port()) + " /arm");
+    run("oscsend localhost " + std::to_string(rig.control_port()) + " /arm");
     ASSERT_TRUE(session->says("millpond: armed (command)\n")) << session->err();
     EXPECT_EQ(rig.feed(recording, {"--speed", "8"})->status(), 0);
     ASSERT_TRUE(wait_until([&] { return Rig::frames_stored(folder) >= before_command + 25000; }));
@@ -134,4 +134,4 @@ TEST(LostPackets, AreGapsOfTheirLengthAndTheReRunStillDecidesTheSame) {
 }
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test
