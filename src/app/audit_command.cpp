@@ -9,6 +9,7 @@
 #include "settings/yaml_reader.hpp"
 
 #include <CLI/CLI.hpp>
+#include <fmt/format.h>
 
 #include <cstdio>
 #include <memory>
@@ -38,6 +39,17 @@ class Stages {
     std::optional<Progress> line_;
 };
 
+// A session may have been ended, or cut, before the recording that the labels are of.
+Ripples labels_for(const std::string& table, const SessionReader& session) {
+    auto ripples = ripples_from_table(table, session.rate(), UINT64_MAX);
+    const auto beyond = std::erase_if(ripples, [&](const Ripple& ripple) { return ripple.onset >= session.end(); });
+    if (beyond > 0) {
+        fmt::print(stderr, "audit: {} of {} ripples of {} lie beyond the session's end at {:.3f} s and are left out\n",
+                   beyond, beyond + ripples.size(), table, seconds_at(session.end(), session.rate()));
+    }
+    return ripples;
+}
+
 AuditResult audit_with(const AuditOptions& options) {
     const SessionReader session(options.session); // refuses what is no session before anything else
     const auto settings = load_settings(session.settings_file());
@@ -46,7 +58,7 @@ AuditResult audit_with(const AuditOptions& options) {
     input.settings = {settings.detector, settings.arbiter};
     input.settings_name = session.settings_file().string();
     if (!options.labels.empty()) {
-        input.labels = ripples_from_table(options.labels, session.rate(), session.end().value);
+        input.labels = labels_for(options.labels, session);
         input.labels_name = options.labels;
     }
     if (!options.referee.empty()) {
@@ -77,22 +89,17 @@ void run_audit(const AuditOptions& options) {
 
 void add_audit_command(CLI::App& program) {
     auto* command =
-        program.add_subcommand("audit", "What happened in a session, and whether it decides the same again");
+        program.add_subcommand("audit", "what happened in a session, and whether it decides the same again");
     const auto options = std::make_shared<AuditOptions>();
-    command->add_option("session", options->session, "Session folder of `millpond live`, closed or cut")
-        ->required()
-        ->type_name("SESSION");
-    command
-        ->add_option("--labels", options->labels,
-                     "Events table of the ripples to score against (trial_type ripple); without it the referee "
-                     "looks for them in the stored samples")
-        ->type_name("TABLE");
-    command->add_option("--referee", options->referee, "YAML file with the referee's settings; without it its defaults")
-        ->type_name("FILE");
-    command->add_option("--out", options->out, "Folder for audit.json and tables (made where it does not exist)")
-        ->type_name("DIR");
-    command->add_flag("--overwrite", options->overwrite, "Replace the files of an earlier audit in --out");
-    command->add_flag("--json", options->json, "Print JSON with the same figures instead of text");
+    command->add_option("SESSION", options->session, "session folder of `millpond live`, closed or cut")->required();
+    command->add_option(
+        "--labels", options->labels,
+        "events table whose rows of trial_type ripple are the truth; those beyond the session's end are\n"
+        "left out; else the referee over the stored samples");
+    command->add_option("--referee", options->referee, "YAML file with the referee's settings; else its defaults");
+    command->add_option("--out", options->out, "folder for audit.json and tables; made where it does not exist");
+    command->add_flag("--overwrite", options->overwrite, "replace the files of an earlier audit in --out");
+    command->add_flag("--json", options->json, "print JSON with the same figures instead of text");
     add_example(*command,
                 "build/millpond audit \"$(ls -d sessions/*_rig | tail -n 1)\" --out audit_of_rig\n"
                 "Exit status: 0 decisions reproduced and records intact, 1 differences or damage, 2 bad input.");

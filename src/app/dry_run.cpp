@@ -1,14 +1,11 @@
 #include "app/dry_run.hpp"
 
+#include "app/from_settings.hpp"
 #include "app/progress.hpp"
 #include "app/truth.hpp"
 #include "base/clock.hpp"
-#include "base/refusal.hpp"
-#include "journal/session_reader.hpp"
 #include "recording/recording_reader.hpp"
 #include "settings/yaml_reader.hpp"
-#include "settings/yaml_writer.hpp"
-#include "sham/schedule.hpp"
 
 #include <fmt/format.h>
 
@@ -16,15 +13,6 @@
 
 namespace millpond {
 namespace {
-
-Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
-    Schedule schedule;
-    if (arbiter.condition == Condition::schedule) {
-        schedule = read_schedule(arbiter.schedule_file, rate);
-        check_schedule(schedule, {arbiter.lockout_ms, arbiter.max_pulses_per_second}, rate, arbiter.schedule_file);
-    }
-    return schedule;
-}
 
 void notice_rate(const Settings& settings, Hertz rate) {
     if (settings.stream.rate_hz > 0.0 && settings.stream.rate_hz != rate.value) {
@@ -70,39 +58,6 @@ void count_events(DryRun& run) {
 }
 
 } // namespace
-
-Channels channels_for(const Settings& settings, const Channels& recorded, const std::string& where) {
-    if (settings.channels.empty()) {
-        return recorded;
-    }
-    if (settings.channels.size() != recorded.size()) {
-        throw Refusal(where + ": channels", fmt::format("{} channels", settings.channels.size()),
-                      fmt::format("as many as the recording has, {}, or none", recorded.size()));
-    }
-    return settings.channels;
-}
-
-std::vector<FloorState> warm_start_floors(const DetectorSettings& detector) {
-    std::vector<FloorState> floors;
-    if (!detector.floor.warm_start_session.empty()) {
-        for (const auto& floor : last_floors(SessionReader(detector.floor.warm_start_session).events())) {
-            floors.push_back({floor.mean, floor.deviation, floor.frames});
-        }
-    }
-    return floors;
-}
-
-std::string settings_hash(const Settings& settings, const Channels& channels) {
-    auto text = to_yaml(settings.detector) + to_yaml(settings.arbiter);
-    for (const auto& channel : channels) {
-        text += to_yaml(channel);
-    }
-    std::uint64_t hash = 0xCBF29CE484222325U; // Fowler, Noll and Vo's offset basis and, below, prime
-    for (const char c : text) {
-        hash = (hash ^ static_cast<unsigned char>(c)) * 0x100000001B3U;
-    }
-    return fmt::format("{:016x}", hash);
-}
 
 DryRun dry_run(const DryRunPlan& plan) {
     const auto settings = load_settings(plan.settings);

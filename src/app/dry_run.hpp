@@ -47,15 +47,4 @@ struct DryRun {
 /// Refuses settings that do not fit the recording, and labels of another one. Notices go to standard error.
 [[nodiscard]] DryRun dry_run(const DryRunPlan& plan);
 
-/// Channels that a run over a recording uses: the settings' where they list some, else the recording's own.
-/// Refuses a list of another length.
-[[nodiscard]] Channels channels_for(const Settings& settings, const Channels& recorded, const std::string& where);
-
-/// Floors that the settings want to start from; empty where they name no session.
-[[nodiscard]] std::vector<FloorState> warm_start_floors(const DetectorSettings& detector);
-
-/// 16 hexadecimal digits: FNV-1a, 64 bits, of what decides: detector, arbiter and channels as YAML. Places of files
-/// that the settings name enter by name, not by content.
-[[nodiscard]] std::string settings_hash(const Settings& settings, const Channels& channels);
-
 } // namespace millpond

@@ -61,10 +61,10 @@ void add_dryrun_command(CLI::App& program) {
     auto options = std::make_shared<Options>();
     auto& command = *program.add_subcommand(
         "dryrun",
-        "Runs the engine over a recording, as fast as it goes, and scores it against labels or the referee.\n"
+        "run the engine over a recording, as fast as it goes, and score it against labels or the referee\n"
         "The arbiter runs as if armed from the first sample, whatever the settings say, so that triggers,\n"
         "lock-out and limits show; no pulse leaves the computer. The recording's rate is used, and the settings'\n"
-        "channels where they list some, else the recording's.");
+        "channels where they list some, else the recording's");
     command.add_option("RECORDING", options->plan.recording, "WAV, RF64, W64, FLAC, raw or EDF+ file")->required();
     command.add_option("--settings", options->plan.settings, "settings file, the same as for a session")->required();
     command.add_option("--out", options->out, "folder for events.tsv and score.json; must not exist")->required();

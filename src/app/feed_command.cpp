@@ -1,8 +1,10 @@
 // `millpond feed`: a recording out as RTP at real pace, the stand-in for a rig.
 #include "app/commands.hpp"
+#include "app/progress.hpp"
 #include "base/refusal.hpp"
 #include "intake/rtp_sender.hpp"
 #include "recording/recording_reader.hpp"
+#include "recording/whole_file.hpp"
 
 #include <CLI/CLI.hpp>
 #include <boost/asio/ip/address_v4.hpp>
@@ -12,7 +14,6 @@
 #include <csignal>
 #include <cstdio>
 #include <filesystem>
-#include <fstream>
 #include <memory>
 
 namespace millpond {
@@ -84,19 +85,7 @@ void publish_sdp(const FeedOptions& options, const SdpStream& stream) {
         std::fflush(stdout);
         return;
     }
-    const std::filesystem::path target = options.write_sdp;
-    const std::filesystem::path unfinished = options.write_sdp + ".unfinished";
-    std::ofstream out(unfinished, std::ios::binary);
-    out << text;
-    out.close();
-    std::error_code trouble;
-    if (out) {
-        std::filesystem::rename(unfinished, target, trouble);
-    }
-    if (!out || trouble) {
-        std::filesystem::remove(unfinished, trouble);
-        throw Refusal("--write-sdp", options.write_sdp, "a file that can be written");
-    }
+    write_whole_file(options.write_sdp, text);
 }
 
 /// The stretch of the recording that was asked for, packet by packet, again and again where asked.
@@ -176,9 +165,8 @@ void report(const RtpSenderCounts& counts, const FeedOptions& options, Hertz rat
     }
 }
 
-void send_all(Stretch& stretch, RtpSender& sender, Pace& pace, std::uint32_t frames_per_packet) {
-    const Hertz rate = stretch.info().rate;
-    std::uint64_t tell_at = 0;
+void send_all(Stretch& stretch, RtpSender& sender, Pace& pace, std::uint32_t frames_per_packet, bool loop) {
+    Progress progress("feed", loop ? 0.0 : static_cast<double>(stretch.frames()));
     while (interrupted == 0) {
         const auto frames = stretch.next(frames_per_packet);
         // A packet is due when the last of its samples would have been taken.
@@ -187,13 +175,8 @@ void send_all(Stretch& stretch, RtpSender& sender, Pace& pace, std::uint32_t fra
             break;
         }
         sender.send(frames);
-        if (end >= tell_at) {
-            std::fprintf(stderr, "\rfeed: %.0f s of %.0f s sent ", seconds_at({end}, rate),
-                         seconds_at({stretch.frames()}, rate));
-            tell_at = end + static_cast<std::uint64_t>(rate.value);
-        }
+        progress.at(static_cast<double>(end));
     }
-    std::fputs("\n", stderr);
 }
 
 void feed(const FeedOptions& options) {
@@ -206,7 +189,7 @@ void feed(const FeedOptions& options) {
     RtpSender sender(settings);
     publish_sdp(options, settings.stream);
     Pace pace(stretch.info().rate, options.speed);
-    send_all(stretch, sender, pace, settings.frames_per_packet);
+    send_all(stretch, sender, pace, settings.frames_per_packet, options.loop);
     report(sender.counts(), options, stretch.info().rate, pace.most_late());
 }
 
@@ -214,7 +197,7 @@ void feed(const FeedOptions& options) {
 
 void add_feed_command(CLI::App& program) {
     auto options = std::make_shared<FeedOptions>();
-    auto* feed_app = program.add_subcommand("feed", "Send a recording as RTP at real pace: the stand-in for a rig.");
+    auto* feed_app = program.add_subcommand("feed", "send a recording as RTP at real pace: the stand-in for a rig");
     feed_app->add_option("RECORDING", options->recording, "recording to send")->required();
     feed_app->add_option("--sidecar", options->sidecar,
                          "YAML file with scale, names and rates that the recording does not say");

@@ -15,7 +15,6 @@
 #include <csignal>
 #include <cstdio>
 #include <memory>
-
 #include <unistd.h>
 
 namespace millpond {
@@ -23,6 +22,7 @@ namespace {
 
 struct LiveOptions {
     std::string settings_file;
+    std::string schedule_file;
     bool start_armed = false;
     double stop_after_s = 0.0;
     double status_every_s = 0.0;
@@ -43,9 +43,11 @@ std::shared_ptr<spdlog::logger> operators_log(const std::filesystem::path& folde
 class Operator {
   public:
     Operator(LiveSession& session, const LiveOptions& options, std::shared_ptr<spdlog::logger> log)
-        : session_(session), options_(options), log_(std::move(log)), signals_(session.control(), SIGINT, SIGTERM, SIGHUP),
-          timer_(session.control()), terminal_(isatty(STDERR_FILENO) != 0),
-          status_every_(options.status_every_s > 0.0 ? options.status_every_s : terminal_ ? 0.5 : 10.0) {}
+        : session_(session), options_(options), log_(std::move(log)),
+          signals_(session.control(), SIGINT, SIGTERM, SIGHUP), timer_(session.control()),
+          terminal_(isatty(STDERR_FILENO) != 0), status_every_(options.status_every_s > 0.0 ? options.status_every_s
+                                                               : terminal_                  ? 0.5
+                                                                                            : 10.0) {}
 
     /// Until the session is over.
     void watch() {
@@ -146,14 +148,20 @@ void run_live(const LiveOptions& options) {
     std::signal(SIGXFSZ, SIG_IGN); // a file too large is a full disk to the journal, not the end of the program
     auto settings = load_settings(options.settings_file);
     settings.arbiter.start_armed = settings.arbiter.start_armed || options.start_armed;
+    if (!options.schedule_file.empty()) {
+        settings.arbiter.condition = Condition::schedule;
+        settings.arbiter.schedule_file = std::filesystem::absolute(options.schedule_file).string();
+    }
     std::shared_ptr<spdlog::logger> log;
     LiveSession session(settings, options.settings_file, [&log](const std::string& line) { log->warn("{}", line); });
     log = operators_log(session.folder());
     log->info("{}", program_name());
     log->info("session folder {}", session.folder().string());
-    log->info("{} channels at {} Hz; the detector itself takes {:.1f} ms (group delay at the band's centre, and smoothing)",
-              session.stream().channels, session.stream().rate_hz, session.delay_ms());
-    log->info("pulse only under the approved protocol and local rules; ask the licensed veterinarian. Ctrl-C ends, line low");
+    log->info(
+        "{} channels at {} Hz; the detector itself takes {:.1f} ms (group delay at the band's centre, and smoothing)",
+        session.stream().channels, session.stream().rate_hz, session.delay_ms());
+    log->info(
+        "pulse only under the approved protocol and local rules; ask the licensed veterinarian. Ctrl-C ends, line low");
     Operator watching(session, options, log);
     session.start();
     watching.watch();
@@ -173,12 +181,17 @@ void add_live_command(CLI::App& program) {
     auto* command = program.add_subcommand("live", "run a session: samples in, pulses out, everything journaled\n"
                                                    "Samples must come at real pace, by a pipe too (ffmpeg: -re)");
     auto options = std::make_shared<LiveOptions>();
-    command->add_option("settings", options->settings_file, "settings file")->required();
-    command->add_flag("--start-armed", options->start_armed, "allow pulses from the start, as arbiter.start_armed does");
+    command->add_option("SETTINGS", options->settings_file, "settings file")->required();
+    command->add_flag("--start-armed", options->start_armed,
+                      "allow pulses from the start, as arbiter.start_armed does");
+    command->add_option(
+        "--schedule", options->schedule_file,
+        "control schedule to play: pulses at its places, none at detections, whatever arbiter.condition says");
     command->add_option("--stop-after-s", options->stop_after_s, "end by itself after this many seconds; 0: never")
         ->check(CLI::Range(0.0, 1e7));
-    command->add_option("--status-every-s", options->status_every_s,
-                        "how often the status line is shown; 0: every 0.5 s on a terminal, else every 10 s")
+    command
+        ->add_option("--status-every-s", options->status_every_s,
+                     "how often the status line is shown; 0: every 0.5 s on a terminal, else every 10 s")
         ->check(CLI::Range(0.0, 1e7));
     add_example(*command, "build/millpond live config/live.yaml --stop-after-s 10");
     command->callback([options] { run_live(*options); });

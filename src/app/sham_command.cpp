@@ -1,6 +1,7 @@
 #include "app/commands.hpp"
 #include "app/truth.hpp"
 #include "base/refusal.hpp"
+#include "journal/session_reader.hpp"
 #include "recording/events_table.hpp"
 #include "referee/scoring.hpp"
 #include "sham/schedule.hpp"
@@ -17,17 +18,18 @@ namespace millpond {
 namespace {
 
 struct CommonOptions {
-    double sampling_hz = 1250.0;
+    double sampling_hz = 0.0; ///< 0: not said
     ScheduleLimits limits;
     std::filesystem::path out;
     bool overwrite = false;
 };
 
-void add_limits(CLI::App& command, CommonOptions& options) {
-    command
-        .add_option("--sampling-hz", options.sampling_hz, "frames a second of the stream that will play the schedule")
-        ->required()
-        ->check(CLI::Range(1.0, 1e6));
+void add_limits(CLI::App& command, CommonOptions& options, const std::string& known_without = {}) {
+    auto* sampling = command
+                         .add_option("--sampling-hz", options.sampling_hz,
+                                     "frames a second of the stream that will play the schedule" + known_without)
+                         ->check(CLI::Range(1.0, 1e6));
+    sampling->required(known_without.empty());
     command
         .add_option("--lockout-ms", options.limits.lockout_ms,
                     "lock-out of the session that will play it; a schedule that breaks it is refused")
@@ -41,20 +43,43 @@ void add_limits(CLI::App& command, CommonOptions& options) {
 }
 
 void add_making(CLI::App& command, CommonOptions& options, double& min_interval_ms, std::uint64_t& seed) {
-    add_limits(command, options);
+    add_limits(command, options, "; a session folder says it itself");
     command
         .add_option("--min-interval-ms", min_interval_ms,
                     "shortest interval between two places; not below the lock-out")
         ->check(CLI::Range(0.0, 60000.0))
         ->capture_default_str();
-    command.add_option("--seed", seed, "seed of the random numbers (SplitMix64): the same seed, the same schedule")
+    command.add_option("--seed", seed, "seed of the random numbers (xoshiro256++): the same seed, the same schedule")
         ->capture_default_str();
     command.add_option("--out", options.out, "schedule to write: an events table with trial_type scheduled")
         ->required();
     command.add_flag("--overwrite", options.overwrite, "replace --out where it exists");
 }
 
-Schedule triggers_of(const std::filesystem::path& table, Hertz rate) {
+Hertz rate_of(const CommonOptions& options) {
+    if (options.sampling_hz == 0.0) {
+        throw Refusal("--sampling-hz", "nothing", "the rate of the stream that will play the schedule");
+    }
+    return Hertz{options.sampling_hz};
+}
+
+Schedule triggers_of_session(const std::filesystem::path& folder, CommonOptions& options) {
+    const SessionReader session(folder);
+    if (options.sampling_hz != 0.0 && options.sampling_hz != session.rate().value) {
+        throw Refusal("--sampling-hz", fmt::format("{}", options.sampling_hz),
+                      fmt::format("the rate of {}, {}, or nothing", folder.string(), session.rate().value));
+    }
+    options.sampling_hz = session.rate().value;
+    Schedule triggers;
+    for (const auto& event : session.events()) {
+        if (event.kind == EventKind::trigger) {
+            triggers.push_back(event.sample);
+        }
+    }
+    return triggers;
+}
+
+Schedule triggers_of_table(const std::filesystem::path& table, Hertz rate) {
     Schedule triggers;
     for (const auto& event : read_events_table(table, rate.value)) {
         if (event.trial_type != "trigger") {
@@ -66,10 +91,16 @@ Schedule triggers_of(const std::filesystem::path& table, Hertz rate) {
         }
         triggers.push_back(SampleIndex{static_cast<std::uint64_t>(event.sample)});
     }
+    return triggers;
+}
+
+/// A session folder sets the sampling rate too.
+Schedule triggers_of(const std::filesystem::path& events, CommonOptions& options) {
+    auto triggers = std::filesystem::is_directory(events) ? triggers_of_session(events, options)
+                                                          : triggers_of_table(events, rate_of(options));
     std::sort(triggers.begin(), triggers.end());
     if (triggers.empty()) {
-        throw Refusal(table.string(), "no row with trial_type trigger",
-                      "the events of a session or dry run with triggers");
+        throw Refusal(events.string(), "no trigger", "the events of a session or dry run with triggers");
     }
     return triggers;
 }
@@ -119,9 +150,9 @@ void add_delayed(CLI::App& sham) {
     auto options = std::make_shared<Options>();
     auto& command = *sham.add_subcommand(
         "delayed",
-        "Puts each trigger of a session or dry run later by a fixed or random delay. Places that come too near\n"
-        "to those before are put off, never dropped: the number of pulses stays matched.");
-    command.add_option("EVENTS", options->events, "events.tsv of a session or dry run")->required();
+        "put each trigger of a session or dry run later by a fixed or random delay\n"
+        "Places that come too near to those before are put off, never dropped: the number of pulses stays matched");
+    command.add_option("EVENTS", options->events, "session folder, or events.tsv of a session or dry run")->required();
     command
         .add_option("--delay-least-ms", options->plan.least_ms, "shortest delay; equal to the longest: a fixed delay")
         ->check(CLI::Range(0.0, 60000.0))
@@ -135,10 +166,9 @@ void add_delayed(CLI::App& sham) {
     command.callback([options] {
         check_min_interval(options->plan.min_interval_ms, *options);
         options->plan.max_pulses_per_second = options->limits.max_pulses_per_second;
-        const Hertz rate{options->sampling_hz};
-        const auto triggers = triggers_of(options->events, rate);
+        const auto triggers = triggers_of(options->events, *options);
         fmt::print("triggers    {}\n", triggers.size());
-        finish(delayed_schedule(triggers, options->plan, rate), *options);
+        finish(delayed_schedule(triggers, options->plan, rate_of(*options)), *options);
     });
 }
 
@@ -150,11 +180,12 @@ void add_rate_matched(CLI::App& sham) {
     auto options = std::make_shared<Options>();
     auto& command = *sham.add_subcommand(
         "rate-matched",
-        "Places at random with a minimum interval (shifted exponential law), at a rate given or taken from\n"
-        "the triggers of a session, from the first to the last of them.");
+        "put places at random with a minimum interval (shifted exponential law), at a rate given or taken from\n"
+        "the triggers of a session, from the first to the last of them");
     auto* rate_option = command.add_option("--rate-per-s", options->plan.rate_per_s, "places a second, on average")
                             ->check(CLI::Range(1e-6, 1000.0));
-    auto* like_option = command.add_option("--like", options->like, "events.tsv whose triggers give the rate");
+    auto* like_option =
+        command.add_option("--like", options->like, "session folder or events.tsv whose triggers give the rate");
     rate_option->excludes(like_option);
     command
         .add_option("--duration-s", options->plan.duration_s, "length of the schedule from the stream's first frame")
@@ -175,12 +206,12 @@ void add_rate_matched(CLI::App& sham) {
         if (rate_option->count() + like_option->count() == 0) {
             throw Refusal("command line", "neither --rate-per-s nor --like", "one of the two");
         }
-        const Hertz rate{options->sampling_hz};
         if (like_option->count() > 0) {
-            options->plan.rate_per_s =
-                trigger_rate_per_s(triggers_of(options->like, rate), rate, options->like.string());
+            const auto triggers = triggers_of(options->like, *options);
+            options->plan.rate_per_s = trigger_rate_per_s(triggers, rate_of(*options), options->like.string());
             fmt::print("rate of     {}: {:.4f} /s\n", options->like.string(), options->plan.rate_per_s);
         }
+        const Hertz rate = rate_of(*options);
         if (!options->keep_away_from.empty()) {
             options->plan.keep_away_from = ripples_from_table(options->keep_away_from, rate, UINT64_MAX);
         }
@@ -195,7 +226,7 @@ void add_check(CLI::App& sham) {
     };
     auto options = std::make_shared<Options>();
     auto& command =
-        *sham.add_subcommand("check", "Reads a schedule as a session would and refuses one that breaks the limits.");
+        *sham.add_subcommand("check", "read a schedule as a session would and refuse one that breaks the limits");
     command.add_option("SCHEDULE", options->schedule, "schedule to check")->required();
     add_limits(command, *options);
     add_example(command, "build/millpond sham check rate_matched.tsv --sampling-hz 1250");
@@ -210,7 +241,7 @@ void add_check(CLI::App& sham) {
 } // namespace
 
 void add_sham_command(CLI::App& program) {
-    auto& sham = *program.add_subcommand("sham", "Makes a control schedule: pulses that do not follow detections.");
+    auto& sham = *program.add_subcommand("sham", "make a control schedule: pulses that do not follow detections");
     sham.require_subcommand(1);
     add_example(sham, "build/millpond sham rate-matched --rate-per-s 0.6 --duration-s 3600 --sampling-hz 1250 "
                       "--out rate_matched.tsv");

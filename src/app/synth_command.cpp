@@ -1,6 +1,7 @@
 // millpond synth: an invented recording with known ripples, its sidecar and its truth.
 #include "app/commands.hpp"
 #include "app/described_options.hpp"
+#include "app/progress.hpp"
 #include "base/refusal.hpp"
 #include "recording/events_table.hpp"
 #include "recording/recording_writer.hpp"
@@ -9,7 +10,6 @@
 
 #include <fmt/format.h>
 
-#include <chrono>
 #include <cstdio>
 
 namespace millpond {
@@ -31,29 +31,6 @@ struct SynthRequest {
     bool overwrite = false;
     DescribedOptions scene_options;
     DescribedOptions storage_options;
-};
-
-/// Prints how far the work is, every second, from the third second on.
-class Progress {
-  public:
-    void at(std::uint64_t done, std::uint64_t all) {
-        const auto now = std::chrono::steady_clock::now();
-        if (now - last_ >= std::chrono::seconds{shown_ ? 1 : 2}) {
-            std::fprintf(stderr, "\rsynth: %3.0f %%", 100.0 * static_cast<double>(done) / static_cast<double>(all));
-            std::fflush(stderr);
-            last_ = now;
-            shown_ = true;
-        }
-    }
-    ~Progress() {
-        if (shown_) {
-            std::fputs("\n", stderr);
-        }
-    }
-
-  private:
-    std::chrono::steady_clock::time_point last_ = std::chrono::steady_clock::now();
-    bool shown_ = false;
 };
 
 void refuse_existing(const std::filesystem::path& file) {
@@ -85,10 +62,10 @@ void write_truth(const std::filesystem::path& file, const Scene& scene) {
 
 void write_samples(RecordingWriter& writer, Scene& scene) {
     std::vector<float> frames(4096 * scene.channels().size());
-    Progress progress;
+    Progress progress("synth", static_cast<double>(scene.frames()));
     while (const auto made = scene.next(frames)) {
         writer.write(std::span(frames).first(made * scene.channels().size()));
-        progress.at(writer.frames(), scene.frames());
+        progress.at(static_cast<double>(writer.frames()));
     }
 }
 
@@ -124,9 +101,9 @@ void run_synth(const SynthRequest& request) {
 
 void add_synth_command(CLI::App& program) {
     auto* command = program.add_subcommand(
-        "synth", "Make an invented recording with known ripples, its sidecar and a table of the truth");
+        "synth", "make an invented recording with known ripples, its sidecar and a table of the truth");
     const auto request = std::make_shared<SynthRequest>();
-    command->add_option("recording", request->recording, "file to make: .wav, .rf64, .w64, .flac or .raw")->required();
+    command->add_option("RECORDING", request->recording, "file to make: .wav, .rf64, .w64, .flac or .raw")->required();
     command->add_option("--scene", request->scene_file, "settings of the scene (YAML); options override it");
     command->add_flag("--overwrite", request->overwrite, "replace a recording of that name");
     request->storage_options.declare(*command, StorageSettings{});

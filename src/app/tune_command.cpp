@@ -1,6 +1,6 @@
 #include "app/commands.hpp"
-#include "app/dry_run.hpp"
 #include "app/dry_run_tables.hpp"
+#include "app/from_settings.hpp"
 #include "app/progress.hpp"
 #include "app/truth.hpp"
 #include "app/tune_grid.hpp"
@@ -171,12 +171,13 @@ void add_tune_command(CLI::App& program) {
     auto options = std::make_shared<Options>();
     auto& command = *program.add_subcommand(
         "tune",
-        "Tries thresholds, bands, orders and smoothings on recordings and writes the settings that find most ripples\n"
-        "at N false per minute or fewer. Each recording is cut into blocks: the 1st, 3rd, 5th ... are training parts,\n"
+        "try thresholds, bands, orders and smoothings on recordings and write the settings that find most ripples\n"
+        "at N false per minute or fewer\n"
+        "Each recording is cut into blocks: the 1st, 3rd, 5th ... are training parts,\n"
         "the 2nd, 4th, 6th ... are held out. Settings at N or fewer on the training parts are ranked by hit rate\n"
         "there (then by median onset latency, then false per minute); the first of them that is at N or fewer on the\n"
         "held-out parts too is picked. Engine and scoring are those of dryrun, armed and from an unsettled floor;\n"
-        "the time that the floor needs to settle is not scored. Recordings are held in memory, 4 bytes a sample.");
+        "the time that the floor needs to settle is not scored. Recordings are held in memory, 4 bytes a sample");
     command.add_option("RECORDING", options->recordings, "one or more recordings of the same rate")->required();
     command.add_option("--out", options->out, "settings file to write")->required();
     command.add_option("--settings", options->base, "settings to start from; without it the defaults");

@@ -1,12 +1,10 @@
 #include "app/wiring.hpp"
 
-#include "app/dry_run.hpp"
-#include "base/refusal.hpp"
+#include "app/from_settings.hpp"
 #include "journal/session_reader.hpp"
 #include "outputs/osc_output.hpp"
 #include "outputs/silent_output.hpp"
 #include "realtime/realtime.hpp"
-#include "sham/schedule.hpp"
 
 namespace millpond {
 namespace {
@@ -37,7 +35,8 @@ std::string settings_to_keep(Settings settings, const StreamSettings& stream, co
     return settings_to_yaml(settings);
 }
 
-SessionAbout about(const Settings& settings, const StreamSettings& stream, const Channels& channels, Detector& detector) {
+SessionAbout about(const Settings& settings, const StreamSettings& stream, const Channels& channels,
+                   Detector& detector) {
     SessionAbout about;
     about.program = program_name();
     about.rate = Hertz{stream.rate_hz};
@@ -100,13 +99,7 @@ Detector make_detector(const Settings& settings, const Channels& channels, Hertz
 }
 
 Arbiter make_arbiter(const Settings& settings, Hertz rate) {
-    std::vector<SampleIndex> schedule;
-    if (settings.arbiter.condition == Condition::schedule) {
-        schedule = read_schedule(settings.arbiter.schedule_file, rate);
-        check_schedule(schedule, {settings.arbiter.lockout_ms, settings.arbiter.max_pulses_per_second}, rate,
-                       settings.arbiter.schedule_file);
-    }
-    return Arbiter::make(settings.arbiter, rate, std::move(schedule));
+    return Arbiter::make(settings.arbiter, rate, schedule_for(settings.arbiter, rate));
 }
 
 std::unique_ptr<Output> make_output(const OutputSettings& settings) {

@@ -32,9 +32,10 @@ struct AuditScore {
     std::string truth; ///< the table's name, or "referee"
     Ripples ripples;
     std::vector<SampleIndex> detections;
-    Score detector;            ///< over all time in which the detector was fit to detect
-    Score session;             ///< over the time in which a trigger was possible
-    bool pulses_given = false; ///< pulses change the very signal that the truth is taken from
+    Score detector;                ///< over all time in which the detector was fit to detect
+    Score session;                 ///< over the time in which a trigger was possible
+    bool pulses_given = false;     ///< pulses change the very signal that the truth is taken from
+    bool pulses_scheduled = false; ///< a control schedule's: they did not follow detections
 };
 
 struct AuditResult {

@@ -110,6 +110,7 @@ Json score_json(const AuditResult& r) {
             {"truth", r.score->truth},
             {"ripples", r.score->ripples.size()},
             {"pulses_given", r.score->pulses_given},
+            {"pulses_scheduled", r.score->pulses_scheduled},
             {"detector", json_of(r.score->detector)},
             {"session", json_of(r.score->session)},
             {"definitions", score_definitions()}};

@@ -118,8 +118,10 @@ std::string score_text(const AuditResult& r) {
     text += one_score("session, while a trigger was possible", r.score->session);
     if (r.score->pulses_given) {
         text +=
-            "  Pulses were given: they change the signal that the truth is taken from. Estimate hit and false rates\n"
-            "  from sessions without pulses or with a control schedule.\n";
+            r.score->pulses_scheduled
+                ? "  Pulses of a control schedule were given: they change the signal where they fell, ripple or not.\n"
+                : "  Pulses were given: they change the signal that the truth is taken from. Estimate hit and false\n"
+                  "  rates from sessions without pulses or with a control schedule.\n";
     }
     return text;
 }

@@ -56,12 +56,13 @@ void list(SessionFigures& figures, const Event& event) {
 
 FloorFigure figure_of(const std::vector<Event>& floors) {
     FloorFigure figure;
-    std::vector<double> means;
+    std::vector<double> means; // once settled; before, they climb from nothing
     for (const auto& event : floors) {
         const auto floor = event.as<FloorDetail>();
         if (floor.settled != 0 && !figure.settled) {
             figure.settled = true;
             figure.settled_at = event.sample;
+            means.clear();
         }
         means.push_back(floor.mean);
     }

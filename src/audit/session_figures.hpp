@@ -37,7 +37,9 @@ struct FloorFigure {
     std::uint64_t events = 0;
     bool settled = false;
     SampleIndex settled_at; ///< first event that says settled
-    double mean_least = 0.0, mean_median = 0.0, mean_most = 0.0, mean_last = 0.0;
+    /// From the first settled one on; of all where none was.
+    double mean_least = 0.0, mean_median = 0.0, mean_most = 0.0;
+    double mean_last = 0.0;
     double deviation_last = 0.0, threshold_last = 0.0;
 };
 

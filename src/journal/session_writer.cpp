@@ -60,7 +60,7 @@ std::unique_ptr<SessionWriter> SessionWriter::open(const SessionSettings& settin
     if (settings.store_samples != StoreSamples::none) {
         // So that every command that takes a recording takes the session's samples too, by their names and roles.
         write_sidecar(sidecar_path(folder.working() / sample_file_name(settings.store_samples)),
-                      {.microvolts_per_unit = 1.0, .channels = about.channels});
+                      {.microvolts_per_count = 1.0, .channels = about.channels});
     }
     auto state = std::make_unique<State>();
     state->drain = std::make_unique<JournalDrain>(folder.working(), settings, about, start_ns);

@@ -14,7 +14,7 @@ namespace millpond {
 namespace {
 
 // How long before a deadline sleeping turns into watching the clock: an ordinary sleep ends up to this late.
-// 80 us: p99 lateness of clock_nanosleep in bench/pulse_end on a busy machine.
+// 80 us: p99 lateness of clock_nanosleep in bench/pulse_end_bench on a busy machine.
 constexpr Nanos watch_before{80'000};
 
 std::atomic<Output*> guarded{nullptr};

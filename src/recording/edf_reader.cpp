@@ -204,7 +204,7 @@ class EdfReader : public RecordingReader {
         info_.rate = Hertz{signals_.front().rate_hz};
         info_.frames = signals_.front().samples;
         for (auto& signal : signals_) {
-            signal.microvolts_per_physical *= sidecar.microvolts_per_unit == 0.0 ? 1.0 : sidecar.microvolts_per_unit;
+            signal.microvolts_per_physical *= sidecar.microvolts_per_count == 0.0 ? 1.0 : sidecar.microvolts_per_count;
             info_.channels.push_back(signal.channel);
         }
     }

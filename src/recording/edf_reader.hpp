@@ -11,7 +11,7 @@ namespace millpond {
 /// Whether the file begins as EDF or BDF files do.
 [[nodiscard]] bool looks_like_edf(const std::filesystem::path& recording);
 
-/// Physical values in microvolts, scaled by the sidecar's microvolts_per_unit only where it says one.
+/// Physical values in microvolts, scaled by the sidecar's microvolts_per_count only where it says one.
 /// Names and roles from the sidecar: where its names are labels of the file, by name, and signals that it does not list
 /// are unused; else in order, as many as there are signals. Unused signals of another rate or unit are left out.
 [[nodiscard]] std::unique_ptr<RecordingReader> open_edf(const std::filesystem::path& recording, const Sidecar& sidecar,

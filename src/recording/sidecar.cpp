@@ -46,8 +46,8 @@ Sidecar read_sidecar(const std::filesystem::path& recording, const std::filesyst
 void write_sidecar(const std::filesystem::path& sidecar, const Sidecar& said) {
     YAML::Emitter out;
     out << YAML::BeginMap;
-    if (said.microvolts_per_unit != 0.0) {
-        out << YAML::Key << "microvolts_per_unit" << YAML::Value << fmt::format("{}", said.microvolts_per_unit);
+    if (said.microvolts_per_count != 0.0) {
+        out << YAML::Key << "microvolts_per_count" << YAML::Value << fmt::format("{}", said.microvolts_per_count);
     }
     if (said.rate_hz != 0.0) {
         out << YAML::Key << "rate_hz" << YAML::Value << fmt::format("{}", said.rate_hz);

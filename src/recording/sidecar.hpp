@@ -1,6 +1,6 @@
 // What a recording's file does not say itself: scale, names, roles, and the whole shape of raw files. Thread: cold.
 //
-//     microvolts_per_unit: 0.195
+//     microvolts_per_count: 0.195
 //     channels:
 //       - {name: CA1-1, role: ripple}
 //       - {name: cortex, role: reference}
@@ -37,18 +37,19 @@ constexpr int integer_bits(Encoding encoding) noexcept {
 }
 
 struct Sidecar {
-    double microvolts_per_unit = 0.0; ///< 0: not said
-    Channels channels;                ///< empty: not said
-    double rate_hz = 0.0;             ///< 0: not said
-    int channel_count = 0;            ///< 0: not said
+    double microvolts_per_count = 0.0; ///< 0: not said
+    Channels channels;                 ///< empty: not said
+    double rate_hz = 0.0;              ///< 0: not said
+    int channel_count = 0;             ///< 0: not said
     Encoding encoding = Encoding::unsaid;
 
     bool operator==(const Sidecar&) const = default;
 };
 
 template <class Visitor> void describe(Visitor& visit, Sidecar& sidecar) {
-    visit.number("microvolts_per_unit", sidecar.microvolts_per_unit, {-1e9, 1e9},
-                 "microvolts of one count (integer files) or of 1.0 (float files; 1 where it is not said)");
+    visit.number(
+        "microvolts_per_count", sidecar.microvolts_per_count, {-1e9, 1e9},
+        "microvolts of one count (integer files), or of the value 1 (float files and EDF+: 1 where it is not said)");
     visit.list("channels", sidecar.channels, "channels in file order (EDF+: or by their labels)");
     visit.number("rate_hz", sidecar.rate_hz, {1.0, 1e6}, "frames a second (raw files)");
     visit.whole("channel_count", sidecar.channel_count, {1, 1024}, "channels (raw files; else as many as are listed)");

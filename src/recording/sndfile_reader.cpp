@@ -194,11 +194,11 @@ class SndfileReader : public RecordingReader {
     }
 
     void take_scale(const Sidecar& sidecar, const std::string& sidecar_name) {
-        if (bits_ != 0 && sidecar.microvolts_per_unit == 0.0) {
+        if (bits_ != 0 && sidecar.microvolts_per_count == 0.0) {
             throw Refusal(recording_.string(), "integer samples of no known scale",
-                          "microvolts_per_unit (of one count) in " + sidecar_name);
+                          "microvolts_per_count (of one count) in " + sidecar_name);
         }
-        scale_ = sidecar.microvolts_per_unit == 0.0 ? 1.0 : sidecar.microvolts_per_unit;
+        scale_ = sidecar.microvolts_per_count == 0.0 ? 1.0 : sidecar.microvolts_per_count;
     }
 
     sf_count_t read_chunk(std::span<float> out, sf_count_t frames) {

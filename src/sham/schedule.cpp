@@ -1,7 +1,7 @@
 #include "sham/schedule.hpp"
 
 #include "base/refusal.hpp"
-#include "sham/random.hpp"
+#include "base/random.hpp"
 
 #include <fmt/format.h>
 
@@ -10,6 +10,8 @@
 
 namespace millpond {
 namespace {
+
+constexpr std::uint64_t schedule_stream = 0; // one plan draws one kind of number
 
 double ms_of(std::uint64_t frames, Hertz rate) noexcept {
     return static_cast<double>(frames) * 1000.0 / rate.value;
@@ -105,7 +107,7 @@ MadeSchedule delayed_schedule(const Schedule& triggers, const DelayedPlan& plan,
     if (!(0.0 <= plan.least_ms && plan.least_ms <= plan.most_ms)) {
         throw Refusal("delay", fmt::format("{} to {} ms", plan.least_ms, plan.most_ms), "0 or more, least before most");
     }
-    SplitMix64 random(plan.seed);
+    Random random(plan.seed, schedule_stream);
     Schedule wishes;
     for (const auto trigger : triggers) {
         const double share = plan.least_ms < plan.most_ms ? random.uniform() : 0.0;
@@ -129,7 +131,7 @@ MadeSchedule rate_matched_schedule(const RateMatchedPlan& plan, Hertz rate) {
                                   plan.rate_per_s, mean_s, length_of(left)),
                       fmt::format("a mean interval above the minimum interval, {} s", plan.min_interval_ms / 1000.0));
     }
-    SplitMix64 random(plan.seed);
+    Random random(plan.seed, schedule_stream);
     Placer placer(plan.min_interval_ms, plan.max_pulses_per_second, rate);
     double at_s = 0.0;
     std::size_t stretch = 0;

@@ -1,7 +1,7 @@
 // What is on all channels at once, the reference too, and therefore no ripple: steps and bursts from muscles.
 #pragma once
 
-#include "synth/random.hpp"
+#include "base/random.hpp"
 #include "synth/scene_element.hpp"
 
 namespace millpond {

@@ -1,7 +1,7 @@
 // Background whose power falls with frequency, partly common to all channels, and each amplifier's own white noise.
 #pragma once
 
-#include "synth/random.hpp"
+#include "base/random.hpp"
 #include "synth/scene_element.hpp"
 
 namespace millpond {

@@ -1,7 +1,7 @@
 // Theta and mains hum.
 #pragma once
 
-#include "synth/random.hpp"
+#include "base/random.hpp"
 #include "synth/scene_element.hpp"
 
 namespace millpond {

@@ -1,7 +1,7 @@
 // Ripples with their sharp waves, and the truth about them.
 #pragma once
 
-#include "synth/random.hpp"
+#include "base/random.hpp"
 #include "synth/scene_element.hpp"
 
 #include <algorithm>

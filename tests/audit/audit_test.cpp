@@ -100,9 +100,10 @@ TEST_F(ToldSession, CountsAndListsAreThoseOfTheEvents) {
     tell(EventKind::gap, static_cast<int>(GapCause::non_finite), 600, GapDetail{3});
     tell(EventKind::packet_count, static_cast<int>(PacketCause::lost), 700, CountDetail{4});
     tell(EventKind::packet_count, static_cast<int>(PacketCause::lost), 800, CountDetail{1});
-    floor(1250, 12.0, false);
+    floor(1250, 2.0, false);
     floor(2500, 10.0, true);
-    floor(3750, 11.0, true);
+    floor(3750, 12.0, true);
+    floor(5000, 11.0, true);
     NoteDetail note{5, 0, {}};
     std::copy_n("sleep", 5, note.text.begin());
     tell(EventKind::note, 0, 900, note);
@@ -162,6 +163,21 @@ TEST_F(ToldSession, LabelsGiveHitsMissesFalseAndRepeats) {
     EXPECT_DOUBLE_EQ(s.onset_latency_ms.median, 20.0);
     EXPECT_EQ(result.score->session.hits, 1U);
     EXPECT_NE(audit_text(result).find("hits 1, misses 1, false 1, repeats 1"), std::string::npos);
+}
+
+TEST_F(ToldSession, AdvisesAControlScheduleWherePulsesFollowedDetectionsOnly) {
+    tell(EventKind::trigger, 0, 5'000, TriggerDetail{5'000, 0, 0});
+    tell(EventKind::pulse, 0, 5'000, PulseDetail{0, 0, 0, 0, 0});
+    EXPECT_NE(audit_text(audit(Ripples{})).find("or with a control schedule"), std::string::npos);
+}
+
+TEST_F(ToldSession, OfAControlScheduleIsNotAdvisedToUseOne) {
+    tell(EventKind::trigger, 0, 5'000, TriggerDetail{5'000, 0, 1});
+    tell(EventKind::pulse, 0, 5'000, PulseDetail{0, 0, 0, 0, 0});
+    const auto result = audit(Ripples{});
+    EXPECT_EQ(audit_text(result).find("or with a control schedule"), std::string::npos);
+    EXPECT_NE(audit_text(result).find("Pulses of a control schedule were given"), std::string::npos);
+    EXPECT_EQ(audit_json(result)["score"]["pulses_scheduled"], true);
 }
 
 TEST_F(ToldSession, DroppedEventsAreAnObjection) {

@@ -88,6 +88,16 @@ TEST(AuditCommand, LabelsTakeTheRefereesPlace) {
     EXPECT_NE(ran.out.find("labels.tsv: 1 ripples; early 0 ms"), std::string::npos) << ran.out;
 }
 
+TEST(AuditCommand, LabelsBeyondTheSessionsEndAreLeftOutAndSaidToBe) {
+    const TempFolder temp;
+    const auto labels = temp.path() / "labels.tsv";
+    std::ofstream(labels) << "onset\tduration\ttrial_type\n9.8\t0.06\tripple\n19.99\t0.06\tripple\n20\t0.06\tripple\n";
+    const auto ran = audit(temp, eventful_session(temp) + " --labels " + labels.string()); // 20 s long
+    EXPECT_EQ(ran.status, 0) << ran.err;
+    EXPECT_NE(ran.out.find("labels.tsv: 2 ripples; early 0 ms"), std::string::npos) << ran.out;
+    EXPECT_NE(ran.err.find("1 of 3 ripples of " + labels.string()), std::string::npos) << ran.err;
+}
+
 TEST(AuditCommand, OutWritesAuditJsonAndRefusesToReplaceIt) {
     const TempFolder temp;
     const auto session = eventful_session(temp);

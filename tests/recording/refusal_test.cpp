@@ -36,7 +36,7 @@ TEST_F(Unfit, IntegersWithoutAScaleAreRefused) {
     for (const char* name : {"a.wav", "a.flac"}) {
         const auto file = written(name, Encoding::int16);
         std::filesystem::remove(sidecar_path(file));
-        EXPECT_TRUE(testing::says(refusal(file), "integer samples of no known scale; allowed: microvolts_per_unit"));
+        EXPECT_TRUE(testing::says(refusal(file), "integer samples of no known scale; allowed: microvolts_per_count"));
     }
 }
 
@@ -50,14 +50,14 @@ TEST_F(Unfit, FloatsWithoutASidecarAreMicrovolts) {
 
 TEST_F(Unfit, FloatsAreScaledWhereTheSidecarSays) {
     const auto file = written("a.wav", Encoding::float32);
-    EXPECT_EQ(load_recording(file, scratch_.file("mV.yaml", "microvolts_per_unit: 1000\n")).data[1], 919000.0f);
+    EXPECT_EQ(load_recording(file, scratch_.file("mV.yaml", "microvolts_per_count: 1000\n")).data[1], 919000.0f);
 }
 
 TEST_F(Unfit, UnknownSidecarKeysAreRefusedWithTheNearest) {
     const auto file = written("a.wav", Encoding::float32);
-    EXPECT_TRUE(testing::says(refusal(file, scratch_.file("s.yaml", "microvolt_per_unit: 2\n")),
-                              "s.yaml:1: microvolt_per_unit: found an unknown key; allowed: did you mean "
-                              "'microvolts_per_unit'?"));
+    EXPECT_TRUE(testing::says(refusal(file, scratch_.file("s.yaml", "microvolt_per_count: 2\n")),
+                              "s.yaml:1: microvolt_per_count: found an unknown key; allowed: did you mean "
+                              "'microvolts_per_count'?"));
     EXPECT_TRUE(
         testing::says(refusal(file, scratch_.file("s.yaml", "channels:\n  - {name: a, rule: ripple}\n  - {name: b}\n")),
                       "channels[0].rule"));
@@ -93,7 +93,7 @@ TEST_F(Unfit, RawWithoutItsShapeIsRefused) {
 
 TEST_F(Unfit, RawTakesItsChannelCountFromTheList) {
     const auto file = scratch_.file("a.raw", std::string("\x01\x00\x02\x00\xff\xff\x03\x00", 8));
-    const auto sidecar = scratch_.file("s.yaml", "rate_hz: 20000\nencoding: int16\nmicrovolts_per_unit: 2\n"
+    const auto sidecar = scratch_.file("s.yaml", "rate_hz: 20000\nencoding: int16\nmicrovolts_per_count: 2\n"
                                                  "channels: [{name: a}, {name: b, role: reference}]\n");
     const auto loaded = load_recording(file, sidecar);
     EXPECT_EQ(loaded.data, (std::vector<float>{2.0f, 4.0f, -2.0f, 6.0f})) << "little endian";

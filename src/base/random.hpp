@@ -1,22 +1,38 @@
 // Random numbers that are the same on every machine. Thread: one owner each.
 #pragma once
 
-#include "synth/portable_math.hpp"
+#include "base/portable_math.hpp"
 
 #include <array>
 #include <cstdint>
 
 namespace millpond {
 
-/// xoshiro256++ (Blackman & Vigna 2019), its state filled by splitmix64 (Steele, Lea & Flood 2014) from a seed and the
-/// number of a stream. Each element of a scene has streams of its own, so that a new element changes no other.
+/// SplitMix64 (Steele, Lea & Flood 2014, OOPSLA): makes a state out of a seed.
+class SplitMix64 {
+  public:
+    explicit SplitMix64(std::uint64_t seed) noexcept : state_(seed) {}
+
+    std::uint64_t next() noexcept {
+        state_ += 0x9E3779B97F4A7C15u;
+        std::uint64_t mixed = state_;
+        mixed = (mixed ^ (mixed >> 30)) * 0xBF58476D1CE4E5B9u;
+        mixed = (mixed ^ (mixed >> 27)) * 0x94D049BB133111EBu;
+        return mixed ^ (mixed >> 31);
+    }
+
+  private:
+    std::uint64_t state_;
+};
+
+/// xoshiro256++ (Blackman & Vigna 2019), its state filled by SplitMix64 from a seed and the number of a stream:
+/// whatever draws numbers has a stream of its own, so that something new changes nothing else.
 class Random {
   public:
     Random(std::uint64_t seed, std::uint64_t stream) noexcept {
-        std::uint64_t state = seed;
-        state = splitmix(state) ^ stream;
+        SplitMix64 words(SplitMix64(seed).next() ^ stream);
         for (auto& word : state_) {
-            word = splitmix(state);
+            word = words.next();
         }
     }
 
@@ -61,13 +77,6 @@ class Random {
     double exponential(double mean) noexcept { return -mean * portable_log(uniform()); }
 
   private:
-    static std::uint64_t splitmix(std::uint64_t& state) noexcept {
-        state += 0x9E3779B97F4A7C15u;
-        std::uint64_t mixed = state;
-        mixed = (mixed ^ (mixed >> 30)) * 0xBF58476D1CE4E5B9u;
-        mixed = (mixed ^ (mixed >> 27)) * 0x94D049BB133111EBu;
-        return mixed ^ (mixed >> 31);
-    }
     static std::uint64_t rotated(std::uint64_t word, int by) noexcept { return (word << by) | (word >> (64 - by)); }
 
     std::array<std::uint64_t, 4> state_{};

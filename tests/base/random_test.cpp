@@ -1,4 +1,4 @@
-#include "synth/random.hpp"
+#include "base/random.hpp"
 #include "synth/scipy_says.hpp"
 
 #include <gtest/gtest.h>
@@ -17,6 +17,13 @@ TEST(PortableMath, AgreesWithTheCLibrary) {
         ASSERT_NEAR(portable_log(y), std::log(y), 4e-16 * std::max(1.0, std::abs(std::log(y)))) << y;
     }
     EXPECT_EQ(portable_exp(-1000.0), 0.0);
+}
+
+TEST(SplitMix64, GivesTheWidelyPrintedNumbersOfSeed1234567) {
+    SplitMix64 random(1234567); // from memory: the numbers that published ports of the algorithm check themselves by
+    EXPECT_EQ(random.next(), 6457827717110365317U);
+    EXPECT_EQ(random.next(), 3203168211198807973U);
+    EXPECT_EQ(random.next(), 9817491932198370423U);
 }
 
 TEST(Random, SameSeedAndStreamGiveTheSameNumbers) {

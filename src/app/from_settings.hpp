@@ -1,0 +1,28 @@
+// What settings ask for, made for the stream or recording at hand: shared by commands. Thread: cold.
+#pragma once
+
+#include "base/channels.hpp"
+#include "detector/detector.hpp"
+#include "settings/settings.hpp"
+#include "sham/schedule.hpp"
+
+#include <string>
+#include <vector>
+
+namespace millpond {
+
+/// Channels that a run over a recording or stream uses: the settings' where they list some, else its own. Refuses a
+/// list of another length; `where` names the settings.
+[[nodiscard]] Channels channels_for(const Settings& settings, const Channels& recorded, const std::string& where);
+
+/// Floors that the settings want to start from; empty where they name no session.
+[[nodiscard]] std::vector<FloorState> warm_start_floors(const DetectorSettings& detector);
+
+/// The control schedule to play, checked against the arbiter's limits; empty in every other condition.
+[[nodiscard]] Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate);
+
+/// 16 hexadecimal digits: FNV-1a, 64 bits, of what decides: detector, arbiter and channels as YAML. Places of files
+/// that the settings name enter by name, not by content.
+[[nodiscard]] std::string settings_hash(const Settings& settings, const Channels& channels);
+
+} // namespace millpond
