@@ -216,9 +216,7 @@ TEST(Audit, FlippedBitIsNamedByPlaceAndTheMissingRecordShowsInTheReRun) {
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const auto folder = loop.close();
-    const auto events = SessionReader(folder).events();
-    const auto trigger = *std::find_if(events.begin(), events.end(),
-                                       [](const Event& event) { return event.kind == EventKind::trigger; });
+    const auto trigger = first_of(folder, EventKind::trigger);
     const auto byte = record_header_bytes + trigger.sequence * record_bytes;
     flip_bit(folder / "records.mpj", byte + 20);
     const auto result = audit_of(folder, loop.settings());

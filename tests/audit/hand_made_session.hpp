@@ -3,10 +3,12 @@
 
 #include "engine/engine.hpp"
 #include "journal/record_file.hpp"
+#include "journal/session_reader.hpp"
 #include "journal/session_support.hpp"
 #include "journal/session_writer.hpp"
 #include "settings/settings.hpp"
 
+#include <algorithm>
 #include <cmath>
 #include <functional>
 #include <numbers>
@@ -129,6 +131,11 @@ inline void run_eventful(HandMadeLoop& loop, std::size_t frames = 25'000) {
         }
         loop.block(SampleIndex{at}, std::span(data).subspan(2 * at, 2 * block));
     }
+}
+
+inline Event first_of(const std::filesystem::path& folder, EventKind kind) {
+    const auto events = SessionReader(folder).events();
+    return *std::find_if(events.begin(), events.end(), [kind](const Event& event) { return event.kind == kind; });
 }
 
 /// Replaces a record by another one, with a right checksum: what nobody but a forger does.

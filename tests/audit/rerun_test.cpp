@@ -113,9 +113,7 @@ TEST(Rerun, ForgedVerdictIsReportedAsADifference) {
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const auto folder = loop.close();
-    const auto events = SessionReader(folder).events();
-    auto forged = *std::find_if(events.begin(), events.end(),
-                                [](const Event& event) { return event.kind == EventKind::trigger; });
+    auto forged = first_of(folder, EventKind::trigger);
     forged.kind = EventKind::withheld;
     forged.code = static_cast<std::uint8_t>(Rule::veto);
     forge_record(folder, forged);
@@ -133,9 +131,7 @@ TEST(Rerun, OneChangedBitOfADetectionsDetailIsADifference) {
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const auto folder = loop.close();
-    const auto events = SessionReader(folder).events();
-    auto forged = *std::find_if(events.begin(), events.end(),
-                                [](const Event& event) { return event.kind == EventKind::detection; });
+    auto forged = first_of(folder, EventKind::detection);
     forged.detail[0] ^= 1; // the last bit of the envelope
     forge_record(folder, forged);
     EXPECT_EQ(rerun_session(SessionReader(folder), loop.settings(), "test").differences.size(), 1U);

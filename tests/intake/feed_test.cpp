@@ -5,6 +5,7 @@
 #include "packets.hpp"
 #include "support/files.hpp"
 #include "support/process.hpp"
+#include "wav.hpp"
 
 #include <gtest/gtest.h>
 
@@ -19,31 +20,13 @@ using namespace test;
 using std::chrono::milliseconds;
 using std::chrono::seconds;
 
-void put(std::string& out, std::uint32_t value, int bytes) {
-    for (int i = 0; i < bytes; ++i) {
-        out.push_back(static_cast<char>((value >> (8 * i)) & 0xff));
+/// Two channels of 32-bit floats at 1250 Hz.
+std::string float_wav(const std::vector<float>& values) {
+    std::string samples;
+    for (const float value : values) {
+        put(samples, std::bit_cast<std::uint32_t>(value), 4);
     }
-}
-
-/// A RIFF WAVE file of 32-bit floats (format tag 3), two channels at 1250 Hz.
-std::string float_wav(const std::vector<float>& samples) {
-    const auto bytes = static_cast<std::uint32_t>(samples.size() * 4);
-    std::string wav = "RIFF";
-    put(wav, 36 + bytes, 4);
-    wav += "WAVEfmt ";
-    put(wav, 16, 4);
-    put(wav, 3, 2);
-    put(wav, 2, 2);
-    put(wav, 1250, 4);
-    put(wav, 10000, 4);
-    put(wav, 8, 2);
-    put(wav, 32, 2);
-    wav += "data";
-    put(wav, bytes, 4);
-    for (const float sample : samples) {
-        put(wav, std::bit_cast<std::uint32_t>(sample), 4);
-    }
-    return wav;
+    return wav(3, 1250, 2, 4, samples);
 }
 
 class FeedCommand : public ::testing::Test {

@@ -5,6 +5,7 @@
 #include "packets.hpp"
 #include "support/files.hpp"
 #include "support/process.hpp"
+#include "wav.hpp"
 
 #include <gtest/gtest.h>
 
@@ -20,35 +21,17 @@ using namespace test;
 using std::chrono::milliseconds;
 using std::chrono::seconds;
 
-void put(std::ofstream& out, std::uint32_t value, int bytes) {
-    for (int i = 0; i < bytes; ++i) {
-        out.put(static_cast<char>((value >> (8 * i)) & 0xff));
-    }
-}
-
 std::int16_t count_at(std::size_t index) {
     return static_cast<std::int16_t>(static_cast<std::uint16_t>(index * 40503U)); // visits every count, ends included
 }
 
-/// A canonical RIFF WAVE file of 16-bit samples.
+/// A file of 16-bit samples.
 void write_wav(const std::filesystem::path& file, std::uint32_t rate, std::uint16_t channels, std::size_t frames) {
-    std::ofstream out(file, std::ios::binary);
-    const auto bytes = static_cast<std::uint32_t>(frames * channels * 2);
-    out << "RIFF";
-    put(out, 36 + bytes, 4);
-    out << "WAVEfmt ";
-    put(out, 16, 4);
-    put(out, 1, 2);
-    put(out, channels, 2);
-    put(out, rate, 4);
-    put(out, rate * channels * 2, 4);
-    put(out, channels * 2U, 2);
-    put(out, 16, 2);
-    out << "data";
-    put(out, bytes, 4);
+    std::string samples;
     for (std::size_t i = 0; i < frames * channels; ++i) {
-        put(out, static_cast<std::uint16_t>(count_at(i)), 2);
+        put(samples, static_cast<std::uint16_t>(count_at(i)), 2);
     }
+    write_text(file, wav(1, rate, channels, 2, samples));
 }
 
 class Ffmpeg : public ::testing::Test {

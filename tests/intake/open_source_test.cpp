@@ -1,5 +1,4 @@
 #include "intake/open_source.hpp"
-
 #include "intake/pipe_source.hpp"
 #include "intake/rtp_source.hpp"
 #include "packets.hpp"
