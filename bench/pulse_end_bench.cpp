@@ -1,6 +1,6 @@
-// How late is the fall of a pulse ordered? The pulse line against a bare thread that sleeps with clock_nanosleep to the same
-// deadline, turn by turn in one run: on the computer as it is, and with a busy thread on every core.
-// Usage: pulse_end_bench [PULSES]
+// How late is the fall of a pulse ordered? The pulse line against a bare thread that sleeps with clock_nanosleep to the
+// same deadline, turn by turn in one run: on the computer as it is, and with a busy thread on every core. Usage:
+// pulse_end_bench [PULSES]
 #include "base/clock.hpp"
 #include "outputs/pulse_line.hpp"
 #include "outputs/silent_output.hpp"
@@ -10,9 +10,8 @@
 #include <cstdio>
 #include <cstdlib>
 #include <thread>
-#include <vector>
-
 #include <time.h>
+#include <vector>
 
 namespace {
 
@@ -93,7 +92,7 @@ double micros_at(const Latenesses& sorted, double share) {
 
 void print(const char* computer, const char* who, Latenesses late) {
     std::sort(late.begin(), late.end());
-    std::printf("%-8s %-16s %8zu %10.1f %10.1f %10.1f %10.1f\n", computer, who, late.size(), micros_at(late, 0.5),
+    std::printf("%-9s %-16s %8zu %10.1f %10.1f %10.1f %10.1f\n", computer, who, late.size(), micros_at(late, 0.5),
                 micros_at(late, 0.99), micros_at(late, 0.999), micros_at(late, 1.0));
 }
 
@@ -125,9 +124,9 @@ int main(int argc, char** argv) {
         std::fprintf(stderr, "pulse_end_bench: PULSES found %s; allowed: 1 or more\n", argv[1]);
         return 2;
     }
-    std::printf("fall ordered after its time, us; width 1 ms\n%-8s %-16s %8s %10s %10s %10s %10s\n", "computer", "who",
+    std::printf("fall ordered after its time, us; width 1 ms\n%-9s %-16s %8s %10s %10s %10s %10s\n", "computer", "who",
                 "count", "p50", "p99", "p99.9", "max");
-    measure("quiet", pulses);
+    measure("as it is", pulses);
     const Competitors competitors(std::thread::hardware_concurrency());
     measure("busy", pulses);
 }

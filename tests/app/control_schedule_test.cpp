@@ -7,23 +7,18 @@ namespace {
 
 class ControlSchedule : public ::testing::Test {
   protected:
-    ControlSchedule() {
-        const auto made = run_millpond("synth " + rig_.path("rest.raw") +
-                                       " --encoding float32 --duration-s 12 --sites 4 --reference"
-                                       " --rate-hz 1250 --quiet-start-s 3 --seed 7");
-        EXPECT_EQ(made.status, 0) << made.err;
-        RigSettings want;
-        want.stream = "  source: pipe\n  encoding: float32\n  rate_hz: 1250\n  channels: 5\n";
-        settings_ = rig_.settings(want);
-    }
-
     /// A session over the whole recording; its folder.
-    std::filesystem::path play(const std::string& more = {}) {
-        const auto ran = run("exec " + std::string(MILLPOND_PROGRAM) + " live " + settings_ + " " + more + " <" +
-                             rig_.path("rest.raw"));
-        EXPECT_EQ(ran.status, 0) << ran.err;
-        const auto at = ran.out.find("session: ");
-        return at == std::string::npos ? "" : ran.out.substr(at + 9, ran.out.find('\n', at) - at - 9);
+    std::filesystem::path play(const std::vector<std::string>& more = {}) {
+        std::vector<std::string> words{MILLPOND_PROGRAM, "live", settings_};
+        words.insert(words.end(), more.begin(), more.end());
+        const auto session = rig_.start(words);
+        EXPECT_TRUE(session->says("session folder ")) << session->err();
+        const auto folder = Rig::folder_of(*session);
+        EXPECT_EQ(rig_.feed(recording_, {"--speed", "8"})->status(), 0);
+        EXPECT_TRUE(wait_until([&] { return Rig::frames_stored(folder) >= frames; }));
+        session->send(SIGINT);
+        EXPECT_EQ(session->status(), 0) << session->err();
+        return folder;
     }
     static std::vector<std::string> samples_of(const std::filesystem::path& table, const std::string& trial_type) {
         std::vector<std::string> samples;
@@ -33,33 +28,30 @@ class ControlSchedule : public ::testing::Test {
         return samples;
     }
 
+    static constexpr std::uint64_t frames = 15000; // 12 s
     Rig rig_;
-    std::string settings_;
+    std::string recording_ = rig_.recording(12.0);
+    std::string settings_ = rig_.settings({});
 };
 
 TEST_F(ControlSchedule, FromTheTriggersOfASessionFolderPlaysWithoutEditingTheSettings) {
     const auto disrupted = play();
-    const auto made = run_millpond("sham delayed " + disrupted.string() +
-                                   " --lockout-ms 500 --min-interval-ms 500 --out " + rig_.path("control.tsv"));
+    const auto delayed = "sham delayed " + disrupted.string() + " --lockout-ms 500 --min-interval-ms 500 --out " +
+                         rig_.path("control.tsv");
+    const auto refused = run_millpond(delayed + " --sampling-hz 1000");
+    EXPECT_EQ(refused.status, 2);
+    EXPECT_NE(refused.err.find("--sampling-hz: found 1000; allowed: the rate of "), std::string::npos) << refused.err;
+    const auto made = run_millpond(delayed);
     ASSERT_EQ(made.status, 0) << made.err;
-    const auto places = samples_of(rig_ / "control.tsv", "scheduled");
+    auto places = samples_of(rig_ / "control.tsv", "scheduled");
     EXPECT_EQ(places.size(), samples_of(disrupted / "events.tsv", "trigger").size());
-    ASSERT_GT(places.size(), 3U);
 
-    const auto control = play("--schedule " + rig_.path("control.tsv"));
-    auto played = places;
-    std::erase_if(played, [](const std::string& sample) { return std::stoul(sample) >= 15000; }); // 12 s
-    EXPECT_EQ(samples_of(control / "events.tsv", "trigger"), played);
-    const auto audit = rig_.audit(control);
-    EXPECT_EQ(audit["decisions"]["scheduled_triggers"], played.size()) << audit["decisions"];
+    const auto control = play({"--schedule", rig_.path("control.tsv")});
+    std::erase_if(places, [](const std::string& sample) { return std::stoul(sample) >= frames; });
+    ASSERT_GT(places.size(), 2U);
+    EXPECT_EQ(samples_of(control / "events.tsv", "trigger"), places);
+    EXPECT_EQ(rig_.audit(control)["decisions"]["scheduled_triggers"], places.size());
     EXPECT_EQ(load_settings(control / "settings.yaml").arbiter.condition, Condition::schedule);
-}
-
-TEST_F(ControlSchedule, OfAnotherRateThanTheSessionFoldersIsRefused) {
-    const auto made =
-        run_millpond("sham delayed " + play().string() + " --sampling-hz 1000 --out " + rig_.path("c.tsv"));
-    EXPECT_EQ(made.status, 2);
-    EXPECT_NE(made.err.find("--sampling-hz: found 1000; allowed: the rate of "), std::string::npos) << made.err;
 }
 
 TEST_F(ControlSchedule, OfATableNeedsItsRate) {
