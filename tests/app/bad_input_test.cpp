@@ -1,7 +1,7 @@
 // Bad input of every kind, as typed: one line on standard error, exit status 2, nothing left behind.
 #include "app/rig.hpp"
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 std::vector<std::string> all_files(const std::filesystem::path& folder) {
@@ -29,7 +29,7 @@ class BadInput : public ::testing::Test {
     }
     /// good.yaml with `from` replaced.
     void settings(const std::string& name, const std::string& from, const std::string& to) const {
-        auto text = text_in(work("good.yaml"));
+        auto text = text_of(work("good.yaml"));
         const auto at = text.find(from);
         ASSERT_NE(at, std::string::npos) << from;
         file(name, text.replace(at, from.size(), to));
@@ -38,8 +38,7 @@ class BadInput : public ::testing::Test {
     /// In the folder `work`: refused in one line that holds all `words`, and the folder is as before.
     void expect_refused(const std::string& arguments, const std::vector<std::string>& words) {
         const auto before = all_files(rig_ / "work");
-        const auto ran = run_shell(std::string("timeout 30 ") + MILLPOND_PROGRAM + " " + arguments,
-                                   rig_ / ("refused" + std::to_string(++ran_)), rig_ / "work");
+        const auto ran = run(std::string("timeout 30 ") + MILLPOND_PROGRAM + " " + arguments, rig_ / "work");
         EXPECT_EQ(ran.status, 2) << arguments << "\n" << ran.err;
         EXPECT_EQ(lines_of(ran.err).size(), 1U) << arguments << "\n" << ran.err;
         EXPECT_EQ(count_in(ran.err, "\n"), 1U) << arguments << "\n" << ran.err;
@@ -54,7 +53,6 @@ class BadInput : public ::testing::Test {
     }
 
     Rig rig_;
-    int ran_ = 0;
 };
 
 TEST_F(BadInput, OnTheCommandLine) {
@@ -88,7 +86,7 @@ TEST_F(BadInput, OfFilesThatAreNotThere) {
 }
 
 TEST_F(BadInput, InRecordings) {
-    const auto whole = text_in(work("good.wav"));
+    const auto whole = text_of(work("good.wav"));
     file("header.wav", whole.substr(0, 30));
     file("cut.wav", whole.substr(0, whole.size() / 2));
     file("noise.wav", std::string(5000, 'x'));
@@ -132,7 +130,7 @@ TEST_F(BadInput, InSettings) {
 
 TEST_F(BadInput, InSettingsThatDoNotFitTheRecording) {
     expect_refused("synth two.wav --sites 0", {"--sites"});
-    ASSERT_EQ(rig_.millpond("synth " + work("two.wav").string() + " --duration-s 2 --sites 2").status, 0);
+    ASSERT_EQ(run_millpond("synth " + work("two.wav").string() + " --duration-s 2 --sites 2").status, 0);
     expect_dryrun_refused("two.wav", "", {"good.yaml", "channels", "5 channels", "2"});
 }
 
@@ -165,7 +163,7 @@ TEST_F(BadInput, OfFoldersThatAreNoSessionsOrExistAlready) {
     file("s.tsv", "mine");
     expect_refused("sham rate-matched --rate-per-s 1 --duration-s 60 --sampling-hz 1250 --out s.tsv",
                    {"s.tsv", "--overwrite"});
-    EXPECT_EQ(text_in(work("s.tsv")), "mine");
+    EXPECT_EQ(text_of(work("s.tsv")), "mine");
 }
 
 TEST_F(BadInput, OfAPortThatIsTaken) {
@@ -177,4 +175,4 @@ TEST_F(BadInput, OfAPortThatIsTaken) {
 }
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

@@ -2,15 +2,15 @@
 #include "app/rig.hpp"
 #include "settings/settings.hpp"
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 class ControlSchedule : public ::testing::Test {
   protected:
     ControlSchedule() {
-        const auto made =
-            rig_.millpond("synth " + rig_.path("rest.raw") + " --encoding float32 --duration-s 12 --sites 4 --reference"
-                                                             " --rate-hz 1250 --quiet-start-s 3 --seed 7");
+        const auto made = run_millpond("synth " + rig_.path("rest.raw") +
+                                       " --encoding float32 --duration-s 12 --sites 4 --reference"
+                                       " --rate-hz 1250 --quiet-start-s 3 --seed 7");
         EXPECT_EQ(made.status, 0) << made.err;
         RigSettings want;
         want.stream = "  source: pipe\n  encoding: float32\n  rate_hz: 1250\n  channels: 5\n";
@@ -19,8 +19,8 @@ class ControlSchedule : public ::testing::Test {
 
     /// A session over the whole recording; its folder.
     std::filesystem::path play(const std::string& more = {}) {
-        const auto ran = rig_.shell("exec " + std::string(MILLPOND_PROGRAM) + " live " + settings_ + " " + more + " <" +
-                                    rig_.path("rest.raw"));
+        const auto ran = run("exec " + std::string(MILLPOND_PROGRAM) + " live " + settings_ + " " + more + " <" +
+                             rig_.path("rest.raw"));
         EXPECT_EQ(ran.status, 0) << ran.err;
         const auto at = ran.out.find("session: ");
         return at == std::string::npos ? "" : ran.out.substr(at + 9, ran.out.find('\n', at) - at - 9);
@@ -39,8 +39,8 @@ class ControlSchedule : public ::testing::Test {
 
 TEST_F(ControlSchedule, FromTheTriggersOfASessionFolderPlaysWithoutEditingTheSettings) {
     const auto disrupted = play();
-    const auto made = rig_.millpond("sham delayed " + disrupted.string() +
-                                    " --lockout-ms 500 --min-interval-ms 500 --out " + rig_.path("control.tsv"));
+    const auto made = run_millpond("sham delayed " + disrupted.string() +
+                                   " --lockout-ms 500 --min-interval-ms 500 --out " + rig_.path("control.tsv"));
     ASSERT_EQ(made.status, 0) << made.err;
     const auto places = samples_of(rig_ / "control.tsv", "scheduled");
     EXPECT_EQ(places.size(), samples_of(disrupted / "events.tsv", "trigger").size());
@@ -56,17 +56,18 @@ TEST_F(ControlSchedule, FromTheTriggersOfASessionFolderPlaysWithoutEditingTheSet
 }
 
 TEST_F(ControlSchedule, OfAnotherRateThanTheSessionFoldersIsRefused) {
-    const auto made = rig_.millpond("sham delayed " + play().string() + " --sampling-hz 1000 --out " + rig_.path("c.tsv"));
+    const auto made =
+        run_millpond("sham delayed " + play().string() + " --sampling-hz 1000 --out " + rig_.path("c.tsv"));
     EXPECT_EQ(made.status, 2);
     EXPECT_NE(made.err.find("--sampling-hz: found 1000; allowed: the rate of "), std::string::npos) << made.err;
 }
 
 TEST_F(ControlSchedule, OfATableNeedsItsRate) {
-    rig_.shell("printf 'onset\\tduration\\ttrial_type\\n1\\t0\\ttrigger\\n' >" + rig_.path("e.tsv"));
-    const auto made = rig_.millpond("sham delayed " + rig_.path("e.tsv") + " --out " + rig_.path("c.tsv"));
+    run("printf 'onset\\tduration\\ttrial_type\\n1\\t0\\ttrigger\\n' >" + rig_.path("e.tsv"));
+    const auto made = run_millpond("sham delayed " + rig_.path("e.tsv") + " --out " + rig_.path("c.tsv"));
     EXPECT_EQ(made.status, 2);
     EXPECT_NE(made.err.find("--sampling-hz: found nothing"), std::string::npos) << made.err;
 }
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

@@ -6,12 +6,11 @@
 #include <sched.h>
 #include <sys/ioctl.h>
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 TEST(Version, NamesVersionBuildTypeAndCompiler) {
-    Rig rig;
-    const auto ran = rig.millpond("--version");
+    const auto ran = run_millpond("--version");
     EXPECT_EQ(ran.status, 0);
     EXPECT_TRUE(std::regex_match(ran.out, std::regex("millpond [0-9]+\\.[0-9]+\\.[0-9]+ "
                                                      "\\([A-Za-z]+, (GNU|Clang) [0-9.]+\\)\n")))
@@ -78,16 +77,13 @@ class Help : public ::testing::Test {
     Help() { lay_out(rig_); }
 
     std::vector<std::string> examples_of(const std::string& command) {
-        const auto help = rig_.millpond(command + " --help");
+        const auto help = run_millpond(command + " --help");
         EXPECT_EQ(help.status, 0) << help.err;
         auto examples = examples_in(help.out);
         EXPECT_FALSE(examples.empty()) << command << " shows no example\n" << help.out;
         return examples;
     }
-    Finished run_example(const std::string& example) {
-        return run_shell(example, rig_ / ("example" + std::to_string(++ran_)), rig_ / "project",
-                         std::chrono::seconds{100});
-    }
+    Ran run_example(const std::string& example) { return run(example, rig_ / "project"); }
     void expect_examples_work(const std::string& command) {
         for (const auto& example : examples_of(command)) {
             const auto ran = run_example(example);
@@ -96,18 +92,17 @@ class Help : public ::testing::Test {
     }
 
     Rig rig_;
-    int ran_ = 0;
 };
 
 TEST_F(Help, EveryCommandShowsAnExample) {
-    const auto top = rig_.millpond("--help");
+    const auto top = run_millpond("--help");
     const auto commands = commands_in(top.out);
     EXPECT_EQ(commands,
               (std::vector<std::string>{"preflight", "dryrun", "tune", "sham", "live", "audit", "synth", "feed"}));
     for (const auto& command : commands) {
         examples_of(command);
     }
-    for (const auto& command : commands_in(rig_.millpond("sham --help").out)) {
+    for (const auto& command : commands_in(run_millpond("sham --help").out)) {
         examples_of("sham " + command);
     }
 }
@@ -155,4 +150,4 @@ TEST_F(Help, ExamplesOfLiveAndFeedAndAuditWorkTogether) {
 }
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

@@ -6,7 +6,7 @@
 #include <atomic>
 #include <random>
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 /// How long this computer lets a thread wait that asked to sleep 10 ms: what a busy machine adds to any writer's
@@ -107,7 +107,7 @@ TEST_P(KilledSession, AllButTheLast100MsIsReadableSaysThatItWasCutAndDecidesTheS
         if (round == last_round) {
             EXPECT_GE(again.at("decisions_compared"), 1) << again;
         }
-        EXPECT_NE(rig.millpond("audit " + folder.string()).out.find("CUT"), std::string::npos);
+        EXPECT_NE(run_millpond("audit " + folder.string()).out.find("CUT"), std::string::npos);
     }
     for (const auto& kill : kills) {
         std::printf("killed: last record %.1f ms before; this computer stalled %.1f ms\n", kill.lost_ms, kill.stall_ms);
@@ -118,4 +118,4 @@ TEST_P(KilledSession, AllButTheLast100MsIsReadableSaysThatItWasCutAndDecidesTheS
 INSTANTIATE_TEST_SUITE_P(TwentyAtRandomMoments, KilledSession, ::testing::Values(11U, 23U, 37U, 41U));
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

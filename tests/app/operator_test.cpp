@@ -1,7 +1,7 @@
 // What an operator does to a running session: commands by liblo's oscsend, and signals.
 #include "app/rig.hpp"
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 #define NEEDS_LIBLO()                                                                                                  \
@@ -23,7 +23,7 @@ class Commands : public ::testing::Test {
         session_ = rig_.live(rig_.settings(want));
     }
     void send(const std::string& message) {
-        const auto sent = rig_.shell("oscsend localhost " + std::to_string(rig_.control_port()) + " " + message);
+        const auto sent = run("oscsend localhost " + std::to_string(rig_.control_port()) + " " + message);
         EXPECT_EQ(sent.status, 0) << sent.err;
     }
     /// Sends, and waits until the operator is told `words` for the `times`-th time.
@@ -95,7 +95,7 @@ TEST_F(Commands, WhatIsNoCommandIsRefusedInOneLineEachAndChangesNothing) {
     send_and_read("/mark i 7", "OSC /mark: found other arguments; allowed: one text\n");
     const auto refused = count_in(session_->err(), "allowed:");
     EXPECT_EQ(refused, 5U) << session_->err();
-    EXPECT_EQ(count_in(text_in(Rig::folder_of(*session_) / "log.txt"), "allowed:"), 5U)
+    EXPECT_EQ(count_in(text_of(Rig::folder_of(*session_) / "log.txt"), "allowed:"), 5U)
         << "the session folder keeps them";
     const auto audit = end();
     EXPECT_EQ(audit.at("stream").at("notes").size(), 0U);
@@ -115,7 +115,7 @@ TEST_F(Commands, WithASecretOnlyItsOwnerIsObeyedAndItIsKeptNowhere) {
     const auto folder = Rig::folder_of(*session_);
     end();
     for (const auto& file : std::filesystem::directory_iterator(folder)) {
-        EXPECT_EQ(text_in(file).find("drowssap"), std::string::npos) << file.path();
+        EXPECT_EQ(text_of(file).find("drowssap"), std::string::npos) << file.path();
     }
     EXPECT_EQ(session_->err().find("drowssap"), std::string::npos);
 }
@@ -162,4 +162,4 @@ TEST_P(Signals, InTheMiddleOfALongPulseTheLineFallsAndTheFolderIsComplete) {
 INSTANTIATE_TEST_SUITE_P(Interrupted, Signals, ::testing::Values(SIGINT, SIGTERM, SIGHUP));
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

@@ -1,7 +1,7 @@
 // Recordings that nobody here made, through the program.
 #include "app/rig.hpp"
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 class OutsideRecordings : public ::testing::Test {
@@ -14,16 +14,16 @@ class OutsideRecordings : public ::testing::Test {
 
     /// The detector of config/live.yaml over a recording with these channels.
     nlohmann::json dry_run(const std::string& recording, const std::string& channels, const std::string& more = {}) {
-        const auto live = text_in(std::filesystem::path(MILLPOND_SOURCE_DIR) / "config/live.yaml");
+        const auto live = text_of(std::filesystem::path(MILLPOND_SOURCE_DIR) / "config/live.yaml");
         const auto from = live.find("\ndetector:"), to = live.find("\narbiter:");
         const auto name = "settings" + std::to_string(++runs_);
         std::ofstream(rig_ / (name + ".yaml")) << channels << live.substr(from, to - from) << "\n";
-        const auto ran = rig_.millpond("dryrun " + (outside_recordings() / recording).string() + " --settings " +
-                                       rig_.path(name + ".yaml") + " --out " + rig_.path(name) + more);
+        const auto ran = run_millpond("dryrun " + (outside_recordings() / recording).string() + " --settings " +
+                                      rig_.path(name + ".yaml") + " --out " + rig_.path(name) + more);
         EXPECT_EQ(ran.status, 0) << ran.err;
         std::printf("%s", ran.out.c_str());
         detections_ = rows_of(rig_ / name / "events.tsv", "detection");
-        return ran.status == 0 ? nlohmann::json::parse(text_in(rig_ / name / "score.json")) : nlohmann::json{};
+        return ran.status == 0 ? nlohmann::json::parse(text_of(rig_ / name / "score.json")) : nlohmann::json{};
     }
 
     Rig rig_;
@@ -55,8 +55,8 @@ TEST_F(OutsideRecordings, RatInThetaDetectionsPerMinuteOfTheDefaultSettingsAreTo
 TEST_F(OutsideRecordings, EdfFilesAtARateBelowTheRippleBandAreRefusedInOneLine) {
     std::ofstream(rig_ / "plain.yaml") << "detector: {}\n";
     for (const std::string name : {"eeg_subsecond_start.edf", "eeg_utf8_annotations.edf"}) {
-        const auto ran = rig_.millpond("dryrun " + (outside_recordings() / name).string() + " --settings " +
-                                       rig_.path("plain.yaml") + " --out " + rig_.path("refused"));
+        const auto ran = run_millpond("dryrun " + (outside_recordings() / name).string() + " --settings " +
+                                      rig_.path("plain.yaml") + " --out " + rig_.path("refused"));
         EXPECT_EQ(ran.status, 2);
         EXPECT_EQ(lines_of(ran.err).size(), 1U) << ran.err;
         EXPECT_NE(ran.err.find("half the rate, 64 Hz"), std::string::npos) << ran.err;
@@ -74,8 +74,8 @@ TEST_F(OutsideRecordings, EdfFilesRunAtTheirOwnRateInMicrovolts) {
     std::vector<std::vector<Row>> detections;
     for (const std::string name : {"eeg_subsecond_start.edf", "eeg_utf8_annotations.edf"}) {
         const auto ran =
-            rig_.millpond("dryrun " + (outside_recordings() / name).string() + " --settings " + rig_.path("eeg.yaml") +
-                          " --referee " + rig_.path("referee.yaml") + " --out " + rig_.path(name));
+            run_millpond("dryrun " + (outside_recordings() / name).string() + " --settings " + rig_.path("eeg.yaml") +
+                         " --referee " + rig_.path("referee.yaml") + " --out " + rig_.path(name));
         ASSERT_EQ(ran.status, 0) << ran.err;
         EXPECT_NE(ran.out.find("channels at 128 Hz"), std::string::npos) << ran.out;
         detections.push_back(rows_of(rig_ / name / "events.tsv", "detection"));
@@ -91,4 +91,4 @@ TEST_F(OutsideRecordings, EdfFilesRunAtTheirOwnRateInMicrovolts) {
 }
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

@@ -2,8 +2,10 @@
 #pragma once
 
 #include "journal/session_reader.hpp"
+#include "support/files.hpp"
 #include "support/process.hpp"
-#include "support/scratch_folder.hpp"
+#include "support/text.hpp"
+#include "support/udp_port.hpp"
 
 #include <gtest/gtest.h>
 #include <nlohmann/json.hpp>
@@ -12,7 +14,7 @@
 #include <optional>
 #include <string>
 
-namespace millpond::testing {
+namespace millpond::test {
 
 /// What a test wants to differ from the rest; all else is fixed in `Rig::settings`.
 struct RigSettings {
@@ -41,20 +43,16 @@ class Rig {
     [[nodiscard]] int control_port() const { return control_port_; }
     [[nodiscard]] std::string address() const { return "127.0.0.1:" + std::to_string(port_); }
 
-    /// The program with these arguments, to its end.
-    Finished millpond(const std::string& arguments, const std::filesystem::path& folder = {}) {
-        return run_shell(std::string(MILLPOND_PROGRAM) + " " + arguments, log("run"), folder);
-    }
-    Finished shell(const std::string& command) { return run_shell(command, log("shell")); }
     [[nodiscard]] std::unique_ptr<Process> start(std::vector<std::string> words, Process::Options options = {}) {
         return std::make_unique<Process>(std::move(words), log("started"), std::move(options));
     }
 
     /// An invented 16-bit recording, 0.2 uV per count, ripples from the third second on.
     std::string recording(double duration_s, const std::string& name = "invented.wav") {
-        const auto made = millpond("synth " + path(name) + " --duration-s " + std::to_string(duration_s) +
-                                   " --sites 4 --reference --rate-hz 1250 --quiet-start-s 3 --ripples-rate-per-s 1.5"
-                                   " --microvolts-per-count 0.2 --seed 7");
+        const auto made =
+            run_millpond("synth " + path(name) + " --duration-s " + std::to_string(duration_s) +
+                         " --sites 4 --reference --rate-hz 1250 --quiet-start-s 3 --ripples-rate-per-s 1.5"
+                         " --microvolts-per-count 0.2 --seed 7");
         EXPECT_EQ(made.status, 0) << made.err;
         return path(name);
     }
@@ -123,7 +121,7 @@ class Rig {
     }
 
     nlohmann::json audit(const std::filesystem::path& session, int expected_status = 0) {
-        const auto ran = millpond("audit " + session.string() + " --json");
+        const auto ran = run_millpond("audit " + session.string() + " --json");
         EXPECT_EQ(ran.status, expected_status) << ran.err << ran.out.substr(0, 2000);
         return ran.out.empty() ? nlohmann::json::object() : nlohmann::json::parse(ran.out);
     }
@@ -131,7 +129,7 @@ class Rig {
   private:
     std::filesystem::path log(const std::string& name) { return scratch_ / (name + std::to_string(++logs_)); }
 
-    ScratchFolder scratch_;
+    TemporaryFolder scratch_;
     int port_ = free_udp_port(), pulse_port_ = free_udp_port(), control_port_ = free_udp_port();
     int logs_ = 0;
 };
@@ -150,7 +148,7 @@ inline std::vector<Row> rows_of(const std::filesystem::path& table, const std::s
     };
     std::vector<Row> rows;
     std::vector<std::string> names;
-    for (const auto& line : lines_of(text_in(table))) {
+    for (const auto& line : lines_of(text_of(table))) {
         const auto cells = cells_of(line);
         if (names.empty()) {
             names = cells;
@@ -167,4 +165,4 @@ inline std::vector<Row> rows_of(const std::filesystem::path& table, const std::s
     return rows;
 }
 
-} // namespace millpond::testing
+} // namespace millpond::test

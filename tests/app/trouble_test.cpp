@@ -3,7 +3,7 @@
 
 #include <sys/mount.h>
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 /// A session on a disk that fills up, streamed until well after; gives what it printed and left behind.
@@ -27,7 +27,7 @@ void expect_faulted_but_watching(Rig& rig, Process& session, const std::string& 
 }
 
 void expect_readable(Rig& rig, const std::filesystem::path& folder) {
-    const auto ran = rig.millpond("audit " + folder.string() + " --json");
+    const auto ran = run_millpond("audit " + folder.string() + " --json");
     ASSERT_TRUE(ran.status == 0 || ran.status == 1) << ran.err;
     const auto audit = nlohmann::json::parse(ran.out);
     EXPECT_GT(audit.at("records").at("intact").get<int>(), 10);
@@ -82,7 +82,7 @@ TEST(StaleStream, DisarmsAndStaysNotArmedUntilToldByCommand) {
     };
     const auto sender = rig.feed(recording, {"--speed", "8", "--loop"});
     ASSERT_TRUE(wait_until([&] { return seen_since(EventKind::withheld) >= 5; })) << session->err();
-    rig.shell("oscsend localhost " + std::to_string(rig.control_port()) + " /arm");
+    run("oscsend localhost " + std::to_string(rig.control_port()) + " /arm");
     ASSERT_TRUE(wait_until([&] { return seen_since(EventKind::pulse) >= 2; })) << session->err();
     session->send(SIGINT);
     EXPECT_EQ(session->status(), 0) << session->err();
@@ -132,4 +132,4 @@ TEST(LostPackets, AreGapsOfTheirLengthAndTheReRunStillDecidesTheSame) {
 }
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

@@ -2,7 +2,7 @@
 // all.
 #include "app/rig.hpp"
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 // Checked against: ffmpeg as sender (RTP, RFC 3550; L16, RFC 3551; SDP, RFC 8866), liblo's oscdump as receiver
@@ -131,7 +131,7 @@ void expect_same_decisions(const std::filesystem::path& dry, const std::filesyst
 }
 
 std::filesystem::path dry_run(Rig& rig, const std::string& recording, const std::string& settings) {
-    const auto dry = rig.millpond("dryrun " + recording + " --settings " + settings + " --out " + rig.path("dry"));
+    const auto dry = run_millpond("dryrun " + recording + " --settings " + settings + " --out " + rig.path("dry"));
     EXPECT_EQ(dry.status, 0) << dry.err;
     return rig / "dry" / "events.tsv";
 }
@@ -158,8 +158,8 @@ void pipe_and_compare(Rig& rig, const std::string& recording, const std::string&
     want.stream = "  source: pipe\n  rate_hz: 1250\n  channels: 5\n" + stream;
     const auto settings = rig.settings(want);
     const auto dry = dry_run(rig, recording, settings);
-    const auto ran = rig.shell("ffmpeg -hide_banner -loglevel error -nostdin -readrate 8 -i " + recording + " -f " + format +
-                               " - | " + MILLPOND_PROGRAM + " live " + settings);
+    const auto ran = run("ffmpeg -hide_banner -loglevel error -nostdin -readrate 8 -i " + recording + " -f " + format +
+                         " - | " + MILLPOND_PROGRAM + " live " + settings);
     EXPECT_EQ(ran.status, 0) << ran.err;
     std::filesystem::path session;
     for (const auto& entry : std::filesystem::directory_iterator(rig / "sessions")) {
@@ -173,7 +173,7 @@ void pipe_and_compare(Rig& rig, const std::string& recording, const std::string&
 TEST(FfmpegPipedIntoLive, FloatFramesGiveTheDecisionsOfADryRunOfTheSameFile) {
     NEEDS("ffmpeg");
     Rig rig;
-    const auto made = rig.millpond("synth " + rig.path("float.wav") + " --duration-s 20 --sites 4 --reference " +
+    const auto made = run_millpond("synth " + rig.path("float.wav") + " --duration-s 20 --sites 4 --reference " +
                                    "--quiet-start-s 3 --ripples-rate-per-s 1.5 --encoding float32 --seed 7");
     ASSERT_EQ(made.status, 0) << made.err;
     pipe_and_compare(rig, rig.path("float.wav"), "f32le", "  encoding: float32\n");
@@ -187,4 +187,4 @@ TEST(FfmpegPipedIntoLive, SixteenBitFramesGiveTheDecisionsOfADryRunOfTheSameFile
 }
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

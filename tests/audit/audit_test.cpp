@@ -9,6 +9,8 @@
 namespace millpond {
 namespace {
 
+using namespace test;
+
 constexpr auto unknown = PulseDetail::not_measured;
 
 // A session told event by event, without an engine: every figure is known beforehand.
@@ -46,7 +48,7 @@ class ToldSession : public ::testing::Test {
     }
 
     std::uint64_t end = 12'500;
-    TempFolder temp_;
+    TemporaryFolder temp_;
     std::unique_ptr<SessionWriter> writer_ = SessionWriter::open(session_in(temp_), about_stream());
 };
 
@@ -196,7 +198,7 @@ AuditResult audit_of(const std::filesystem::path& folder, const EngineSettings& 
 }
 
 TEST(Audit, EventfulSessionIsReproducedAndScoredByTheReferee) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const auto result = audit_of(loop.close(), loop.settings());
@@ -210,7 +212,7 @@ TEST(Audit, EventfulSessionIsReproducedAndScoredByTheReferee) {
 }
 
 TEST(Audit, FlippedBitIsNamedByPlaceAndTheMissingRecordShowsInTheReRun) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const auto folder = loop.close();
@@ -229,7 +231,7 @@ TEST(Audit, FlippedBitIsNamedByPlaceAndTheMissingRecordShowsInTheReRun) {
 }
 
 TEST(Audit, WritesTablesAndNeverOverwritesUnasked) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const auto result = audit_of(loop.close(), loop.settings());

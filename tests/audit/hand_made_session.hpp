@@ -13,7 +13,7 @@
 #include <random>
 #include <vector>
 
-namespace millpond {
+namespace millpond::test {
 
 inline constexpr Hertz test_rate{1250.0};
 
@@ -45,7 +45,7 @@ inline EngineSettings test_engine_settings() {
 /// Runs the engine over blocks as they would arrive, and journals and stores what a live loop would.
 class HandMadeLoop {
   public:
-    HandMadeLoop(const TempFolder& temp, EngineSettings settings, std::vector<SampleIndex> schedule = {},
+    HandMadeLoop(const TemporaryFolder& temp, EngineSettings settings, std::vector<SampleIndex> schedule = {},
                  StoreSamples samples = StoreSamples::rf64, std::vector<FloorDetail> warm_start = {})
         : settings_(std::move(settings)),
           writer_(SessionWriter::open(session_in(temp, samples), about(settings_, warm_start))),
@@ -139,4 +139,4 @@ inline void forge_record(const std::filesystem::path& folder, const Event& event
     io.write(reinterpret_cast<const char*>(record.data()), static_cast<std::streamsize>(record.size()));
 }
 
-} // namespace millpond
+} // namespace millpond::test

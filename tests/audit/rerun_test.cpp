@@ -9,6 +9,8 @@
 namespace millpond {
 namespace {
 
+using namespace test;
+
 std::string all(const Rerun& rerun) {
     std::string text = rerun.why_not;
     for (const auto& difference : rerun.differences) {
@@ -18,7 +20,7 @@ std::string all(const Rerun& rerun) {
 }
 
 TEST(Rerun, ReproducesEveryDecisionOfAnEventfulSession) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const SessionReader session(loop.close());
@@ -37,7 +39,7 @@ TEST(Rerun, ReproducesEveryDecisionOfAnEventfulSession) {
 }
 
 TEST(Rerun, ReproducesASessionThatStartedArmedFromAnEarlierFloor) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto settings = test_engine_settings();
     settings.arbiter.start_armed = true;
     settings.detector.vote.rule = VoteRule::count;
@@ -51,7 +53,7 @@ TEST(Rerun, ReproducesASessionThatStartedArmedFromAnEarlierFloor) {
 }
 
 TEST(Rerun, ReproducesAControlScheduleFromThePlacesTheJournalNames) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto settings = test_engine_settings();
     settings.arbiter.start_armed = true;
     settings.arbiter.condition = Condition::schedule;
@@ -65,7 +67,7 @@ TEST(Rerun, ReproducesAControlScheduleFromThePlacesTheJournalNames) {
 }
 
 TEST(Rerun, CutSessionIsReproducedAsFarAsItsRecordsGo) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const auto settings = loop.settings();
@@ -78,7 +80,7 @@ TEST(Rerun, CutSessionIsReproducedAsFarAsItsRecordsGo) {
 }
 
 TEST(Rerun, SamplesThatEndBeforeTheJournalEndTheComparison) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());
     const auto data = bursts(10'000);
     loop.block(SampleIndex{0}, std::span(data).first(2 * 6'000));
@@ -92,7 +94,7 @@ TEST(Rerun, SamplesThatEndBeforeTheJournalEndTheComparison) {
 }
 
 TEST(Rerun, FramesThatTheJournalDroppedEndTheComparison) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());
     const auto data = bursts(10'000);
     loop.block(SampleIndex{0}, std::span(data).first(2 * 5'000));
@@ -107,7 +109,7 @@ TEST(Rerun, FramesThatTheJournalDroppedEndTheComparison) {
 }
 
 TEST(Rerun, ForgedVerdictIsReportedAsADifference) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const auto folder = loop.close();
@@ -127,7 +129,7 @@ TEST(Rerun, ForgedVerdictIsReportedAsADifference) {
 }
 
 TEST(Rerun, OneChangedBitOfADetectionsDetailIsADifference) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const auto folder = loop.close();
@@ -140,7 +142,7 @@ TEST(Rerun, OneChangedBitOfADetectionsDetailIsADifference) {
 }
 
 TEST(Rerun, OtherSettingsThanTheSessionsGiveDifferences) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());
     run_eventful(loop);
     const SessionReader session(loop.close());
@@ -150,7 +152,7 @@ TEST(Rerun, OtherSettingsThanTheSessionsGiveDifferences) {
 }
 
 TEST(Rerun, SessionWithoutSamplesIsNotRunAgainAndSaysSo) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings(), {}, StoreSamples::none);
     run_eventful(loop);
     const auto rerun = rerun_session(SessionReader(loop.close()), loop.settings(), "test");

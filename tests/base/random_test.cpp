@@ -1,5 +1,5 @@
 #include "base/random.hpp"
-#include "synth/scipy_says.hpp"
+#include "support/python.hpp"
 
 #include <gtest/gtest.h>
 
@@ -36,8 +36,7 @@ TEST(Random, SameSeedAndStreamGiveTheSameNumbers) {
 
 // Worked out apart from this code, in Python's whole numbers, from the published definitions of both generators.
 TEST(Random, IsXoshiro256PlusPlusSeededBySplitmix64) {
-    const std::string python = R"(python3 - <<'END'
-m = (1 << 64) - 1
+    const std::string program = R"(m = (1 << 64) - 1
 def splitmix(s):
     s = (s + 0x9E3779B97F4A7C15) & m
     z = s
@@ -56,13 +55,13 @@ for _ in range(1000):
     t = (s[1] << 17) & m
     s[2] ^= s[0]; s[3] ^= s[1]; s[1] ^= s[2]; s[0] ^= s[3]; s[2] ^= t; s[3] = rotl(s[3], 45)
 print(result)
-END)";
+)";
     Random random(42, 3);
     std::uint64_t last = 0;
     for (int i = 0; i < 1000; ++i) {
         last = random.bits();
     }
-    EXPECT_EQ(testing::run(python).output, std::to_string(last) + "\n");
+    EXPECT_EQ(test::python(program), std::to_string(last) + "\n");
 }
 
 TEST(Random, StreamsOfOneSeedAreUnrelated) {
@@ -77,9 +76,7 @@ TEST(Random, StreamsOfOneSeedAreUnrelated) {
 
 // SciPy's Kolmogorov-Smirnov test; the seed is fixed, so the outcome is too.
 TEST(Random, LawsAreNormalUniformAndExponentialToSciPy) {
-    if (testing::python_with_scipy().empty()) {
-        GTEST_SKIP() << "no python3 with SciPy: the laws were NOT checked";
-    }
+    MILLPOND_NEEDS_SCIPY();
     Random random(2, 2);
     std::vector<float> values;
     for (int i = 0; i < 50'000; ++i) {
@@ -87,10 +84,10 @@ TEST(Random, LawsAreNormalUniformAndExponentialToSciPy) {
         values.push_back(static_cast<float>(random.uniform()));
         values.push_back(static_cast<float>(random.exponential(2.0)));
     }
-    const auto p = testing::scipy_says(
-        "import scipy.stats as st\nprint(st.kstest(x[:,0], 'norm').pvalue, st.kstest(x[:,1], 'uniform').pvalue,"
-        "st.kstest(x[:,2], 'expon', (0, 2)).pvalue, np.corrcoef(x[:-1,0], x[1:,0])[0,1])",
-        values, 3);
+    const auto p =
+        test::ask_scipy("print(stats.kstest(x[:,0], 'norm').pvalue, stats.kstest(x[:,1], 'uniform').pvalue,"
+                        " stats.kstest(x[:,2], 'expon', (0, 2)).pvalue, np.corrcoef(x[:-1,0], x[1:,0])[0,1])",
+                        values, 3);
     ASSERT_EQ(p.size(), 4u);
     EXPECT_GT(p[0], 0.01);
     EXPECT_GT(p[1], 0.01);

@@ -9,7 +9,7 @@
 
 #include <algorithm>
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 const std::filesystem::path config = source_folder / "config";
@@ -89,4 +89,4 @@ TEST(Config, TuneStartsFromTheStreamOfLive) {
 }
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

@@ -2,14 +2,15 @@
 #include "base/event.hpp"
 #include "docs/documents.hpp"
 #include "settings/settings.hpp"
-#include "support/scratch_folder.hpp"
+#include "support/files.hpp"
+#include "support/process.hpp"
 
 #include <fmt/format.h>
 #include <gtest/gtest.h>
 
 #include <map>
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 const std::vector<std::string> documents{"README.md", "DEVELOPERS.md", "src/README.md"};
@@ -21,7 +22,7 @@ std::string document(const std::string& name) {
 std::string help_of(const std::string& command) {
     const auto ran = run(std::string(MILLPOND_PROGRAM) + " " + command + " --help");
     EXPECT_EQ(ran.status, 0) << command;
-    return ran.output;
+    return ran.out;
 }
 
 // The names that a help text lists under `Subcommands:`, or under an empty one where it has none.
@@ -91,7 +92,7 @@ std::string answer_of(const std::string& command, const std::filesystem::path& f
             const auto there = std::regex_replace(line, std::regex("build/tour"), folder.string());
             auto said = run(fmt::format("cd {} && {} {} 2>/dev/null", source_folder.string(), MILLPOND_PROGRAM,
                                         there.substr(start.find(command))))
-                            .output;
+                            .out;
             said = std::regex_replace(said, std::regex(folder.string()), "build/tour");
             said = std::regex_replace(said, std::regex("[0-9]+ times real pace"), "many times real pace");
             return std::regex_replace(said, std::regex("(^|\n)(?=.)"), "$1    ");
@@ -101,7 +102,7 @@ std::string answer_of(const std::string& command, const std::filesystem::path& f
 }
 
 TEST(Readme, AnswersInTheTourAreThoseOfTheProgram) {
-    const ScratchFolder scratch;
+    const TemporaryFolder scratch;
     const auto folder = scratch / "tour";
     std::filesystem::create_directory(folder);
     ASSERT_FALSE(answer_of("synth", folder).empty());
@@ -226,4 +227,4 @@ TEST(Changelog, BeginsWithWhatIsUnreleased) {
 }
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

@@ -6,7 +6,7 @@
 #include <algorithm>
 #include <map>
 
-namespace millpond::testing {
+namespace millpond::test {
 namespace {
 
 const std::filesystem::path source = source_folder / "src";
@@ -110,4 +110,4 @@ TEST(Rooms, StandInTheMapEach) {
 }
 
 } // namespace
-} // namespace millpond::testing
+} // namespace millpond::test

@@ -3,26 +3,19 @@
 #include "intake/rtp_source.hpp"
 #include "intake/sdp.hpp"
 #include "packets.hpp"
-#include "support/scratch_folder.hpp"
+#include "support/files.hpp"
+#include "support/process.hpp"
 
 #include <gtest/gtest.h>
 
 #include <bit>
 #include <csignal>
-#include <fcntl.h>
-#include <spawn.h>
-#include <sys/wait.h>
-#include <thread>
-#include <unistd.h>
-
-extern char** environ;
+#include <optional>
 
 namespace millpond {
 namespace {
 
-using namespace testing_support;
-using millpond::testing::run;
-using millpond::testing::ScratchFolder;
+using namespace test;
 using std::chrono::milliseconds;
 using std::chrono::seconds;
 
@@ -70,27 +63,12 @@ class FeedCommand : public ::testing::Test {
     void start(const std::vector<std::string>& options) {
         std::vector<std::string> words{MILLPOND_PROGRAM, "feed", path("in.wav"), "--to", to()};
         words.insert(words.end(), options.begin(), options.end());
-        std::vector<char*> pointers;
-        for (auto& word : words) {
-            pointers.push_back(word.data());
-        }
-        pointers.push_back(nullptr);
-        posix_spawn_file_actions_t actions;
-        posix_spawn_file_actions_init(&actions);
-        const auto told = path("told");
-        posix_spawn_file_actions_addopen(&actions, STDOUT_FILENO, told.c_str(), O_WRONLY | O_CREAT | O_TRUNC, 0600);
-        posix_spawn_file_actions_addopen(&actions, STDERR_FILENO, "/dev/null", O_WRONLY, 0);
-        ASSERT_EQ(posix_spawn(&feed_, MILLPOND_PROGRAM, &actions, nullptr, pointers.data(), environ), 0);
-        posix_spawn_file_actions_destroy(&actions);
+        feed_.emplace(std::move(words), folder_ / "feed");
     }
 
-    int end() {
-        int status = -1;
-        waitpid(feed_, &status, 0);
-        return WIFEXITED(status) ? WEXITSTATUS(status) : -1;
-    }
+    int end() { return feed_->status(); }
 
-    [[nodiscard]] std::string told() const { return run("cat " + path("told")).output; }
+    [[nodiscard]] std::string told() const { return feed_->out(); }
 
     /// All blocks up to `frames`, one after the other; checks that none is missing.
     std::vector<float> receive(RtpSource& source, std::size_t frames) {
@@ -106,10 +84,10 @@ class FeedCommand : public ::testing::Test {
         return all;
     }
 
-    ScratchFolder folder_;
+    TemporaryFolder folder_;
     std::vector<float> samples_;
     StreamSettings settings_ = two_channels();
-    pid_t feed_ = -1;
+    std::optional<Process> feed_;
 };
 
 TEST_F(FeedCommand, EverySampleArrivesAsTheSameBits) {
@@ -136,7 +114,7 @@ TEST_F(FeedCommand, AStretchIsSentAgainAndAgainUntilInterrupted) {
     RtpSource source(settings_);
     start({"--loop", "--from-s", "0.5", "--duration-s", "0.2", "--speed", "10"});
     const auto received = receive(source, 600);
-    kill(feed_, SIGINT);
+    feed_->send(SIGINT);
     EXPECT_EQ(end(), 0);
     ASSERT_GE(received.size(), 1200U);
     for (std::size_t i = 0; i < 1200; ++i) {
@@ -154,13 +132,13 @@ TEST_F(FeedCommand, ClippedSamplesAreReported) {
 
 TEST_F(FeedCommand, OtherHostsAreRefusedWithoutTheirOwnWord) {
     const auto feed = [this](const std::string& options) {
-        return run(std::string(MILLPOND_PROGRAM) + " feed " + path("in.wav") + " " + options + " 2>&1");
+        return run_millpond("feed " + path("in.wav") + " " + options);
     };
     const auto other = feed("--to 192.0.2.1:5004");
     EXPECT_EQ(other.status, 2);
-    EXPECT_NE(other.output.find("--to: found 192.0.2.1:5004; allowed: 127.0.0.1:PORT, or --allow-other-hosts"),
+    EXPECT_NE(other.err.find("--to: found 192.0.2.1:5004; allowed: 127.0.0.1:PORT, or --allow-other-hosts"),
               std::string::npos)
-        << other.output;
+        << other.err;
     for (const std::string wrong : {"127.0.0.1", "127.0.0.1:0", "127.0.0.1:70000", "localhost:5004", ":5004"}) {
         EXPECT_EQ(feed("--to " + wrong).status, 2) << wrong;
     }

@@ -3,23 +3,20 @@
 #include "intake/rtp_source.hpp"
 #include "intake/sdp.hpp"
 #include "packets.hpp"
+#include "support/files.hpp"
+#include "support/process.hpp"
 
 #include <gtest/gtest.h>
 
-#include <cstdlib>
-#include <fcntl.h>
 #include <filesystem>
 #include <fstream>
-#include <spawn.h>
-#include <sys/wait.h>
-#include <unistd.h>
-
-extern char** environ;
+#include <optional>
+#include <thread>
 
 namespace millpond {
 namespace {
 
-using namespace testing_support;
+using namespace test;
 using std::chrono::milliseconds;
 using std::chrono::seconds;
 
@@ -57,33 +54,15 @@ void write_wav(const std::filesystem::path& file, std::uint32_t rate, std::uint1
 class Ffmpeg : public ::testing::Test {
   protected:
     void SetUp() override {
-        if (std::system("ffmpeg -version >/dev/null 2>&1") != 0) { // NOLINT: fixed text
+        if (!has_program("ffmpeg") || !has_program("ffprobe")) {
             GTEST_SKIP() << "NOT CHECKED against ffmpeg: it is not installed";
         }
-        folder_ = std::filesystem::temp_directory_path() / ("millpond_ffmpeg_" + std::to_string(getpid()));
-        std::filesystem::create_directories(folder_);
-    }
-    void TearDown() override {
-        if (sender_ > 0) {
-            kill(sender_, SIGTERM);
-            waitpid(sender_, nullptr, 0);
-        }
-        std::filesystem::remove_all(folder_);
     }
 
     void start(const std::vector<std::string>& arguments) {
         std::vector<std::string> words{"ffmpeg", "-hide_banner", "-loglevel", "error", "-nostdin"};
         words.insert(words.end(), arguments.begin(), arguments.end());
-        std::vector<char*> pointers;
-        for (auto& word : words) {
-            pointers.push_back(word.data());
-        }
-        pointers.push_back(nullptr);
-        posix_spawn_file_actions_t actions;
-        posix_spawn_file_actions_init(&actions);
-        posix_spawn_file_actions_addopen(&actions, STDOUT_FILENO, "/dev/null", O_WRONLY, 0);
-        ASSERT_EQ(posix_spawnp(&sender_, "ffmpeg", &actions, nullptr, pointers.data(), environ), 0);
-        posix_spawn_file_actions_destroy(&actions);
+        sender_.emplace(std::move(words), folder_ / "ffmpeg");
     }
 
     std::string name(const char* file) const { return (folder_ / file).string(); }
@@ -91,10 +70,9 @@ class Ffmpeg : public ::testing::Test {
     /// Streams the file twice: once for its SDP alone, then into a source made from that SDP.
     void stream_and_compare(const std::string& codec, std::uint32_t rate, std::uint16_t channels, std::size_t frames) {
         write_wav(name("in.wav"), rate, channels, frames);
-        const auto to = "rtp://127.0.0.1:" + std::to_string(free_port());
+        const auto to = "rtp://127.0.0.1:" + std::to_string(free_udp_port());
         start({"-i", name("in.wav"), "-c:a", codec, "-f", "rtp", "-sdp_file", name("rig.sdp"), to});
-        waitpid(sender_, nullptr, 0);
-        sender_ = -1;
+        ASSERT_EQ(sender_->status(), 0) << sender_->err();
 
         StreamSettings settings;
         settings.sdp_file = "rig.sdp";
@@ -120,8 +98,8 @@ class Ffmpeg : public ::testing::Test {
         EXPECT_EQ(place, frames);
     }
 
-    std::filesystem::path folder_;
-    pid_t sender_ = -1;
+    TemporaryFolder folder_;
+    std::optional<Process> sender_;
 };
 
 TEST_F(Ffmpeg, L16AtAnLfpRateArrivesSampleForSample) {
@@ -138,28 +116,19 @@ TEST_F(Ffmpeg, StaticPayloadTypeOfL16At44100HzArrivesSampleForSample) {
 
 // And the other way: ffmpeg reads the description written here and knows the same stream in it.
 TEST_F(Ffmpeg, TheDescriptionWrittenHereIsReadByFfprobe) {
-    const SdpStream stream{"127.0.0.1", free_port(), 96, SampleEncoding::l16, 1250, 4, 1};
+    const SdpStream stream{"127.0.0.1", free_udp_port(), 96, SampleEncoding::l16, 1250, 4, 1};
     std::ofstream(name("ours.sdp")) << write_sdp(stream, "invented", "0.1 uV per count");
-    std::FILE* probe = popen(("timeout 10 ffprobe -v error -protocol_whitelist file,udp,rtp -show_entries "
-                              "stream=codec_name,sample_rate,channels -of csv=p=0 -analyzeduration 1 -i " +
-                              name("ours.sdp") + " 2>&1")
-                                 .c_str(),
-                             "r"); // NOLINT: fixed text and a path of ours
-    ASSERT_NE(probe, nullptr);
-    std::string told;
+    Process probe({"ffprobe", "-v", "error", "-protocol_whitelist", "file,udp,rtp", "-show_entries",
+                   "stream=codec_name,sample_rate,channels", "-of", "csv=p=0", "-analyzeduration", "1", "-i",
+                   name("ours.sdp")},
+                  folder_ / "ffprobe");
     UdpSender sender(stream.port);
-    const int descriptor = fileno(probe);
-    fcntl(descriptor, F_SETFL, O_NONBLOCK);
     const auto until = monotonic_now() + seconds{10};
-    for (std::uint16_t i = 0; told.find('\n') == std::string::npos && monotonic_now() < until; ++i) {
+    for (std::uint16_t i = 0; probe.out().find('\n') == std::string::npos && monotonic_now() < until; ++i) {
         sender.send(l16_packet({i, i * 10U}, std::vector<std::int16_t>(40)));
-        char text[200];
-        const auto bytes = read(descriptor, text, sizeof text);
-        told.append(text, bytes > 0 ? static_cast<std::size_t>(bytes) : 0);
-        usleep(5000);
+        std::this_thread::sleep_for(milliseconds{5});
     }
-    pclose(probe);
-    EXPECT_EQ(told, "pcm_s16be,1250,4\n");
+    EXPECT_EQ(probe.out(), "pcm_s16be,1250,4\n") << probe.err();
 }
 
 } // namespace

@@ -10,7 +10,7 @@ namespace millpond {
 namespace {
 
 TEST(OpenSource, MakesTheKindThatTheSettingsAskFor) {
-    auto settings = testing_support::two_channels();
+    auto settings = test::two_channels();
     const auto rtp = open_source(settings);
     EXPECT_NE(dynamic_cast<RtpSource*>(rtp.get()), nullptr);
     EXPECT_EQ(rtp->rate(), Hertz{1250.0});

@@ -3,6 +3,7 @@
 
 #include "intake/rtp_packet.hpp"
 #include "intake/stream_settings.hpp"
+#include "support/udp_port.hpp"
 
 #include <boost/asio/buffer.hpp>
 #include <boost/asio/io_context.hpp>
@@ -11,7 +12,7 @@
 #include <cstdint>
 #include <vector>
 
-namespace millpond::testing_support {
+namespace millpond::test {
 
 using Bytes = std::vector<std::uint8_t>;
 
@@ -41,17 +42,10 @@ inline Bytes l16_packet(const PacketParts& parts, const std::vector<std::int16_t
     return bytes;
 }
 
-/// A loopback UDP port that nobody uses now.
-inline std::uint16_t free_port() {
-    boost::asio::io_context context;
-    boost::asio::ip::udp::socket socket(context, {boost::asio::ip::address_v4::loopback(), 0});
-    return socket.local_endpoint().port();
-}
-
 /// Two channels of L16 at 1250 Hz, one count 0.5 uV, on a free port: all resolved.
 inline StreamSettings two_channels() {
     StreamSettings settings;
-    settings.port = free_port();
+    settings.port = free_udp_port();
     settings.encoding = SampleEncoding::l16;
     settings.rate_hz = 1250.0;
     settings.channels = 2;
@@ -72,4 +66,4 @@ class UdpSender {
     boost::asio::ip::udp::endpoint to_;
 };
 
-} // namespace millpond::testing_support
+} // namespace millpond::test

@@ -14,7 +14,7 @@
 namespace millpond {
 namespace {
 
-using namespace testing_support;
+using namespace test;
 using std::chrono::milliseconds;
 using std::chrono::seconds;
 

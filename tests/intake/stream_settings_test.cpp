@@ -1,6 +1,7 @@
 #include "base/refusal.hpp"
 #include "intake/stream_settings.hpp"
 #include "settings/yaml_reader.hpp"
+#include "support/files.hpp"
 
 #include <gtest/gtest.h>
 
@@ -13,12 +14,9 @@ namespace {
 class StreamSettingsFile : public ::testing::Test {
   protected:
     void SetUp() override {
-        folder_ = std::filesystem::temp_directory_path() / ("millpond_stream_settings_" + std::to_string(::getpid()));
-        std::filesystem::create_directories(folder_);
         std::ofstream(folder_ / "rig.sdp") << "v=0\ns=-\nc=IN IP4 127.0.0.1\nm=audio 5999 RTP/AVP 97\n"
                                               "a=rtpmap:97 L24/1250/8\na=extmap:2 urn:ietf:params:rtp-hdrext:ntp-64\n";
     }
-    void TearDown() override { std::filesystem::remove_all(folder_); }
 
     [[nodiscard]] StreamSettings read(const std::string& text) const {
         const auto file = folder_ / "rig.yaml";
@@ -36,7 +34,7 @@ class StreamSettingsFile : public ::testing::Test {
         return "taken";
     }
 
-    std::filesystem::path folder_;
+    test::TemporaryFolder folder_;
 };
 
 TEST_F(StreamSettingsFile, TheSdpFileBesideItSaysWhatTheSettingsDoNot) {

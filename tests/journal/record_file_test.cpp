@@ -10,6 +10,8 @@
 namespace millpond {
 namespace {
 
+using namespace test;
+
 std::vector<std::uint8_t> bytes_of(std::string_view text) {
     return {text.begin(), text.end()};
 }
@@ -25,7 +27,7 @@ class RecordFile : public ::testing::Test {
         ASSERT_EQ(writer.append(events).records, count);
     }
 
-    TempFolder folder;
+    TemporaryFolder folder;
     std::filesystem::path file = folder.path() / "records.mpj";
 };
 

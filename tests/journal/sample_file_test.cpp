@@ -2,30 +2,17 @@
 #include "journal/session_reader.hpp"
 #include "journal/session_support.hpp"
 #include "recording/recording_reader.hpp"
+#include "support/process.hpp"
 
 #include <gtest/gtest.h>
 
-#include <array>
 #include <cmath>
-#include <cstdio>
 #include <limits>
 
 namespace millpond {
 namespace {
 
-// What a command prints, for asking programs that nobody here wrote.
-std::string printed_by(const std::string& command) {
-    std::string text;
-    FILE* pipe = ::popen((command + " 2>&1").c_str(), "r");
-    std::array<char, 256> part{};
-    while (pipe != nullptr && std::fgets(part.data(), part.size(), pipe) != nullptr) {
-        text += part.data();
-    }
-    if (pipe != nullptr) {
-        ::pclose(pipe);
-    }
-    return text;
-}
+using namespace test;
 
 std::vector<float> ramp(std::uint64_t first, std::size_t frames) {
     std::vector<float> data;
@@ -39,7 +26,7 @@ std::vector<float> ramp(std::uint64_t first, std::size_t frames) {
 class StoredSamples : public ::testing::TestWithParam<StoreSamples> {};
 
 TEST_P(StoredSamples, AreBitForBitWhatTheLoopStoredAndMissingFramesAreNan) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto writer = SessionWriter::open(session_in(temp, GetParam()), about_stream());
     const auto first = ramp(0, 100);
     auto second = ramp(150, 7);
@@ -62,25 +49,26 @@ TEST_P(StoredSamples, AreBitForBitWhatTheLoopStoredAndMissingFramesAreNan) {
 }
 
 TEST_P(StoredSamples, AreReadableByFfprobeAndSox) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto writer = SessionWriter::open(session_in(temp, GetParam()), about_stream());
     writer->store({SampleIndex{0}, 2, ramp(0, 1250)});
     writer->close(SampleIndex{1250});
     const auto file = (writer->folder() / sample_file_name(GetParam())).string();
 
-    const auto probed = printed_by("ffprobe -v error -show_entries stream=codec_name,sample_rate,channels,duration_ts "
-                                   "-of default=noprint_wrappers=1 " +
-                                   file);
+    const auto probed = run("ffprobe -v error -show_entries stream=codec_name,sample_rate,channels,duration_ts "
+                            "-of default=noprint_wrappers=1 " +
+                            file + " 2>&1")
+                            .out;
     EXPECT_NE(probed.find("codec_name=pcm_f32le"), std::string::npos) << probed;
     EXPECT_NE(probed.find("sample_rate=1250"), std::string::npos) << probed;
     EXPECT_NE(probed.find("channels=2"), std::string::npos) << probed;
     EXPECT_NE(probed.find("duration_ts=1250"), std::string::npos) << probed;
     if (GetParam() == StoreSamples::w64) { // sox reads W64 through libsndfile; it knows no RF64 of its own
-        EXPECT_EQ(printed_by("soxi -s " + file), "1250\n");
+        EXPECT_EQ(run("soxi -s " + file + " 2>&1").out, "1250\n");
     }
     // The values as ffmpeg decodes them.
     const auto raw = temp.path() / "decoded.raw";
-    printed_by("ffmpeg -v error -i " + file + " -f f32le " + raw.string());
+    run("ffmpeg -v error -i " + file + " -f f32le " + raw.string());
     const auto wanted = ramp(0, 1250);
     const auto bytes = text_of(raw);
     ASSERT_EQ(bytes.size(), wanted.size() * sizeof(float));
@@ -88,7 +76,7 @@ TEST_P(StoredSamples, AreReadableByFfprobeAndSox) {
 }
 
 TEST_P(StoredSamples, AreReadableWithoutEverBeingClosed) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     const auto file = temp.path() / sample_file_name(GetParam());
     SampleFileWriter writer(file, GetParam(), Hertz{1250.0}, 2);
     ASSERT_TRUE(writer.write(ramp(0, 500)));
@@ -102,7 +90,7 @@ TEST_P(StoredSamples, AreReadableWithoutEverBeingClosed) {
 }
 
 TEST_P(StoredSamples, OpenAsARecordingWithTheSessionsNamesAndRoles) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto about = about_stream();
     about.channels = {{"CA1", ChannelRole::ripple}, {"cortex", ChannelRole::reference}};
     auto writer = SessionWriter::open(session_in(temp, GetParam()), about);

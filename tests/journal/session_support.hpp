@@ -1,41 +1,13 @@
-// Temporary folders and small sessions for the tests of journal and audit.
+// Small sessions for the tests of journal and audit.
 #pragma once
 
 #include "journal/session_writer.hpp"
+#include "support/files.hpp"
 
-#include <cstdlib>
 #include <filesystem>
 #include <fstream>
-#include <sstream>
-#include <string>
 
-namespace millpond {
-
-/// A folder that is gone when its test is.
-class TempFolder {
-  public:
-    TempFolder() {
-        std::string name = (std::filesystem::temp_directory_path() / "millpond_XXXXXX").string();
-        path_ = ::mkdtemp(name.data());
-    }
-    ~TempFolder() {
-        std::error_code ignored;
-        std::filesystem::remove_all(path_, ignored);
-    }
-    TempFolder(const TempFolder&) = delete;
-    TempFolder& operator=(const TempFolder&) = delete;
-    [[nodiscard]] const std::filesystem::path& path() const { return path_; }
-
-  private:
-    std::filesystem::path path_;
-};
-
-inline std::string text_of(const std::filesystem::path& file) {
-    std::ifstream in(file, std::ios::binary);
-    std::ostringstream text;
-    text << in.rdbuf();
-    return text.str();
-}
+namespace millpond::test {
 
 inline void flip_bit(const std::filesystem::path& file, std::uint64_t byte) {
     std::fstream io(file, std::ios::binary | std::ios::in | std::ios::out);
@@ -45,7 +17,7 @@ inline void flip_bit(const std::filesystem::path& file, std::uint64_t byte) {
     io.put(static_cast<char>(old ^ 0x10));
 }
 
-inline SessionSettings session_in(const TempFolder& folder, StoreSamples samples = StoreSamples::none) {
+inline SessionSettings session_in(const TemporaryFolder& folder, StoreSamples samples = StoreSamples::none) {
     SessionSettings settings;
     settings.folder = folder.path();
     settings.name = "test";
@@ -78,4 +50,4 @@ inline std::uint64_t number_in(const Event& note) {
     return number;
 }
 
-} // namespace millpond
+} // namespace millpond::test

@@ -15,6 +15,8 @@
 namespace millpond {
 namespace {
 
+using namespace test;
+
 Event detection_at(std::uint64_t sample) {
     return Event::make(EventKind::detection, 0, SampleIndex{sample}, DetectionDetail{90, 20, 10, 60, 2, 1});
 }
@@ -34,7 +36,7 @@ template <class Detail> std::vector<Detail> details_of(const SessionReader& sess
 }
 
 TEST(Session, ClosedSessionHasFirstAndLastEventTablesAndProvenance) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto about = about_stream();
     about.channels[1].role = ChannelRole::reference;
     about.warm_start = {{12.345678901234567, 3.1, 0.0F, 0, 0, 77}};
@@ -77,7 +79,7 @@ TEST(Session, ClosedSessionHasFirstAndLastEventTablesAndProvenance) {
 }
 
 TEST(Session, SequenceNumbersFollowTheWrittenOrderAndCausesComeBeforeEffects) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto writer = SessionWriter::open(session_in(temp), about_stream());
     for (std::uint64_t i = 0; i < 200; ++i) {
         writer->loop_sink().take(detection_at(i));
@@ -95,7 +97,7 @@ TEST(Session, SequenceNumbersFollowTheWrittenOrderAndCausesComeBeforeEffects) {
 }
 
 TEST(Session, UnclosedSessionReadsAsCut) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     std::filesystem::path folder;
     {
         auto writer = SessionWriter::open(session_in(temp), about_stream());
@@ -109,7 +111,7 @@ TEST(Session, UnclosedSessionReadsAsCut) {
 }
 
 TEST(Session, PacketTimingsComeBackAsTheSameHistogram) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto writer = SessionWriter::open(session_in(temp), about_stream());
     LatencyHistogram wanted;
     for (std::int64_t i = 0; i < 5000; ++i) {
@@ -138,7 +140,7 @@ TEST(Session, PacketTimingsComeBackAsTheSameHistogram) {
 }
 
 TEST(Session, SnapshotCountsWhatTheRingsCarried) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto writer = SessionWriter::open(session_in(temp), about_stream());
     writer->loop_sink().take(detection_at(10));
     writer->loop_sink().take(withheld_at(10, Rule::veto));
@@ -160,7 +162,7 @@ TEST(Session, SnapshotCountsWhatTheRingsCarried) {
 }
 
 TEST(Session, FullRingIsCountedJournaledAndTold) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto writer = SessionWriter::open(session_in(temp), about_stream());
     constexpr std::uint64_t count = 200'000; // three times the ring, faster than any drain
     for (std::uint64_t i = 0; i < count; ++i) {
@@ -200,7 +202,7 @@ TEST(Session, LongNoteIsPutTogetherAgain) {
 }
 
 TEST(SessionFolder, ASessionThatExistsIsNeverOverwritten) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     const auto settings = session_in(temp);
     const std::int64_t start = 1'772'357'400'000'000'000; // 2026-03-01 09:30:00 UTC, by date(1)
     {
@@ -213,34 +215,34 @@ TEST(SessionFolder, ASessionThatExistsIsNeverOverwritten) {
 }
 
 TEST(SessionFolder, AFolderThatAppearsMeanwhileIsNotReplacedEvenIfEmpty) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     NewSessionFolder late(session_in(temp), 1'772'357'400'000'000'000);
     std::filesystem::create_directory(temp.path() / "20260301T093000Z_test");
     EXPECT_THROW(late.commit(), Refusal);
 }
 
 TEST(SessionFolder, NothingStaysOfAFolderThatWasNeverCommitted) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     { const NewSessionFolder unfinished(session_in(temp), 1'772'357'400'000'000'000); }
     EXPECT_TRUE(std::filesystem::is_empty(temp.path()));
 }
 
 TEST(SessionFolder, NameThatWouldLeaveTheFolderIsRefused) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto settings = session_in(temp);
     settings.name = "../elsewhere";
     EXPECT_THROW(SessionWriter::open(settings, about_stream()), Refusal);
 }
 
 TEST(SessionFolder, DiskWithLessThanTheMinimumIsRefused) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto settings = session_in(temp);
     settings.min_free_mb = 1e9;
     EXPECT_THROW(SessionWriter::open(settings, about_stream()), Refusal);
 }
 
 TEST(SessionReader, CutSessionEndsWhereTheEngineLastSpoke) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     std::filesystem::path folder;
     {
         auto writer = SessionWriter::open(session_in(temp, StoreSamples::rf64), about_stream());
@@ -255,7 +257,7 @@ TEST(SessionReader, CutSessionEndsWhereTheEngineLastSpoke) {
 }
 
 TEST(SessionReader, ProvenanceWithoutARateIsRefused) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     auto writer = SessionWriter::open(session_in(temp), about_stream());
     writer->close(SampleIndex{1});
     auto json = nlohmann::json::parse(text_of(writer->folder() / "provenance.json"));
@@ -265,7 +267,7 @@ TEST(SessionReader, ProvenanceWithoutARateIsRefused) {
 }
 
 TEST(SessionReader, DryRunOutputIsRefusedAndSaysWhatItIs) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     std::ofstream(temp.path() / "score.json") << "{}";
     try {
         const SessionReader session(temp.path());

@@ -17,6 +17,8 @@
 namespace millpond {
 namespace {
 
+using namespace test;
+
 // In the child: one note and one frame a millisecond, for ever. Each number goes through the pipe once it was pushed.
 [[noreturn]] void write_for_ever(const SessionSettings& settings, int pipe) {
     auto writer = SessionWriter::open(settings, about_stream());
@@ -45,7 +47,7 @@ std::filesystem::path only_session_in(const std::filesystem::path& folder) {
 TEST(KilledSession, AllButTheLast100MsIsReadableWithEveryChecksumRight) {
     std::mt19937 random(20260301);
     for (int round = 0; round < 5; ++round) {
-        const TempFolder temp;
+        const TemporaryFolder temp;
         std::array<int, 2> pipe{};
         ASSERT_EQ(::pipe(pipe.data()), 0);
         const auto child = ::fork();
@@ -110,7 +112,7 @@ bool wait_for(const std::function<bool()>& condition) {
 }
 
 TEST(FullDisk, RecordsStopAtAWholeOneTheFlagIsSetAndTheFolderStaysReadable) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     const auto verdict = exit_of([&temp] {
         std::signal(SIGXFSZ, SIG_IGN);
         const rlimit limit{20'000, 20'000}; // no multiple of a record behind the header
@@ -158,7 +160,7 @@ class SmallDisk {
 };
 
 TEST(FullDisk, SamplesStopAtAWholeFrameAndLostFramesAreCounted) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     const SmallDisk disk(temp.path() / "disk");
     if (!disk.mounted()) {
         GTEST_SKIP() << "NOT ALLOWED TO MOUNT A SMALL DISK: a full disk was not tried";
@@ -191,7 +193,7 @@ TEST(FullDisk, SamplesStopAtAWholeFrameAndLostFramesAreCounted) {
 }
 
 TEST(FullDisk, RecordsAreTakenUpAgainOnceThereIsRoomAndTellWhatWasLost) {
-    const TempFolder temp;
+    const TemporaryFolder temp;
     const SmallDisk disk(temp.path() / "disk");
     if (!disk.mounted()) {
         GTEST_SKIP() << "NOT ALLOWED TO MOUNT A SMALL DISK: a full disk was not tried";

@@ -3,7 +3,8 @@
 #include "recording/recording_reader.hpp"
 #include "recording/recording_writer.hpp"
 #include "recording/whole_file.hpp"
-#include "support/scratch_folder.hpp"
+#include "support/files.hpp"
+#include "support/text.hpp"
 
 #include <gtest/gtest.h>
 
@@ -55,12 +56,12 @@ std::filesystem::path edf(const std::filesystem::path& file, const std::vector<M
 class Edf : public ::testing::Test {
   protected:
     std::string refusal(const std::filesystem::path& file, const std::string& sidecar = {}) {
-        return testing::line_of<Refusal>([&] {
+        return test::line_of<Refusal>([&] {
             static_cast<void>(
                 load_recording(file, sidecar.empty() ? std::filesystem::path{} : scratch_.file("s.yaml", sidecar)));
         });
     }
-    testing::ScratchFolder scratch_;
+    test::TemporaryFolder scratch_;
 };
 
 TEST_F(Edf, PhysicalUnitsBecomeMicrovolts) {
@@ -127,15 +128,15 @@ TEST_F(Edf, RolesComeInOrderWhereNoNameIsALabel) {
 
 TEST_F(Edf, NamesThatAreNoLabelsAreRefused) {
     const auto file = edf(scratch_ / "a.edf", {{"one", 500, "uV"}, {"two", 500, "uV"}});
-    EXPECT_TRUE(testing::says(refusal(file, "channels: [{name: one}, {name: owt}]\n"), "'owt'; allowed: labels"));
-    EXPECT_TRUE(testing::says(refusal(file, "channels: [{name: CA1}]\n"), "'CA1'"));
-    EXPECT_TRUE(testing::says(refusal(file, "rate_hz: 500\n"), "channels only"));
-    EXPECT_TRUE(testing::says(refusal(file, "channels: [{name: one, role: unused}]\n"), "no signal in use"));
+    EXPECT_TRUE(test::says(refusal(file, "channels: [{name: one}, {name: owt}]\n"), "'owt'; allowed: labels"));
+    EXPECT_TRUE(test::says(refusal(file, "channels: [{name: CA1}]\n"), "'CA1'"));
+    EXPECT_TRUE(test::says(refusal(file, "rate_hz: 500\n"), "channels only"));
+    EXPECT_TRUE(test::says(refusal(file, "channels: [{name: one, role: unused}]\n"), "no signal in use"));
 }
 
 TEST_F(Edf, SignalsOfAnotherRateAreRefusedUnlessUnused) {
     const auto file = edf(scratch_ / "a.edf", {{"LFP", 1000, "uV"}, {"speed", 50, "cm/s"}, {"EEG", 200, "uV"}});
-    EXPECT_TRUE(testing::says(refusal(file), "signal 'speed': found 50 Hz; allowed: 1000 Hz as of 'LFP'"));
+    EXPECT_TRUE(test::says(refusal(file), "signal 'speed': found 50 Hz; allowed: 1000 Hz as of 'LFP'"));
     const auto sidecar = scratch_.file("s.yaml", "channels: [{name: LFP}]\n");
     const auto loaded = load_recording(file, sidecar);
     EXPECT_EQ(loaded.info.channels, (Channels{{"LFP"}}));
@@ -145,16 +146,16 @@ TEST_F(Edf, SignalsOfAnotherRateAreRefusedUnlessUnused) {
 
 TEST_F(Edf, OtherUnitsAreRefusedUnlessUnused) {
     const auto file = edf(scratch_ / "a.edf", {{"LFP", 500, "uV"}, {"temperature", 500, "degC"}});
-    EXPECT_TRUE(testing::says(refusal(file), "signal 'temperature': found unit 'degC'; allowed: uV, mV or V"));
+    EXPECT_TRUE(test::says(refusal(file), "signal 'temperature': found unit 'degC'; allowed: uV, mV or V"));
     EXPECT_EQ(load_recording(file, scratch_.file("s.yaml", "channels: [{name: LFP}]\n")).info.channels.size(), 1u);
 }
 
 TEST_F(Edf, CutFilesAreRefused) {
     const auto file = edf(scratch_ / "a.edf", {{"one", 500, "uV"}}, 10);
     std::filesystem::resize_file(file, std::filesystem::file_size(file) * 6 / 10);
-    EXPECT_TRUE(testing::says(refusal(file), "not as EDF+ prescribes, or cut short"));
+    EXPECT_TRUE(test::says(refusal(file), "not as EDF+ prescribes, or cut short"));
     std::filesystem::resize_file(file, 100);
-    EXPECT_TRUE(testing::says(refusal(file), "a.edf: found"));
+    EXPECT_TRUE(test::says(refusal(file), "a.edf: found"));
 }
 
 TEST_F(Edf, InterruptedRecordingsAreRefused) {
@@ -163,7 +164,7 @@ TEST_F(Edf, InterruptedRecordingsAreRefused) {
     const auto file = edf(scratch_ / "a.edf", {{"one", 500, "uV"}}, 3);
     auto bytes = read_whole_file(file);
     bytes.replace(bytes.find("EDF+C"), 5, "EDF+D");
-    EXPECT_TRUE(testing::says(refusal(scratch_.file("d.edf", bytes)), "d.edf: found an interrupted recording (EDF+D)"));
+    EXPECT_TRUE(test::says(refusal(scratch_.file("d.edf", bytes)), "d.edf: found an interrupted recording (EDF+D)"));
 }
 
 TEST_F(Edf, AnnotationsBecomeEvents) {
@@ -198,11 +199,11 @@ TEST_F(Edf, SeveralReadersAndThreadsShareOneFile) {
 class OutsideEdf : public ::testing::Test {
   protected:
     void SetUp() override {
-        if (testing::outside_recordings().empty()) {
+        if (test::outside_recordings().empty()) {
             GTEST_SKIP() << "MILLPOND_RECORDINGS is not set: the outside recordings were NOT read";
         }
     }
-    static std::filesystem::path file(const char* name) { return testing::outside_recordings() / name; }
+    static std::filesystem::path file(const char* name) { return test::outside_recordings() / name; }
 };
 
 // Physical range 8711..-8711 uV over -32768..32767: a count is about -0.2659 uV. The file's records are decoded here by

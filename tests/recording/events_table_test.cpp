@@ -1,14 +1,15 @@
 #include "base/refusal.hpp"
 #include "recording/events_table.hpp"
 #include "recording/whole_file.hpp"
-#include "support/scratch_folder.hpp"
+#include "support/files.hpp"
+#include "support/text.hpp"
 
 #include <gtest/gtest.h>
 
 namespace millpond {
 namespace {
 
-using testing::ScratchFolder;
+using test::TemporaryFolder;
 
 class EventsTable : public ::testing::Test {
   protected:
@@ -16,9 +17,9 @@ class EventsTable : public ::testing::Test {
         return read_events_table(scratch_.file("events.tsv", text), 1250.0);
     }
     std::string refusal(const std::string& text) {
-        return testing::line_of<Refusal>([&] { static_cast<void>(read(text)); });
+        return test::line_of<Refusal>([&] { static_cast<void>(read(text)); });
     }
-    ScratchFolder scratch_;
+    TemporaryFolder scratch_;
 };
 
 // The columns are those of BIDS, 'Task events': onset and duration in seconds, trial_type, sample; n/a for missing.
@@ -53,34 +54,34 @@ TEST_F(EventsTable, KeepsFileOrder) {
 }
 
 TEST_F(EventsTable, RefusesAMissingColumnAndNamesIt) {
-    EXPECT_TRUE(testing::says(refusal("onset\ttrial_type\n1\tripple\n"), "events.tsv:1: found no column duration"));
-    EXPECT_TRUE(testing::says(refusal(""), "events.tsv:1: found no column onset"));
-    EXPECT_TRUE(testing::says(refusal("onset,duration\n1,2\n"), "no column onset")) << "commas are no tabs";
+    EXPECT_TRUE(test::says(refusal("onset\ttrial_type\n1\tripple\n"), "events.tsv:1: found no column duration"));
+    EXPECT_TRUE(test::says(refusal(""), "events.tsv:1: found no column onset"));
+    EXPECT_TRUE(test::says(refusal("onset,duration\n1,2\n"), "no column onset")) << "commas are no tabs";
 }
 
 TEST_F(EventsTable, RefusesAColumnTwice) {
-    EXPECT_TRUE(testing::says(refusal("onset\tduration\tonset\n"), "'onset' twice"));
+    EXPECT_TRUE(test::says(refusal("onset\tduration\tonset\n"), "'onset' twice"));
 }
 
 TEST_F(EventsTable, RefusesBadNumbersWithLineAndColumn) {
-    EXPECT_TRUE(testing::says(refusal("onset\tduration\n1\t0\none\t0\n"), "events.tsv:3: onset: found 'one'"));
-    EXPECT_TRUE(testing::says(refusal("onset\tduration\n1.5x\t0\n"), "events.tsv:2: onset: found '1.5x'"));
-    EXPECT_TRUE(testing::says(refusal("onset\tduration\nnan\t0\n"), "found 'nan'"));
-    EXPECT_TRUE(testing::says(refusal("onset\tduration\ninf\t0\n"), "found 'inf'"));
-    EXPECT_TRUE(testing::says(refusal("onset\tduration\nn/a\t0\n"), "onset: found 'n/a'"));
-    EXPECT_TRUE(testing::says(refusal("onset\tduration\n1\t-0.1\n"), "events.tsv:2: duration: found '-0.1'"));
-    EXPECT_TRUE(testing::says(refusal("onset\tduration\tsample\n1\t0\t12.5\n"), "events.tsv:2: sample: found '12.5'"));
+    EXPECT_TRUE(test::says(refusal("onset\tduration\n1\t0\none\t0\n"), "events.tsv:3: onset: found 'one'"));
+    EXPECT_TRUE(test::says(refusal("onset\tduration\n1.5x\t0\n"), "events.tsv:2: onset: found '1.5x'"));
+    EXPECT_TRUE(test::says(refusal("onset\tduration\nnan\t0\n"), "found 'nan'"));
+    EXPECT_TRUE(test::says(refusal("onset\tduration\ninf\t0\n"), "found 'inf'"));
+    EXPECT_TRUE(test::says(refusal("onset\tduration\nn/a\t0\n"), "onset: found 'n/a'"));
+    EXPECT_TRUE(test::says(refusal("onset\tduration\n1\t-0.1\n"), "events.tsv:2: duration: found '-0.1'"));
+    EXPECT_TRUE(test::says(refusal("onset\tduration\tsample\n1\t0\t12.5\n"), "events.tsv:2: sample: found '12.5'"));
 }
 
 TEST_F(EventsTable, RefusesALineOfAnotherWidth) {
-    EXPECT_TRUE(testing::says(refusal("onset\tduration\n1\t0\t7\n"), "events.tsv:2: found 3 columns"));
-    EXPECT_TRUE(testing::says(refusal("onset\tduration\n1\t0\n\n2\t0\n"), "events.tsv:3: found 1 columns"));
+    EXPECT_TRUE(test::says(refusal("onset\tduration\n1\t0\t7\n"), "events.tsv:2: found 3 columns"));
+    EXPECT_TRUE(test::says(refusal("onset\tduration\n1\t0\n\n2\t0\n"), "events.tsv:3: found 1 columns"));
 }
 
 TEST_F(EventsTable, RefusesAFileThatIsNotThere) {
-    EXPECT_TRUE(testing::says(
-        testing::line_of<Refusal>([&] { static_cast<void>(read_events_table(scratch_ / "none.tsv", 1250.0)); }),
-        "none.tsv: found no file"));
+    EXPECT_TRUE(
+        test::says(test::line_of<Refusal>([&] { static_cast<void>(read_events_table(scratch_ / "none.tsv", 1250.0)); }),
+                   "none.tsv: found no file"));
 }
 
 TEST_F(EventsTable, WritesSortedByOnsetAndReadsBackTheSame) {
@@ -88,7 +89,7 @@ TEST_F(EventsTable, WritesSortedByOnsetAndReadsBackTheSame) {
     TableEvent early{-1.0 / 3.0, 0.0, "note with spaces", -416, {}};
     const auto file = scratch_ / "out.tsv";
     write_events_table(file, {late, early}, {"peak_uv", "frequency_hz"});
-    EXPECT_TRUE(testing::says(read_whole_file(file), "onset\tduration\ttrial_type\tsample\tpeak_uv\tfrequency_hz\n"));
+    EXPECT_TRUE(test::says(read_whole_file(file), "onset\tduration\ttrial_type\tsample\tpeak_uv\tfrequency_hz\n"));
     const auto back = read_events_table(file, 1250.0);
     ASSERT_EQ(back.size(), 2u);
     EXPECT_EQ(back[0].onset_s, early.onset_s) << "every digit";

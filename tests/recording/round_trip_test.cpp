@@ -3,7 +3,9 @@
 #include "recording/recording_reader.hpp"
 #include "recording/recording_writer.hpp"
 #include "recording/whole_file.hpp"
-#include "support/scratch_folder.hpp"
+#include "support/files.hpp"
+#include "support/process.hpp"
+#include "support/text.hpp"
 
 #include <gtest/gtest.h>
 
@@ -17,8 +19,8 @@
 namespace millpond {
 namespace {
 
-using testing::run;
-using testing::ScratchFolder;
+using test::run;
+using test::TemporaryFolder;
 
 const Channels two_channels{{"CA1: 'deep'", ChannelRole::ripple}, {"cortex", ChannelRole::reference}};
 constexpr double microvolts_per_count = 0.195;
@@ -66,7 +68,7 @@ class EveryFormat : public ::testing::TestWithParam<Kind> {
         const int bits = integer_bits(GetParam().encoding);
         return bits == 0 ? some_floats(30'000) : counts_as_microvolts(bits, 30'000);
     }
-    ScratchFolder scratch_;
+    TemporaryFolder scratch_;
 };
 
 TEST_P(EveryFormat, ComesBackBitForBit) {
@@ -114,14 +116,14 @@ INSTANTIATE_TEST_SUITE_P(Recording, EveryFormat,
                                            Kind{".raw", "raw", Encoding::float32}));
 
 TEST(RecordingWriter, SameSamplesGiveTheSameBytes) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto a = write(scratch / "a.wav", Encoding::float32, some_floats(1000));
     const auto b = write(scratch / "b.wav", Encoding::float32, some_floats(1000));
     EXPECT_EQ(read_whole_file(a), read_whole_file(b));
 }
 
 TEST(RecordingWriter, NonFiniteSamplesPassThroughFloatFiles) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const std::vector<float> data{1.0f, std::nanf(""), -INFINITY, INFINITY};
     for (const char* name : {"a.wav", "a.rf64", "a.w64", "a.raw"}) {
         const auto back = load_recording(write(scratch / name, Encoding::float32, data)).data;
@@ -133,14 +135,14 @@ TEST(RecordingWriter, NonFiniteSamplesPassThroughFloatFiles) {
 }
 
 TEST(RecordingWriter, IntegersRefuseNonFiniteSamplesAndLeaveNoFile) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     EXPECT_THROW(write(scratch / "a.wav", Encoding::int16, {1.0f, 1.0f, std::nanf(""), 0.0f}), Refusal);
     EXPECT_FALSE(std::filesystem::exists(scratch / "a.wav"));
     EXPECT_FALSE(std::filesystem::exists(unfinished_path(scratch / "a.wav")));
 }
 
 TEST(RecordingWriter, CountsWhatItClips) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto file = scratch / "a.wav";
     RecordingWriter writer(file, {Container::wav, Encoding::int16, 1.0, WriteMode::whole}, two_channels, Hertz{1250.0});
     writer.write(std::vector<float>{32767.0f, 32768.0f, -32768.0f, -1e9f});
@@ -151,7 +153,7 @@ TEST(RecordingWriter, CountsWhatItClips) {
 }
 
 TEST(RecordingWriter, RoundsToTheNearestCount) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto file = scratch / "a.flac";
     RecordingWriter writer(file, {Container::flac, Encoding::int16, 0.5, WriteMode::whole}, two_channels,
                            Hertz{1250.0});
@@ -161,10 +163,10 @@ TEST(RecordingWriter, RoundsToTheNearestCount) {
 }
 
 TEST(RecordingWriter, RefusesAnExistingRecordingUnlessToldToOverwrite) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto file = write(scratch / "a.wav", Encoding::float32, some_floats(10));
-    EXPECT_TRUE(testing::says(testing::line_of<Refusal>([&] { write(file, Encoding::float32, some_floats(20)); }),
-                              "a.wav: found a recording that exists"));
+    EXPECT_TRUE(test::says(test::line_of<Refusal>([&] { write(file, Encoding::float32, some_floats(20)); }),
+                           "a.wav: found a recording that exists"));
     RecordingWriter writer(file, {}, two_channels, Hertz{1250.0}, true);
     writer.write(some_floats(20));
     EXPECT_EQ(load_recording(file).info.frames, 10u) << "the old one stays until the new one is whole";
@@ -173,34 +175,33 @@ TEST(RecordingWriter, RefusesAnExistingRecordingUnlessToldToOverwrite) {
 }
 
 TEST(RecordingWriter, RefusesWhatTheFormatCannotHold) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto refusal = [&](const char* name, RecordingFormat format, std::size_t channels, double rate) {
-        return testing::line_of<Refusal>(
+        return test::line_of<Refusal>(
             [&] { RecordingWriter(scratch / name, format, ripple_channels(channels), Hertz{rate}); });
     };
-    EXPECT_TRUE(testing::says(refusal("a.flac", {Container::flac, Encoding::float32, 1.0, WriteMode::whole}, 2, 1250.0),
-                              "int16 or int24"));
-    EXPECT_TRUE(testing::says(refusal("a.flac", {Container::flac, Encoding::int16, 1.0, WriteMode::whole}, 9, 1250.0),
-                              "at most 8 channels"));
+    EXPECT_TRUE(test::says(refusal("a.flac", {Container::flac, Encoding::float32, 1.0, WriteMode::whole}, 2, 1250.0),
+                           "int16 or int24"));
+    EXPECT_TRUE(test::says(refusal("a.flac", {Container::flac, Encoding::int16, 1.0, WriteMode::whole}, 9, 1250.0),
+                           "at most 8 channels"));
+    EXPECT_TRUE(test::says(refusal("a.flac", {Container::flac, Encoding::int16, 1.0, WriteMode::crash_safe}, 2, 1250.0),
+                           "survive a crash"));
     EXPECT_TRUE(
-        testing::says(refusal("a.flac", {Container::flac, Encoding::int16, 1.0, WriteMode::crash_safe}, 2, 1250.0),
-                      "survive a crash"));
-    EXPECT_TRUE(testing::says(refusal("a.wav", {Container::wav, Encoding::int16, 0.0, WriteMode::whole}, 2, 1250.0),
-                              "above 0"));
-    EXPECT_TRUE(testing::says(refusal("a.wav", {}, 2, 1250.5), "1250.5 frames a second"));
-    EXPECT_TRUE(testing::says(refusal("none/a.wav", {}, 2, 1250.0), "no way to write it"));
-    EXPECT_TRUE(testing::says(testing::line_of<Refusal>([] { static_cast<void>(container_for("a.mp3")); }), "'.mp3'"));
+        test::says(refusal("a.wav", {Container::wav, Encoding::int16, 0.0, WriteMode::whole}, 2, 1250.0), "above 0"));
+    EXPECT_TRUE(test::says(refusal("a.wav", {}, 2, 1250.5), "1250.5 frames a second"));
+    EXPECT_TRUE(test::says(refusal("none/a.wav", {}, 2, 1250.0), "no way to write it"));
+    EXPECT_TRUE(test::says(test::line_of<Refusal>([] { static_cast<void>(container_for("a.mp3")); }), "'.mp3'"));
 }
 
 TEST(RecordingWriter, RawKeepsAFractionalRate) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     EXPECT_EQ(load_recording(write(scratch / "a.raw", Encoding::int16, {1.0f, 2.0f}, 1250.5)).info.rate.value, 1250.5);
 }
 
 // The same writer stores a session's samples: killed at any moment, what was written before must be readable.
 TEST(RecordingWriter, CrashSafeFilesAreReadableAfterKill9) {
     for (const char* name : {"a.rf64", "a.w64", "a.wav", "a.raw"}) {
-        ScratchFolder scratch;
+        TemporaryFolder scratch;
         const auto file = scratch / name;
         const pid_t child = fork();
         if (child == 0) {
@@ -222,7 +223,7 @@ TEST(RecordingWriter, CrashSafeFilesAreReadableAfterKill9) {
 }
 
 TEST(RecordingWriter, CrashSafeFileWithoutASampleIsReadable) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto file = scratch / "a.rf64";
     RecordingWriter writer(file, {Container::rf64, Encoding::float32, 0.0, WriteMode::crash_safe}, two_channels,
                            Hertz{1250.0});
@@ -238,13 +239,13 @@ template <class Sample> std::vector<Sample> samples_in(const std::string& bytes)
 }
 
 TEST(Peers, SoxReadsOurCounts) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto data = counts_as_microvolts(16, 2000);
     for (const char* name : {"a.wav", "a.flac", "a.w64"}) {
         const auto file = write(scratch / name, Encoding::int16, data);
         const auto ran = run("sox -D '" + file.string() + "' -t raw -e signed -b 16 -L - 2>/dev/null");
         ASSERT_EQ(ran.status, 0) << name;
-        const auto counts = samples_in<std::int16_t>(ran.output);
+        const auto counts = samples_in<std::int16_t>(ran.out);
         ASSERT_EQ(counts.size(), data.size()) << name;
         for (std::size_t i = 0; i < counts.size(); ++i) {
             ASSERT_EQ(static_cast<float>(counts[i]) * static_cast<float>(microvolts_per_count), data[i]) << name;
@@ -253,27 +254,27 @@ TEST(Peers, SoxReadsOurCounts) {
 }
 
 TEST(Peers, FfmpegReadsOurFloats) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto data = some_floats(2000);
     for (const char* name : {"a.wav", "a.rf64", "a.w64"}) {
         const auto file = write(scratch / name, Encoding::float32, data);
         const auto ran = run("ffmpeg -v error -i '" + file.string() + "' -c:a pcm_f32le -f f32le - 2>/dev/null");
         ASSERT_EQ(ran.status, 0) << name;
-        EXPECT_EQ(samples_in<float>(ran.output), data) << name;
+        EXPECT_EQ(samples_in<float>(ran.out), data) << name;
     }
 }
 
 TEST(Peers, FfprobeSeesRateAndChannels) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto file = write(scratch / "a.rf64", Encoding::int24, counts_as_microvolts(24, 1250));
     const auto ran =
         run("ffprobe -v error -show_entries stream=codec_name,sample_rate,channels,duration -of csv=p=0 '" +
             file.string() + "'");
-    EXPECT_EQ(ran.output, "pcm_s24le,1250,2,1.000000\n");
+    EXPECT_EQ(ran.out, "pcm_s24le,1250,2,1.000000\n");
 }
 
 TEST(Peers, WeReadWhatFfmpegAndSoxWrite) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto data = counts_as_microvolts(16, 2000);
     const auto ours = write(scratch / "ours.wav", Encoding::int16, data);
     const auto sidecar = sidecar_path(ours).string();
@@ -298,7 +299,7 @@ TEST(Peers, WeReadWhatFfmpegAndSoxWrite) {
 }
 
 TEST(Peers, WeReadTheDoublesThatFfmpegWrites) {
-    ScratchFolder scratch;
+    TemporaryFolder scratch;
     const auto data = some_floats(2000);
     const auto ours = write(scratch / "ours.wav", Encoding::float32, data);
     ASSERT_EQ(

@@ -1,7 +1,7 @@
 #include "base/refusal.hpp"
 #include "referee/envelope_rules.hpp"
 #include "referee/referee.hpp"
-#include "support/scipy.hpp"
+#include "support/python.hpp"
 
 #include <gtest/gtest.h>
 

@@ -1,5 +1,5 @@
 #include "referee/scoring.hpp"
-#include "support/scipy.hpp"
+#include "support/python.hpp"
 
 #include <gtest/gtest.h>
 

@@ -1,24 +1,18 @@
-#include "settings/settings.hpp"
-
 #include "base/refusal.hpp"
+#include "settings/settings.hpp"
+#include "support/files.hpp"
 
 #include <gtest/gtest.h>
 
 #include <fstream>
-
-#include <unistd.h>
 
 namespace millpond {
 namespace {
 
 class SettingsFile : public testing::Test {
   protected:
-    std::filesystem::path folder =
-        std::filesystem::temp_directory_path() / ("millpond_settings_" + std::to_string(getpid()));
+    test::TemporaryFolder folder;
     std::filesystem::path file = folder / "rig.yaml";
-
-    void SetUp() override { std::filesystem::create_directories(folder); }
-    void TearDown() override { std::filesystem::remove_all(folder); }
 
     Settings load(const std::string& text) {
         std::ofstream(file) << text;
@@ -59,10 +53,11 @@ TEST_F(SettingsFile, UnknownKeyIsRefusedWithFileLineAndNearestKnownKey) {
 }
 
 TEST_F(SettingsFile, ValuesOutOfRangeOfTheWrongKindOrTwiceAreRefused) {
-    for (const auto* text : {"detector: {filter: {order: 99}}", "detector: {filter: {order: 2.5}}",
-                             "detector: {filter: {low_hz: many}}", "detector: {filter: {low_hz: .nan}}",
-                             "detector: {filter: {family: bessel}}", "detector: 3", "[1, 2]", "arbiter: {start_armed: 7}",
-                             "channels: {name: a}", "detector: {blanking_ms: 1, blanking_ms: 2}", "detector: {filter: [}"}) {
+    for (const auto* text :
+         {"detector: {filter: {order: 99}}", "detector: {filter: {order: 2.5}}", "detector: {filter: {low_hz: many}}",
+          "detector: {filter: {low_hz: .nan}}", "detector: {filter: {family: bessel}}", "detector: 3", "[1, 2]",
+          "arbiter: {start_armed: 7}", "channels: {name: a}", "detector: {blanking_ms: 1, blanking_ms: 2}",
+          "detector: {filter: [}"}) {
         const auto line = refusal(text);
         EXPECT_NE(line.find("; allowed: "), std::string::npos) << text << " -> " << line;
         EXPECT_NE(line.find("rig.yaml:1"), std::string::npos) << line;
@@ -71,7 +66,8 @@ TEST_F(SettingsFile, ValuesOutOfRangeOfTheWrongKindOrTwiceAreRefused) {
 }
 
 TEST_F(SettingsFile, RoomsThatContradictEachOtherAreRefused) {
-    EXPECT_NE(refusal("detector: {threshold: {deviations: 3, rearm_deviations: 4}}").find("rearm_deviations"), std::string::npos);
+    EXPECT_NE(refusal("detector: {threshold: {deviations: 3, rearm_deviations: 4}}").find("rearm_deviations"),
+              std::string::npos);
     EXPECT_NE(refusal("detector: {filter: {low_hz: 260}}").find("low_hz"), std::string::npos);
     EXPECT_NE(refusal("{arbiter: {lockout_ms: 20}, output: {width_ms: 30}}").find("lockout_ms"), std::string::npos);
     EXPECT_NE(refusal("arbiter: {condition: schedule}").find("schedule_file"), std::string::npos);
@@ -83,7 +79,8 @@ TEST_F(SettingsFile, MissingFileIsRefused) {
 }
 
 TEST_F(SettingsFile, PathsAreSeenFromTheSettingsFile) {
-    EXPECT_EQ(load("session: {folder: here}").session.folder, std::filesystem::weakly_canonical(folder / "here").string());
+    EXPECT_EQ(load("session: {folder: here}").session.folder,
+              std::filesystem::weakly_canonical(folder / "here").string());
 }
 
 TEST(SettingsReference, NamesEveryKeyWithItsDefault) {

@@ -1,6 +1,6 @@
 #include "base/refusal.hpp"
 #include "sham/schedule.hpp"
-#include "support/scipy.hpp"
+#include "support/python.hpp"
 
 #include <gtest/gtest.h>
 

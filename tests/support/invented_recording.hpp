@@ -1,8 +1,9 @@
 // A small invented recording with ripples at known places, as a WAV of float microvolts and its table. For tests.
 #pragma once
 
+#include "recording/events_table.hpp"
 #include "recording/recording_writer.hpp"
-#include "support/scipy.hpp"
+#include "support/signals.hpp"
 
 #include <cmath>
 #include <cstdint>
@@ -23,16 +24,7 @@ struct InventedRecording {
 
     /// Noise of 10 uV and a ripple of 150 uV every second from 15 s on, `jitter` apart from exact seconds.
     explicit InventedRecording(double seconds, double noise_uv = 10.0, double ripple_uv = 150.0) {
-        data.resize(static_cast<std::size_t>(seconds * rate.value) * channels);
-        std::uint64_t state = 99;
-        for (auto& value : data) {
-            double sum = -6.0;
-            for (int i = 0; i < 12; ++i) { // twelve uniform numbers make a fair Gaussian
-                state = state * 6364136223846793005U + 1442695040888963407U;
-                sum += static_cast<double>(state >> 11U) * 0x1.0p-53;
-            }
-            value = static_cast<float>(noise_uv * sum);
-        }
+        data = white_noise(static_cast<std::size_t>(seconds * rate.value), channels, noise_uv, 99);
         for (double onset = 15.0; onset + 1.0 < seconds; onset += 1.0 + 0.1 * std::sin(7.0 * onset)) {
             add_ripple(onset, ripple_uv);
         }
@@ -74,22 +66,5 @@ struct InventedRecording {
         write_events_table(table, rows, {});
     }
 };
-
-inline void write_text(const std::filesystem::path& file, const std::string& text) {
-    std::ofstream(file) << text;
-}
-
-/// Exit status of the program with these arguments; what it says goes to `said`, where given.
-inline int run_millpond(const std::string& arguments, std::string* said = nullptr) {
-    const std::string command = std::string(MILLPOND_PROGRAM) + " " + arguments + " 2>&1";
-    FILE* pipe = popen(command.c_str(), "r");
-    char part[4096];
-    for (std::size_t n = 0; (n = std::fread(part, 1, sizeof part, pipe)) > 0;) {
-        if (said != nullptr) {
-            said->append(part, n);
-        }
-    }
-    return WEXITSTATUS(pclose(pipe));
-}
 
 } // namespace millpond::test

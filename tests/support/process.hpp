@@ -1,7 +1,8 @@
 // Programs as child processes: started, watched, told to end; none of them outlives its test. Thread: test.
 #pragma once
 
-#include <algorithm>
+#include "support/files.hpp"
+
 #include <chrono>
 #include <csignal>
 #include <cstdlib>
@@ -9,20 +10,17 @@
 #include <filesystem>
 #include <fstream>
 #include <functional>
-#include <netinet/in.h>
-#include <sstream>
 #include <stdexcept>
 #include <string>
 #include <sys/prctl.h>
 #include <sys/resource.h>
-#include <sys/socket.h>
 #include <sys/wait.h>
 #include <thread>
 #include <unistd.h>
 #include <utility>
 #include <vector>
 
-namespace millpond::testing {
+namespace millpond::test {
 
 /// What a wait may take at most: far more than any machine needs, so that only a defect reaches it.
 inline constexpr std::chrono::seconds patience{60};
@@ -39,62 +37,8 @@ inline bool wait_until(const std::function<bool()>& condition, std::chrono::seco
     return true;
 }
 
-inline std::string text_in(const std::filesystem::path& file) {
-    std::ifstream in(file, std::ios::binary);
-    std::ostringstream text;
-    text << in.rdbuf();
-    return text.str();
-}
-
-inline std::vector<std::string> lines_of(const std::string& text) {
-    std::vector<std::string> lines;
-    std::istringstream in(text);
-    for (std::string line; std::getline(in, line);) {
-        lines.push_back(line);
-    }
-    return lines;
-}
-
-inline std::size_t count_in(const std::string& text, const std::string& words) {
-    std::size_t count = 0;
-    for (auto at = text.find(words); at != std::string::npos; at = text.find(words, at + words.size())) {
-        ++count;
-    }
-    return count;
-}
-
 inline bool has_program(const std::string& name) {
     return std::system(("command -v " + name + " >/dev/null 2>&1").c_str()) == 0;
-}
-
-/// A UDP port of the loopback address that nobody had a moment ago; no port is given out twice in one process.
-inline int free_udp_port() {
-    static std::vector<int> given;
-    for (int attempt = 0; attempt < 1000; ++attempt) {
-        const int descriptor = ::socket(AF_INET, SOCK_DGRAM, 0);
-        sockaddr_in address{};
-        address.sin_family = AF_INET;
-        address.sin_addr.s_addr = htonl(INADDR_LOOPBACK);
-        socklen_t size = sizeof address;
-        const bool bound = ::bind(descriptor, reinterpret_cast<sockaddr*>(&address), size) == 0 &&
-                           ::getsockname(descriptor, reinterpret_cast<sockaddr*>(&address), &size) == 0;
-        ::close(descriptor);
-        const int port = ntohs(address.sin_port);
-        // ffmpeg wants an even port and takes the next for RTCP (RFC 3550, section 11).
-        if (bound && port % 2 == 0 && std::find(given.begin(), given.end(), port) == given.end()) {
-            given.push_back(port);
-            return port;
-        }
-    }
-    throw std::runtime_error("no free UDP port");
-}
-
-/// Whether somebody listens on a UDP port of this computer, by the kernel's own table.
-inline bool udp_port_taken(int port) {
-    char wanted[8];
-    std::snprintf(wanted, sizeof wanted, ":%04X ", static_cast<unsigned>(port));
-    return text_in("/proc/net/udp").find(wanted) != std::string::npos ||
-           text_in("/proc/net/udp6").find(wanted) != std::string::npos;
 }
 
 class Process {
@@ -153,8 +97,8 @@ class Process {
         return WIFEXITED(status_) ? WEXITSTATUS(status_) : 128 + WTERMSIG(status_);
     }
 
-    [[nodiscard]] std::string out() const { return text_in(out_); }
-    [[nodiscard]] std::string err() const { return text_in(err_); }
+    [[nodiscard]] std::string out() const { return text_of(out_); }
+    [[nodiscard]] std::string err() const { return text_of(err_); }
     /// Until `words` stand in what it printed; false where it ended without them or `limit` went by.
     bool says(const std::string& words, std::chrono::seconds limit = patience) {
         const auto said = [&] {
@@ -188,17 +132,23 @@ class Process {
     bool ended_ = false;
 };
 
-struct Finished {
+struct Ran {
     int status;
     std::string out, err;
 };
 
 /// Runs a shell command to its end, in `folder` where given.
-inline Finished run_shell(const std::string& command, const std::filesystem::path& log,
-                          const std::filesystem::path& folder = {}, std::chrono::seconds limit = patience) {
-    Process process({"/bin/sh", "-c", command}, log, {"/dev/null", folder, 0});
+inline Ran run(const std::string& command, const std::filesystem::path& folder = {},
+               std::chrono::seconds limit = 3 * patience) {
+    const TemporaryFolder logs;
+    Process process({"/bin/sh", "-c", command}, logs / "said", {"/dev/null", folder, 0});
     const int status = process.status(limit);
     return {status, process.out(), process.err()};
 }
 
-} // namespace millpond::testing
+/// Runs the program under test.
+inline Ran run_millpond(const std::string& arguments, const std::filesystem::path& folder = {}) {
+    return run(std::string(MILLPOND_PROGRAM) + " " + arguments, folder);
+}
+
+} // namespace millpond::test

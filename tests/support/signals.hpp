@@ -2,6 +2,7 @@
 #pragma once
 
 #include "base/frames.hpp"
+#include "base/random.hpp"
 
 #include <cmath>
 #include <cstdint>
@@ -10,16 +11,11 @@
 
 namespace millpond::test {
 
-/// SplitMix64 (Steele, Lea & Flood 2014) and the sum of twelve uniforms: near enough to Gaussian for a test.
+/// The sum of twelve uniforms: near enough to Gaussian for a test.
 class Noise {
   public:
-    explicit Noise(std::uint64_t seed) : state_(seed) {}
-    double uniform() {
-        std::uint64_t z = (state_ += 0x9E3779B97F4A7C15ULL);
-        z = (z ^ (z >> 30)) * 0xBF58476D1CE4E5B9ULL;
-        z = (z ^ (z >> 27)) * 0x94D049BB133111EBULL;
-        return static_cast<double>((z ^ (z >> 31)) >> 11) * 0x1.0p-53;
-    }
+    explicit Noise(std::uint64_t seed) : words_(seed) {}
+    double uniform() { return static_cast<double>(words_.next() >> 11) * 0x1.0p-53; }
     double gaussian() {
         double sum = -6.0;
         for (int i = 0; i < 12; ++i) {
@@ -29,7 +25,7 @@ class Noise {
     }
 
   private:
-    std::uint64_t state_;
+    SplitMix64 words_;
 };
 
 /// White noise of `sd_uv`, independent in every channel.
@@ -46,7 +42,8 @@ inline std::vector<float> white_noise(std::size_t frames, std::size_t channels, 
 inline void add_burst(std::vector<float>& data, std::size_t channels, std::size_t from, std::size_t length, double rate,
                       double hz, double peak_uv) {
     for (std::size_t i = 0; i < length; ++i) {
-        const double outline = 0.5 - 0.5 * std::cos(2.0 * std::numbers::pi * static_cast<double>(i) / static_cast<double>(length));
+        const double outline =
+            0.5 - 0.5 * std::cos(2.0 * std::numbers::pi * static_cast<double>(i) / static_cast<double>(length));
         const double value = peak_uv * outline * std::sin(2.0 * std::numbers::pi * hz * static_cast<double>(i) / rate);
         for (std::size_t c = 0; c < channels; ++c) {
             data[(from + i) * channels + c] += static_cast<float>(value);

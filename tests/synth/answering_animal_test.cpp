@@ -1,5 +1,5 @@
+#include "synth/all_frames.hpp"
 #include "synth/answering_animal.hpp"
-#include "synth/scipy_says.hpp"
 
 #include <gtest/gtest.h>
 
@@ -41,7 +41,7 @@ Lived live_through(const SceneSettings& scene, const AnswerSettings& answer, std
 TEST(AnsweringAnimal, WithoutPulsesIsItsScene) {
     SceneSettings settings;
     settings.duration_s = 20.0;
-    EXPECT_EQ(live_through(settings, {}, {}).frames, testing::all_frames(Scene::make(settings)));
+    EXPECT_EQ(live_through(settings, {}, {}).frames, test::all_frames(Scene::make(settings)));
 }
 
 TEST(AnsweringAnimal, AnswersTheSameAtAnyBlockSize) {

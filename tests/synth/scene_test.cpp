@@ -1,6 +1,8 @@
 #include "base/refusal.hpp"
+#include "support/python.hpp"
+#include "support/text.hpp"
+#include "synth/all_frames.hpp"
 #include "synth/scene.hpp"
-#include "synth/scipy_says.hpp"
 
 #include <gtest/gtest.h>
 
@@ -10,7 +12,7 @@
 namespace millpond {
 namespace {
 
-using testing::all_frames;
+using test::all_frames;
 
 SceneSettings everything() {
     SceneSettings settings;
@@ -80,17 +82,17 @@ TEST(Scene, RefusesSettingsThatContradictEachOther) {
     const auto refusal = [](auto change) {
         SceneSettings settings;
         change(settings);
-        return testing::line_of<Refusal>([&] { static_cast<void>(Scene::make(settings, "rest.yaml")); });
+        return test::line_of<Refusal>([&] { static_cast<void>(Scene::make(settings, "rest.yaml")); });
     };
-    EXPECT_TRUE(testing::says(refusal([](auto& s) { s.ripples.rate_per_s = 5.0; }), "rest.yaml: ripples.rate_per_s"));
-    EXPECT_TRUE(testing::says(refusal([](auto& s) { s.sharp_wave.duration_ms = 300.0; }), "sharp_wave.duration_ms"));
-    EXPECT_TRUE(testing::says(refusal([](auto& s) { s.ripples.start_hz = 600.0; }), "below 0.45 of rate_hz"));
-    EXPECT_TRUE(testing::says(refusal([](auto& s) {
-                                  s.rate_hz = 500.0;
-                                  s.ripples.start_hz = 150.0;
-                                  s.mains.amplitude_uv = 1.0;
-                              }),
-                              "mains.frequency_hz"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) { s.ripples.rate_per_s = 5.0; }), "rest.yaml: ripples.rate_per_s"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) { s.sharp_wave.duration_ms = 300.0; }), "sharp_wave.duration_ms"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) { s.ripples.start_hz = 600.0; }), "below 0.45 of rate_hz"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) {
+                               s.rate_hz = 500.0;
+                               s.ripples.start_hz = 150.0;
+                               s.mains.amplitude_uv = 1.0;
+                           }),
+                           "mains.frequency_hz"));
 }
 
 class ManyRipples : public ::testing::Test {
@@ -216,11 +218,7 @@ TEST(SharpWaves, AreNegativeBelowTheLayerAndTurnAboveIt) {
 
 class ToSciPy : public ::testing::Test {
   protected:
-    void SetUp() override {
-        if (testing::python_with_scipy().empty()) {
-            GTEST_SKIP() << "no python3 with SciPy: the signal was NOT checked";
-        }
-    }
+    void SetUp() override { MILLPOND_NEEDS_SCIPY(); }
 };
 
 // scipy.signal.hilbert's envelope of the noise-free ripples: where it first and last exceeds a tenth of its peak, how
@@ -237,8 +235,8 @@ TEST_F(ToSciPy, TruthIsWhatTheNoiseFreeEnvelopeSays) {
     for (const auto& ripple : scene.truth()) {
         peaks += std::to_string(ripple.peak.value) + " ";
     }
-    const auto said = testing::scipy_says(
-        "a = ss.hilbert(x[:,0]); e = np.abs(a); f = np.diff(np.unwrap(np.angle(a))) * 1e4 / 2 / np.pi\n"
+    const auto said = test::ask_scipy(
+        "a = signal.hilbert(x[:,0]); e = np.abs(a); f = np.diff(np.unwrap(np.angle(a))) * 1e4 / 2 / np.pi\n"
         "for p in map(int, sys.argv[2:]):\n"
         "    tenth = e[p] / 10\n"
         "    first = p - np.argmax(e[p::-1] <= tenth) + 1; last = p + np.argmax(e[p:] <= tenth) - 1\n"
@@ -273,11 +271,11 @@ TEST_F(ToSciPy, BackgroundHasSlopeSizeAndSharedPartAsAskedFor) {
             all[6 * i + 2 * k + 1] = frames[2 * i + 1];
         }
     }
-    const auto said = testing::scipy_says("f, p = ss.welch(x, 1250, nperseg=8192, axis=0); s = (f > 3) & (f < 250)\n"
-                                          "for k in range(0, 6, 2):\n"
-                                          "    print(np.polyfit(np.log(f[s]), np.log(p[s, k]), 1)[0], x[:,k].std(),"
-                                          " np.corrcoef(x[:,k:k+2].T)[0, 1])",
-                                          all, 6);
+    const auto said = test::ask_scipy("f, p = signal.welch(x, 1250, nperseg=8192, axis=0); s = (f > 3) & (f < 250)\n"
+                                      "for k in range(0, 6, 2):\n"
+                                      "    print(np.polyfit(np.log(f[s]), np.log(p[s, k]), 1)[0], x[:,k].std(),"
+                                      " np.corrcoef(x[:,k:k+2].T)[0, 1])",
+                                      all, 6);
     ASSERT_EQ(said.size(), 9u);
     for (std::size_t k = 0; k < slopes.size(); ++k) {
         EXPECT_NEAR(said[3 * k], -slopes[k], 0.12);
@@ -298,9 +296,9 @@ TEST_F(ToSciPy, RipplesHaveTheirPowerInTheRippleBand) {
         places += std::to_string(ripple.peak.value) + " ";
     }
     // Welch over 128 ms about each peak, against as much of the quiet start.
-    const auto said = testing::scipy_says(
+    const auto said = test::ask_scipy(
         "def power(parts, low, high):\n"
-        "    f, p = ss.welch(np.array(parts), 1250, nperseg=128, axis=1); return p[:, (f >= low) & (f <= "
+        "    f, p = signal.welch(np.array(parts), 1250, nperseg=128, axis=1); return p[:, (f >= low) & (f <= "
         "high)].mean()\n"
         "ripples = [x[p-80:p+80, 0] for p in map(int, sys.argv[2:])]\n"
         "quiet = [x[i:i+160, 0] for i in range(0, 18000, 160)]\n"
@@ -318,10 +316,10 @@ TEST_F(ToSciPy, ThetaAndMainsStandWhereAskedFor) {
     settings.theta.amplitude_uv = 100.0;
     settings.mains.amplitude_uv = 20.0;
     const auto said =
-        testing::scipy_says("f, p = ss.welch(x[:,0], 1250, nperseg=12500, scaling='spectrum', window='flattop')\n"
-                            "at = lambda hz: np.sqrt(2 * p[np.argmin(abs(f - hz))])\n"
-                            "print(f[np.argmax(p)], at(50), at(150), at(250), x.std())",
-                            all_frames(Scene::make(settings)), 1);
+        test::ask_scipy("f, p = signal.welch(x[:,0], 1250, nperseg=12500, scaling='spectrum', window='flattop')\n"
+                        "at = lambda hz: np.sqrt(2 * p[np.argmin(abs(f - hz))])\n"
+                        "print(f[np.argmax(p)], at(50), at(150), at(250), x.std())",
+                        all_frames(Scene::make(settings)), 1);
     ASSERT_EQ(said.size(), 5u);
     EXPECT_NEAR(said[0], 7.5, 1.0);
     EXPECT_NEAR(said[1], 20.0, 0.2);

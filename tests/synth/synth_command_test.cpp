@@ -4,7 +4,9 @@
 #include "recording/recording_reader.hpp"
 #include "recording/sidecar.hpp"
 #include "recording/whole_file.hpp"
-#include "support/scratch_folder.hpp"
+#include "support/files.hpp"
+#include "support/process.hpp"
+#include "support/text.hpp"
 #include "synth/scene.hpp"
 
 #include <gtest/gtest.h>
@@ -12,20 +14,20 @@
 namespace millpond {
 namespace {
 
-using testing::Ran;
-using testing::run;
-using testing::ScratchFolder;
+using test::Ran;
+using test::run;
+using test::TemporaryFolder;
 
 Ran synth(const std::string& arguments) {
     return run(std::string(MILLPOND_PROGRAM) + " synth " + arguments + " 2>&1");
 }
 
 TEST(SynthCommand, MakesRecordingSidecarAndTruth) {
-    const ScratchFolder scratch;
+    const TemporaryFolder scratch;
     const auto file = scratch / "a.wav";
     const auto ran = synth(file.string() + " --duration-s 30 --sites 2 --reference --seed 3");
-    ASSERT_EQ(ran.status, 0) << ran.output;
-    EXPECT_TRUE(testing::says(ran.output, "frames\t37500\n"));
+    ASSERT_EQ(ran.status, 0) << ran.out;
+    EXPECT_TRUE(test::says(ran.out, "frames\t37500\n"));
 
     SceneSettings settings;
     settings.duration_s = 30.0;
@@ -56,7 +58,7 @@ TEST(SynthCommand, MakesRecordingSidecarAndTruth) {
 }
 
 TEST(SynthCommand, FloatsAreTheScenesOwnBits) {
-    const ScratchFolder scratch;
+    const TemporaryFolder scratch;
     ASSERT_EQ(synth((scratch / "a.rf64").string() + " --duration-s 5 --encoding float32").status, 0);
     SceneSettings settings;
     settings.duration_s = 5.0;
@@ -67,7 +69,7 @@ TEST(SynthCommand, FloatsAreTheScenesOwnBits) {
 }
 
 TEST(SynthCommand, OptionsOverrideTheSceneFile) {
-    const ScratchFolder scratch;
+    const TemporaryFolder scratch;
     const auto scene = scratch.file("scene.yaml", "rate_hz: 2000\nduration_s: 4\nsites: 3\nreference: true\n"
                                                   "ripples:\n  rate_per_s: 1.5\nquiet_start_s: 1\n");
     const auto file = scratch / "a.flac";
@@ -79,7 +81,7 @@ TEST(SynthCommand, OptionsOverrideTheSceneFile) {
 }
 
 TEST(SynthCommand, RefusesBadInputWithStatus2AndOneLine) {
-    const ScratchFolder scratch;
+    const TemporaryFolder scratch;
     const auto file = (scratch / "a.wav").string();
     const auto scene = scratch.file("scene.yaml", "ripples:\n  rate_per_sec: 1.5\n");
     for (const auto& [arguments, words] : std::vector<std::pair<std::string, std::string>>{
@@ -92,20 +94,20 @@ TEST(SynthCommand, RefusesBadInputWithStatus2AndOneLine) {
              {(scratch / "a.mp3").string(), "the ending '.mp3'"}}) {
         const auto ran = synth(arguments);
         EXPECT_EQ(ran.status, 2) << arguments;
-        EXPECT_TRUE(testing::says(ran.output, words));
-        EXPECT_EQ(std::count(ran.output.begin(), ran.output.end(), '\n'), 1) << ran.output;
+        EXPECT_TRUE(test::says(ran.out, words));
+        EXPECT_EQ(std::count(ran.out.begin(), ran.out.end(), '\n'), 1) << ran.out;
     }
     EXPECT_FALSE(std::filesystem::exists(file));
 }
 
 TEST(SynthCommand, OverwritesOnlyWhenTold) {
-    const ScratchFolder scratch;
+    const TemporaryFolder scratch;
     const auto file = (scratch / "a.wav").string();
     ASSERT_EQ(synth(file + " --duration-s 2").status, 0);
     const auto before = read_whole_file(file);
     const auto ran = synth(file + " --duration-s 3");
     EXPECT_EQ(ran.status, 2);
-    EXPECT_TRUE(testing::says(ran.output, "or --overwrite"));
+    EXPECT_TRUE(test::says(ran.out, "or --overwrite"));
     EXPECT_EQ(read_whole_file(file), before);
     EXPECT_EQ(synth(file + " --duration-s 3 --overwrite").status, 0);
     EXPECT_EQ(load_recording(file).info.frames, 3750u);
@@ -114,10 +116,10 @@ TEST(SynthCommand, OverwritesOnlyWhenTold) {
 }
 
 TEST(SynthCommand, SaysThatSamplesWereClipped) {
-    const ScratchFolder scratch;
+    const TemporaryFolder scratch;
     const auto ran = synth((scratch / "a.wav").string() + " --duration-s 5 --microvolts-per-count 0.002");
     EXPECT_EQ(ran.status, 0);
-    EXPECT_TRUE(testing::says(ran.output, "were clipped"));
+    EXPECT_TRUE(test::says(ran.out, "were clipped"));
 }
 
 // replay_files/README.md names the command that made the recording there: run again, it must give the same.
@@ -128,16 +130,15 @@ TEST(ReplayFiles, TheCommandInTheReadmeGivesTheSameSamplesAndTruth) {
     const auto command = readme.substr(from, readme.find('\n', from) - from);
     const auto name = command.substr(0, command.find(' ')).substr(std::string("replay_files/").size());
 
-    const ScratchFolder scratch;
+    const TemporaryFolder scratch;
     const auto again = scratch / name;
     const auto ran = synth(again.string() + command.substr(command.find(' ')));
-    ASSERT_EQ(ran.status, 0) << ran.output;
+    ASSERT_EQ(ran.status, 0) << ran.out;
     EXPECT_EQ(load_recording(again).data, load_recording(folder / name).data);
     EXPECT_EQ(load_recording(again).info.channels, load_recording(folder / name).info.channels);
     EXPECT_EQ(read_whole_file(truth_path(again)), read_whole_file(truth_path(folder / name)));
     EXPECT_EQ(read_whole_file(sidecar_path(again)), read_whole_file(sidecar_path(folder / name)));
-    EXPECT_TRUE(
-        testing::says(readme, std::to_string(read_events_table(truth_path(again), 1250.0).size()) + " ripples"));
+    EXPECT_TRUE(test::says(readme, std::to_string(read_events_table(truth_path(again), 1250.0).size()) + " ripples"));
 }
 
 } // namespace

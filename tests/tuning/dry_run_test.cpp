@@ -3,7 +3,9 @@
 #include "app/truth.hpp"
 #include "base/refusal.hpp"
 #include "sham/schedule.hpp"
+#include "support/files.hpp"
 #include "support/invented_recording.hpp"
+#include "support/process.hpp"
 
 #include <gtest/gtest.h>
 #include <nlohmann/json.hpp>
@@ -149,13 +151,11 @@ TEST(Labels, WithRowsButNoRippleAmongThemAreRefusedAndAnEmptyTableIsNot) {
 TEST(DryRunCommand, LeavesATableAndAScoreThatAgree) {
     const Bench bench;
     const auto out = bench.folder / "dry";
-    std::string said;
-    ASSERT_EQ(run_millpond("dryrun " + bench.plan.recording.string() + " --settings " + bench.plan.settings.string() +
-                               " --labels " + bench.plan.labels.string() + " --out " + out.string(),
-                           &said),
-              0)
-        << said;
-    EXPECT_NE(said.find("hit rate"), std::string::npos);
+    const auto ran =
+        run_millpond("dryrun " + bench.plan.recording.string() + " --settings " + bench.plan.settings.string() +
+                     " --labels " + bench.plan.labels.string() + " --out " + out.string());
+    ASSERT_EQ(ran.status, 0) << ran.err;
+    EXPECT_NE(ran.out.find("hit rate"), std::string::npos);
     const auto rows = read_events_table(out / "events.tsv", 1250.0);
     const auto json = nlohmann::json::parse(std::ifstream(out / "score.json"));
     EXPECT_EQ(count(rows, "detection"), json["detections"]);
@@ -178,11 +178,11 @@ TEST(DryRunCommand, WritesIntoAnExistingFolderOnlyWhenTold) {
     const auto out = bench.folder / "dry";
     const auto arguments = "dryrun " + bench.plan.recording.string() + " --settings " + bench.plan.settings.string() +
                            " --out " + out.string();
-    ASSERT_EQ(run_millpond(arguments), 0);
+    ASSERT_EQ(run_millpond(arguments).status, 0);
     write_text(out / "score.json", "mine");
-    EXPECT_EQ(run_millpond(arguments), 2);
+    EXPECT_EQ(run_millpond(arguments).status, 2);
     EXPECT_EQ(std::filesystem::file_size(out / "score.json"), 4U);
-    EXPECT_EQ(run_millpond(arguments + " --overwrite"), 0);
+    EXPECT_EQ(run_millpond(arguments + " --overwrite").status, 0);
     EXPECT_GT(std::filesystem::file_size(out / "score.json"), 4U);
 }
 
@@ -191,7 +191,8 @@ TEST(DryRunCommand, LeavesNothingBehindWhereTheRecordingIsRefused) {
     write_text(bench.folder / "bad.wav", "no recording");
     const auto out = bench.folder / "dry";
     EXPECT_EQ(run_millpond("dryrun " + (bench.folder / "bad.wav").string() + " --settings " +
-                           bench.plan.settings.string() + " --out " + out.string()),
+                           bench.plan.settings.string() + " --out " + out.string())
+                  .status,
               2);
     EXPECT_FALSE(std::filesystem::exists(out));
 }

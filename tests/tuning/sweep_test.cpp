@@ -1,7 +1,9 @@
 #include "app/dry_run.hpp"
 #include "app/tune_grid.hpp"
 #include "base/refusal.hpp"
+#include "support/files.hpp"
 #include "support/invented_recording.hpp"
+#include "support/process.hpp"
 #include "tuning/sweep.hpp"
 
 #include <gtest/gtest.h>
@@ -171,13 +173,10 @@ TEST(TuneCommand, WritesSettingsThatADryRunTakesWithTheFiguresThatWerePromised) 
     recording.write_truth(folder / "truth.tsv");
     write_text(folder / "base.yaml", "arbiter: {lockout_ms: 200}\n");
     const auto at = [&](const char* name) { return (folder / name).string(); };
-    std::string said;
-    ASSERT_EQ(run_millpond("tune --labels " + at("truth.tsv") + " " + at("r.wav") + " --settings " + at("base.yaml") +
-                               " --block-s 10 --order 2 --smoothing-ms 4 --low-hz 150 --out " + at("tuned.yaml") +
-                               " --table " + at("table.tsv"),
-                           &said),
-              0)
-        << said;
+    const auto ran = run_millpond("tune --labels " + at("truth.tsv") + " " + at("r.wav") + " --settings " +
+                                  at("base.yaml") + " --block-s 10 --order 2 --smoothing-ms 4 --low-hz 150 --out " +
+                                  at("tuned.yaml") + " --table " + at("table.tsv"));
+    ASSERT_EQ(ran.status, 0) << ran.err;
     const auto settings = load_settings(folder / "tuned.yaml");
     EXPECT_EQ(settings.arbiter.lockout_ms, 200.0);
     EXPECT_EQ(settings.channels.size(), 2U);
@@ -186,7 +185,7 @@ TEST(TuneCommand, WritesSettingsThatADryRunTakesWithTheFiguresThatWerePromised) 
     dry.settings = folder / "tuned.yaml";
     dry.labels = folder / "truth.tsv";
     EXPECT_LE(dry_run(dry).score.false_per_minute, 1.0);
-    EXPECT_NE(said.find("picked (*)"), std::string::npos);
+    EXPECT_NE(ran.out.find("picked (*)"), std::string::npos);
     std::ifstream table(folder / "table.tsv");
     std::size_t lines = 0;
     for (std::string line; std::getline(table, line);) {
@@ -200,14 +199,12 @@ TEST(TuneCommand, WritesNothingWhereNoSettingsKeepTheLimit) {
     const InventedRecording recording(60.0);
     recording.write(folder / "r.wav");
     write_text(folder / "none.tsv", "onset\tduration\n"); // every ripple found is then false
-    std::string said;
-    EXPECT_EQ(
+    const auto ran =
         run_millpond("tune " + (folder / "r.wav").string() + " --labels " + (folder / "none.tsv").string() +
-                         " --block-s 10 --order 2 --smoothing-ms 4 --low-hz 150 --max-false-per-minute 0.5 --out " +
-                         (folder / "t.yaml").string(),
-                     &said),
-        2);
-    EXPECT_NE(said.find("max-false-per-minute"), std::string::npos) << said;
+                     " --block-s 10 --order 2 --smoothing-ms 4 --low-hz 150 --max-false-per-minute 0.5 --out " +
+                     (folder / "t.yaml").string());
+    EXPECT_EQ(ran.status, 2);
+    EXPECT_NE(ran.err.find("max-false-per-minute"), std::string::npos) << ran.err;
     EXPECT_FALSE(std::filesystem::exists(folder / "t.yaml"));
 }
 
