@@ -7,6 +7,23 @@
 
 #include <cstdio>
 #include <exception>
+#include <string>
+
+namespace {
+
+// CLI11 asks for a command before it looks at a first word that is none.
+std::string told(const CLI::App& program, const CLI::ParseError& trouble, int argc, char** argv) {
+    if (!program.get_subcommands().empty() || argc < 2 || argv[1][0] == '-') {
+        return std::string(trouble.what()) + " (millpond --help lists what is allowed)";
+    }
+    std::string commands;
+    for (const auto* command : program.get_subcommands({})) {
+        commands += (commands.empty() ? "" : ", ") + command->get_name();
+    }
+    return "found '" + std::string(argv[1]) + "'; allowed: " + commands;
+}
+
+} // namespace
 
 int main(int argc, char** argv) {
     CLI::App program{"millpond: finds hippocampal ripples in a running LFP stream and orders pulses to stop them.\n"
@@ -23,7 +40,7 @@ int main(int argc, char** argv) {
         if (trouble.get_exit_code() == static_cast<int>(CLI::ExitCodes::Success)) {
             return program.exit(trouble); // help or version
         }
-        std::fprintf(stderr, "millpond: command line: %s (millpond --help lists what is allowed)\n", trouble.what());
+        std::fprintf(stderr, "millpond: command line: %s\n", told(program, trouble, argc, argv).c_str());
         return 2;
     } catch (const millpond::Refusal& refusal) {
         std::fprintf(stderr, "millpond: %s\n", refusal.what());

@@ -94,7 +94,7 @@ void add_audit_command(CLI::App& program) {
     command->add_flag("--overwrite", options->overwrite, "Replace the files of an earlier audit in --out");
     command->add_flag("--json", options->json, "Print JSON with the same figures instead of text");
     add_example(*command,
-                "./build/millpond audit \"$(ls -d sessions/*_demo | tail -n 1)\" --out audit_of_demo\n"
+                "build/millpond audit \"$(ls -d sessions/*_rig | tail -n 1)\" --out audit_of_rig\n"
                 "Exit status: 0 decisions reproduced and records intact, 1 differences or damage, 2 bad input.");
     command->callback([options] { run_audit(*options); });
 }

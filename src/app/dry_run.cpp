@@ -54,6 +54,7 @@ Nanos run_over(RecordingReader& reader, std::size_t packet_frames, OfflineEngine
         at = at + frames;
         progress.at(static_cast<double>(at.value));
     }
+    engine.finish();
     return engine_time;
 }
 

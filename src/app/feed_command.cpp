@@ -243,7 +243,8 @@ void add_feed_command(CLI::App& program) {
     feed_app->add_flag("--no-send-time", options->no_send_time, "do not stamp packets with the moment of sending");
     feed_app->add_option("--lose-every", options->lose_every, "leave out every so manyth packet, for drills; 0: none");
     feed_app->add_flag("--allow-other-hosts", options->allow_other_hosts, "allow an address outside this computer");
-    add_example(*feed_app, "millpond feed replay_files/demo.wav --to 127.0.0.1:5004 --write-sdp /tmp/demo.sdp");
+    add_example(*feed_app, "build/millpond feed replay_files/four_sites_90s.flac --to 127.0.0.1:5004 "
+                           "--microvolts-per-count 0.2 --write-sdp rig.sdp");
     feed_app->callback([options] { feed(*options); });
 }
 

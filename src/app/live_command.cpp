@@ -88,7 +88,7 @@ class Operator {
     void tell_changes(const LiveFigures& figures) {
         if (figures.state != state_) {
             leave_status();
-            log_->warn("{}", name_of(figures.state));
+            log_->warn("{} ({})", name_of(figures.state), name_of(figures.state_cause));
             state_ = figures.state;
         }
         if (figures.trouble != trouble_) {
@@ -170,15 +170,16 @@ void run_live(const LiveOptions& options) {
 } // namespace
 
 void add_live_command(CLI::App& program) {
-    auto* command = program.add_subcommand("live", "run a session: samples in, pulses out, everything journaled");
+    auto* command = program.add_subcommand("live", "run a session: samples in, pulses out, everything journaled\n"
+                                                   "Samples must come at real pace, by a pipe too (ffmpeg: -re)");
     auto options = std::make_shared<LiveOptions>();
     command->add_option("settings", options->settings_file, "settings file")->required();
     command->add_flag("--start-armed", options->start_armed, "allow pulses from the start, as arbiter.start_armed does");
     command->add_option("--stop-after-s", options->stop_after_s, "end by itself after this many seconds; 0: never")
-        ->check(CLI::NonNegativeNumber);
+        ->check(CLI::Range(0.0, 1e7));
     command->add_option("--status-every-s", options->status_every_s,
                         "how often the status line is shown; 0: every 0.5 s on a terminal, else every 10 s")
-        ->check(CLI::NonNegativeNumber);
+        ->check(CLI::Range(0.0, 1e7));
     add_example(*command, "build/millpond live config/live.yaml --stop-after-s 10");
     command->callback([options] { run_live(*options); });
 }

@@ -28,12 +28,6 @@ Rule Arbiter::judge(const Candidate& candidate) noexcept {
 }
 
 Rule Arbiter::refusal(const Candidate& candidate) const noexcept {
-    if (state_ == ArmState::faulted) {
-        return Rule::faulted;
-    }
-    if (state_ == ArmState::not_armed) {
-        return Rule::not_armed;
-    }
     if (candidate.settling) {
         return Rule::gap;
     }
@@ -42,6 +36,12 @@ Rule Arbiter::refusal(const Candidate& candidate) const noexcept {
     }
     if (candidate.vetoed) {
         return Rule::veto;
+    }
+    if (state_ == ArmState::faulted) {
+        return Rule::faulted;
+    }
+    if (state_ == ArmState::not_armed) {
+        return Rule::not_armed;
     }
     if (!gates_open()) {
         return Rule::gate;

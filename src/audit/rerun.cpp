@@ -175,6 +175,7 @@ void run(const SessionReader& session, SampleFileReader& samples, const EngineSe
         feed.event(*event);
     }
     feed.frames_upto(rerun.upto);
+    engine.finish();
 }
 
 std::vector<Event> compared_part(const std::vector<Event>& events, const Rerun& rerun) {

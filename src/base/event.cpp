@@ -19,8 +19,8 @@ std::string_view name_of(EventKind kind) noexcept {
 
 std::string_view name_of(Rule rule) noexcept {
     static constexpr std::array<std::string_view, rule_count> names{
-        "none", "faulted",   "not armed", "gap",          "unsettled",    "veto",
-        "gate", "condition", "lock-out",  "second limit", "session limit"};
+        "none",    "gap",  "unsettled", "veto",     "faulted",      "not armed",
+        "gate",    "condition", "lock-out", "second limit", "session limit"};
     return pick(names, static_cast<std::uint8_t>(rule));
 }
 

@@ -30,15 +30,15 @@ enum class EventKind : std::uint8_t {
     dropped = 15,      ///< events or frames that the journal had to drop because its ring was full
 };
 
-/// Why a detection was refused: exactly one rule each, the first that applies in this order.
-/// Values are part of the session format.
+/// Why a detection was refused: exactly one rule each, the first that applies in this order. The detector's own reasons
+/// come first, so that a detector can be scored whatever was allowed. Values are part of the session format.
 enum class Rule : std::uint8_t {
     none = 0,          ///< not refused
-    faulted = 1,       ///< an output, the journal or the stream failed: mend it, then arm again
-    not_armed = 2,     ///< pulses are not allowed: arm when the protocol says so
-    gap = 3,           ///< filters are settling after missing frames: look at packets lost
-    unsettled = 4,     ///< the floor has not seen enough clean signal yet: wait
-    veto = 5,          ///< the reference channel rose too: most likely not a ripple
+    gap = 1,           ///< filters are settling after the start or missing frames: look at packets lost
+    unsettled = 2,     ///< the floor has not seen enough clean signal yet: wait
+    veto = 3,          ///< the reference channel rose too: most likely not a ripple
+    faulted = 4,       ///< an output, the journal or the stream failed: mend it, then arm again
+    not_armed = 5,     ///< pulses are not allowed: arm when the protocol says so
     gate = 6,          ///< a gate is closed
     condition = 7,     ///< the session's condition gives this detection no pulse
     lock_out = 8,      ///< too soon after the trigger before it

@@ -107,8 +107,9 @@ KernelOrder Detector::State::next_order(const FrameBlock& block) const noexcept 
     }
     if (!still) {
         const bool full = floor_frames >= full_frames;
-        order.weight = full ? least_weight : 1.0 / static_cast<double>(floor_frames + 1);
-        limit = full ? limit : 1; // the weight changes from frame to frame until one time constant is full
+        order.weight = least_weight;
+        order.warming = full ? 0 : floor_frames;
+        limit = full ? limit : std::min(limit, full_frames - floor_frames);
     }
     order.count = watcher != nullptr ? 1 : static_cast<std::size_t>(limit);
     order.stop_at_votes = spent ? 0 : votes_needed;

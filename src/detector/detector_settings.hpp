@@ -23,7 +23,7 @@ struct FilterSettings {
     FilterFamily family = FilterFamily::butterworth;
     double low_hz = 150.0;
     double high_hz = 250.0;
-    int order = 2; ///< of the low-pass prototype: the band-pass has twice as many poles
+    int order = 1; ///< of the low-pass prototype: the band-pass has twice as many poles
     double stopband_db = 40.0;
     double passband_ripple_db = 0.5;
     double transition_hz = 60.0;
@@ -54,7 +54,7 @@ inline constexpr Choice<EnvelopeMethod> envelope_methods[] = {
 
 struct EnvelopeSettings {
     EnvelopeMethod method = EnvelopeMethod::analytic;
-    double smoothing_ms = 4.0;
+    double smoothing_ms = 8.0;
 
     bool operator==(const EnvelopeSettings&) const = default;
 };
@@ -67,7 +67,7 @@ template <class Visitor> void describe(Visitor& visit, EnvelopeSettings& envelop
 
 struct FloorSettings {
     double time_constant_s = 20.0;
-    double clip_deviations = 3.0;
+    double clip_deviations = 2.0;
     double settle_s = 10.0;
     double freeze_ms = 50.0;
     std::string warm_start_session;
@@ -87,8 +87,8 @@ template <class Visitor> void describe(Visitor& visit, FloorSettings& floor) {
 }
 
 struct ThresholdSettings {
-    double deviations = 4.0;
-    double rearm_deviations = 2.0;
+    double deviations = 6.0;
+    double rearm_deviations = 3.0;
     double min_above_ms = 0.0;
 
     bool operator==(const ThresholdSettings&) const = default;
@@ -134,6 +134,8 @@ template <class Visitor> void describe(Visitor& visit, VetoSettings& veto) {
                  "a reference channel above its threshold within this time before a detection vetoes it");
 }
 
+// The defaults of filter, envelope, floor and threshold were picked by `millpond tune` on three invented recordings of
+// 15 min (typical scene, four sites and a reference, seeds 101 to 103): 96 % of the ripples found at 0.4 false per minute.
 struct DetectorSettings {
     FilterSettings filter;
     EnvelopeSettings envelope;

@@ -68,6 +68,7 @@ struct KernelOrder {
     KernelEnvelope method = KernelEnvelope::rectify;
     bool resume = false;           // first frame after a splice: the level jumps so that the signal does not
     double weight = 0.0;           // of one frame in the floor; 0 leaves the floor alone
+    std::uint64_t warming = 0;     // frames in the floor so far, while each weighs as much as those before it; 0: `weight`
     std::uint32_t stop_at_votes = 0;    // stop after a frame with this many votes (waiting for a crossing) ...
     std::uint32_t stop_below_rearm = 0; // ... or after one with fewer re-arm votes than this; 0: never
 };

@@ -160,7 +160,9 @@ template <KernelEnvelope method> inline KernelResult run_method(KernelState& sta
         if (state.mean_weight != nullptr) {
             state.envelope[state.channel_lanes] = mean_of_sites(state);
         }
-        result.tally = compare_to_floor(state, order.weight);
+        const double weight =
+            order.warming == 0 ? order.weight : 1.0 / static_cast<double>(order.warming + result.frames + 1);
+        result.tally = compare_to_floor(state, weight);
         if (result.tally.references() != 0) {
             result.last_reference = result.frames;
         }

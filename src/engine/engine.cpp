@@ -48,6 +48,9 @@ std::size_t Engine::broken_frames(const FrameBlock& block, std::size_t from) con
 
 // Stops at every place where something is due by the clock of samples: a scheduled pulse, the floor's journal entry.
 void Engine::run_finite(FrameBlock block) noexcept {
+    if (block.frames() > 0) {
+        close_gap();
+    }
     while (block.frames() > 0) {
         const SampleIndex end = block.first + block.frames();
         const SampleIndex stop = std::min({end, std::max(next_ + 1, arbiter_.next_scheduled()), next_floor_});
@@ -109,7 +112,14 @@ Event Engine::withheld_event(const Candidate& candidate, Rule rule) noexcept {
 }
 
 void Engine::skip(std::uint64_t frames, GapCause cause) noexcept {
-    sink_.take(Event::make(EventKind::gap, static_cast<std::uint8_t>(cause), next_, GapDetail{frames}));
+    if (gap_frames_ > 0 && gap_cause_ != cause) {
+        close_gap();
+    }
+    if (gap_frames_ == 0) {
+        gap_from_ = next_;
+        gap_cause_ = cause;
+    }
+    gap_frames_ += frames;
     next_ = next_ + frames;
     detector_.gap(next_);
     // A place of the schedule that fell into the gap is refused there, so that the plan's count stays whole.
@@ -118,8 +128,16 @@ void Engine::skip(std::uint64_t frames, GapCause cause) noexcept {
         arbiter_.schedule_played();
         sink_.take(withheld_event(missed, Rule::gap));
     }
+    // Floors stand still in a gap: those due in it are left out.
     if (next_ >= next_floor_) {
-        journal_floors();
+        next_floor_ = next_floor_ + ((next_ - next_floor_) / second_frames_ + 1) * second_frames_;
+    }
+}
+
+void Engine::close_gap() noexcept {
+    if (gap_frames_ > 0) {
+        sink_.take(Event::make(EventKind::gap, static_cast<std::uint8_t>(gap_cause_), gap_from_, GapDetail{gap_frames_}));
+        gap_frames_ = 0;
     }
 }
 

@@ -46,6 +46,9 @@ class Engine {
     /// of `cause`. Frames with a non-finite value on a used channel are taken as a gap of their own.
     void process(const FrameBlock& block, GapCause cause = GapCause::packet_loss) noexcept;
 
+    /// Last call: a gap that was still open at the end of the samples is emitted.
+    void finish() noexcept { close_gap(); }
+
     /// Commands take effect before the next frame, `next_sample()`, and are journaled there.
     void set_state(ArmState state, StateCause cause) noexcept;
     /// False, and nothing happens, where no gate has that name.
@@ -65,6 +68,7 @@ class Engine {
     void on_crossing(const Crossing& crossing) noexcept;
     void play_schedule() noexcept;
     void skip(std::uint64_t frames, GapCause cause) noexcept;
+    void close_gap() noexcept;
     void journal_floors() noexcept;
     void journal_gate(std::string_view name, bool open) noexcept;
     [[nodiscard]] Event trigger_event(const Candidate& candidate) const noexcept;
@@ -77,6 +81,10 @@ class Engine {
     std::uint64_t second_frames_;
     SampleIndex next_{};
     SampleIndex next_floor_{};
+    // Missing frames in a row are one gap however they came in: it is emitted when the next good frame comes.
+    SampleIndex gap_from_{};
+    std::uint64_t gap_frames_ = 0;
+    GapCause gap_cause_{};
     std::uint64_t detections_ = 0;
 };
 

@@ -62,7 +62,8 @@ template <class Visitor> void describe(Visitor& visit, StreamSettings& stream) {
     visit.number("restart_after_ms", stream.restart_after_ms, {10.0, 60000.0},
                  "silence of the sender after which another is taken as its restart; also the greatest jump of its "
                  "timestamps against this computer's clock");
-    visit.number("stale_after_ms", stream.stale_after_ms, {1.0, 60000.0}, "no packet for this long faults the session");
+    visit.number("stale_after_ms", stream.stale_after_ms, {1.0, 60000.0},
+                 "no packet for this long disarms the session; arm it again by command");
     visit.whole("max_packet_bytes", stream.max_packet_bytes, {64, 65535}, "longer packets are dropped as oversized");
     visit.whole("receive_buffer_bytes", stream.receive_buffer_bytes, {4096, 268435456},
                 "what the kernel is asked to hold between two reads; it may grant less");

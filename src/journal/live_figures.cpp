@@ -44,6 +44,7 @@ void LiveCounters::count_one(const Event& event) {
         break;
     case EventKind::state:
         f.state = static_cast<ArmState>(event.code);
+        f.state_cause = static_cast<StateCause>(event.as<StateDetail>().cause);
         break;
     case EventKind::floor: {
         const auto floor = event.as<FloorDetail>();

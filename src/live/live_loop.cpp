@@ -27,6 +27,7 @@ void LiveLoop::run() noexcept {
         }
         going = keep_on(received);
     }
+    engine_.finish();
     engine_.set_state(ArmState::not_armed, StateCause::session_end);
     line_.fall_now();
     journal_counts();

@@ -45,9 +45,7 @@ struct EligibleRules {
 [[nodiscard]] Intervals intersection(const Intervals& a, const Intervals& b);
 
 /// Decision samples of the detector: its crossings, without those that it refused itself (rules gap, unsettled, veto).
-/// Those that the arbiter refused stay: whether the detector was right does not depend on what was allowed. While not
-/// armed or faulted the journal does not say whether the detector refused: eligible time leaves gaps and settling out,
-/// but a vetoed crossing stays in.
+/// Those that the arbiter refused stay: whether the detector was right does not depend on what was allowed.
 [[nodiscard]] std::vector<SampleIndex> detections_to_score(std::span<const Event> events);
 
 } // namespace millpond

@@ -18,6 +18,7 @@ class OfflineEngine {
 
     void start(bool armed) { engine_->start(SampleIndex{0}, armed); }
     void process(const FrameBlock& block) { engine_->process(block); }
+    void finish() { engine_->finish(); }
 
     [[nodiscard]] const std::vector<Event>& events() const noexcept { return kept_->events; }
     /// Triggers as they were ordered of the output.

@@ -54,6 +54,7 @@ SweepResult run_candidate(std::span<const TuningRecording> recordings, const Det
         auto engine = OfflineEngine::make({detector, plan.arbiter}, recording.channels, plan.rate);
         engine.start(true);
         engine.process({SampleIndex{0}, recording.channels.size(), recording.data});
+        engine.finish();
         joined.add(recording, engine, frames_in_ms(plan.block_s * 1000.0, plan.rate));
         result.delay_ms = engine.detector().delay_samples() * 1000.0 / plan.rate.value;
     }

@@ -32,7 +32,7 @@ TEST(Rerun, ReproducesEveryDecisionOfAnEventfulSession) {
     for (const auto rule : {Rule::faulted, Rule::not_armed, Rule::gate, Rule::lock_out}) {
         EXPECT_GT(figures.withheld[static_cast<std::size_t>(rule)], 0U) << name_of(rule);
     }
-    EXPECT_GE(figures.gaps.size(), 3U) << "lost packets, and not-a-number over several blocks";
+    EXPECT_GE(figures.gaps.size(), 2U) << "lost packets, and not-a-number over several blocks";
     EXPECT_GT(rerun.decisions, 20U);
 }
 

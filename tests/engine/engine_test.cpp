@@ -59,6 +59,9 @@ TEST(Engine, GivesTheSameEventsAtPacketSizes1And7And64And1000) {
     auto data = bursts();
     data[2 * 9000] = std::numeric_limits<float>::quiet_NaN();
     data[2 * 9003 + 1] = std::numeric_limits<float>::infinity();
+    // A long stretch across many blocks, over a place where floors are due; and one at the very end.
+    std::fill_n(data.begin() + 2 * 11240, 2 * 40, std::numeric_limits<float>::quiet_NaN());
+    std::fill_n(data.end() - 2 * 77, 2 * 77, std::numeric_limits<float>::quiet_NaN());
     const auto events_at = [&](std::size_t block) {
         Kept kept;
         auto settings = quick_settings();
@@ -70,6 +73,7 @@ TEST(Engine, GivesTheSameEventsAtPacketSizes1And7And64And1000) {
         feed(engine, data, 12345, 15001, block);
         engine.set_gate("g", true);
         feed(engine, data, 16000, 30 * 1250, block); // 999 frames lost
+        engine.finish();
         return kept.events;
     };
     const auto expected = events_at(1);

@@ -88,7 +88,7 @@ TEST_F(SettingsFile, PathsAreSeenFromTheSettingsFile) {
 
 TEST(SettingsReference, NamesEveryKeyWithItsDefault) {
     const auto reference = settings_reference();
-    EXPECT_NE(reference.find("| `detector.threshold.deviations` | 0.1 to 100 | 4 |"), std::string::npos) << reference;
+    EXPECT_NE(reference.find("| `detector.threshold.deviations` | 0.1 to 100 | 6 |"), std::string::npos) << reference;
     EXPECT_NE(reference.find("| `arbiter.gates[].name` |"), std::string::npos);
 }
 
