@@ -12,6 +12,10 @@ namespace millpond {
 namespace {
 
 constexpr std::size_t greatest_read_bytes = 65536; // what a Linux pipe holds
+constexpr double greatest_block_s = 0.1;
+// A file poured in at once would run the journal over; no rig is this much faster than its own clock.
+constexpr double greatest_pace = 8.0;
+constexpr Nanos head_start{250'000'000};
 
 } // namespace
 
@@ -19,7 +23,8 @@ PipeSource::PipeSource(const StreamSettings& settings, int descriptor)
     : descriptor_(descriptor), rate_{settings.rate_hz}, channels_(settings.channels), encoding_(settings.encoding),
       microvolts_per_count_(static_cast<float>(settings.microvolts_per_count)),
       frame_bytes_(channels_ * bytes_per_sample(encoding_)) {
-    const std::size_t frames = greatest_read_bytes / frame_bytes_;
+    const auto frames = std::clamp<std::size_t>(static_cast<std::size_t>(greatest_block_s * rate_.value), 1,
+                                                greatest_read_bytes / frame_bytes_);
     bytes_.resize(frames * frame_bytes_);
     samples_.resize(frames * channels_);
 }
@@ -28,6 +33,9 @@ PipeSource::PipeSource(const StreamSettings& settings, int descriptor)
 Received PipeSource::receive(Nanos timeout, Arrival& arrival) noexcept {
     arrival.counts_changed = false;
     keep_rest();
+    if (hold_back(timeout)) {
+        return Received::nothing;
+    }
     const Nanos until = monotonic_now() + timeout;
     for (Nanos wait = timeout; !ended_; wait = until - monotonic_now()) {
         pollfd readable{descriptor_, POLLIN, 0};
@@ -50,6 +58,23 @@ Received PipeSource::receive(Nanos timeout, Arrival& arrival) noexcept {
         }
     }
     return Received::ended;
+}
+
+// Sleeps, at most `timeout`, while the samples run too far ahead of the clock. True: they still may.
+bool PipeSource::hold_back(Nanos timeout) noexcept {
+    const Nanos now = monotonic_now();
+    if (next_ == SampleIndex{0}) {
+        began_ = now;
+    }
+    const Nanos due{static_cast<std::int64_t>(seconds_at(next_, rate_) / greatest_pace * 1e9)};
+    const Nanos ahead = began_ + due - head_start - now;
+    if (ahead <= Nanos{0}) {
+        return false;
+    }
+    const Nanos wait = std::min(ahead, timeout);
+    const timespec time{wait.count() / 1'000'000'000, wait.count() % 1'000'000'000};
+    nanosleep(&time, nullptr);
+    return true;
 }
 
 Received PipeSource::finish(Arrival& arrival) noexcept {

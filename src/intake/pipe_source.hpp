@@ -9,7 +9,8 @@
 
 namespace millpond {
 
-/// Each block holds what was there, at most 64 KiB of input. The end of the input inside a frame is counted as
+/// Each block holds what was there, at most 64 KiB of input or 100 ms of signal. Input that comes faster than eight times
+/// real pace, as from a file, is held back to that. The end of the input inside a frame is counted as
 /// truncated. A read carries no time of arrival, so `arrived_ns` stays 0.
 class PipeSource final : public SampleSource {
   public:
@@ -23,6 +24,7 @@ class PipeSource final : public SampleSource {
     [[nodiscard]] std::size_t channels() const noexcept override { return channels_; }
 
   private:
+    bool hold_back(Nanos timeout) noexcept;
     Received finish(Arrival& arrival) noexcept;
     void hand_out(Arrival& arrival) noexcept;
     void keep_rest() noexcept;
@@ -38,6 +40,7 @@ class PipeSource final : public SampleSource {
     std::size_t filled_ = 0; // bytes read and not yet kept for the next block
     std::size_t used_ = 0;   // of these, bytes handed out by the last block
     SampleIndex next_;
+    Nanos began_{};
     PacketCounts counts_{};
     bool ended_ = false;
 };

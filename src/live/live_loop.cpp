@@ -125,15 +125,18 @@ void LiveLoop::look_for_trouble() noexcept {
 
 void LiveLoop::on_silence() noexcept {
     // A stream that has not begun is not stale: nothing is settled yet, and nothing can be let through.
-    if (stale_ || last_frames_ == Nanos{0} || monotonic_now() - last_frames_ < settings_.stale_after) {
+    if (last_frames_ == Nanos{0} || monotonic_now() - last_frames_ < settings_.stale_after) {
         return;
     }
-    stale_ = true;
+    // Also where somebody arms while nothing comes in.
     if (engine_.arbiter().state() == ArmState::armed) {
         engine_.set_state(ArmState::not_armed, StateCause::stale_stream);
         line_.fall_now();
     }
-    journal_counts();
+    if (!stale_) {
+        stale_ = true;
+        journal_counts();
+    }
 }
 
 void LiveLoop::journal_counts() noexcept {

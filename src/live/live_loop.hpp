@@ -16,7 +16,7 @@ namespace millpond {
 /// Where the loop leaves what it saw.  Thread: loop; allocates, locks and throws nothing.
 class LoopJournal : public EventSink {
   public:
-    /// The block as the engine saw it, before the engine runs over it.
+    /// The block as the engine saw it, once the engine and its pulse are done with it.
     virtual void store(const FrameBlock& block) noexcept = 0;
     /// What one packet cost; a part that was not measured is PulseDetail::not_measured.
     virtual void time_packet(std::int64_t transport_ns, std::int64_t wake_ns, std::int64_t loop_ns) noexcept = 0;

@@ -103,7 +103,24 @@ TEST_F(PipeSourceTest, AnEndInsideAFrameIsCountedAsTruncated) {
     EXPECT_EQ(source.counts(), (PacketCounts{1, 1}));
 }
 
+TEST_F(PipeSourceTest, InputPouredInFasterThanEightTimesRealPaceIsHeldBack) {
+    PipeSource source(settings_, ends_[0]);
+    write(std::vector<std::uint8_t>(40'000)); // 8 s of two channels
+    std::size_t frames = 0;
+    while (source.receive(Nanos{0}, arrival_) == Received::frames) {
+        frames += arrival_.block.frames();
+    }
+    EXPECT_LT(frames, 10'000U) << "all at once";
+    close_input();
+    for (auto received = Received::nothing; received != Received::ended;) {
+        received = source.receive(seconds{5}, arrival_);
+        frames += received == Received::frames ? arrival_.block.frames() : 0;
+    }
+    EXPECT_EQ(frames, 10'000U) << "nothing is lost by it";
+}
+
 TEST_F(PipeSourceTest, MoreThanOneReadHoldsComesInSeveralBlocks) {
+    settings_.rate_hz = 50000.0; // the input is a second long
     PipeSource source(settings_, ends_[0]);
     std::vector<std::uint8_t> bytes;
     for (int i = 0; i < 100'000; ++i) {
