@@ -26,7 +26,7 @@ void expect_faulted_but_watching(Rig& rig, Process& session, const std::string& 
     EXPECT_NE(session.out().find("withheld, faulted: "), std::string::npos) << session.out();
 }
 
-void expect_readable(Rig& rig, const std::filesystem::path& folder) {
+void expect_readable(const std::filesystem::path& folder) {
     const auto ran = run_millpond("audit " + folder.string() + " --json");
     ASSERT_TRUE(ran.status == 0 || ran.status == 1) << ran.err;
     const auto audit = nlohmann::json::parse(ran.out);
@@ -42,7 +42,7 @@ TEST(FullDisk, AFileThatMayNotGrowFaultsTheSessionWhichGoesOnDetecting) {
     Rig rig;
     const auto session = rig.live(rig.settings({}), {"/dev/null", {}, 250'000});
     expect_faulted_but_watching(rig, *session, "the disk did not take the session's samples");
-    expect_readable(rig, Rig::folder_of(*session));
+    expect_readable(Rig::folder_of(*session));
 }
 
 TEST(FullDisk, ADiskOf3MegabytesFaultsTheSessionWhichGoesOnDetecting) {
@@ -56,7 +56,7 @@ TEST(FullDisk, ADiskOf3MegabytesFaultsTheSessionWhichGoesOnDetecting) {
     want.folder = "disk";
     const auto session = rig.live(rig.settings(want));
     expect_faulted_but_watching(rig, *session, "millpond: ");
-    expect_readable(rig, Rig::folder_of(*session));
+    expect_readable(Rig::folder_of(*session));
     ::umount2(disk.c_str(), MNT_DETACH);
 }
 
