@@ -35,8 +35,8 @@ double engine_seconds(const Case& each, const std::vector<float>& data) {
     detector.threshold.deviations = 6.0;
     const Hertz rate{each.rate_hz};
     Counted counted;
-    Engine engine(Detector::make(detector, ripple_channels(each.channels), rate), Arbiter::make({}, rate), rate, counted,
-                  counted);
+    Engine engine(Detector::make(detector, ripple_channels(each.channels), rate), Arbiter::make({}, rate), rate,
+                  counted, counted);
     engine.start(SampleIndex{0}, true);
     // Two passes: the second is the one that counts, settled as a session is after its first seconds.
     const std::size_t frames = data.size() / each.channels, block = 4096;
@@ -56,8 +56,9 @@ double engine_seconds(const Case& each, const std::vector<float>& data) {
 double scipy_seconds(const Case& each) {
     char command[256];
     // One core for the peer too.
-    std::snprintf(command, sizeof command, "OPENBLAS_NUM_THREADS=1 /usr/bin/python3 %s/bench/scipy_chain.py %zu %g %g %d",
-                  MILLPOND_SOURCE_DIR, each.channels, each.rate_hz, each.seconds, each.order);
+    std::snprintf(command, sizeof command,
+                  "OPENBLAS_NUM_THREADS=1 /usr/bin/python3 %s/bench/scipy_chain.py %zu %g %g %d", MILLPOND_SOURCE_DIR,
+                  each.channels, each.rate_hz, each.seconds, each.order);
     return std::atof(bench::output_of(command).c_str());
 }
 
@@ -75,7 +76,8 @@ void run(const Case& each, int repeats, bool against_scipy) {
     std::printf("%4zu ch x %6g Hz, order %d: %10.0f times real pace, %6.2f ns a sample", each.channels, each.rate_hz,
                 each.order, each.seconds / middle, middle * 1e9 / static_cast<double>(data.size()));
     if (against_scipy) {
-        std::printf(", %5.1f times SciPy (%.1f to %.1f)", bench::median(ratios), bench::least(ratios), bench::most(ratios));
+        std::printf(", %5.1f times SciPy (%.1f to %.1f)", bench::median(ratios), bench::least(ratios),
+                    bench::most(ratios));
     }
     std::printf("\n");
     std::fflush(stdout);

@@ -20,7 +20,6 @@
 #include <filesystem>
 #include <numbers>
 #include <thread>
-
 #include <unistd.h>
 
 namespace {
@@ -47,7 +46,8 @@ std::vector<float> stream_of(const Rig& rig, std::size_t packets) {
     for (std::size_t frame = 0; frame < packets * rig.packet_frames; ++frame) {
         const std::size_t packet = frame / rig.packet_frames % packets_between_bursts;
         if (packet < burst_packets && frame > static_cast<std::size_t>(rig.rate_hz)) {
-            const double value = 1000.0 * std::sin(2.0 * std::numbers::pi * 200.0 * static_cast<double>(frame) / rig.rate_hz);
+            const double value =
+                1000.0 * std::sin(2.0 * std::numbers::pi * 200.0 * static_cast<double>(frame) / rig.rate_hz);
             for (std::size_t c = 0; c < rig.channels; ++c) {
                 data[frame * rig.channels + c] += static_cast<float>(value);
             }
@@ -68,16 +68,26 @@ std::vector<std::int64_t> send_stream(const Rig& rig, const std::vector<float>& 
     for (std::size_t packet = 0; packet < packets; ++packet, due += Nanos{1'000'000}) {
         const auto timestamp = static_cast<std::uint32_t>(packet * rig.packet_frames);
         // RFC 3550 section 5.1, written out: version 2, payload type 96, one sender.
-        const std::uint8_t header[12] = {0x80, 96, static_cast<std::uint8_t>(packet >> 8), static_cast<std::uint8_t>(packet),
-                                         static_cast<std::uint8_t>(timestamp >> 24), static_cast<std::uint8_t>(timestamp >> 16),
-                                         static_cast<std::uint8_t>(timestamp >> 8), static_cast<std::uint8_t>(timestamp), 1, 2, 3, 4};
+        const std::uint8_t header[12] = {0x80,
+                                         96,
+                                         static_cast<std::uint8_t>(packet >> 8),
+                                         static_cast<std::uint8_t>(packet),
+                                         static_cast<std::uint8_t>(timestamp >> 24),
+                                         static_cast<std::uint8_t>(timestamp >> 16),
+                                         static_cast<std::uint8_t>(timestamp >> 8),
+                                         static_cast<std::uint8_t>(timestamp),
+                                         1,
+                                         2,
+                                         3,
+                                         4};
         std::copy(std::begin(header), std::end(header), bytes.begin());
         for (std::size_t i = 0; i < values; ++i) {
             const auto count = static_cast<std::int16_t>(std::lround(data[packet * values + i] / 0.1F));
             bytes[12 + 2 * i] = static_cast<std::uint8_t>(static_cast<std::uint16_t>(count) >> 8);
             bytes[13 + 2 * i] = static_cast<std::uint8_t>(count);
         }
-        const timespec at{static_cast<time_t>(due.count() / 1'000'000'000), static_cast<long>(due.count() % 1'000'000'000)};
+        const timespec at{static_cast<time_t>(due.count() / 1'000'000'000),
+                          static_cast<long>(due.count() % 1'000'000'000)};
         clock_nanosleep(CLOCK_MONOTONIC, TIMER_ABSTIME, &at, nullptr);
         sent[packet] = monotonic_now().count();
         boost::system::error_code ignored;
@@ -134,7 +144,9 @@ struct NotedJournal : LoopJournal {
         writer.loop_sink().take(event);
     }
     void store(const FrameBlock& block) noexcept override { writer.store(block); }
-    void time_packet(std::int64_t a, std::int64_t b, std::int64_t c) noexcept override { writer.time_packet({a, b, c}); }
+    void time_packet(std::int64_t a, std::int64_t b, std::int64_t c) noexcept override {
+        writer.time_packet({a, b, c});
+    }
     [[nodiscard]] bool failed() const noexcept override { return writer.failed(); }
 };
 
@@ -169,7 +181,8 @@ std::vector<double> ours_us(const Rig& rig, const std::vector<float>& data) {
     const Hertz rate{rig.rate_hz};
     const auto channels = ripple_channels(rig.channels);
     SessionSettings session;
-    session.folder = (std::filesystem::temp_directory_path() / ("millpond_loop_bench_" + std::to_string(getpid()))).string();
+    session.folder =
+        (std::filesystem::temp_directory_path() / ("millpond_loop_bench_" + std::to_string(getpid()))).string();
     SessionAbout about;
     about.program = "loop_bench";
     about.rate = rate;
@@ -226,7 +239,9 @@ std::vector<double> bare_us(const Rig& rig, const std::vector<float>& data) {
 }
 
 double quantile(std::vector<double>& sorted, double q) {
-    return sorted.empty() ? 0.0 : sorted[std::min(sorted.size() - 1, static_cast<std::size_t>(q * static_cast<double>(sorted.size())))];
+    return sorted.empty()
+               ? 0.0
+               : sorted[std::min(sorted.size() - 1, static_cast<std::size_t>(q * static_cast<double>(sorted.size())))];
 }
 
 void print(const char* name, std::vector<double>& us) {

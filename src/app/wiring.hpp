@@ -1,5 +1,5 @@
-// The whole arrow on one screen: which part of the settings makes which part of the house. Only this file knows all rooms.
-// Thread: control. Everything here may throw Refusal.
+// The whole arrow on one screen: which part of the settings makes which part of the house. Only this file knows all
+// rooms. Thread: control. Everything here may throw Refusal.
 #pragma once
 
 #include "control/command_listener.hpp"

@@ -4,8 +4,8 @@
 //     struct VetoSettings { double deviations = 5.0; double window_ms = 40.0; };
 //
 //     template <class Visitor> void describe(Visitor& visit, VetoSettings& veto) {
-//         visit.number("deviations", veto.deviations, {0.0, 100.0}, "reference threshold, in deviations above its floor");
-//         visit.number("window_ms", veto.window_ms, {0.0, 1000.0}, "how long a reference crossing vetoes");
+//         visit.number("deviations", veto.deviations, {0.0, 100.0}, "reference threshold, in deviations above its
+//         floor"); visit.number("window_ms", veto.window_ms, {0.0, 1000.0}, "how long a reference crossing vetoes");
 //     }
 //
 // A visitor offers: number (double), whole (integers), flag (bool), choice (enum), text (string), group (a struct)

@@ -19,8 +19,8 @@ std::string_view name_of(EventKind kind) noexcept {
 
 std::string_view name_of(Rule rule) noexcept {
     static constexpr std::array<std::string_view, rule_count> names{
-        "none",    "gap",  "unsettled", "veto",     "faulted",      "not armed",
-        "gate",    "condition", "lock-out", "second limit", "session limit"};
+        "none", "gap",       "unsettled", "veto",         "faulted",      "not armed",
+        "gate", "condition", "lock-out",  "second limit", "session limit"};
     return pick(names, static_cast<std::uint8_t>(rule));
 }
 
@@ -41,8 +41,8 @@ std::string_view name_of(StateCause cause) noexcept {
 }
 
 std::string_view name_of(LatencyPart part) noexcept {
-    static constexpr std::array<std::string_view, latency_part_count> names{"packing", "transport", "wake",     "compute",
-                                                                            "output",  "loop",      "pulse end"};
+    static constexpr std::array<std::string_view, latency_part_count> names{
+        "packing", "transport", "wake", "compute", "output", "loop", "pulse end"};
     return pick(names, static_cast<std::uint8_t>(part));
 }
 

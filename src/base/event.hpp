@@ -33,23 +33,23 @@ enum class EventKind : std::uint8_t {
 /// Why a detection was refused: exactly one rule each, the first that applies in this order. The detector's own reasons
 /// come first, so that a detector can be scored whatever was allowed. Values are part of the session format.
 enum class Rule : std::uint8_t {
-    none = 0,          ///< not refused
-    gap = 1,           ///< filters are settling after the start or missing frames: look at packets lost
-    unsettled = 2,     ///< the floor has not seen enough clean signal yet: wait
-    veto = 3,          ///< the reference channel rose too: most likely not a ripple
-    faulted = 4,       ///< an output, the journal or the stream failed: mend it, then arm again
-    not_armed = 5,     ///< pulses are not allowed: arm when the protocol says so
-    gate = 6,          ///< a gate is closed
-    condition = 7,     ///< the session's condition gives this detection no pulse
-    lock_out = 8,      ///< too soon after the trigger before it
-    second_limit = 9,  ///< as many pulses as allowed in one second
+    none = 0,           ///< not refused
+    gap = 1,            ///< filters are settling after the start or missing frames: look at packets lost
+    unsettled = 2,      ///< the floor has not seen enough clean signal yet: wait
+    veto = 3,           ///< the reference channel rose too: most likely not a ripple
+    faulted = 4,        ///< an output, the journal or the stream failed: mend it, then arm again
+    not_armed = 5,      ///< pulses are not allowed: arm when the protocol says so
+    gate = 6,           ///< a gate is closed
+    condition = 7,      ///< the session's condition gives this detection no pulse
+    lock_out = 8,       ///< too soon after the trigger before it
+    second_limit = 9,   ///< as many pulses as allowed in one second
     session_limit = 10, ///< as many pulses as allowed in one session: end it
 };
 inline constexpr std::size_t rule_count = 11;
 
 enum class GapCause : std::uint8_t {
-    packet_loss = 1,   ///< packets never arrived, or too late: check the network and the sender
-    non_finite = 2,    ///< the source delivered not-a-number or infinity
+    packet_loss = 1,    ///< packets never arrived, or too late: check the network and the sender
+    non_finite = 2,     ///< the source delivered not-a-number or infinity
     source_restart = 3, ///< the sender began anew; the length is estimated from this computer's clock
 };
 
@@ -62,12 +62,12 @@ enum class ArmState : std::uint8_t {
 
 /// What moved the state. Values are part of the session format.
 enum class StateCause : std::uint8_t {
-    start = 0,         ///< as the settings say
-    command = 1,       ///< a command by OSC
-    stale_stream = 2,  ///< no packet for longer than stream.stale_after_ms
-    output_failed = 3, ///< the output refused an order
+    start = 0,          ///< as the settings say
+    command = 1,        ///< a command by OSC
+    stale_stream = 2,   ///< no packet for longer than stream.stale_after_ms
+    output_failed = 3,  ///< the output refused an order
     journal_failed = 4, ///< disk full, or the journal could not keep up
-    session_end = 5,   ///< the session is ending
+    session_end = 5,    ///< the session is ending
 };
 
 /// Parts of the closed loop, each with its own histogram. Values are part of the session format.
@@ -100,17 +100,17 @@ enum class PacketCause : std::uint8_t {
 inline constexpr std::size_t packet_cause_count = 12;
 
 struct DetectionDetail {
-    float envelope;  ///< uV, of the deciding site (the largest above its floor) or of the mean over sites
-    float floor;     ///< uV
-    float deviation; ///< uV
-    float threshold; ///< uV
+    float envelope;      ///< uV, of the deciding site (the largest above its floor) or of the mean over sites
+    float floor;         ///< uV
+    float deviation;     ///< uV
+    float threshold;     ///< uV
     std::uint16_t votes; ///< ripple sites above their thresholds
     std::uint16_t site;  ///< channel in the stream, 65535 for the mean over sites
 };
 
 struct TriggerDetail {
-    std::uint64_t detected_at; ///< decision sample; equals the trigger's own sample where the pulse follows at once
-    std::uint32_t number;      ///< 1 for the session's first trigger
+    std::uint64_t detected_at;   ///< decision sample; equals the trigger's own sample where the pulse follows at once
+    std::uint32_t number;        ///< 1 for the session's first trigger
     std::uint32_t from_schedule; ///< 1 where a control schedule asked for it, else 0
 };
 
@@ -145,7 +145,7 @@ struct LatencyBins {
 };
 
 struct NoteDetail {
-    std::uint8_t length;   ///< characters used
+    std::uint8_t length;    ///< characters used
     std::uint8_t continues; ///< 1 where the next note event goes on with this text
     std::array<char, 38> text;
 };
@@ -174,7 +174,8 @@ struct Event {
     std::int64_t time_ns = 0;   ///< UTC since 1970, by this computer; 0 in a dry run
     std::array<std::uint8_t, 40> detail{};
 
-    template <class Detail> static Event make(EventKind kind, std::uint8_t code, SampleIndex at, const Detail& what) noexcept {
+    template <class Detail>
+    static Event make(EventKind kind, std::uint8_t code, SampleIndex at, const Detail& what) noexcept {
         static_assert(std::is_trivially_copyable_v<Detail> && sizeof(Detail) <= sizeof(detail));
         Event event;
         event.kind = kind;
@@ -195,7 +196,8 @@ struct Event {
 };
 static_assert(std::is_trivially_copyable_v<Event> && sizeof(Event) == 64);
 
-/// Takes events one by one, in order.  Thread: that of whoever runs the engine.  Blocks, allocates, throws: never in the loop.
+/// Takes events one by one, in order.  Thread: that of whoever runs the engine.  Blocks, allocates, throws: never in
+/// the loop.
 class EventSink {
   public:
     virtual ~EventSink() = default;

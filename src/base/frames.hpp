@@ -12,8 +12,8 @@ namespace millpond {
 /// Shape: `data[frame * channels + channel]`, microvolts, channels in stream order (roles are applied by the detector).
 /// A non-finite value on a used channel makes its frame count as missing.
 struct FrameBlock {
-    SampleIndex first;          ///< place of the first frame
-    std::size_t channels = 0;   ///< values a frame
+    SampleIndex first;           ///< place of the first frame
+    std::size_t channels = 0;    ///< values a frame
     std::span<const float> data; ///< size is a multiple of `channels`
 
     [[nodiscard]] std::size_t frames() const noexcept { return channels == 0 ? 0 : data.size() / channels; }

@@ -133,7 +133,7 @@ std::vector<OscArgument> osc_arguments(const std::string& words) {
 
 std::string_view name_of(OscTrouble trouble) noexcept {
     static constexpr std::array<std::string_view, 6> names{
-        "no trouble",     "not an OSC message",    "cut short",
+        "no trouble",   "not an OSC message",       "cut short",
         "no type tags", "an unknown argument type", "too many arguments"};
     return names[static_cast<std::size_t>(trouble)];
 }

@@ -17,8 +17,8 @@ using OscArgument = std::variant<std::int32_t, float, std::string>;
 
 /// Address and arguments as bytes. Refuses an address that does not begin with / or holds characters that OSC reserves.
 /// Thread: control.
-[[nodiscard]] std::vector<std::uint8_t> encode_osc(const std::string& address, const std::vector<OscArgument>& arguments,
-                                                   const std::string& where);
+[[nodiscard]] std::vector<std::uint8_t> encode_osc(const std::string& address,
+                                                   const std::vector<OscArgument>& arguments, const std::string& where);
 
 /// Words of a settings text as arguments: 1 is an int32, 1.0 a float32, all else a string. Thread: control.
 [[nodiscard]] std::vector<OscArgument> osc_arguments(const std::string& words);
@@ -37,10 +37,10 @@ enum class OscTrouble : std::uint8_t {
 /// Views into the packet; valid as long as it is.
 struct OscMessage {
     struct Value {
-        char type = 0;           ///< i, f, s, T or F
-        std::int32_t whole = 0;  ///< i; T is 1, F is 0
-        float number = 0.0F;     ///< f, and i as a float
-        std::string_view text;   ///< s
+        char type = 0;          ///< i, f, s, T or F
+        std::int32_t whole = 0; ///< i; T is 1, F is 0
+        float number = 0.0F;    ///< f, and i as a float
+        std::string_view text;  ///< s
     };
     std::string_view address;
     std::array<Value, 8> values;

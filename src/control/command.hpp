@@ -8,11 +8,11 @@
 namespace millpond {
 
 enum class CommandKind : std::uint8_t {
-    arm,        ///< pulses are allowed
-    disarm,     ///< pulses are not allowed
-    mark,       ///< a text note into the journal
-    open_gate,  ///< by name
-    close_gate  ///< by name
+    arm,       ///< pulses are allowed
+    disarm,    ///< pulses are not allowed
+    mark,      ///< a text note into the journal
+    open_gate, ///< by name
+    close_gate ///< by name
 };
 
 struct Command {
@@ -24,7 +24,8 @@ struct Command {
     static Command make(CommandKind kind, std::string_view text = {}) noexcept {
         Command command;
         command.kind = kind;
-        command.length = static_cast<std::uint8_t>(text.size() < command.text.size() ? text.size() : command.text.size());
+        command.length =
+            static_cast<std::uint8_t>(text.size() < command.text.size() ? text.size() : command.text.size());
         text.copy(command.text.data(), command.length);
         return command;
     }

@@ -1,5 +1,5 @@
-// Turns OSC messages into commands: /arm, /disarm, /mark TEXT, /gate NAME 1 or 0, each with the secret first where one is set.
-// Thread: control.
+// Turns OSC messages into commands: /arm, /disarm, /mark TEXT, /gate NAME 1 or 0, each with the secret first where one
+// is set. Thread: control.
 #pragma once
 
 #include "control/command.hpp"

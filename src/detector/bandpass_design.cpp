@@ -15,8 +15,8 @@ namespace {
 
 using Complex = std::complex<double>;
 
-// Library functions differ between processors in the last bit. Forty bits are far more than a filter needs, and rounding
-// to them makes the coefficients, and so every decision, the same everywhere.
+// Library functions differ between processors in the last bit. Forty bits are far more than a filter needs, and
+// rounding to them makes the coefficients, and so every decision, the same everywhere.
 double rounded(double value) {
     int exponent = 0;
     const double mantissa = std::frexp(value, &exponent);
@@ -127,8 +127,8 @@ std::vector<Section> sections_of(const Prototype& prototype, double centre, doub
         section.b0 *= gain;
         section.b1 *= gain;
         section.b2 *= gain;
-        sections.push_back({rounded(section.b0), rounded(section.b1), rounded(section.b2), rounded(section.a1),
-                            rounded(section.a2)});
+        sections.push_back(
+            {rounded(section.b0), rounded(section.b1), rounded(section.b2), rounded(section.a1), rounded(section.a2)});
     }
     return sections;
 }
@@ -236,7 +236,8 @@ std::size_t BandpassDesign::settle_samples() const {
             --settled;
             tail += response[settled] * response[settled];
         }
-        // The response must have died out well within what was looked at; a hundred million samples is an hour at 30 kHz.
+        // The response must have died out well within what was looked at; a hundred million samples is an hour at 30
+        // kHz.
         if (settled < length / 2 || sections.empty() || length > 100'000'000) {
             return settled;
         }

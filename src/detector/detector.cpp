@@ -4,7 +4,6 @@
 
 #include <algorithm>
 #include <cmath>
-
 #include <xmmintrin.h>
 
 namespace millpond {

@@ -17,11 +17,11 @@ namespace millpond {
 
 /// One crossing of the threshold by the vote.
 struct Crossing {
-    SampleIndex at;         ///< decision sample
+    SampleIndex at; ///< decision sample
     DetectionDetail detail;
-    bool settling;          ///< filters are still settling after a gap or the start
-    bool unsettled;         ///< the floor has not seen enough clean signal
-    bool vetoed;            ///< a reference channel was above its threshold within the veto window
+    bool settling;  ///< filters are still settling after a gap or the start
+    bool unsettled; ///< the floor has not seen enough clean signal
+    bool vetoed;    ///< a reference channel was above its threshold within the veto window
 };
 
 /// One channel's floor, to carry from one session into the next. uV.
@@ -32,7 +32,12 @@ struct FloorState {
 };
 
 /// Vector width of the kernel; all give the same bits.
-enum class KernelWidth : std::uint8_t { automatic, sse2, avx2, avx512 };
+enum class KernelWidth : std::uint8_t {
+    automatic,
+    sse2,
+    avx2,
+    avx512
+};
 
 class Detector {
   public:

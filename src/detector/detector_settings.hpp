@@ -9,9 +9,9 @@
 namespace millpond {
 
 enum class FilterFamily : std::uint8_t {
-    butterworth,     ///< flattest pass band; the shortest delay of the three at equal order
-    chebyshev2,      ///< flat pass band, stop band held below stopband_db
-    elliptic,        ///< steepest edges; ripples in both bands; the longest delay at its edges
+    butterworth,      ///< flattest pass band; the shortest delay of the three at equal order
+    chebyshev2,       ///< flat pass band, stop band held below stopband_db
+    elliptic,         ///< steepest edges; ripples in both bands; the longest delay at its edges
     fir_minimum_phase ///< finite response, delay as short as its magnitude permits
 };
 inline constexpr Choice<FilterFamily> filter_families[] = {{FilterFamily::butterworth, "butterworth"},
@@ -36,7 +36,8 @@ template <class Visitor> void describe(Visitor& visit, FilterSettings& filter) {
     visit.number("low_hz", filter.low_hz, {1.0, 20000.0},
                  "lower edge of the band (-3 dB for butterworth, edge of the stop band for chebyshev2)");
     visit.number("high_hz", filter.high_hz, {2.0, 24000.0}, "upper edge of the band, likewise; below half the rate");
-    visit.whole("order", filter.order, {1, 8}, "order of the low-pass prototype; the band-pass has twice as many poles");
+    visit.whole("order", filter.order, {1, 8},
+                "order of the low-pass prototype; the band-pass has twice as many poles");
     visit.number("stopband_db", filter.stopband_db, {10.0, 120.0},
                  "how far the stop band lies below the pass band (chebyshev2, elliptic, fir_minimum_phase)");
     visit.number("passband_ripple_db", filter.passband_ripple_db, {0.01, 3.0}, "ripple of the pass band (elliptic)");
@@ -135,7 +136,8 @@ template <class Visitor> void describe(Visitor& visit, VetoSettings& veto) {
 }
 
 // The defaults of filter, envelope, floor and threshold were picked by `millpond tune` on three invented recordings of
-// 15 min (typical scene, four sites and a reference, seeds 101 to 103): 96 % of the ripples found at 0.4 false per minute.
+// 15 min (typical scene, four sites and a reference, seeds 101 to 103): 96 % of the ripples found at 0.4 false per
+// minute.
 struct DetectorSettings {
     FilterSettings filter;
     EnvelopeSettings envelope;
@@ -154,7 +156,8 @@ template <class Visitor> void describe(Visitor& visit, DetectorSettings& detecto
     visit.group("floor", detector.floor, "what the envelope is without ripples");
     visit.group("threshold", detector.threshold, "when a site is above");
     visit.group("vote", detector.vote, "how sites decide together");
-    visit.group("veto", detector.veto, "when the reference says that it is no ripple (needs a channel of role reference)");
+    visit.group("veto", detector.veto,
+                "when the reference says that it is no ripple (needs a channel of role reference)");
     visit.number("blanking_ms", detector.blanking_ms, {0.0, 1000.0},
                  "after a pulse's place in the stream the detector holds its state this long; must cover the loop's "
                  "latency, the pulse or train, and its artefact");

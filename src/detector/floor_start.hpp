@@ -16,7 +16,8 @@ class FloorStart {
     /// Takes one frame of envelopes, one a lane. True once all were seen.
     bool take(const double* envelopes) noexcept;
 
-    /// Median of each lane's envelope, and the median distance from it scaled to a mean distance. After `take` said true.
+    /// Median of each lane's envelope, and the median distance from it scaled to a mean distance. After `take` said
+    /// true.
     void read(double* mean, double* spread) noexcept;
 
     void reset() noexcept { seen_ = 0; }

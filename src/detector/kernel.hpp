@@ -13,36 +13,36 @@ inline constexpr std::size_t lane_group = 8;
 
 /// Everything the loop reads and writes. Arrays are 64-byte aligned; `[lanes]` unless said otherwise.
 struct KernelState {
-    std::size_t lanes = 0;          // a multiple of lane_group
-    std::size_t channel_lanes = 0;  // lanes that read a channel; the mean's lane, if any, is the next one
-    std::size_t channels = 0;       // values a frame in the stream
+    std::size_t lanes = 0;                     // a multiple of lane_group
+    std::size_t channel_lanes = 0;             // lanes that read a channel; the mean's lane, if any, is the next one
+    std::size_t channels = 0;                  // values a frame in the stream
     const std::uint32_t* channel_of = nullptr; // [lanes]; 0 for lanes without a channel
     const std::uint64_t* lane_used = nullptr;  // all ones for lanes with a channel, else 0
-    bool in_stream_order = false;   // channel_of[i] == i for all that are used
+    bool in_stream_order = false;              // channel_of[i] == i for all that are used
 
     std::size_t sections = 0;
     const double* coefficients = nullptr; // [sections][5]: b0 b1 b2 a1 a2
     double* section_states = nullptr;     // [lanes / lane_group][sections][2][lane_group]
     std::size_t taps = 0;
-    const double* tap_values = nullptr;   // [taps]
-    double* history = nullptr;            // [2 * taps][lanes]: written twice, so that the last `taps` are one run
+    const double* tap_values = nullptr; // [taps]
+    double* history = nullptr;          // [2 * taps][lanes]: written twice, so that the last `taps` are one run
     std::size_t history_at = 0;
 
-    double* level = nullptr;     // taken off every sample: the band-pass ignores it, and a splice makes no step
-    double* last = nullptr;      // the last sample, less its level
-    double quadrature = 0.0;     // all-pass coefficient: 90 degrees at the centre of the band
-    double* in_phase = nullptr;  // the all-pass filter's last input
-    double* turned = nullptr;    // and its last output
-    double smoothing = 1.0;      // 1 / (1 + delay of one section in frames)
+    double* level = nullptr;    // taken off every sample: the band-pass ignores it, and a splice makes no step
+    double* last = nullptr;     // the last sample, less its level
+    double quadrature = 0.0;    // all-pass coefficient: 90 degrees at the centre of the band
+    double* in_phase = nullptr; // the all-pass filter's last input
+    double* turned = nullptr;   // and its last output
+    double smoothing = 1.0;     // 1 / (1 + delay of one section in frames)
     double* smooth1 = nullptr;
     double* smooth2 = nullptr;
     double* envelope = nullptr;
     const double* mean_weight = nullptr; // 1 / ripple sites on ripple lanes, else 0
 
-    double* mean = nullptr;      // the floor
-    double* spread = nullptr;    // running mean of |envelope - mean|
-    double clip = 0.0;           // in spreads
-    const double* above = nullptr;   // threshold, in spreads above the mean
+    double* mean = nullptr;        // the floor
+    double* spread = nullptr;      // running mean of |envelope - mean|
+    double clip = 0.0;             // in spreads
+    const double* above = nullptr; // threshold, in spreads above the mean
     const double* rearm = nullptr;
     const std::uint64_t* above_adds = nullptr; // what an envelope above its threshold adds to the frame's tally
     const std::uint64_t* rearm_adds = nullptr;
@@ -50,31 +50,35 @@ struct KernelState {
 
 /// A frame's tally: three counts in one word. Always inlined: a copy compiled for wide vectors must not serve all.
 struct Tally {
-    static constexpr std::uint64_t vote = 1;                    // voting lanes above the threshold
-    static constexpr std::uint64_t vote_rearm = 1ULL << 16;     // voting lanes above the re-arm level
-    static constexpr std::uint64_t reference = 1ULL << 32;      // reference lanes above their threshold
+    static constexpr std::uint64_t vote = 1;                // voting lanes above the threshold
+    static constexpr std::uint64_t vote_rearm = 1ULL << 16; // voting lanes above the re-arm level
+    static constexpr std::uint64_t reference = 1ULL << 32;  // reference lanes above their threshold
     std::uint64_t word = 0;
     [[nodiscard, gnu::always_inline]] std::uint32_t votes() const noexcept { return word & 0xFFFF; }
     [[nodiscard, gnu::always_inline]] std::uint32_t rearm_votes() const noexcept { return (word >> 16) & 0xFFFF; }
     [[nodiscard, gnu::always_inline]] std::uint32_t references() const noexcept { return (word >> 32) & 0xFFFF; }
 };
 
-enum class KernelEnvelope : std::uint8_t { rectify, energy, analytic };
+enum class KernelEnvelope : std::uint8_t {
+    rectify,
+    energy,
+    analytic
+};
 
 /// What one call shall do.
 struct KernelOrder {
     const float* frames = nullptr;
     std::size_t count = 0;
     KernelEnvelope method = KernelEnvelope::rectify;
-    bool resume = false;           // first frame after a splice: the level jumps so that the signal does not
-    double weight = 0.0;           // of one frame in the floor; 0 leaves the floor alone
-    std::uint64_t warming = 0;     // frames in the floor so far, while each weighs as much as those before it; 0: `weight`
+    bool resume = false;       // first frame after a splice: the level jumps so that the signal does not
+    double weight = 0.0;       // of one frame in the floor; 0 leaves the floor alone
+    std::uint64_t warming = 0; // frames in the floor so far, while each weighs as much as those before it; 0: `weight`
     std::uint32_t stop_at_votes = 0;    // stop after a frame with this many votes (waiting for a crossing) ...
     std::uint32_t stop_below_rearm = 0; // ... or after one with fewer re-arm votes than this; 0: never
 };
 
 struct KernelResult {
-    std::size_t frames = 0;           // worked through; the tally is that of the last
+    std::size_t frames = 0; // worked through; the tally is that of the last
     Tally tally;
     std::size_t last_reference = SIZE_MAX; // newest of these frames with a reference above, if any
 };

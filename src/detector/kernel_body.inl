@@ -12,14 +12,18 @@ using Words = std::int64_t __attribute__((vector_size(MILLPOND_LANES * sizeof(st
 constexpr std::size_t width = MILLPOND_LANES;
 constexpr std::size_t vectors_in_group = lane_group / width;
 
-inline Doubles& at(double* values, std::size_t lane) { return *reinterpret_cast<Doubles*>(values + lane); }
+inline Doubles& at(double* values, std::size_t lane) {
+    return *reinterpret_cast<Doubles*>(values + lane);
+}
 inline const Doubles& at(const double* values, std::size_t lane) {
     return *reinterpret_cast<const Doubles*>(values + lane);
 }
 inline const Words& at(const std::uint64_t* values, std::size_t lane) {
     return *reinterpret_cast<const Words*>(values + lane);
 }
-inline Doubles magnitude(Doubles value) { return value < 0.0 ? -value : value; }
+inline Doubles magnitude(Doubles value) {
+    return value < 0.0 ? -value : value;
+}
 
 // A whole vector straight from the frame where all of it is memory that may be read; what lies beyond the looked-at
 // channels is masked away. Else value by value: at the end of a block, and where roles leave gaps between channels.
@@ -140,8 +144,7 @@ inline void envelopes_of_frame(KernelState& state, const float* frame, bool whol
             level = raw - last;
         }
         last = raw - level;
-        const Doubles band =
-            state.taps == 0 ? filter_sections(state, lane, last) : filter_taps(state, lane, last);
+        const Doubles band = state.taps == 0 ? filter_sections(state, lane, last) : filter_taps(state, lane, last);
         at(state.envelope, lane) = envelope_of<method>(state, lane, band);
     }
     if (state.taps != 0) {

@@ -11,8 +11,8 @@ namespace {
 
 using Spectrum = std::vector<std::complex<double>>;
 
-// Radix-2, decimation in time (Cooley & Tukey 1965). Written out because a library that picks its code by processor would
-// give other bits on other machines.
+// Radix-2, decimation in time (Cooley & Tukey 1965). Written out because a library that picks its code by processor
+// would give other bits on other machines.
 void transform(Spectrum& values, bool inverse) {
     const std::size_t size = values.size();
     for (std::size_t i = 1, j = 0; i < size; ++i) {

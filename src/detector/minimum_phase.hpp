@@ -5,8 +5,8 @@
 
 namespace millpond {
 
-/// Reflects the zeros of `taps` into the unit circle, through the real cepstrum (Oppenheim & Schafer's homomorphic method).
-/// As many taps as it was given.
+/// Reflects the zeros of `taps` into the unit circle, through the real cepstrum (Oppenheim & Schafer's homomorphic
+/// method). As many taps as it was given.
 [[nodiscard]] std::vector<double> minimum_phase(const std::vector<double>& taps);
 
 } // namespace millpond

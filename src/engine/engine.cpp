@@ -136,7 +136,8 @@ void Engine::skip(std::uint64_t frames, GapCause cause) noexcept {
 
 void Engine::close_gap() noexcept {
     if (gap_frames_ > 0) {
-        sink_.take(Event::make(EventKind::gap, static_cast<std::uint8_t>(gap_cause_), gap_from_, GapDetail{gap_frames_}));
+        sink_.take(
+            Event::make(EventKind::gap, static_cast<std::uint8_t>(gap_cause_), gap_from_, GapDetail{gap_frames_}));
         gap_frames_ = 0;
     }
 }

@@ -9,9 +9,9 @@
 
 namespace millpond {
 
-/// Each block holds what was there, at most 64 KiB of input or 100 ms of signal. Input that comes faster than eight times
-/// real pace, as from a file, is held back to that. The end of the input inside a frame is counted as
-/// truncated. A read carries no time of arrival, so `arrived_ns` stays 0.
+/// Each block holds what was there, at most 64 KiB of input or 100 ms of signal. Input that comes faster than eight
+/// times real pace, as from a file, is held back to that. The end of the input inside a frame is counted as truncated.
+/// A read carries no time of arrival, so `arrived_ns` stays 0.
 class PipeSource final : public SampleSource {
   public:
     /// `settings` is what `resolved` returned. `descriptor` stays the caller's and must stay open (0: standard input).

@@ -20,8 +20,8 @@ class RtpSource final : public SampleSource {
     /// Listens at once. `settings` is what `resolved` returned.
     explicit RtpSource(const StreamSettings& settings);
 
-    /// Packets that cannot be used are counted and waited past, within the same `timeout`. A signal ends the wait early;
-    /// a wait of 2 ms or more may end late by the kernel's tick (1 to 10 ms) where nothing comes.
+    /// Packets that cannot be used are counted and waited past, within the same `timeout`. A signal ends the wait
+    /// early; a wait of 2 ms or more may end late by the kernel's tick (1 to 10 ms) where nothing comes.
     Received receive(Nanos timeout, Arrival& arrival) noexcept override;
 
     [[nodiscard]] const PacketCounts& counts() const noexcept override { return counts_; }

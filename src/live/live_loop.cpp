@@ -74,7 +74,8 @@ void LiveLoop::fire(const Event& trigger) noexcept {
         output_failed_ = true;
     }
     const Nanos written = monotonic_now();
-    const double frames_after = static_cast<double>(arrival_->block.first + arrival_->block.frames() - trigger.sample - 1);
+    const double frames_after =
+        static_cast<double>(arrival_->block.first + arrival_->block.frames() - trigger.sample - 1);
     PulseDetail detail{};
     detail.packing_ns = static_cast<std::int64_t>(frames_after / source_.rate().value * 1e9);
     detail.transport_ns = transport_ns_;

@@ -1,5 +1,5 @@
-// The loop of a session: a packet comes in, the engine runs over it to the end, the pulse goes out, events are handed on.
-// One thread from packet to pulse. Allocates, locks, throws and formats nothing once it runs.
+// The loop of a session: a packet comes in, the engine runs over it to the end, the pulse goes out, events are handed
+// on. One thread from packet to pulse. Allocates, locks, throws and formats nothing once it runs.
 #pragma once
 
 #include "base/spsc_ring.hpp"
@@ -8,8 +8,8 @@
 #include "intake/sample_source.hpp"
 #include "outputs/pulse_line.hpp"
 
-#include <atomic>
 #include <array>
+#include <atomic>
 
 namespace millpond {
 
@@ -32,10 +32,10 @@ struct LiveLoopSettings {
 
 /// Why the loop ended.
 enum class LoopEnd : std::uint8_t {
-    running,  ///< it has not
-    stopped,  ///< somebody asked it to
-    ended,    ///< the source has no more samples
-    failed    ///< the source broke
+    running, ///< it has not
+    stopped, ///< somebody asked it to
+    ended,   ///< the source has no more samples
+    failed   ///< the source broke
 };
 
 class LiveLoop : private PulsePort {

@@ -27,7 +27,8 @@ udp::endpoint endpoint_of(const OutputSettings& settings) {
 } // namespace
 
 OscOutput::OscOutput(const OutputSettings& settings)
-    : socket_(context_, udp::v4()), high_(encode_osc(settings.address, osc_arguments(settings.high_arguments), "output.address")),
+    : socket_(context_, udp::v4()),
+      high_(encode_osc(settings.address, osc_arguments(settings.high_arguments), "output.address")),
       low_(encode_osc(settings.address, osc_arguments(settings.low_arguments), "output.address")) {
     boost::system::error_code trouble;
     socket_.connect(endpoint_of(settings), trouble);

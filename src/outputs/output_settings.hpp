@@ -36,8 +36,9 @@ template <class Visitor> void describe(Visitor& visit, OutputSettings& output) {
     visit.whole("port", output.port, {1, 65535}, "UDP port that OSC orders go to");
     visit.flag("allow_other_hosts", output.allow_other_hosts, "whether `host` may be another computer than this one");
     visit.text("address", output.address, "OSC address of the orders");
-    visit.text("high_arguments", output.high_arguments,
-               "OSC arguments that order the line high, separated by spaces: 1 is an int32, 1.0 a float32, a word a string");
+    visit.text(
+        "high_arguments", output.high_arguments,
+        "OSC arguments that order the line high, separated by spaces: 1 is an int32, 1.0 a float32, a word a string");
     visit.text("low_arguments", output.low_arguments, "OSC arguments that order the line low, likewise");
     visit.number("width_ms", output.width_ms, {0.05, 1000.0}, "how long the line is high in one pulse");
     visit.whole("train_pulses", output.train_pulses, {1, 1000}, "pulses ordered for one trigger");

@@ -27,8 +27,8 @@ struct PulseShape {
 
 class PulseLine {
   public:
-    /// Orders the line low and starts the pulse thread; `ends` takes a pulse_end event for every pulse, from that thread.
-    /// `priority`: SCHED_FIFO priority of the thread, 0 for the ordinary scheduler. Thread: control.
+    /// Orders the line low and starts the pulse thread; `ends` takes a pulse_end event for every pulse, from that
+    /// thread. `priority`: SCHED_FIFO priority of the thread, 0 for the ordinary scheduler. Thread: control.
     PulseLine(Output& output, PulseShape shape, EventSink& ends, int priority = 0);
     ~PulseLine();
     PulseLine(const PulseLine&) = delete;

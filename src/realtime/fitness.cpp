@@ -9,10 +9,9 @@
 
 #include <algorithm>
 #include <cstring>
+#include <fcntl.h>
 #include <fstream>
 #include <mutex>
-
-#include <fcntl.h>
 #include <sys/mman.h>
 #include <sys/timex.h>
 #include <unistd.h>
@@ -61,12 +60,15 @@ std::vector<Finding> check_rights(const RealtimeSettings& settings) {
         findings.push_back({Fitness::caution, "real-time rights",
                             "not asked for: the loop shares the scheduler with everything else (realtime.priority)"});
     } else {
-        findings.push_back({Fitness::good, "real-time rights", fmt::format("SCHED_FIFO priority {} granted", settings.priority)});
+        findings.push_back(
+            {Fitness::good, "real-time rights", fmt::format("SCHED_FIFO priority {} granted", settings.priority)});
     }
     if (!settings.lock_memory) {
-        findings.push_back({Fitness::caution, "memory lock", "not asked for: a page may be fetched from disk in mid-loop (realtime.lock_memory)"});
+        findings.push_back({Fitness::caution, "memory lock",
+                            "not asked for: a page may be fetched from disk in mid-loop (realtime.lock_memory)"});
     } else if (mlockall(MCL_CURRENT | MCL_FUTURE) != 0) {
-        findings.push_back({Fitness::bad, "memory lock", fmt::format("{}; raise this user's memlock limit", std::strerror(errno))});
+        findings.push_back(
+            {Fitness::bad, "memory lock", fmt::format("{}; raise this user's memlock limit", std::strerror(errno))});
     } else {
         munlockall();
         findings.push_back({Fitness::good, "memory lock", "granted"});
@@ -98,10 +100,12 @@ std::vector<Finding> check_clock() {
     if (status < 0) {
         findings.push_back({Fitness::caution, "clock discipline", std::strerror(errno)});
     } else if (status == TIME_ERROR) {
-        findings.push_back({Fitness::caution, "clock discipline",
-                            "not synchronised: transport latency from another computer means nothing (run an NTP or PTP client)"});
+        findings.push_back(
+            {Fitness::caution, "clock discipline",
+             "not synchronised: transport latency from another computer means nothing (run an NTP or PTP client)"});
     } else {
-        findings.push_back({Fitness::good, "clock discipline", fmt::format("synchronised, estimated error {} us", state.esterror)});
+        findings.push_back(
+            {Fitness::good, "clock discipline", fmt::format("synchronised, estimated error {} us", state.esterror)});
     }
     return findings;
 }
@@ -112,7 +116,8 @@ Finding check_wake(const RealtimeSettings& settings, double seconds) {
         constexpr Nanos period{1'000'000};
         Nanos due = monotonic_now() + period;
         for (const Nanos end = due + Nanos{static_cast<std::int64_t>(seconds * 1e9)}; due < end; due += period) {
-            const timespec at{static_cast<time_t>(due.count() / 1'000'000'000), static_cast<long>(due.count() % 1'000'000'000)};
+            const timespec at{static_cast<time_t>(due.count() / 1'000'000'000),
+                              static_cast<long>(due.count() % 1'000'000'000)};
             clock_nanosleep(CLOCK_MONOTONIC, TIMER_ABSTIME, &at, nullptr);
             late.add((monotonic_now() - due).count());
         }
@@ -121,8 +126,9 @@ Finding check_wake(const RealtimeSettings& settings, double seconds) {
         return {Fitness::bad, "wake", "not measured: " + trouble};
     }
     const auto us = [](std::int64_t ns) { return static_cast<double>(ns) / 1000.0; };
-    const auto found = fmt::format("late by p50 {:.0f}, p99 {:.0f}, max {:.0f} us over {} wakes", us(late.quantile_ns(0.5)),
-                                   us(late.quantile_ns(0.99)), us(late.max_ns()), late.count());
+    const auto found =
+        fmt::format("late by p50 {:.0f}, p99 {:.0f}, max {:.0f} us over {} wakes", us(late.quantile_ns(0.5)),
+                    us(late.quantile_ns(0.99)), us(late.max_ns()), late.count());
     // 1 ms is a whole packet of most rigs; 'common practice'.
     const bool slow = late.quantile_ns(0.99) > 1'000'000;
     return {slow ? Fitness::caution : Fitness::good, "wake",
@@ -137,14 +143,18 @@ std::vector<Finding> check_disk(const std::filesystem::path& folder, double byte
     const double free_mb = static_cast<double>(std::filesystem::space(existing).available) / 1e6;
     const double hours = (free_mb - min_free_mb) * 1e6 / bytes_per_second / 3600.0;
     std::vector<Finding> findings;
-    const auto space = fmt::format("{:.0f} MB free in {}, enough for {:.1f} h of this stream", free_mb, existing.string(), std::max(hours, 0.0));
-    findings.push_back({hours <= 0.0 ? Fitness::bad : hours < 4.0 ? Fitness::caution : Fitness::good, "disk space",
-                        space + (hours < 4.0 ? ": make room" : "")});
+    const auto space = fmt::format("{:.0f} MB free in {}, enough for {:.1f} h of this stream", free_mb,
+                                   existing.string(), std::max(hours, 0.0));
+    findings.push_back({hours <= 0.0  ? Fitness::bad
+                        : hours < 4.0 ? Fitness::caution
+                                      : Fitness::good,
+                        "disk space", space + (hours < 4.0 ? ": make room" : "")});
 
     const auto file = existing / (".millpond_disk_check_" + std::to_string(getpid()));
     const int descriptor = open(file.c_str(), O_CREAT | O_EXCL | O_WRONLY | O_CLOEXEC, 0600);
     if (descriptor < 0) {
-        findings.push_back({Fitness::bad, "disk speed", fmt::format("cannot write in {}: {}", existing.string(), std::strerror(errno))});
+        findings.push_back({Fitness::bad, "disk speed",
+                            fmt::format("cannot write in {}: {}", existing.string(), std::strerror(errno))});
         return findings;
     }
     const std::vector<char> chunk(1 << 20, 'm');
@@ -158,8 +168,12 @@ std::vector<Finding> check_disk(const std::filesystem::path& folder, double byte
     close(descriptor);
     std::filesystem::remove(file);
     const double times = 32.0 * 1048576.0 / took_s / bytes_per_second;
-    findings.push_back({!written || times < 2.0 ? Fitness::bad : times < 10.0 ? Fitness::caution : Fitness::good, "disk speed",
-                        written ? fmt::format("{:.0f} times what the stream brings", times) : "a test file could not be written"});
+    findings.push_back(
+        {!written || times < 2.0 ? Fitness::bad
+         : times < 10.0          ? Fitness::caution
+                                 : Fitness::good,
+         "disk speed",
+         written ? fmt::format("{:.0f} times what the stream brings", times) : "a test file could not be written"});
     return findings;
 }
 

@@ -11,15 +11,15 @@
 namespace millpond {
 
 enum class Fitness : std::uint8_t {
-    good,   ///< nothing to do
+    good,    ///< nothing to do
     caution, ///< works, and may be late or end early: read what it says
-    bad     ///< a session with these settings will not start, or must not
+    bad      ///< a session with these settings will not start, or must not
 };
 
 struct Finding {
     Fitness fitness = Fitness::good;
-    std::string about;  ///< two or three words
-    std::string found;  ///< what was found, and the remedy where there is something to mend
+    std::string about; ///< two or three words
+    std::string found; ///< what was found, and the remedy where there is something to mend
 };
 
 /// Whether the loop's priority, core and memory lock can be had.

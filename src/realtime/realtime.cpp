@@ -3,9 +3,8 @@
 #include "base/refusal.hpp"
 
 #include <cstring>
-#include <string>
-
 #include <pthread.h>
+#include <string>
 #include <sys/mman.h>
 
 namespace millpond {

@@ -7,8 +7,8 @@
 
 namespace millpond {
 
-/// Priority and core, as settings say. Refuses, with the remedy, what this user or computer may not have: a session that
-/// asked for a priority must not run without it unnoticed.
+/// Priority and core, as settings say. Refuses, with the remedy, what this user or computer may not have: a session
+/// that asked for a priority must not run without it unnoticed.
 void make_realtime(std::thread& thread, const RealtimeSettings& settings);
 
 /// Locks all present and future memory where settings say so. Refuses likewise.

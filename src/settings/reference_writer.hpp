@@ -55,7 +55,8 @@ class ReferenceWriter {
 
   private:
     void row(std::string_view key, const std::string& allowed, const std::string& standard, std::string_view doc) {
-        table_ += "| `" + prefix_ + std::string(key) + "` | " + allowed + " | " + standard + " | " + std::string(doc) + " |\n";
+        table_ += "| `" + prefix_ + std::string(key) + "` | " + allowed + " | " + standard + " | " + std::string(doc) +
+                  " |\n";
     }
 
     std::string prefix_;

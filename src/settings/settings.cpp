@@ -23,7 +23,8 @@ void check_gates(const std::vector<GateSettings>& gates, const std::string& file
         if (gates[i].name.empty() || gates[i].name.size() > 31) {
             throw Refusal(where, "'" + gates[i].name + "'", "1 to 31 characters");
         }
-        if (std::count_if(gates.begin(), gates.end(), [&](const auto& gate) { return gate.name == gates[i].name; }) > 1) {
+        if (std::count_if(gates.begin(), gates.end(), [&](const auto& gate) { return gate.name == gates[i].name; }) >
+            1) {
             throw Refusal(where, "'" + gates[i].name + "' twice", "each name once");
         }
     }
@@ -39,7 +40,8 @@ void check_together(const Settings& settings, const std::string& file) {
         throw Refusal(file + ": detector.filter.low_hz", shortest(settings.detector.filter.low_hz),
                       "less than detector.filter.high_hz, " + shortest(settings.detector.filter.high_hz));
     }
-    const double train_ms = (settings.output.train_pulses - 1) * settings.output.train_period_ms + settings.output.width_ms;
+    const double train_ms =
+        (settings.output.train_pulses - 1) * settings.output.train_period_ms + settings.output.width_ms;
     // A trigger while the line is still busy could not be played; the lock-out makes sure that there is none.
     if (settings.arbiter.lockout_ms <= train_ms) {
         throw Refusal(file + ": arbiter.lockout_ms", shortest(settings.arbiter.lockout_ms),

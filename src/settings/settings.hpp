@@ -4,10 +4,10 @@
 
 #include "arbiter/arbiter_settings.hpp"
 #include "base/channels.hpp"
+#include "control/control_settings.hpp"
 #include "detector/detector_settings.hpp"
 #include "intake/stream_settings.hpp"
 #include "journal/session_settings.hpp"
-#include "control/control_settings.hpp"
 #include "outputs/output_settings.hpp"
 #include "realtime/realtime_settings.hpp"
 

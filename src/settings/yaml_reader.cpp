@@ -70,7 +70,8 @@ void YamlReader::number(std::string_view key, double& value, Range range, std::s
     }
     double read = 0.0;
     // NaN and infinity are YAML numbers; the range check refuses both.
-    if (!node.IsScalar() || !YAML::convert<double>::decode(node, read) || !(read >= range.least && read <= range.most)) {
+    if (!node.IsScalar() || !YAML::convert<double>::decode(node, read) ||
+        !(read >= range.least && read <= range.most)) {
         throw Refusal(where(key, node), shown(node), allowed_range("a number", range));
     }
     value = read;

@@ -51,9 +51,7 @@ class YamlWriter {
     }
 
   private:
-    YAML::Emitter& entry(std::string_view key) {
-        return out_ << YAML::Key << std::string(key) << YAML::Value;
-    }
+    YAML::Emitter& entry(std::string_view key) { return out_ << YAML::Key << std::string(key) << YAML::Value; }
 
     YAML::Emitter& out_;
 };

@@ -1,7 +1,7 @@
 #include "sham/schedule.hpp"
 
-#include "base/refusal.hpp"
 #include "base/random.hpp"
+#include "base/refusal.hpp"
 
 #include <fmt/format.h>
 

@@ -1,5 +1,4 @@
 #include "base/osc_message.hpp"
-
 #include "base/refusal.hpp"
 
 #include <gtest/gtest.h>
@@ -41,7 +40,8 @@ TEST(OscMessage, EncodesTheSpecificationsSecondExample) {
 TEST(OscMessage, EveryCutOfAMessageIsRefusedAndNeverReadBeyond) {
     const auto whole = encode_osc("/gate", {std::string("immobile"), std::int32_t{1}}, "test");
     for (std::size_t length = 0; length < whole.size(); ++length) {
-        const Bytes cut(whole.begin(), whole.begin() + static_cast<std::ptrdiff_t>(length)); // exact size: sanitizers see an overrun
+        const Bytes cut(whole.begin(),
+                        whole.begin() + static_cast<std::ptrdiff_t>(length)); // exact size: sanitizers see an overrun
         OscMessage message;
         EXPECT_NE(decode_osc(cut, message), OscTrouble::none) << length;
     }

@@ -1,6 +1,5 @@
-#include "control/osc_commands.hpp"
-
 #include "base/osc_message.hpp"
+#include "control/osc_commands.hpp"
 
 #include <gtest/gtest.h>
 
@@ -18,8 +17,10 @@ TEST(OscCommands, TakesArmDisarmMarkAndGate) {
     const auto mark = osc.read(message("/mark", {std::string("lights off")}));
     EXPECT_EQ(mark.command->kind, CommandKind::mark);
     EXPECT_EQ(mark.command->words(), "lights off");
-    EXPECT_EQ(osc.read(message("/gate", {std::string("immobile"), std::int32_t{1}})).command->kind, CommandKind::open_gate);
-    EXPECT_EQ(osc.read(message("/gate", {std::string("immobile"), std::int32_t{0}})).command->kind, CommandKind::close_gate);
+    EXPECT_EQ(osc.read(message("/gate", {std::string("immobile"), std::int32_t{1}})).command->kind,
+              CommandKind::open_gate);
+    EXPECT_EQ(osc.read(message("/gate", {std::string("immobile"), std::int32_t{0}})).command->kind,
+              CommandKind::close_gate);
 }
 
 TEST(OscCommands, UnknownGateIsRefusedWithTheNearestName) {

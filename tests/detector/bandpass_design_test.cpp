@@ -1,6 +1,5 @@
-#include "detector/bandpass_design.hpp"
-
 #include "base/refusal.hpp"
+#include "detector/bandpass_design.hpp"
 #include "support/python.hpp"
 
 #include <gtest/gtest.h>
@@ -41,8 +40,8 @@ TEST(BandpassDesign, ButterworthFollowsItsFormulaFrom500HzTo50KHz) {
     }
 }
 
-// Group delay at the centre of a Butterworth band-pass of prototype order n: 1 / (pi BW sin(pi / 2n)), by the low-pass to
-// band-pass map; for 100 Hz: 3.2, 4.5, 6.4, 8.3 ms. The digital filter's band is warped, so the rate is high here.
+// Group delay at the centre of a Butterworth band-pass of prototype order n: 1 / (pi BW sin(pi / 2n)), by the low-pass
+// to band-pass map; for 100 Hz: 3.2, 4.5, 6.4, 8.3 ms. The digital filter's band is warped, so the rate is high here.
 TEST(BandpassDesign, ButterworthDelayAtTheCentreFollowsItsFormula) {
     for (int order = 1; order <= 4; ++order) {
         const auto filter = filter_of(FilterFamily::butterworth, order);
@@ -63,9 +62,10 @@ struct ScipyCase {
 // Reference: SciPy's butter, cheby2 and ellip as second-order sections, evaluated by sosfreqz. The elliptic prototype's
 // single precision shifts the steepest edges by a hair, hence its tolerance.
 TEST(BandpassDesign, EveryFamilyHasTheMagnitudeOfScipysDesign) {
-    const ScipyCase cases[] = {{FilterFamily::butterworth, "signal.butter(n, band, 'bandpass', fs=fs, output='sos')", 2e-5},
-                               {FilterFamily::chebyshev2, "signal.cheby2(n, 40, band, 'bandpass', fs=fs, output='sos')", 1e-4},
-                               {FilterFamily::elliptic, "signal.ellip(n, 0.5, 40, band, 'bandpass', fs=fs, output='sos')", 1e-3}};
+    const ScipyCase cases[] = {
+        {FilterFamily::butterworth, "signal.butter(n, band, 'bandpass', fs=fs, output='sos')", 2e-5},
+        {FilterFamily::chebyshev2, "signal.cheby2(n, 40, band, 'bandpass', fs=fs, output='sos')", 1e-4},
+        {FilterFamily::elliptic, "signal.ellip(n, 0.5, 40, band, 'bandpass', fs=fs, output='sos')", 1e-3}};
     std::string program = "import numpy as np\nfrom scipy import signal\nband = [150, 250]\n";
     for (const auto& each : cases) {
         program += "for n in [1, 2, 3, 4, 5, 8]:\n  for fs in [1250.0, 30000.0]:\n    sos = " + std::string(each.call) +

@@ -1,10 +1,8 @@
-#include "detector/detector.hpp"
-
 #include "base/refusal.hpp"
+#include "detector/detector.hpp"
 #include "support/signals.hpp"
 
 #include <gtest/gtest.h>
-
 #include <liquid/liquid.h>
 
 #include <algorithm>
@@ -130,8 +128,8 @@ TEST(Detector, GivesTheSameBitsAtAnyBlockSizeAndVectorWidthForEveryFilterEnvelop
 }
 
 // Reference: liquid-dsp's own second-order-section filter, fed with the same coefficients. It computes in single
-// precision; at 1250 Hz its error is far below a ten-thousandth of full scale. The rectified, unsmoothed envelope is the
-// magnitude of the filter's output.
+// precision; at 1250 Hz its error is far below a ten-thousandth of full scale. The rectified, unsmoothed envelope is
+// the magnitude of the filter's output.
 void compare_to_liquid(Hertz at_rate, double tolerance) {
     const std::size_t frames = 20000, channels = 3;
     DetectorSettings settings;
@@ -152,8 +150,8 @@ void compare_to_liquid(Hertz at_rate, double tolerance) {
                 a.push_back(static_cast<float>(value));
             }
         }
-        iirfilt_rrrf liquid = iirfilt_rrrf_create_sos(b.data(), a.data(),
-                                                     static_cast<unsigned>(detector.bandpass().sections.size()));
+        iirfilt_rrrf liquid =
+            iirfilt_rrrf_create_sos(b.data(), a.data(), static_cast<unsigned>(detector.bandpass().sections.size()));
         double worst = 0.0;
         for (std::size_t i = 0; i < frames; ++i) {
             float out = 0.0F;
@@ -190,7 +188,11 @@ TEST(Detector, EnvelopeOfBandNoiseFollowsTheRayleighLaw) {
             }
         }
     };
-    each_envelope([&](double value) { sum += value; squares += value * value; count += 1.0; });
+    each_envelope([&](double value) {
+        sum += value;
+        squares += value * value;
+        count += 1.0;
+    });
     const double mean = sum / count, sd = std::sqrt(squares / count - mean * mean);
     EXPECT_NEAR(sd / mean, 0.6551 / 1.2533, 0.01);
     double over = 0.0;
@@ -228,7 +230,8 @@ TEST(Detector, DoesNotCrossAgainBeforeTheEnvelopeFellBelowTheRearmLevel) {
     auto data = test::white_noise(20 * 1250, 1, 20.0, 5);
     // Two seconds of loud 200 Hz without a pause: one crossing.
     for (std::size_t i = 12 * 1250; i < 14 * 1250; ++i) {
-        data[i] += static_cast<float>(300.0 * std::sin(2.0 * std::numbers::pi * 200.0 * static_cast<double>(i) / rate.value));
+        data[i] +=
+            static_cast<float>(300.0 * std::sin(2.0 * std::numbers::pi * 200.0 * static_cast<double>(i) / rate.value));
     }
     auto detector = Detector::make(quick_settings(), ripple_channels(1), rate);
     EXPECT_EQ(run_whole(detector, data, 1, 64).crossings.size(), 1U);

@@ -1,4 +1,5 @@
-// The engine in a loop with an invented animal whose recording shows each pulse as an artefact a hundred times the signal.
+// The engine in a loop with an invented animal whose recording shows each pulse as an artefact a hundred times the
+// signal.
 #include "engine/engine.hpp"
 #include "synth/answering_animal.hpp"
 

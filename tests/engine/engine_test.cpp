@@ -1,5 +1,4 @@
 #include "engine/engine.hpp"
-
 #include "support/signals.hpp"
 
 #include <gtest/gtest.h>
@@ -149,8 +148,9 @@ TEST(Engine, PlaysAControlScheduleAtItsPlacesAndKeepsTheRules) {
     settings.arbiter.condition = Condition::schedule;
     Kept kept;
     // The first falls before the floor is settled, the third into the lock-out of the second, the fourth into a gap.
-    auto engine = engine_of(settings, 2, kept,
-                            {SampleIndex{1000}, SampleIndex{7000}, SampleIndex{7100}, SampleIndex{8005}, SampleIndex{9000}});
+    auto engine =
+        engine_of(settings, 2, kept,
+                  {SampleIndex{1000}, SampleIndex{7000}, SampleIndex{7100}, SampleIndex{8005}, SampleIndex{9000}});
     engine.start(SampleIndex{0}, true);
     const auto data = bursts();
     feed(engine, data, 0, 8000, 64);

@@ -1,5 +1,4 @@
 #include "live/live_loop.hpp"
-
 #include "outputs/silent_output.hpp"
 #include "support/allocation_guard.hpp"
 #include "support/signals.hpp"
@@ -23,7 +22,8 @@ struct ScriptedSource : SampleSource {
     PacketCounts packet_counts{};
     std::function<Received(std::size_t frame)> before = [](std::size_t) { return Received::frames; };
 
-    ScriptedSource(std::vector<float> samples, std::size_t channels) : data(std::move(samples)), channel_count(channels) {}
+    ScriptedSource(std::vector<float> samples, std::size_t channels)
+        : data(std::move(samples)), channel_count(channels) {}
 
     Received receive(Nanos /*timeout*/, Arrival& arrival) noexcept override {
         if (at * channel_count >= data.size()) {
@@ -84,8 +84,8 @@ struct Rig {
               DetectorSettings detector;
               detector.floor.settle_s = 2.0;
               detector.threshold.deviations = 6.0;
-              return Engine(Detector::make(detector, ripple_channels(2), rate), Arbiter::make(arbiter, rate), rate, sink,
-                            port);
+              return Engine(Detector::make(detector, ripple_channels(2), rate), Arbiter::make(arbiter, rate), rate,
+                            sink, port);
           }) {}
 
     static std::vector<float> bursts() {

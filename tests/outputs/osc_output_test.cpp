@@ -1,11 +1,9 @@
-#include "outputs/osc_output.hpp"
-
 #include "base/osc_message.hpp"
 #include "base/refusal.hpp"
-
-#include <gtest/gtest.h>
+#include "outputs/osc_output.hpp"
 
 #include <boost/asio/buffer.hpp>
+#include <gtest/gtest.h>
 
 namespace millpond {
 namespace {

@@ -1,18 +1,16 @@
-#include "outputs/pulse_line.hpp"
-
 #include "base/clock.hpp"
 #include "base/refusal.hpp"
+#include "outputs/pulse_line.hpp"
 #include "outputs/silent_output.hpp"
 
 #include <gtest/gtest.h>
 
 #include <csignal>
 #include <mutex>
-#include <thread>
-#include <vector>
-
 #include <sys/wait.h>
+#include <thread>
 #include <unistd.h>
+#include <vector>
 
 namespace millpond {
 namespace {

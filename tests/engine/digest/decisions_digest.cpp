@@ -1,5 +1,6 @@
-// Prints one line for each of many settings: a digest of every event that the engine emits over the same invented signal.
-// Compiled more than once, at different optimisation levels, by tests/CMakeLists.txt; a test compares what they print.
+// Prints one line for each of many settings: a digest of every event that the engine emits over the same invented
+// signal. Compiled more than once, at different optimisation levels, by tests/CMakeLists.txt; a test compares what they
+// print.
 #include "engine/engine.hpp"
 #include "support/signals.hpp"
 
@@ -33,11 +34,12 @@ void run(const DetectorSettings& detector, Hertz rate, KernelWidth width, const 
         test::add_burst(data, channels, second * per_second, per_second / 12, rate.value, 200.0, 400.0);
     }
     Digest digest;
-    Engine engine(Detector::make(detector, ripple_channels(channels), rate, width), Arbiter::make({}, rate), rate, digest,
-                  digest);
+    Engine engine(Detector::make(detector, ripple_channels(channels), rate, width), Arbiter::make({}, rate), rate,
+                  digest, digest);
     engine.start(SampleIndex{0}, true);
     engine.process(test::block_of(data, channels));
-    std::printf("%s at %g Hz: %016" PRIx64 ", %" PRIu64 " detections\n", name, rate.value, digest.value, digest.detections);
+    std::printf("%s at %g Hz: %016" PRIx64 ", %" PRIu64 " detections\n", name, rate.value, digest.value,
+                digest.detections);
 }
 
 } // namespace
