@@ -73,6 +73,9 @@ DryRun dry_run(const DryRunPlan& plan) {
     run.pulse_width_ms = settings.output.width_ms;
     notice_rate(settings, run.rate);
 
+    // The engine first: where a band does not fit the rate, the detector's is the one to name.
+    auto engine = OfflineEngine::make({settings.detector, settings.arbiter}, run.channels, run.rate,
+                                      schedule_for(settings.arbiter, run.rate), warm_start_floors(settings.detector));
     std::optional<Referee> referee;
     if (plan.labels.empty()) {
         run.referee_settings = plan.referee.empty() ? RefereeSettings{} : read_yaml_file<RefereeSettings>(plan.referee);
@@ -83,8 +86,6 @@ DryRun dry_run(const DryRunPlan& plan) {
         run.findings.ripples = ripples_from_table(plan.labels, run.rate, run.frames);
         run.truth = plan.labels.filename().string();
     }
-    auto engine = OfflineEngine::make({settings.detector, settings.arbiter}, run.channels, run.rate,
-                                      schedule_for(settings.arbiter, run.rate), warm_start_floors(settings.detector));
     engine.start(plan.armed);
     const auto took = run_over(*reader, plan.packet_frames, engine, referee ? &*referee : nullptr);
     run.real_pace = seconds_at(SampleIndex{run.frames}, run.rate) / std::chrono::duration<double>(took).count();
