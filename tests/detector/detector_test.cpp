@@ -17,9 +17,11 @@ constexpr Hertz rate{1250.0};
 
 DetectorSettings quick_settings() {
     DetectorSettings settings;
+    settings.filter.order = 2;
+    settings.envelope = {EnvelopeMethod::analytic, 4.0};
     settings.floor.settle_s = 2.0;
     settings.floor.time_constant_s = 5.0;
-    settings.threshold.deviations = 6.0; // white noise crosses 4 now and then
+    settings.threshold = {6.0, 2.0, 0.0}; // white noise crosses 4 now and then
     return settings;
 }
 

@@ -163,7 +163,7 @@ TEST(Grid, HoldsEveryCombinationAndKeepsTheReArmLevelBelowTheThreshold) {
     const auto candidates = candidates_of(grid, {});
     EXPECT_EQ(candidates.size(), 1U * 1U * 3U * 3U * 2U); // 260 to 250 Hz is no band
     EXPECT_EQ(candidates[0].threshold.rearm_deviations, 1.5);
-    EXPECT_EQ(candidates[1].threshold.rearm_deviations, 2.0);
+    EXPECT_EQ(candidates[1].threshold.rearm_deviations, ThresholdSettings{}.rearm_deviations);
 }
 
 TEST(TuneCommand, WritesSettingsThatADryRunTakesWithTheFiguresThatWerePromised) {
