@@ -179,7 +179,7 @@ void run_live(const LiveOptions& options) {
 
 void add_live_command(CLI::App& program) {
     auto* command = program.add_subcommand("live", "run a session: samples in, pulses out, everything journaled\n"
-                                                   "Samples must come at real pace, by a pipe too (ffmpeg: -re)");
+                                                   "Samples should come at real pace, by a pipe too (ffmpeg: -re)");
     auto options = std::make_shared<LiveOptions>();
     command->add_option("SETTINGS", options->settings_file, "settings file")->required();
     command->add_flag("--start-armed", options->start_armed,

@@ -122,7 +122,7 @@ template <class Visitor> void describe(Visitor& visit, VoteSettings& vote) {
 }
 
 struct VetoSettings {
-    double deviations = 6.0;
+    double deviations = 4.0;
     double window_ms = 20.0;
 
     bool operator==(const VetoSettings&) const = default;
