@@ -7,6 +7,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <cstdio>
 #include <numbers>
 #include <string>
 
@@ -21,6 +22,12 @@ double rounded(double value) {
     int exponent = 0;
     const double mantissa = std::frexp(value, &exponent);
     return std::ldexp(std::nearbyint(std::ldexp(mantissa, 40)), exponent - 40);
+}
+
+std::string in_hertz(double value) {
+    char text[32];
+    std::snprintf(text, sizeof text, "%g Hz", value);
+    return text;
 }
 
 struct Prototype {
@@ -44,7 +51,7 @@ Prototype prototype_of(const FilterSettings& settings) {
     liquid_float_complex gain{};
     const double pass_gain = std::pow(10.0, -settings.passband_ripple_db / 20.0);
     const double stop_gain = std::pow(10.0, -settings.stopband_db / 20.0);
-    const std::size_t finite_zeros = 2 * (order / 2);
+    const std::size_t finite_zeros = std::size_t{2} * (order / 2);
     switch (settings.family) {
     case FilterFamily::butterworth:
         butter_azpkf(order, zeros.data(), poles.data(), &gain);
@@ -246,11 +253,11 @@ std::size_t BandpassDesign::settle_samples() const {
 
 BandpassDesign design_bandpass(const FilterSettings& settings, Hertz rate, const std::string& where) {
     if (settings.low_hz >= settings.high_hz) {
-        throw Refusal(where + ".low_hz", std::to_string(settings.low_hz), "less than high_hz");
+        throw Refusal(where + ".low_hz", in_hertz(settings.low_hz), "less than high_hz");
     }
     if (settings.high_hz >= rate.value / 2.0) {
-        throw Refusal(where + ".high_hz", std::to_string(settings.high_hz),
-                      "less than half the rate, " + std::to_string(rate.value / 2.0));
+        throw Refusal(where + ".high_hz", in_hertz(settings.high_hz),
+                      "less than half the rate, " + in_hertz(rate.value / 2.0));
     }
     if (settings.family == FilterFamily::elliptic && settings.passband_ripple_db >= settings.stopband_db) {
         throw Refusal(where + ".passband_ripple_db", std::to_string(settings.passband_ripple_db),

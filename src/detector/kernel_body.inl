@@ -12,6 +12,7 @@ using Words = std::int64_t __attribute__((vector_size(MILLPOND_LANES * sizeof(st
 constexpr std::size_t width = MILLPOND_LANES;
 constexpr std::size_t vectors_in_group = lane_group / width;
 
+// NOLINTNEXTLINE(readability-non-const-parameter): what it returns is written to.
 inline Doubles& at(double* values, std::size_t lane) {
     return *reinterpret_cast<Doubles*>(values + lane);
 }

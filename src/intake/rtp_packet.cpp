@@ -134,7 +134,7 @@ std::size_t write_rtp_header(const RtpPacket& packet, std::uint8_t send_time_id,
     if (with_send_time) {
         write_big_endian(bytes, 12, one_byte_profile);
         write_big_endian(bytes, 14, std::uint16_t{3}); // words: one header byte, eight of time, three of padding
-        bytes[16] = static_cast<std::uint8_t>((send_time_id * 16U) | (ntp_bytes - 1));
+        bytes[16] = static_cast<std::uint8_t>((std::size_t{send_time_id} << 4U) | (ntp_bytes - 1));
         write_big_endian(bytes, 17, packet.send_time_ntp);
         std::fill_n(bytes.begin() + 25, 3, std::uint8_t{0});
     }

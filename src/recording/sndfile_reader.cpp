@@ -131,7 +131,7 @@ class SndfileReader : public RecordingReader {
                           "rate_hz, channel_count and encoding in " + sidecar_name);
         }
         const int sample_bytes = sidecar.encoding == Encoding::float32 ? 4 : integer_bits(sidecar.encoding) / 8;
-        const auto frame_bytes = static_cast<std::uint64_t>(sample_bytes * channels);
+        const auto frame_bytes = static_cast<std::uint64_t>(sample_bytes) * static_cast<std::uint64_t>(channels);
         if (const auto bytes = std::filesystem::file_size(recording_); bytes % frame_bytes != 0) {
             throw Refusal(
                 recording_.string(), fmt::format("{} bytes", bytes),
