@@ -65,6 +65,7 @@ std::vector<FloorDetail> last_floors(std::span<const Event> events) {
         }
     }
     std::vector<FloorDetail> floors;
+    floors.reserve(newest.size());
     for (const auto& [site, floor] : newest) {
         floors.push_back(floor);
     }

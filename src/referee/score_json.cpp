@@ -24,11 +24,11 @@ Json json_of(double figure) {
     return std::isfinite(figure) ? Json(figure) : Json(nullptr);
 }
 
-Json json_of(const Proportion& part) {
-    return {{"share", json_of(part.share)},
-            {"count", part.count},
-            {"of", part.of},
-            {"interval_95", Json::array({json_of(part.low), json_of(part.high)})}};
+Json json_of(const Proportion& proportion) {
+    return {{"share", json_of(proportion.share)},
+            {"count", proportion.count},
+            {"of", proportion.of},
+            {"interval_95", Json::array({json_of(proportion.low), json_of(proportion.high)})}};
 }
 
 Json json_of(const Distribution& values) {

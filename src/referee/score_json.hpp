@@ -13,7 +13,7 @@ using Json = nlohmann::ordered_json;
 /// Null where a figure is not known.
 [[nodiscard]] Json json_of(double figure);
 [[nodiscard]] Json json_of(const Proportion& proportion);
-[[nodiscard]] Json json_of(const Distribution& distribution);
+[[nodiscard]] Json json_of(const Distribution& values);
 [[nodiscard]] Json json_of(const Bins& bins);
 [[nodiscard]] Json json_of(const RefereeSettings& settings);
 /// All figures, without the outcome of each detection and ripple.
