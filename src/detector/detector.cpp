@@ -9,9 +9,6 @@
 namespace millpond {
 namespace {
 
-// A deviation is the running mean distance from the mean, scaled so that a Gaussian law's is its SD.
-constexpr double deviation_per_spread = 1.2533141373155003;
-
 // Numbers below 1e-308 count as zero while the kernel runs: a flat channel would otherwise slow it a hundredfold. Set
 // here, not by the thread, so that every command computes the same.
 class TinyIsZero {

@@ -9,8 +9,6 @@
 namespace millpond {
 namespace {
 
-constexpr double deviation_per_spread = 1.2533141373155003;
-
 KernelWidth widest_here() noexcept {
     if (__builtin_cpu_supports("avx512f") != 0 && __builtin_cpu_supports("avx512dq") != 0) {
         return KernelWidth::avx512;
