@@ -1,28 +1,12 @@
 #include "detector/detector.hpp"
 
 #include "detector/detector_state.hpp"
+#include "detector/tiny_is_zero.hpp"
 
 #include <algorithm>
 #include <cmath>
-#include <xmmintrin.h>
 
 namespace millpond {
-namespace {
-
-// Numbers below 1e-308 count as zero while the kernel runs: a flat channel would otherwise slow it a hundredfold. Set
-// here, not by the thread, so that every command computes the same.
-class TinyIsZero {
-  public:
-    TinyIsZero() noexcept : before_(_mm_getcsr()) { _mm_setcsr(before_ | 0x8040U); }
-    ~TinyIsZero() { _mm_setcsr(before_); }
-    TinyIsZero(const TinyIsZero&) = delete;
-    TinyIsZero& operator=(const TinyIsZero&) = delete;
-
-  private:
-    unsigned before_;
-};
-
-} // namespace
 
 Detector::Detector(std::unique_ptr<State> state) noexcept : state_(std::move(state)) {}
 Detector::Detector(Detector&&) noexcept = default;
@@ -46,6 +30,24 @@ std::size_t Detector::run(const FrameBlock& block, std::optional<Crossing>& cros
         }
     }
     return used;
+}
+
+void Detector::envelopes(const FrameBlock& block, std::span<double> out) noexcept {
+    const TinyIsZero tiny_is_zero;
+    auto& s = *state_;
+    KernelOrder order;
+    order.frames = block.data.data();
+    order.count = block.frames();
+    order.method = s.method;
+    order.resume = s.resume;
+    order.envelopes = out.data();
+    s.kernel(s.lanes, order);
+    s.resume = s.resume && order.count == 0;
+    s.position += order.count;
+}
+
+std::size_t Detector::envelope_stride() const noexcept {
+    return state_->lanes.lanes;
 }
 
 std::size_t Detector::State::skip_blanked(std::size_t frames) noexcept {

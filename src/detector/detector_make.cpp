@@ -49,7 +49,9 @@ double quadrature_at(Hertz centre, Hertz rate) {
     return std::ldexp(std::nearbyint(std::ldexp((warped - 1.0) / (warped + 1.0), 40)), -40);
 }
 
-void check(const DetectorSettings& settings, const Channels& channels, const std::string& where) {
+} // namespace
+
+void check_detector(const DetectorSettings& settings, const Channels& channels, const std::string& where) {
     const auto ripple_sites = std::count_if(channels.begin(), channels.end(),
                                             [](const auto& channel) { return channel.role == ChannelRole::ripple; });
     if (ripple_sites == 0) {
@@ -65,11 +67,9 @@ void check(const DetectorSettings& settings, const Channels& channels, const std
     }
 }
 
-} // namespace
-
 Detector Detector::make(const DetectorSettings& settings, const Channels& channels, Hertz rate, KernelWidth width,
                         const std::string& where) {
-    check(settings, channels, where);
+    check_detector(settings, channels, where);
     auto state = std::make_unique<State>();
     state->settings = settings;
     state->rate = rate;

@@ -12,9 +12,6 @@
 
 namespace millpond {
 
-/// A deviation is the running mean distance from the mean, scaled so that a Gaussian law's is its SD.
-inline constexpr double deviation_per_spread = 1.2533141373155003;
-
 /// Zeroed memory on a cache line's boundary, as the kernel wants it.
 template <class Value> class Lanes {
   public:
