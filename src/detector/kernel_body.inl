@@ -153,11 +153,10 @@ inline void envelopes_of_frame(KernelState& state, const float* frame, bool whol
     }
 }
 
-template <KernelEnvelope method> inline void envelope_of_every_lane(KernelState& state, const KernelOrder& order,
-                                                                    std::size_t frame_of_order, const float* frame,
-                                                                    bool resume) {
-    const bool whole_vectors =
-        state.in_stream_order && (order.count - frame_of_order) * state.channels >= state.lanes;
+template <KernelEnvelope method>
+inline void envelope_of_every_lane(KernelState& state, const KernelOrder& order, std::size_t frame_of_order,
+                                   const float* frame, bool resume) {
+    const bool whole_vectors = state.in_stream_order && (order.count - frame_of_order) * state.channels >= state.lanes;
     envelopes_of_frame<method>(state, frame, whole_vectors, resume);
     if (state.mean_weight != nullptr) {
         state.envelope[state.channel_lanes] = mean_of_sites(state);

@@ -45,8 +45,8 @@ void FloorBatch::fill(std::size_t lane, const DetectorSettings& settings, Hertz 
     setting.veto_window = frames_in_ms(settings.veto.window_ms, rate);
     setting.settle = frames_in_ms(settings.floor.settle_s * 1000.0, rate);
     state_.clip[lane] = settings.floor.clip_deviations * deviation_per_spread;
-    state_.most_frames[lane] = static_cast<double>(
-        std::max<std::uint64_t>(frames_in_ms(settings.floor.time_constant_s * 1000.0, rate), 1));
+    state_.most_frames[lane] =
+        static_cast<double>(std::max<std::uint64_t>(frames_in_ms(settings.floor.time_constant_s * 1000.0, rate), 1));
     state_.needed[lane] = settings.vote.rule == VoteRule::mean ? 1 : settings.vote.sites_needed;
     for (auto& column : state_.voting) {
         column.above[lane] = settings.threshold.deviations * deviation_per_spread;

@@ -40,8 +40,7 @@ template <class Doubles, class Words>
 }
 
 // A floor in its first time constant weighs a frame as much as each before it.
-template <class Doubles, class Words>
-[[gnu::always_inline]] inline void next_weight(BatchState& state, std::size_t i) {
+template <class Doubles, class Words> [[gnu::always_inline]] inline void next_weight(BatchState& state, std::size_t i) {
     const Words active = at<Words>(state.active, i);
     Doubles& frames = at<Doubles>(state.frames, i);
     const Doubles most = at<Doubles>(state.most_frames, i);
@@ -98,8 +97,8 @@ template <class Vectors>
 }
 
 [[gnu::target("avx512f,avx512dq")]] std::size_t walk_avx512(BatchState& state, const double* envelopes,
-                                                            std::size_t values, std::size_t count,
-                                                            std::uint64_t first, bool& due) {
+                                                            std::size_t values, std::size_t count, std::uint64_t first,
+                                                            bool& due) {
     return walk<VectorsOf8>(state, envelopes, values, count, first, due);
 }
 [[gnu::target("avx2")]] std::size_t walk_avx2(BatchState& state, const double* envelopes, std::size_t values,

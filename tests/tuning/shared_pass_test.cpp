@@ -28,9 +28,8 @@ struct Trial {
         const auto more = test::white_noise(frames, 3, 10.0, 7);
         for (std::size_t f = 0; f < frames; ++f) {
             const float burst = f % 9001 < 60 ? 6.0F : 1.0F; // loud on all: the reference vetoes
-            data.insert(data.end(),
-                        {recording.data[2 * f], recording.data[2 * f + 1] * burst, std::nanf(""),
-                         recording.data[2 * f] * 0.7F + more[3 * f], more[3 * f + 2] * burst});
+            data.insert(data.end(), {recording.data[2 * f], recording.data[2 * f + 1] * burst, std::nanf(""),
+                                     recording.data[2 * f] * 0.7F + more[3 * f], more[3 * f + 2] * burst});
         }
     }
     [[nodiscard]] std::size_t frames() const { return data.size() / channels.size(); }
@@ -41,13 +40,13 @@ struct Trial {
     }
     [[nodiscard]] Trial with_gaps() const {
         auto other = *this;
-        other.lose(0, 3);                        // before the first frame
-        other.lose(700, 40);                     // in the floor's first second
-        other.lose(12499, 1);                    // up to a whole second, where floors are journaled
-        other.lose(20000, 1);                    // one frame
-        other.lose(23750, 1250, 4);              // a whole second, of the reference alone
-        other.lose(30010, 2500);                 // across two
-        other.lose(other.frames() - 5, 5, 1);    // to the end
+        other.lose(0, 3);                     // before the first frame
+        other.lose(700, 40);                  // in the floor's first second
+        other.lose(12499, 1);                 // up to a whole second, where floors are journaled
+        other.lose(20000, 1);                 // one frame
+        other.lose(23750, 1250, 4);           // a whole second, of the reference alone
+        other.lose(30010, 2500);              // across two
+        other.lose(other.frames() - 5, 5, 1); // to the end
         for (std::size_t f = 40000; f < 40400; f += 7) {
             other.lose(f, 2, 3); // frames between gaps never settle
         }
@@ -75,11 +74,11 @@ Expected engine_without_pulses(const Trial& trial, const DetectorSettings& setti
     rules.blanking_ms = settings.blanking_ms; // no trigger: it blanks nothing
     expected.eligible = eligible_time(engine.events(), rules, rate, SampleIndex{0}, engine.next_sample());
     for (const auto& event : engine.events()) {
-        expected.refused_by_detector += event.kind == EventKind::withheld &&
-                                                (event.code == static_cast<int>(Rule::gap) ||
-                                                 event.code == static_cast<int>(Rule::veto))
-                                            ? 1
-                                            : 0;
+        expected.refused_by_detector +=
+            event.kind == EventKind::withheld &&
+                    (event.code == static_cast<int>(Rule::gap) || event.code == static_cast<int>(Rule::veto))
+                ? 1
+                : 0;
     }
     return expected;
 }
