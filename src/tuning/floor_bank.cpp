@@ -62,8 +62,17 @@ void FloorBank::gap(SampleIndex resumes_at) noexcept {
 
 void FloorBank::take(SampleIndex first, std::span<const double> statistics, std::size_t values) {
     const TinyIsZero tiny_is_zero;
+    const std::size_t frames = statistics.size() / values;
+    highest_.assign((frames / stride_frames + 1) * values, 0.0);
+    for (std::size_t frame = 0; frame < frames; ++frame) {
+        double* const highest = highest_.data() + frame / stride_frames * values;
+        for (std::size_t i = 0; i < values; ++i) {
+            const double value = statistics[frame * values + i];
+            highest[i] = value > highest[i] ? value : highest[i];
+        }
+    }
     for (auto& batch : batches_) {
-        batch.floors.take(first.value, statistics.data(), values, statistics.size() / values);
+        batch.floors.take(first.value, {statistics.data(), highest_.data(), values, frames});
     }
 }
 

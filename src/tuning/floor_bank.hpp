@@ -22,6 +22,7 @@ class FloorBank : public CrossingRule {
         FloorBatch floors;
     };
     std::vector<Batch> batches_;
+    std::vector<double> highest_; // EnvelopeBlock::highest
     std::size_t settings_ = 0;
 };
 

@@ -9,6 +9,7 @@ namespace {
 
 constexpr std::int64_t yes = -1, no = 0;
 constexpr std::int64_t never = -1;
+constexpr double beyond_all = 1e6; // spreads; for lanes without a setting
 
 std::vector<ColumnFloor> floors_of(const std::vector<std::size_t>& columns) {
     std::vector<ColumnFloor> floors(columns.size());
@@ -33,6 +34,13 @@ FloorBatch::FloorBatch(std::span<const DetectorSettings> settings, const Envelop
     state_.references = floors_of(columns.references);
     state_.needed.values.fill(INT64_MAX); // lanes without a setting never cross
     state_.newest_reference.values.fill(never);
+    state_.clip.values.fill(beyond_all);
+    for (auto* floors : {&state_.voting, &state_.references}) {
+        for (auto& column : *floors) {
+            column.waited_for.values.fill(beyond_all);
+            column.quiet.values.fill(beyond_all);
+        }
+    }
     for (std::size_t lane = 0; lane < settings.size(); ++lane) {
         fill(lane, settings[lane], rate);
     }
@@ -47,19 +55,24 @@ void FloorBatch::fill(std::size_t lane, const DetectorSettings& settings, Hertz 
     state_.clip[lane] = settings.floor.clip_deviations * deviation_per_spread;
     state_.most_frames[lane] =
         static_cast<double>(std::max<std::uint64_t>(frames_in_ms(settings.floor.time_constant_s * 1000.0, rate), 1));
+    setting.last_weight = 1.0 / (state_.most_frames[lane] + 1.0);
     state_.needed[lane] = settings.vote.rule == VoteRule::mean ? 1 : settings.vote.sites_needed;
     for (auto& column : state_.voting) {
         column.above[lane] = settings.threshold.deviations * deviation_per_spread;
         column.rearm[lane] = settings.threshold.rearm_deviations * deviation_per_spread;
+        column.waited_for[lane] = column.above[lane];
+        column.quiet[lane] = std::min(column.above[lane], state_.clip[lane]);
     }
     for (auto& column : state_.references) {
-        column.above[lane] = settings.veto.deviations * deviation_per_spread;
+        column.above[lane] = column.waited_for[lane] = settings.veto.deviations * deviation_per_spread;
+        column.quiet[lane] = std::min(column.above[lane], state_.clip[lane]);
     }
 }
 
 void FloorBatch::gap(std::uint64_t resumes_at) noexcept {
     settling_until_ = resumes_at + filter_settle_;
     state_.counting.values.fill(no);
+    state_.any_counting = false;
     for (auto& setting : settings_) {
         setting.above_run = 0;
     }
@@ -77,7 +90,7 @@ void FloorBatch::set_active(std::uint64_t position) noexcept {
         const bool active = start_.done() && position >= still_until;
         state_.active[lane] = active ? yes : no;
         if (!state_.warming) {
-            state_.weight[lane] = active ? 1.0 / (state_.most_frames[lane] + 1.0) : 0.0;
+            state_.weight[lane] = active ? settings_[lane].last_weight : 0.0;
         }
         if (position < still_until) {
             next_change_ = std::min(next_change_, still_until);
@@ -85,15 +98,15 @@ void FloorBatch::set_active(std::uint64_t position) noexcept {
     }
 }
 
-void FloorBatch::take(std::uint64_t first, const double* envelopes, std::size_t values, std::size_t count) {
-    std::size_t done = start_.done() ? 0 : begin(first, envelopes, values, count);
-    while (done < count) {
+void FloorBatch::take(std::uint64_t first, const EnvelopeBlock& block) {
+    std::size_t done = start_.done() ? 0 : begin(first, block);
+    while (done < block.frames) {
         const std::uint64_t position = first + done;
         if (position >= next_change_) {
             set_active(position);
         }
         bool due = false;
-        done += walk_batch(state_, envelopes + done * values, values, stretch(position, count - done), position, due);
+        done += walk_batch(state_, block, done, done + stretch(position, block.frames - done), first, due);
         if (due) {
             decide(first + done - 1);
         }
@@ -113,12 +126,12 @@ std::size_t FloorBatch::stretch(std::uint64_t position, std::size_t count) const
 }
 
 // The floor's start: it looks at envelopes, nothing is decided. Returns the frames it took.
-std::size_t FloorBatch::begin(std::uint64_t first, const double* envelopes, std::size_t values, std::size_t count) {
-    std::vector<double> mean(values), spread(values);
-    for (std::size_t frame = 0; frame < count; ++frame, envelopes += values) {
+std::size_t FloorBatch::begin(std::uint64_t first, const EnvelopeBlock& block) {
+    std::vector<double> mean(block.values), spread(block.values);
+    for (std::size_t frame = 0; frame < block.frames; ++frame) {
         bool due = false;
-        walk_batch(state_, envelopes, values, 1, first + frame, due); // a reference counts from its first frame on
-        if (first + frame < settling_until_ || !start_.take(envelopes)) {
+        walk_batch(state_, block, frame, frame + 1, first, due); // a reference counts from its first frame on
+        if (first + frame < settling_until_ || !start_.take(block.envelopes + frame * block.values)) {
             continue;
         }
         start_.read(mean.data(), spread.data());
@@ -135,35 +148,55 @@ std::size_t FloorBatch::begin(std::uint64_t first, const double* envelopes, std:
         }
         return frame + 1;
     }
-    return count;
+    return block.frames;
 }
 
 // After the last frame walked, at `position`: some setting crossed, re-armed or counts how long it is above.
 void FloorBatch::decide(std::uint64_t position) {
+    bool crossed = false;
+    state_.any_counting = state_.any_spent = false;
     for (std::size_t lane = 0; lane < settings_.size(); ++lane) {
-        auto& setting = settings_[lane];
         if (state_.spent[lane] != no) {
-            state_.spent[lane] = state_.rearm_votes[lane] >= state_.needed[lane] ? yes : no;
-            continue;
+            if (state_.rearm_votes[lane] < state_.needed[lane]) {
+                set_spent(lane, no);
+            }
+        } else if (state_.votes[lane] >= state_.needed[lane] || state_.counting[lane] != no) {
+            crossed = count_above(lane, position) || crossed;
         }
-        setting.above_run = state_.votes[lane] >= state_.needed[lane] ? setting.above_run + 1 : 0;
-        state_.counting[lane] = setting.above_run > 0 ? yes : no;
-        if (setting.above_run < setting.min_above) {
-            continue;
-        }
-        setting.above_run = 0;
-        state_.counting[lane] = no;
-        state_.spent[lane] = yes;
-        setting.frozen_until = std::max(setting.frozen_until, position + 1 + setting.freeze);
-        const auto reference = state_.newest_reference[lane];
-        const bool vetoed =
-            reference != never && position - static_cast<std::uint64_t>(reference) <= setting.veto_window;
-        const bool unsettled = state_.warming && state_.frames[lane] < static_cast<double>(setting.settle);
-        if (position >= settling_until_ && !unsettled && !vetoed) {
-            found_[lane].places.push_back(SampleIndex{position});
-        }
+        state_.any_counting = state_.any_counting || state_.counting[lane] != no;
+        state_.any_spent = state_.any_spent || state_.spent[lane] != no;
     }
-    set_active(position + 1);
+    if (crossed) {
+        set_active(position + 1); // what crossed stands still for a while
+    }
+}
+
+// True where the crossing is due.
+bool FloorBatch::count_above(std::size_t lane, std::uint64_t position) {
+    auto& setting = settings_[lane];
+    setting.above_run = state_.votes[lane] >= state_.needed[lane] ? setting.above_run + 1 : 0;
+    if (setting.above_run < setting.min_above) {
+        state_.counting[lane] = setting.above_run > 0 ? yes : no;
+        return false;
+    }
+    setting.above_run = 0;
+    state_.counting[lane] = no;
+    set_spent(lane, yes);
+    setting.frozen_until = std::max(setting.frozen_until, position + 1 + setting.freeze);
+    const auto reference = state_.newest_reference[lane];
+    const bool vetoed = reference != never && position - static_cast<std::uint64_t>(reference) <= setting.veto_window;
+    const bool unsettled = state_.warming && state_.frames[lane] < static_cast<double>(setting.settle);
+    if (position >= settling_until_ && !unsettled && !vetoed) {
+        found_[lane].places.push_back(SampleIndex{position});
+    }
+    return true;
+}
+
+void FloorBatch::set_spent(std::size_t lane, std::int64_t spent) noexcept {
+    state_.spent[lane] = spent;
+    for (auto& column : state_.voting) {
+        column.waited_for[lane] = spent != no ? column.rearm[lane] : column.above[lane];
+    }
 }
 
 // The journal says once a second whether a floor has settled. Once all have, and weights stay, nothing is counted.

@@ -25,6 +25,9 @@ struct ColumnFloor {
     std::size_t column = 0;
     BatchOf<double> mean, spread;
     BatchOf<double> above, rearm; ///< in spreads above the mean
+    BatchOf<double> waited_for;   ///< the one of the two that says when there is something to decide
+    BatchOf<double> quiet;        ///< the lower of that one and the clip: below it nothing happens but averaging
+    BatchOf<double> next_mean, next_spread;
 };
 
 /// What the inner loop reads and writes. Masks are all ones or zero.
@@ -41,12 +44,24 @@ struct BatchState {
     BatchOf<std::int64_t> newest_reference;
     BatchOf<std::int64_t> votes, rearm_votes; ///< of the last frame worked through
     bool warming = true;                      ///< weights still change from frame to frame
+    bool any_counting = false, any_spent = false;
 };
 
-/// Works through at most `count` frames of `values` numbers each; stops after the first at which a setting has
-/// something to decide. Returns the frames worked through; `due` is false where all went by without.
-std::size_t walk_batch(BatchState& state, const double* envelopes, std::size_t values, std::size_t count,
-                       std::uint64_t first, bool& due) noexcept;
+/// Frames that are tried at once; `EnvelopeBlock::highest` has one row for each.
+inline constexpr std::size_t stride_frames = 8;
+
+/// A block of envelopes, `values` numbers a frame, and the highest of each number over every whole stride.
+struct EnvelopeBlock {
+    const double* envelopes = nullptr;
+    const double* highest = nullptr;
+    std::size_t values = 0, frames = 0;
+};
+
+/// Works through the block's frames from `from` up to `to`; stops after the first at which a setting has something to
+/// decide. `place`: that of the block's first frame. Returns the frames worked through; `due` is false where all went
+/// by without.
+std::size_t walk_batch(BatchState& state, const EnvelopeBlock& block, std::size_t from, std::size_t to,
+                       std::uint64_t place, bool& due) noexcept;
 
 /// Where each setting's numbers stand in a frame of envelopes.
 struct EnvelopeColumns {
@@ -61,7 +76,7 @@ class FloorBatch {
                std::uint64_t filter_settle_frames);
 
     void gap(std::uint64_t resumes_at) noexcept;
-    void take(std::uint64_t first, const double* envelopes, std::size_t values, std::size_t count);
+    void take(std::uint64_t first, const EnvelopeBlock& block);
     [[nodiscard]] std::vector<Detections>& detections() noexcept { return found_; }
 
     /// Frames of the floor's start: settings of one batch share them.
@@ -71,13 +86,16 @@ class FloorBatch {
     struct Setting {
         std::uint64_t freeze = 0, min_above = 1, veto_window = 0, settle = 0;
         std::uint64_t frozen_until = 0, above_run = 0;
+        double last_weight = 0.0; ///< of a frame, once the floor's first time constant is over
     };
 
     void fill(std::size_t lane, const DetectorSettings& settings, Hertz rate);
     [[nodiscard]] std::size_t stretch(std::uint64_t position, std::size_t count) const noexcept;
-    std::size_t begin(std::uint64_t first, const double* envelopes, std::size_t values, std::size_t count);
+    std::size_t begin(std::uint64_t first, const EnvelopeBlock& block);
     void set_active(std::uint64_t position) noexcept;
     void decide(std::uint64_t position);
+    bool count_above(std::size_t lane, std::uint64_t position);
+    void set_spent(std::size_t lane, std::int64_t spent) noexcept;
     void look_at_clock(std::uint64_t position) noexcept;
 
     BatchState state_;
