@@ -114,6 +114,8 @@ class Detector {
     /// detector does one or the other. Thread: one, cold.
     void envelopes(const FrameBlock& block, std::span<double> out) noexcept;
     [[nodiscard]] std::size_t envelope_stride() const noexcept;
+    /// Features of the evidence that have something to look at; the first ones of that stride. 0 with method envelope.
+    [[nodiscard]] std::size_t feature_count() const noexcept;
 
     /// Watches every frame's envelopes, for pictures and tests; slow, never in a live session. Empty: nobody watches.
     /// Called with the frame's place and one envelope for each looked-at channel or feature, then the sum's, if any
