@@ -6,10 +6,13 @@
 #include "recording/events_table.hpp"
 #include "recording/recording_writer.hpp"
 #include "settings/yaml_reader.hpp"
+#include "synth/named_scenes.hpp"
 #include "synth/scene.hpp"
 
 #include <fmt/format.h>
 
+#include <algorithm>
+#include <cmath>
 #include <cstdio>
 
 namespace millpond {
@@ -27,7 +30,7 @@ template <class Visitor> void describe(Visitor& visit, StorageSettings& storage)
 
 struct SynthRequest {
     std::string recording;
-    std::string scene_file;
+    std::string scene;
     bool overwrite = false;
     DescribedOptions scene_options;
     DescribedOptions storage_options;
@@ -52,10 +55,27 @@ TableEvent event_of(const RippleTruth& ripple, Hertz rate) {
     return event;
 }
 
+/// States and artefacts, so that a gate or a false detection can be looked up.
+TableEvent event_of(const Happening& happening, const Scene& scene) {
+    const double last_s = static_cast<double>(scene.frames()) / scene.rate().value;
+    TableEvent event;
+    event.onset_s = happening.onset_s;
+    event.duration_s = std::min(happening.end_s, last_s) - happening.onset_s;
+    event.trial_type = happening.kind;
+    event.sample = static_cast<std::int64_t>(std::ceil(happening.onset_s * scene.rate().value));
+    return event;
+}
+
 void write_truth(const std::filesystem::path& file, const Scene& scene) {
     std::vector<TableEvent> events;
     for (const auto& ripple : scene.truth()) {
         events.push_back(event_of(ripple, scene.rate()));
+    }
+    const double last_s = static_cast<double>(scene.frames()) / scene.rate().value;
+    for (const auto& happening : scene.happenings()) {
+        if (happening.onset_s < last_s) {
+            events.push_back(event_of(happening, scene));
+        }
     }
     write_events_table(file, std::move(events), {"peak_sample", "end_sample", "amplitude_uv", "frequency_hz"});
 }
@@ -69,9 +89,19 @@ void write_samples(RecordingWriter& writer, Scene& scene) {
     }
 }
 
+/// A name comes before a file of that name.
+SceneSettings scene_called(const std::string& scene) {
+    if (scene.empty()) {
+        return {};
+    }
+    const auto* named = std::find_if(std::begin(scene_names), std::end(scene_names),
+                                     [&](const auto& choice) { return choice.word == scene; });
+    return named == std::end(scene_names) ? read_yaml_file<SceneSettings>(scene) : named_scene(named->value);
+}
+
 void run_synth(const SynthRequest& request) {
     const std::filesystem::path recording = request.recording;
-    auto settings = request.scene_file.empty() ? SceneSettings{} : read_yaml_file<SceneSettings>(request.scene_file);
+    auto settings = scene_called(request.scene);
     request.scene_options.apply(settings);
     StorageSettings storage;
     request.storage_options.apply(storage);
@@ -80,7 +110,7 @@ void run_synth(const SynthRequest& request) {
             refuse_existing(file);
         }
     }
-    auto scene = Scene::make(settings, request.scene_file.empty() ? "command line" : request.scene_file);
+    auto scene = Scene::make(settings, request.scene.empty() ? "command line" : request.scene);
     RecordingWriter writer(recording,
                            {container_for(recording), storage.encoding, storage.microvolts_per_count, WriteMode::whole},
                            scene.channels(), scene.rate(), request.overwrite);
@@ -104,7 +134,9 @@ void add_synth_command(CLI::App& program) {
         "synth", "make an invented recording with known ripples, its sidecar and a table of the truth");
     const auto request = std::make_shared<SynthRequest>();
     command->add_option("RECORDING", request->recording, "file to make: .wav, .rf64, .w64, .flac or .raw")->required();
-    command->add_option("--scene", request->scene_file, "settings of the scene (YAML); options override it");
+    command->add_option(
+        "--scene", request->scene,
+        "quiet, typical, hard or running, or a file with settings of a scene (YAML); options override it");
     command->add_flag("--overwrite", request->overwrite, "replace a recording of that name");
     request->storage_options.declare(*command, StorageSettings{});
     request->scene_options.declare(*command, SceneSettings{});

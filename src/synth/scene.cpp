@@ -3,8 +3,12 @@
 #include "base/refusal.hpp"
 #include "synth/artefacts.hpp"
 #include "synth/background.hpp"
+#include "synth/faults.hpp"
+#include "synth/gamma.hpp"
 #include "synth/rhythms.hpp"
+#include "synth/spikes.hpp"
 
+#include <algorithm>
 #include <cmath>
 
 namespace millpond {
@@ -18,6 +22,27 @@ void check(const SceneSettings& settings, const std::string& where) {
         }
     };
     const double busy_s = (ripples.duration_ms + ripples.min_gap_ms) / 1000.0;
+    const auto& bursts = settings.spike_bursts;
+    const auto& artefacts = settings.artefacts;
+    const auto in_order = [&](const char* key, double least, double most) {
+        refuse_unless(least <= most, key, std::to_string(least), "at most its largest, here " + std::to_string(most));
+    };
+    in_order("ripples.doublet_least_ms", ripples.doublet_least_ms, ripples.doublet_most_ms);
+    in_order("gamma.low_hz", settings.gamma.low_hz, settings.gamma.high_hz);
+    in_order("spike_bursts.least_spikes", bursts.least_spikes, bursts.most_spikes);
+    in_order("spike_bursts.least_interval_ms", bursts.least_interval_ms, bursts.most_interval_ms);
+    in_order("artefacts.spike_least_ms", artefacts.spike_least_ms, artefacts.spike_most_ms);
+    const auto is_a_site = [&](const char* key, int site) {
+        refuse_unless(site <= settings.sites, key, std::to_string(site),
+                      "a site, here 1 to " + std::to_string(settings.sites));
+    };
+    if (bursts.share_of_cycles > 0.0) {
+        is_a_site("spike_bursts.site", bursts.site);
+    }
+    is_a_site("faults.dead_site", settings.faults.dead_site);
+    is_a_site("faults.failing_site", settings.faults.failing_site);
+    refuse_unless(settings.gamma.high_hz < 0.45 * settings.rate_hz || settings.gamma.rate_per_s == 0.0, "gamma.high_hz",
+                  std::to_string(settings.gamma.high_hz), "below 0.45 of rate_hz");
     refuse_unless(ripples.rate_per_s * busy_s < 0.9, "ripples.rate_per_s", std::to_string(ripples.rate_per_s),
                   "at most 0.9 / (duration + min_gap), here " + std::to_string(0.9 / busy_s));
     refuse_unless(settings.sharp_wave.duration_ms <= 2.0 * ripples.min_gap_ms, "sharp_wave.duration_ms",
@@ -49,10 +74,12 @@ std::vector<ChannelGains> channel_gains(const SceneSettings& settings) {
         const double spread = below_um / settings.ripples.spread_um;
         const double depth = below_um / settings.sharp_wave.depth_um;
         // The sharp wave turns its sign in the layer, and is largest one depth below (negative) and above (positive).
-        gains.push_back({portable_exp(-0.5 * spread * spread), -depth * portable_exp(0.5 - 0.5 * depth * depth), 1.0});
+        gains.push_back(
+            {portable_exp(-0.5 * spread * spread), -depth * portable_exp(0.5 - 0.5 * depth * depth), 1.0, below_um});
     }
     if (settings.reference) {
-        gains.push_back({0.0, 0.0, 0.5});
+        const double uppermost_um = -0.5 * (settings.sites - 1) * settings.site_spacing_um;
+        gains.push_back({0.0, 0.0, 0.5, uppermost_um - settings.reference_um, true});
     }
     return gains;
 }
@@ -67,22 +94,42 @@ Scene::Scene(const SceneSettings& settings)
       frames_(static_cast<std::uint64_t>(std::llround(settings.duration_s * settings.rate_hz))),
       frame_(channels_.size()) {
     const auto gains = channel_gains(settings);
-    elements_.push_back(std::make_unique<Background>(settings, channels_.size()));
-    auto ripples = std::make_unique<Ripples>(settings, gains);
-    ripples_ = ripples.get();
-    elements_.push_back(std::move(ripples));
-    if (settings.theta.amplitude_uv > 0.0) {
-        elements_.push_back(std::make_unique<Theta>(settings, gains));
+    const auto states = std::make_shared<const States>(settings);
+    add<Background>(true, settings, gains);
+    ripples_ = add<Ripples>(true, settings, gains, states);
+    const bool bursts = settings.spike_bursts.share_of_cycles > 0.0;
+    const auto* theta = add<Theta>(settings.theta.amplitude_uv > 0.0 || bursts, settings, gains, states);
+    add<Mains>(settings.mains.amplitude_uv > 0.0, settings);
+    add<Steps>(settings.artefacts.steps_per_min > 0.0, settings, StepReach::all_channels);
+    add<Muscle>(settings.artefacts.muscle_per_min > 0.0, settings, gains);
+    add<Delta>(settings.delta.rms_uv > 0.0, settings, gains, states);
+    add<Gamma>(settings.gamma.rate_per_s > 0.0, settings, gains);
+    add<SpikeBursts>(bursts, settings, gains, states, theta);
+    add<Steps>(settings.artefacts.site_steps_per_min > 0.0, settings, StepReach::one_channel);
+    add<SingleSpikes>(settings.artefacts.spikes_per_min > 0.0, settings, channels_.size());
+    // What changes the channel as a whole comes last.
+    add<GainDrift>(settings.gain_drift.log_sd > 0.0, settings, channels_.size());
+    add<Faults>(settings.faults.dead_site > 0 || settings.faults.failing_site > 0, settings);
+    add<StateLog>(states->change(), states);
+}
+
+template <class Element, class... Arguments> Element* Scene::add(bool wanted, Arguments&&... arguments) {
+    if (!wanted) {
+        return nullptr;
     }
-    if (settings.mains.amplitude_uv > 0.0) {
-        elements_.push_back(std::make_unique<Mains>(settings));
+    auto element = std::make_unique<Element>(std::forward<Arguments>(arguments)...);
+    auto* place = element.get();
+    elements_.push_back(std::move(element));
+    return place;
+}
+
+std::vector<Happening> Scene::happenings() const {
+    std::vector<Happening> all;
+    for (const auto& element : elements_) {
+        all.insert(all.end(), element->happenings().begin(), element->happenings().end());
     }
-    if (settings.artefacts.steps_per_min > 0.0) {
-        elements_.push_back(std::make_unique<Steps>(settings));
-    }
-    if (settings.artefacts.muscle_per_min > 0.0) {
-        elements_.push_back(std::make_unique<Muscle>(settings));
-    }
+    std::stable_sort(all.begin(), all.end(), [](const auto& a, const auto& b) { return a.onset_s < b.onset_s; });
+    return all;
 }
 
 std::size_t Scene::next(std::span<float> frames) {

@@ -33,8 +33,13 @@ class Scene {
     /// Ripples that are over, in order.
     [[nodiscard]] const std::vector<RippleTruth>& truth() const noexcept { return ripples_->truth(); }
     [[nodiscard]] Ripples& ripples() noexcept { return *ripples_; }
+    /// What else has begun, in order of onset: states, bursts, artefacts. An end may lie beyond the recording's.
+    [[nodiscard]] std::vector<Happening> happenings() const;
 
   private:
+    /// The new element, or null where it is not wanted.
+    template <class Element, class... Arguments> Element* add(bool wanted, Arguments&&... arguments);
+
     explicit Scene(const SceneSettings& settings);
 
     Channels channels_;
