@@ -5,13 +5,14 @@
 
 namespace millpond {
 
-/// What makes a scene hard is in the comments of named_scenes.cpp. Parameters are invented unless the settings say
-/// more.
+/// Parameters are invented unless scene_settings.hpp names a source. The textbook chain is a causal Butterworth
+/// band-pass, rectified, smoothed, in deviations above its running mean, with a veto by the reference, at its best
+/// settings for at most one false detection a minute.
 enum class SceneName : unsigned char {
-    quiet,   ///< four sites and a reference at rest, large ripples, no artefacts: any detector should do
-    typical, ///< the same with all that a usual recording has: small ripples, doublets, gamma, muscle, hum, running
-    hard,    ///< the same, worse: smaller ripples, more of everything else, a site that fails
-    running, ///< one site without reference in theta, with bursts of large spikes, and ripples among them
+    quiet,   ///< four sites and a reference at rest, no artefacts: the textbook chain finds nearly all
+    typical, ///< with small ripples, gamma, delta, muscle, steps, spikes and hum: it finds four of five
+    hard,    ///< more of all that, in a louder background, and running in between: it finds about half
+    running, ///< one site, no reference, theta with bursts of large spikes and ripples among them: it finds next to none
 };
 
 inline constexpr Choice<SceneName> scene_names[] = {{SceneName::quiet, "quiet"},
