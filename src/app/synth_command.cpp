@@ -18,6 +18,18 @@
 namespace millpond {
 namespace {
 
+/// Below the examples.
+const std::string truth_help =
+    "Truth (RECORDING.truth.tsv), one row an event, in order of onset:\n"
+    "  onset, duration   seconds from the first sample; a ripple lasts while its envelope exceeds a tenth of its peak\n"
+    "  trial_type        ripple; rest, run: states; gamma; spikes: a burst, spike: one alone; step; muscle; dead: a "
+    "site\n"
+    "  sample            frame of the onset\n"
+    "  peak_sample, end_sample, amplitude_uv, frequency_hz\n"
+    "                    ripples only: frame of the peak and of the end; envelope and frequency at the peak, the "
+    "former\n"
+    "                    on the site where it is largest, before any drift of gain";
+
 struct StorageSettings {
     Encoding encoding = Encoding::int16;
     double microvolts_per_count = 0.2;
@@ -61,7 +73,7 @@ TableEvent event_of(const Happening& happening, const Scene& scene) {
     TableEvent event;
     event.onset_s = happening.onset_s;
     event.duration_s = std::min(happening.end_s, last_s) - happening.onset_s;
-    event.trial_type = happening.kind;
+    event.trial_type = word_for<HappeningKind>(happening_kinds, happening.kind);
     event.sample = static_cast<std::int64_t>(std::ceil(happening.onset_s * scene.rate().value));
     return event;
 }
@@ -96,7 +108,14 @@ SceneSettings scene_called(const std::string& scene) {
     }
     const auto* named = std::find_if(std::begin(scene_names), std::end(scene_names),
                                      [&](const auto& choice) { return choice.word == scene; });
-    return named == std::end(scene_names) ? read_yaml_file<SceneSettings>(scene) : named_scene(named->value);
+    if (named != std::end(scene_names)) {
+        return named_scene(named->value);
+    }
+    if (!std::filesystem::exists(scene)) {
+        throw Refusal("command line: --scene", "'" + scene + "', which is no file",
+                      "quiet, typical, hard, running, or a file with settings of a scene");
+    }
+    return read_yaml_file<SceneSettings>(scene);
 }
 
 void run_synth(const SynthRequest& request) {
@@ -140,8 +159,11 @@ void add_synth_command(CLI::App& program) {
     command->add_flag("--overwrite", request->overwrite, "replace a recording of that name");
     request->storage_options.declare(*command, StorageSettings{});
     request->scene_options.declare(*command, SceneSettings{});
-    add_example(*command,
-                "build/millpond synth rest.flac --duration-s 120 --sites 4 --reference --rate-hz 1250 --seed 1");
+    add_example(
+        *command,
+        "build/millpond synth rest.flac --duration-s 120 --sites 4 --reference --rate-hz 1250 --seed 1\n"
+        "  build/millpond synth hard.rf64 --scene hard --seed 2 --faults-failing-site 3 --encoding float32\n\n" +
+            truth_help);
     command->callback([request] { run_synth(*request); });
 }
 

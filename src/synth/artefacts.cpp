@@ -29,7 +29,7 @@ void Steps::add(SampleIndex at, std::span<double> frame) {
     }
     while (next_s_ <= seconds_at(at, rate_)) {
         const double step_uv = random_.uniform() < 0.5 ? height_uv_ : -height_uv_;
-        happenings_.push_back({next_s_, next_s_, "step"});
+        happenings_.push_back({next_s_, next_s_, HappeningKind::step});
         next_s_ += random_.exponential(mean_wait_s_);
         if (reach_ == StepReach::one_channel) {
             levels_uv_[static_cast<std::size_t>(random_.uniform() * static_cast<double>(frame.size()))] += step_uv;
@@ -87,7 +87,7 @@ void Muscle::draw_next(double not_before_s) {
         begin_s_ = not_before_s + random_.exponential(60.0 / artefacts_.muscle_per_min);
         size_uv_ = artefacts_.muscle_uv * portable_exp(artefacts_.muscle_log_sd * random_.normal_within(2.5));
     }
-    happenings_.push_back({begin_s_, begin_s_ + length_s, "muscle"});
+    happenings_.push_back({begin_s_, begin_s_ + length_s, HappeningKind::muscle});
 }
 
 void Muscle::add(SampleIndex at, std::span<double> frame) {

@@ -19,8 +19,11 @@ void GainDrift::add(SampleIndex at, std::span<double> frame) {
 
 Faults::Faults(const SceneSettings& settings)
     : faults_(settings.faults), rate_{settings.rate_hz}, random_(settings.seed, number_of(RandomStream::faults)) {
+    if (faults_.dead_site > 0) {
+        happenings_.push_back({0.0, settings.duration_s, HappeningKind::dead});
+    }
     if (faults_.failing_site > 0) {
-        happenings_.push_back({faults_.failing_at_s, settings.duration_s, "failed"});
+        happenings_.push_back({faults_.failing_at_s, settings.duration_s, HappeningKind::dead});
     }
 }
 

@@ -33,7 +33,7 @@ void Gamma::add(SampleIndex at, std::span<double> frame) {
         return;
     }
     if (!logged_) {
-        happenings_.push_back({burst_.begin_s, burst_.begin_s + burst_.length_s, "gamma"});
+        happenings_.push_back({burst_.begin_s, burst_.begin_s + burst_.length_s, HappeningKind::gamma});
         logged_ = true;
     }
     const double sine = portable_sin_turns(0.5 * since_s / burst_.length_s);

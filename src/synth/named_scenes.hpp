@@ -12,7 +12,8 @@ enum class SceneName : unsigned char {
     quiet,   ///< four sites and a reference at rest, no artefacts: the textbook chain finds nearly all
     typical, ///< with small ripples, gamma, delta, muscle, steps, spikes and hum: it finds four of five
     hard,    ///< more of all that, in a louder background, and running in between: it finds about half
-    running, ///< one site, no reference, theta with bursts of large spikes and ripples among them: it finds next to none
+    running, ///< one site, no reference, theta with bursts of large spikes and ripples among them: it finds next to
+             ///< none
 };
 
 inline constexpr Choice<SceneName> scene_names[] = {{SceneName::quiet, "quiet"},

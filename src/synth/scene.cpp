@@ -1,11 +1,11 @@
 #include "synth/scene.hpp"
 
-#include "base/refusal.hpp"
 #include "synth/artefacts.hpp"
 #include "synth/background.hpp"
 #include "synth/faults.hpp"
 #include "synth/gamma.hpp"
 #include "synth/rhythms.hpp"
+#include "synth/scene_check.hpp"
 #include "synth/spikes.hpp"
 
 #include <algorithm>
@@ -13,46 +13,6 @@
 
 namespace millpond {
 namespace {
-
-void check(const SceneSettings& settings, const std::string& where) {
-    const auto& ripples = settings.ripples;
-    const auto refuse_unless = [&](bool good, const char* key, const std::string& found, const std::string& allowed) {
-        if (!good) {
-            throw Refusal(where + ": " + key, found, allowed);
-        }
-    };
-    const double busy_s = (ripples.duration_ms + ripples.min_gap_ms) / 1000.0;
-    const auto& bursts = settings.spike_bursts;
-    const auto& artefacts = settings.artefacts;
-    const auto in_order = [&](const char* key, double least, double most) {
-        refuse_unless(least <= most, key, std::to_string(least), "at most its largest, here " + std::to_string(most));
-    };
-    in_order("ripples.doublet_least_ms", ripples.doublet_least_ms, ripples.doublet_most_ms);
-    in_order("gamma.low_hz", settings.gamma.low_hz, settings.gamma.high_hz);
-    in_order("spike_bursts.least_spikes", bursts.least_spikes, bursts.most_spikes);
-    in_order("spike_bursts.least_interval_ms", bursts.least_interval_ms, bursts.most_interval_ms);
-    in_order("artefacts.spike_least_ms", artefacts.spike_least_ms, artefacts.spike_most_ms);
-    const auto is_a_site = [&](const char* key, int site) {
-        refuse_unless(site <= settings.sites, key, std::to_string(site),
-                      "a site, here 1 to " + std::to_string(settings.sites));
-    };
-    if (bursts.share_of_cycles > 0.0) {
-        is_a_site("spike_bursts.site", bursts.site);
-    }
-    is_a_site("faults.dead_site", settings.faults.dead_site);
-    is_a_site("faults.failing_site", settings.faults.failing_site);
-    refuse_unless(settings.gamma.high_hz < 0.45 * settings.rate_hz || settings.gamma.rate_per_s == 0.0, "gamma.high_hz",
-                  std::to_string(settings.gamma.high_hz), "below 0.45 of rate_hz");
-    refuse_unless(ripples.rate_per_s * busy_s < 0.9, "ripples.rate_per_s", std::to_string(ripples.rate_per_s),
-                  "at most 0.9 / (duration + min_gap), here " + std::to_string(0.9 / busy_s));
-    refuse_unless(settings.sharp_wave.duration_ms <= 2.0 * ripples.min_gap_ms, "sharp_wave.duration_ms",
-                  std::to_string(settings.sharp_wave.duration_ms), "at most twice ripples.min_gap_ms");
-    const double highest_hz = std::max(ripples.start_hz, ripples.end_hz) + 3.0 * ripples.frequency_sd_hz;
-    refuse_unless(highest_hz < 0.45 * settings.rate_hz, "ripples.start_hz, end_hz, frequency_sd_hz",
-                  "ripples up to " + std::to_string(highest_hz) + " Hz", "below 0.45 of rate_hz");
-    refuse_unless(5.0 * settings.mains.frequency_hz < 0.5 * settings.rate_hz || settings.mains.amplitude_uv == 0.0,
-                  "mains.frequency_hz", "a fifth harmonic above half of rate_hz", "a lower frequency, or no mains");
-}
 
 Channels channels_of(const SceneSettings& settings) {
     Channels channels;
@@ -85,7 +45,7 @@ std::vector<ChannelGains> channel_gains(const SceneSettings& settings) {
 }
 
 Scene Scene::make(const SceneSettings& settings, const std::string& where) {
-    check(settings, where);
+    check_scene(settings, where);
     return Scene(settings);
 }
 
@@ -94,23 +54,22 @@ Scene::Scene(const SceneSettings& settings)
       frames_(static_cast<std::uint64_t>(std::llround(settings.duration_s * settings.rate_hz))),
       frame_(channels_.size()) {
     const auto gains = channel_gains(settings);
-    const auto states = std::make_shared<const States>(settings);
+    states_ = std::make_shared<const States>(settings);
     add<Background>(true, settings, gains);
-    ripples_ = add<Ripples>(true, settings, gains, states);
+    ripples_ = add<Ripples>(true, settings, gains, states_);
     const bool bursts = settings.spike_bursts.share_of_cycles > 0.0;
-    const auto* theta = add<Theta>(settings.theta.amplitude_uv > 0.0 || bursts, settings, gains, states);
+    const auto* theta = add<Theta>(settings.theta.amplitude_uv > 0.0 || bursts, settings, gains, states_);
     add<Mains>(settings.mains.amplitude_uv > 0.0, settings);
     add<Steps>(settings.artefacts.steps_per_min > 0.0, settings, StepReach::all_channels);
     add<Muscle>(settings.artefacts.muscle_per_min > 0.0, settings, gains);
-    add<Delta>(settings.delta.rms_uv > 0.0, settings, gains, states);
+    add<Delta>(settings.delta.rms_uv > 0.0, settings, gains, states_);
     add<Gamma>(settings.gamma.rate_per_s > 0.0, settings, gains);
-    add<SpikeBursts>(bursts, settings, gains, states, theta);
+    add<SpikeBursts>(bursts, settings, gains, states_, theta);
     add<Steps>(settings.artefacts.site_steps_per_min > 0.0, settings, StepReach::one_channel);
     add<SingleSpikes>(settings.artefacts.spikes_per_min > 0.0, settings, channels_.size());
     // What changes the channel as a whole comes last.
     add<GainDrift>(settings.gain_drift.log_sd > 0.0, settings, channels_.size());
     add<Faults>(settings.faults.dead_site > 0 || settings.faults.failing_site > 0, settings);
-    add<StateLog>(states->change(), states);
 }
 
 template <class Element, class... Arguments> Element* Scene::add(bool wanted, Arguments&&... arguments) {
@@ -124,7 +83,7 @@ template <class Element, class... Arguments> Element* Scene::add(bool wanted, Ar
 }
 
 std::vector<Happening> Scene::happenings() const {
-    std::vector<Happening> all;
+    auto all = states_->happenings();
     for (const auto& element : elements_) {
         all.insert(all.end(), element->happenings().begin(), element->happenings().end());
     }

@@ -7,7 +7,6 @@
 
 #include <cstdint>
 #include <span>
-#include <string_view>
 #include <vector>
 
 namespace millpond {
@@ -40,11 +39,28 @@ constexpr std::uint64_t number_of(RandomStream stream, std::size_t channel = 0) 
     return static_cast<std::uint64_t>(stream) + channel;
 }
 
-/// Something that is no ripple and is worth a row of the truth.
+/// What stands in the truth beside ripples.
+enum class HappeningKind : std::uint8_t {
+    rest,   ///< a state of the animal
+    run,    ///< the other
+    gamma,  ///< a burst of fast gamma
+    spikes, ///< a burst of one cell's spikes
+    spike,  ///< a single large one
+    step,   ///< on all channels or on one; its duration is 0
+    muscle, ///< a burst from muscles
+    dead,   ///< a site shows nothing of use
+};
+
+/// Their words in the column trial_type.
+inline constexpr Choice<HappeningKind> happening_kinds[] = {
+    {HappeningKind::rest, "rest"},     {HappeningKind::run, "run"},     {HappeningKind::gamma, "gamma"},
+    {HappeningKind::spikes, "spikes"}, {HappeningKind::spike, "spike"}, {HappeningKind::step, "step"},
+    {HappeningKind::muscle, "muscle"}, {HappeningKind::dead, "dead"}};
+
 struct Happening {
     double onset_s;
     double end_s;
-    std::string_view kind; ///< rest, run, gamma, spikes, spike, step or muscle; never freed
+    HappeningKind kind;
 };
 
 class SceneElement {
@@ -54,7 +70,7 @@ class SceneElement {
     /// Adds to the frame at `at`, one value a channel, microvolts. Called once for each place in turn.
     virtual void add(SampleIndex at, std::span<double> frame) = 0;
 
-    /// What has begun so far, in order. Grows with the recording: 32 bytes each.
+    /// What has begun so far, in order. Grows with the recording: 24 bytes each.
     [[nodiscard]] const std::vector<Happening>& happenings() const noexcept { return happenings_; }
 
   protected:

@@ -42,7 +42,7 @@ void SpikeBursts::begin(double at_s) {
         at_s += i + 1 < spikes ? (bursts_.least_interval_ms + range_ms * random_.uniform()) / 1000.0 : 0.0;
     }
     const double half_s = bursts_.width_ms / 2000.0;
-    happenings_.push_back({begin_s - half_s, at_s + half_s, "spikes"});
+    happenings_.push_back({begin_s - half_s, at_s + half_s, HappeningKind::spikes});
 }
 
 void SpikeBursts::add(SampleIndex at, std::span<double> frame) {
@@ -78,7 +78,8 @@ void SingleSpikes::add(SampleIndex at, std::span<double> frame) {
         const double sign = random_.uniform() < 0.5 ? 1.0 : -1.0;
         const auto channel = static_cast<std::size_t>(random_.uniform() * static_cast<double>(channels_));
         train_.begin({next_s_, sign * artefacts_.spike_uv, width_ms, channel});
-        happenings_.push_back({std::max(0.0, next_s_ - width_ms / 2000.0), next_s_ + width_ms / 2000.0, "spike"});
+        happenings_.push_back(
+            {std::max(0.0, next_s_ - width_ms / 2000.0), next_s_ + width_ms / 2000.0, HappeningKind::spike});
         next_s_ += random_.exponential(60.0 / artefacts_.spikes_per_min);
     }
     train_.at(t, [&](const auto& spike, double uv) { frame[spike.channel] += uv; });

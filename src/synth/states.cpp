@@ -61,10 +61,13 @@ double States::delta_at(double t) const noexcept {
     return change() ? 1.0 - running_at(t) : 1.0;
 }
 
-StateLog::StateLog(const std::shared_ptr<const States>& states) {
-    for (const auto& epoch : states->epochs()) {
-        happenings_.push_back({epoch.onset_s, epoch.end_s, word_for<AnimalState>(animal_states, epoch.state)});
+std::vector<Happening> States::happenings() const {
+    std::vector<Happening> all;
+    for (const auto& epoch : epochs_) {
+        all.push_back(
+            {epoch.onset_s, epoch.end_s, epoch.state == AnimalState::run ? HappeningKind::run : HappeningKind::rest});
     }
+    return all;
 }
 
 } // namespace millpond

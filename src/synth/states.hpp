@@ -22,6 +22,8 @@ class States {
     /// In order, without gaps, from 0 to beyond the recording's end.
     [[nodiscard]] const std::vector<Epoch>& epochs() const noexcept { return epochs_; }
 
+    [[nodiscard]] std::vector<Happening> happenings() const;
+
     [[nodiscard]] bool runs_at(double t) const noexcept;
     /// Shares of theta and of delta in the signal, 0 to 1: one rises as the other falls.
     [[nodiscard]] double theta_at(double t) const noexcept;
@@ -34,13 +36,6 @@ class States {
 
     double change_s_;
     std::vector<Epoch> epochs_;
-};
-
-/// Adds nothing to the signal but its rows to the truth.
-class StateLog : public SceneElement {
-  public:
-    explicit StateLog(const std::shared_ptr<const States>& states);
-    void add(SampleIndex /*at*/, std::span<double> /*frame*/) override {}
 };
 
 } // namespace millpond
