@@ -113,6 +113,7 @@ SceneSettings single_spikes(double rate_hz) {
     auto settings = silent(4, true);
     settings.rate_hz = rate_hz;
     settings.duration_s = 40.0;
+    settings.seed = 2; // no two at once
     settings.artefacts.spikes_per_min = 30.0;
     return settings;
 }

@@ -1,4 +1,5 @@
 // The command as a user types it.
+#include "app/truth.hpp"
 #include "base/refusal.hpp"
 #include "recording/events_table.hpp"
 #include "recording/recording_reader.hpp"
@@ -111,6 +112,17 @@ TEST(SynthCommand, OptionsOverrideANamedScene) {
     EXPECT_GT(rows["rest"], 0u);
     EXPECT_GT(rows["run"], 0u);
     EXPECT_GT(rows["gamma"], 0u);
+}
+
+TEST(SynthCommand, TruthOfARecordingWithoutRipplesIsATruthButALabelOfAnotherKindIsNone) {
+    const TemporaryFolder scratch;
+    const auto file = scratch / "a.wav";
+    ASSERT_EQ(synth(file.string() + " --scene typical --duration-s 60 --ripples-rate-per-s 0").status, 0);
+    ASSERT_FALSE(read_events_table(truth_path(file), 1250.0).empty());
+    EXPECT_TRUE(ripples_from_table(truth_path(file), Hertz{1250.0}, 75'000).empty());
+    const auto other = scratch.file("labels.tsv", "onset\tduration\ttrial_type\n1\t0.1\tspindle\n");
+    EXPECT_TRUE(test::says(test::line_of<Refusal>([&] { (void)ripples_from_table(other, Hertz{1250.0}, 75'000); }),
+                           "none of trial_type ripple"));
 }
 
 TEST(SynthCommand, RefusesBadInputWithStatus2AndOneLine) {
