@@ -21,7 +21,7 @@ double half_hann(double x) noexcept {
 
 } // namespace
 
-double Ripples::Ripple::envelope(double t) const noexcept {
+double RippleTrain::Ripple::envelope(double t) const noexcept {
     if (t <= begin_s || t >= stop_s) {
         return 0.0;
     }
@@ -30,14 +30,15 @@ double Ripples::Ripple::envelope(double t) const noexcept {
     return shape * cut_gain(t);
 }
 
-double Ripples::Ripple::cut_gain(double t) const noexcept {
+double RippleTrain::Ripple::cut_gain(double t) const noexcept {
     if (t <= cut_s) {
         return 1.0;
     }
     return t >= cut_s + fall_s ? 0.0 : half_hann(1.0 - (t - cut_s) / fall_s);
 }
 
-Ripples::Ripples(const SceneSettings& settings, std::vector<ChannelGains> gains, std::shared_ptr<const States> states)
+RippleTrain::RippleTrain(const SceneSettings& settings, std::vector<ChannelGains> gains,
+                         std::shared_ptr<const States> states)
     : ripples_(settings.ripples), sharp_wave_(settings.sharp_wave), rate_{settings.rate_hz},
       duration_s_(settings.duration_s), gains_(std::move(gains)), states_(std::move(states)),
       ripples_in_run_(settings.states.ripples_in_run), random_(settings.seed, number_of(RandomStream::ripples)),
@@ -47,7 +48,7 @@ Ripples::Ripples(const SceneSettings& settings, std::vector<ChannelGains> gains,
 }
 
 /// Of p followed by another each, one in 1 - p begins a chain, which takes as much longer as it has more ripples.
-double Ripples::mean_wait_s() const {
+double RippleTrain::mean_wait_s() const {
     const double first_s = (ripples_.duration_ms + ripples_.min_gap_ms) / 1000.0;
     const double apart_s =
         std::max(0.5 * (ripples_.doublet_least_ms + ripples_.doublet_most_ms), ripples_.duration_ms + doublet_gap_ms) /
@@ -56,7 +57,7 @@ double Ripples::mean_wait_s() const {
     return 1.0 / (ripples_.rate_per_s * (1.0 - followed)) - first_s - followed / (1.0 - followed) * apart_s;
 }
 
-double Ripples::draw_onset(double not_before_s) {
+double RippleTrain::draw_onset(double not_before_s) {
     if (next_.onset_s > 0.0 && ripples_.doublet_share > 0.0 && more_.uniform() < ripples_.doublet_share) {
         const double range_ms = ripples_.doublet_most_ms - ripples_.doublet_least_ms;
         const double apart_s = (ripples_.doublet_least_ms + range_ms * more_.uniform()) / 1000.0;
@@ -69,7 +70,7 @@ double Ripples::draw_onset(double not_before_s) {
     return onset_s;
 }
 
-double Ripples::share(const Ripple& ripple, std::size_t channel) const noexcept {
+double RippleTrain::share(const Ripple& ripple, std::size_t channel) const noexcept {
     if (ripple.depth_um == 0.0 || gains_[channel].reference) {
         return gains_[channel].ripple;
     }
@@ -77,7 +78,7 @@ double Ripples::share(const Ripple& ripple, std::size_t channel) const noexcept 
     return portable_exp(-0.5 * spread * spread);
 }
 
-void Ripples::draw_next(double not_before_s) {
+void RippleTrain::draw_next(double not_before_s) {
     constexpr double never = std::numeric_limits<double>::infinity();
     if (ripples_.rate_per_s == 0.0) {
         next_.begin_s = next_.sharp_begin_s = never;
@@ -117,7 +118,7 @@ void Ripples::draw_next(double not_before_s) {
     }
 }
 
-void Ripples::add(SampleIndex at, std::span<double> frame) {
+void RippleTrain::add(SampleIndex at, std::span<double> frame) {
     const double t = seconds_at(at, rate_);
     while (next_.first_s() <= t) {
         active_.push_back(next_);
@@ -136,7 +137,7 @@ void Ripples::add(SampleIndex at, std::span<double> frame) {
     }
 }
 
-void Ripples::add_one(Ripple& ripple, SampleIndex at, std::span<double> frame) const {
+void RippleTrain::add_one(Ripple& ripple, SampleIndex at, std::span<double> frame) const {
     const double t = seconds_at(at, rate_);
     const double envelope = ripple.envelope(t);
     if (envelope > tenth) {
@@ -163,7 +164,7 @@ void Ripples::add_one(Ripple& ripple, SampleIndex at, std::span<double> frame) c
     }
 }
 
-void Ripples::cut(SampleIndex now, double delay_ms, double fall_ms) {
+void RippleTrain::cut(SampleIndex now, double delay_ms, double fall_ms) {
     const double t = seconds_at(now, rate_);
     for (auto& ripple : active_) {
         const double cut_s = t + delay_ms / 1000.0;

@@ -21,9 +21,9 @@ struct RippleTruth {
     bool cut;            ///< cut short by a pulse
 };
 
-class Ripples : public SceneElement {
+class RippleTrain : public SceneElement {
   public:
-    Ripples(const SceneSettings& settings, std::vector<ChannelGains> gains, std::shared_ptr<const States> states);
+    RippleTrain(const SceneSettings& settings, std::vector<ChannelGains> gains, std::shared_ptr<const States> states);
     void add(SampleIndex at, std::span<double> frame) override;
 
     /// A ripple whose interval [onset, end] holds `now` falls to nothing from `delay_ms` later, within `fall_ms`.

@@ -56,7 +56,7 @@ Scene::Scene(const SceneSettings& settings)
     const auto gains = channel_gains(settings);
     states_ = std::make_shared<const States>(settings);
     add<Background>(true, settings, gains);
-    ripples_ = add<Ripples>(true, settings, gains, states_);
+    ripples_ = add<RippleTrain>(true, settings, gains, states_);
     const bool bursts = settings.spike_bursts.share_of_cycles > 0.0;
     const auto* theta = add<Theta>(settings.theta.amplitude_uv > 0.0 || bursts, settings, gains, states_);
     add<Mains>(settings.mains.amplitude_uv > 0.0, settings);
