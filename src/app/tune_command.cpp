@@ -7,8 +7,8 @@
 #include "base/refusal.hpp"
 #include "recording/recording_reader.hpp"
 #include "recording/whole_file.hpp"
+#include "referee/referee_report.hpp"
 #include "settings/settings.hpp"
-#include "settings/yaml_reader.hpp"
 
 #include <CLI/CLI.hpp>
 #include <fmt/format.h>
@@ -23,7 +23,9 @@ using Paths = std::vector<std::filesystem::path>;
 
 struct Options {
     Paths recordings, labels;
-    std::filesystem::path base, out, referee, table;
+    LabelReading label_reading;
+    std::filesystem::path base, out, table;
+    std::string referee;
     TuneGrid grid;
     double max_false_per_minute = 1.0;
     SweepPlan plan;
@@ -40,14 +42,20 @@ Settings base_settings(const Options& options) {
     return options.base.empty() ? Settings{} : load_settings(options.base);
 }
 
-Ripples truth_of(const Options& options, std::size_t index, const TuningRecording& recording, Hertz rate) {
+void add_truth(const Options& options, std::size_t index, TuningRecording& recording, Hertz rate) {
     if (!options.labels.empty()) {
-        return ripples_from_table(options.labels[index], rate, recording.frames());
+        recording.truth = ripples_from_table(options.labels[index], rate, recording.frames(), options.label_reading);
+        return;
     }
-    const auto settings =
-        options.referee.empty() ? RefereeSettings{} : read_yaml_file<RefereeSettings>(options.referee);
-    return find_ripples(settings, recording.channels, rate, {SampleIndex{0}, recording.channels.size(), recording.data})
-        .ripples;
+    const auto settings = referee_settings_of(options.referee);
+    auto found =
+        find_ripples(settings, recording.channels, rate, {SampleIndex{0}, recording.channels.size(), recording.data},
+                     options.referee.empty() ? "referee" : options.referee);
+    fmt::print(stderr, "referee: {}: {} ripples, rule {}; artefacts: {}\n",
+               options.recordings[index].filename().string(), found.ripples.size(), rule_text(settings),
+               artefacts_text(settings, found, recording.channels, rate));
+    recording.truth = std::move(found.ripples);
+    recording.excluded = std::move(found.artefacts.excluded);
 }
 
 Loaded load(const Options& options, const Settings& base) {
@@ -61,8 +69,8 @@ Loaded load(const Options& options, const Settings& base) {
             throw Refusal(path.string(), fmt::format("{} Hz", file.info.rate.value),
                           fmt::format("the rate of the first recording, {} Hz", first.info.rate.value));
         }
-        TuningRecording recording{channels_for(base, file.info.channels, options.base.string()), file.data, {}};
-        recording.truth = truth_of(options, loaded.recordings.size(), recording, file.info.rate);
+        TuningRecording recording{channels_for(base, file.info.channels, options.base.string()), file.data, {}, {}};
+        add_truth(options, loaded.recordings.size(), recording, file.info.rate);
         loaded.recordings.push_back(std::move(recording));
         progress.at(static_cast<double>(loaded.files.size()));
     }
@@ -186,8 +194,8 @@ void add_tune_command(CLI::App& program) {
                            "events tables with the ripples, one for each recording in their order, separated\n"
                            "by commas; without them the referee");
     labels->delimiter(',')->allow_extra_args(false);
-    command.add_option("--referee", options->referee, "YAML file with the referee's settings; else its defaults")
-        ->excludes(labels);
+    add_label_options(command, options->label_reading, labels);
+    command.add_option("--referee", options->referee, referee_help())->excludes(labels);
     command.add_option("--max-false-per-minute", options->max_false_per_minute, "N of the rule above")
         ->check(CLI::Range(0.0, 1000.0))
         ->capture_default_str();

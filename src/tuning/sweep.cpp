@@ -31,8 +31,9 @@ struct Joined {
             detections.push_back(at + offset);
         }
         const auto parts = parts_of(recording.frames(), block_frames);
-        append(training, intersection(engine.eligible(), parts.training));
-        append(held_out, intersection(engine.eligible(), parts.held_out));
+        const auto eligible = without(engine.eligible(), recording.excluded);
+        append(training, intersection(eligible, parts.training));
+        append(held_out, intersection(eligible, parts.held_out));
         // A ripple labelled beyond one recording's end must not reach into the next.
         const auto last = ripples.empty() ? SampleIndex{0} : ripples.back().end;
         offset = std::max(offset + recording.frames(), last.value + 1) + block_frames;
