@@ -29,18 +29,17 @@ std::size_t widest(const Agreement& agreement) {
 }
 
 std::string shared_rows(const Agreement& agreement) {
-    const std::size_t width = widest(agreement) + 2;
-    std::string text = fmt::format("  {:<{}}{:>8}", "events of", width, "all");
+    const std::size_t first = widest(agreement) + 2;
+    std::string text = fmt::format("  {:<{}}{:>6}", "events of", first, "all");
     for (const auto& list : agreement.lists) {
-        text += fmt::format("{:>{}}", list.name, width);
+        text += "  " + list.name;
     }
     text += "\n";
     for (std::size_t of = 0; of < agreement.lists.size(); ++of) {
-        text += fmt::format("  {:<{}}{:>8}", agreement.lists[of].name, width, agreement.lists[of].ripples.size());
+        text += fmt::format("  {:<{}}{:>6}", agreement.lists[of].name, first, agreement.lists[of].ripples.size());
         for (std::size_t with = 0; with < agreement.lists.size(); ++with) {
-            text += fmt::format(
-                "{:>{}}", of == with ? std::string("-") : fmt::format("{}", agreement.side(of, with).shared.count),
-                width);
+            const auto cell = of == with ? std::string("-") : fmt::format("{}", agreement.side(of, with).shared.count);
+            text += fmt::format("{:>{}}", cell, agreement.lists[with].name.size() + 2);
         }
         text += "\n";
     }
