@@ -51,6 +51,9 @@ struct Signal {
         for (std::size_t f = 0; f < data.size() / channels; ++f) {
             const double t = static_cast<double>(f) / rate.value - at_s;
             const double z = t * 1000.0 / hull_ms;
+            if (std::abs(z) > 8.0) {
+                continue; // 1e-14 of it
+            }
             const double value = amplitude * std::exp(-0.5 * z * z) * std::cos(2.0 * std::numbers::pi * 180.0 * t);
             for (std::size_t c = first; c < channels; ++c) {
                 data[f * channels + c] += static_cast<float>(value);
