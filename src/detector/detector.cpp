@@ -65,6 +65,9 @@ std::size_t Detector::State::advance(const FrameBlock& block, std::optional<Cros
     const auto order = next_order(block);
     const auto result = kernel(lanes, order);
     resume = false;
+    if (evidence() && settings.evidence.site_watch.on) {
+        watch_sites(block.part(0, result.frames));
+    }
     if (result.last_reference != SIZE_MAX) {
         newest_reference = position + result.last_reference;
     }
@@ -73,7 +76,7 @@ std::size_t Detector::State::advance(const FrameBlock& block, std::optional<Cros
         floor_frames += result.frames;
     }
     if (watcher != nullptr) {
-        watcher(watcher_context, SampleIndex{position - 1}, {envelope.data(), lanes.channel_lanes + mean_lanes()});
+        watcher(watcher_context, SampleIndex{position - 1}, {envelope.data(), lanes.signal_lanes + sum_lanes()});
     }
     if (!start.done()) {
         start_floor();
@@ -92,6 +95,9 @@ KernelOrder Detector::State::next_order(const FrameBlock& block) const noexcept 
     order.method = method;
     order.resume = resume;
     std::uint64_t limit = std::min<std::uint64_t>(block.frames(), blank_from - position);
+    if (evidence() && settings.evidence.site_watch.on) {
+        limit = std::min(limit, site_watch.frames_to_verdict(position));
+    }
     const std::uint64_t still_until = std::max(settling_until, frozen_until);
     const bool still = position < still_until;
     if (still) {
@@ -175,6 +181,7 @@ void Detector::gap(SampleIndex resumes_at) noexcept {
     s.position = resumes_at.value;
     s.settling_until = s.position + s.filter_settle;
     s.above_run = 0;
+    s.site_watch.gap();
     s.resume = true; // the level starts at the first sample: no step into the fresh filter
     if (s.blank_until <= s.position) {
         s.blank_from = UINT64_MAX;
@@ -204,6 +211,11 @@ void Detector::reset() noexcept {
     s.blank_until = 0;
     s.newest_reference = UINT64_MAX;
     s.spent = false;
+    if (s.evidence()) {
+        s.site_watch.reset();
+        std::fill(s.journaled.begin(), s.journaled.end(), SiteState::alive);
+        s.mix_anew();
+    }
     gap(SampleIndex{0});
 }
 
@@ -215,15 +227,17 @@ void Detector::State::clear_filters() noexcept {
 }
 
 std::uint16_t Detector::State::channel_at(std::size_t lane) const noexcept {
-    return lane < lanes.channel_lanes ? static_cast<std::uint16_t>(channel_of[lane]) : std::uint16_t{65535};
+    return !evidence() && lane < lanes.signal_lanes ? static_cast<std::uint16_t>(channel_of[lane])
+                                                    : std::uint16_t{65535};
 }
 
 std::size_t Detector::floor_count() const noexcept {
-    return state_->lanes.channel_lanes + state_->mean_lanes();
+    return state_->lanes.signal_lanes + state_->sum_lanes() - state_->first_floor();
 }
 
-FloorDetail Detector::floor(std::size_t i) const noexcept {
+FloorDetail Detector::floor(std::size_t number) const noexcept {
     const auto& s = *state_;
+    const std::size_t i = s.first_floor() + number;
     return {s.mean[i],
             s.spread[i] * deviation_per_spread,
             static_cast<float>(s.mean[i] + s.above[i] * s.spread[i]),
@@ -245,11 +259,15 @@ bool Detector::settling() const noexcept {
 }
 
 double Detector::filter_delay_samples() const noexcept {
-    return state_->design.group_delay_samples(band_centre(state_->settings.filter), state_->rate);
+    return state_->filter_delay;
 }
 
 double Detector::delay_samples() const noexcept {
-    return filter_delay_samples() + state_->settings.envelope.smoothing_ms * state_->rate.value / 1000.0;
+    return state_->delay;
+}
+
+double Detector::threshold_deviations() const noexcept {
+    return state_->settings.threshold.deviations;
 }
 
 const BandpassDesign& Detector::bandpass() const noexcept {
