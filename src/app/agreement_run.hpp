@@ -12,7 +12,7 @@
 
 namespace millpond {
 
-/// Takes the recording once, in blocks, for all rules.
+/// Takes the recording once, in blocks, for all rules. Memory: that of so many referees, 8 bytes a frame each.
 class AgreementRun {
   public:
     /// All rules by name, each with the artefact settings of `referee`; and `referee` itself, as `name`, where it is
