@@ -99,7 +99,9 @@ void add_dryrun_command(CLI::App& program) {
         ->capture_default_str();
     command.add_flag("--overwrite", options->overwrite, "write into --out where it exists");
     add_example(command, "build/millpond dryrun replay_files/four_sites_90s.flac --settings config/live.yaml "
-                         "--labels replay_files/four_sites_90s.flac.truth.tsv --out dry");
+                         "--labels replay_files/four_sites_90s.flac.truth.tsv --out dry\n"
+                         "  build/millpond dryrun replay_files/four_sites_90s.flac --settings config/live.yaml "
+                         "--referee deceuninck_2024 --agreement --out dry_by_rules");
     command.callback([options] { run_command(*options); });
 }
 
