@@ -1,92 +1,32 @@
 #include "app/commands.hpp"
 #include "app/dry_run_tables.hpp"
-#include "app/from_settings.hpp"
 #include "app/progress.hpp"
-#include "app/truth.hpp"
-#include "app/tune_grid.hpp"
+#include "app/stop_signals.hpp"
+#include "app/tune_plan.hpp"
+#include "app/tune_tables.hpp"
 #include "base/refusal.hpp"
-#include "recording/recording_reader.hpp"
 #include "recording/whole_file.hpp"
-#include "referee/referee_report.hpp"
-#include "settings/settings.hpp"
 
 #include <CLI/CLI.hpp>
 #include <fmt/format.h>
 
 #include <memory>
-#include <vector>
 
 namespace millpond {
 namespace {
 
-using Paths = std::vector<std::filesystem::path>;
+constexpr int stopped_status = 130; // as shells call the end by Ctrl-C
 
-struct Options {
-    Paths recordings, labels;
-    LabelReading label_reading;
-    std::filesystem::path base, out, table;
-    std::string referee;
-    TuneGrid grid;
-    double max_false_per_minute = 1.0;
-    SweepPlan plan;
-    std::size_t show = 20;
-    bool overwrite = false;
-};
-
-struct Loaded {
-    std::vector<LoadedRecording> files; // hold the samples
-    std::vector<TuningRecording> recordings;
-};
-
-Settings base_settings(const Options& options) {
-    return options.base.empty() ? Settings{} : load_settings(options.base);
-}
-
-void add_truth(const Options& options, std::size_t index, TuningRecording& recording, Hertz rate) {
-    if (!options.labels.empty()) {
-        recording.truth = ripples_from_table(options.labels[index], rate, recording.frames(), options.label_reading);
-        return;
-    }
-    const auto settings = referee_settings_of(options.referee);
-    auto found =
-        find_ripples(settings, recording.channels, rate, {SampleIndex{0}, recording.channels.size(), recording.data},
-                     options.referee.empty() ? "referee" : options.referee);
-    fmt::print(stderr, "referee: {}: {} ripples, rule {}; artefacts: {}\n",
-               options.recordings[index].filename().string(), found.ripples.size(), rule_text(settings),
-               artefacts_text(settings, found, recording.channels, rate));
-    recording.truth = std::move(found.ripples);
-    recording.excluded = std::move(found.artefacts.excluded);
-}
-
-Loaded load(const Options& options, const Settings& base) {
-    Loaded loaded;
-    Progress progress("reading", static_cast<double>(options.recordings.size()));
-    for (const auto& path : options.recordings) {
-        loaded.files.push_back(load_recording(path));
-        const auto& file = loaded.files.back();
-        const auto& first = loaded.files.front();
-        if (file.info.rate != first.info.rate) {
-            throw Refusal(path.string(), fmt::format("{} Hz", file.info.rate.value),
-                          fmt::format("the rate of the first recording, {} Hz", first.info.rate.value));
-        }
-        TuningRecording recording{channels_for(base, file.info.channels, options.base.string()), file.data, {}, {}};
-        add_truth(options, loaded.recordings.size(), recording, file.info.rate);
-        loaded.recordings.push_back(std::move(recording));
-        progress.at(static_cast<double>(loaded.files.size()));
-    }
-    return loaded;
-}
-
-Settings tuned(Settings settings, const DetectorSettings& picked, const Loaded& loaded, bool without_base) {
+Settings tuned(Settings settings, const DetectorSettings& picked, const TunePlan& plan, bool without_base) {
     settings.detector = picked;
     settings.detector.floor.warm_start_session.clear(); // floors of another filter would be wrong
     if (settings.channels.empty()) {
-        settings.channels = loaded.recordings.front().channels;
+        settings.channels = plan.recordings.front().channels;
     }
     if (without_base) {
         settings.stream.source = SourceKind::pipe;
         settings.stream.encoding = SampleEncoding::float32;
-        settings.stream.rate_hz = loaded.files.front().info.rate.value;
+        settings.stream.rate_hz = plan.sweep.rate.value;
         settings.stream.channels = static_cast<std::uint32_t>(settings.channels.size());
     }
     return settings;
@@ -106,15 +46,26 @@ void write_settings(const Settings& settings, const std::filesystem::path& out) 
     std::filesystem::rename(unchecked, out);
 }
 
-std::string part_summary(const char* part, const Score& score) {
+std::string part_summary(const char* part, const PartFigures& figures) {
     return fmt::format("  {:<11} {:.2f} eligible minutes; hit rate {}; {:.2f} false per minute; onset latency median "
                        "{:.1f} ms, p90 {:.1f} ms\n",
-                       part, score.eligible_minutes, told(score.hit_rate), score.false_per_minute,
-                       score.onset_latency_ms.median, score.onset_latency_ms.p90);
+                       part, figures.eligible_minutes, told(figures.hit_rate()), figures.false_per_minute,
+                       figures.latency_median_ms, figures.latency_p90_ms);
 }
 
-void check_options(const Options& options) {
-    if (!options.overwrite && std::filesystem::exists(options.out)) {
+std::string grid_summary(const TuneCandidates& candidates) {
+    auto text = fmt::format("grid        {} settings", candidates.settings.size());
+    if (candidates.left_out > 0) {
+        text += fmt::format(" ({} combinations left out: edges or levels the wrong way round)", candidates.left_out);
+    }
+    for (const auto& axis : candidates.axes) {
+        text += fmt::format("; {} {}", axis.key, fmt::join(axis.values, ","));
+    }
+    return text + "\n";
+}
+
+void check_options(const TuneOptions& options) {
+    if (options.part.empty() && !options.overwrite && std::filesystem::exists(options.out)) {
         throw Refusal("--out " + options.out.string(), "a file that exists", "a new name, or --overwrite");
     }
     if (!options.labels.empty() && options.labels.size() != options.recordings.size()) {
@@ -123,69 +74,188 @@ void check_options(const Options& options) {
     }
 }
 
-void run_command(Options& options) {
-    check_options(options);
-    const auto base = base_settings(options);
-    const auto loaded = load(options, base);
-    const auto candidates = candidates_of(options.grid, base.detector);
-    if (candidates.empty()) {
-        throw Refusal("--low-hz, --high-hz", "no band with low_hz below high_hz", "one or more");
+WorkFile open_work(const TuneOptions& options, const WorkIdentity& identity, SweepPart part) {
+    const auto file = options.part.empty() ? work_path(options.out) : work_path(options.out, part);
+    const bool there = std::filesystem::exists(file);
+    if (there && !options.resume && !options.overwrite) {
+        throw Refusal(file.string(), "work of a sweep that was begun before",
+                      "--resume to go on with it, or --overwrite to begin anew");
     }
-    options.plan.rate = loaded.files.front().info.rate;
-    options.plan.arbiter = base.arbiter;
-    options.plan.arbiter.condition = Condition::disrupt;
-    options.plan.early_ms = options.labels.empty() ? referee_early_ms : 0.0;
-    std::vector<SweepResult> results;
-    {
-        Progress progress("sweep", static_cast<double>(candidates.size()));
-        results = sweep(loaded.recordings, candidates, options.plan,
-                        [&](std::size_t done) { progress.at(static_cast<double>(done)); });
+    return there && options.resume ? WorkFile::resume(file, identity, part) : WorkFile::begin(file, identity, part);
+}
+
+[[noreturn]] void end_stopped(const SweepResults& results, std::size_t of, const char* what) {
+    const auto done = std::count_if(results.begin(), results.end(), [](const auto& each) { return each.has_value(); });
+    fmt::print(stderr, "stopped: {} of {} settings {}; the same command with --resume goes on from there\n", done, of,
+               what);
+    throw CLI::RuntimeError(stopped_status);
+}
+
+bool all_known(std::span<const std::optional<SweepResult>> results) {
+    return std::all_of(results.begin(), results.end(), [](const auto& each) { return each.has_value(); });
+}
+
+SweepResults sweep_part(const TunePlan& plan, WorkFile& work, SweepPart part) {
+    const auto first = part.first(plan.identity.candidates), last = part.last(plan.identity.candidates);
+    const auto from = static_cast<std::ptrdiff_t>(first), to = static_cast<std::ptrdiff_t>(last);
+    const SweepResults known(work.swept().begin() + from, work.swept().begin() + to);
+    Progress progress("sweep", 1.0);
+    const StopSignals signals;
+    SweepWatch watch;
+    watch.progress = [&](double share) { progress.at(share); };
+    watch.stop = [] { return StopSignals::wished(); };
+    watch.finished = [&](std::size_t place, const SweepResult& result) {
+        work.keep(SweepStage::swept, first + place, result);
+    };
+    auto results = sweep(plan.recordings, std::span(plan.candidates.settings).subspan(first, last - first), plan.sweep,
+                         watch, known);
+    if (!all_known(results)) {
+        end_stopped(results, results.size(), "are swept");
     }
-    const auto picked = pick(results, options.max_false_per_minute);
-    fmt::print("{}", sweep_summary(candidates, results, options.max_false_per_minute, picked, options.show));
+    return results;
+}
+
+// The whole engine over the finalists, and over the next ones of the ranking as long as none can be picked.
+TuneOutcome confirm_some(const TunePlan& plan, const SweepResults& swept, WorkFile* work, double limit) {
+    auto confirmed = work != nullptr ? work->confirmed() : SweepResults(swept.size());
+    auto outcome = outcome_of(swept, confirmed, limit);
+    Progress progress("whole engine", 1.0);
+    const StopSignals signals;
+    SweepWatch watch;
+    watch.progress = [&](double share) { progress.at(share); };
+    watch.stop = [] { return StopSignals::wished(); };
+    watch.finished = [&](std::size_t place, const SweepResult& result) {
+        if (work != nullptr) {
+            work->keep(SweepStage::confirmed, place, result);
+        }
+    };
+    for (auto next = next_to_confirm(outcome, limit); !next.empty(); next = next_to_confirm(outcome, limit)) {
+        confirmed = confirm(plan.recordings, plan.candidates.settings, next, plan.sweep, watch, confirmed);
+        if (StopSignals::wished()) {
+            end_stopped(confirmed, next.size(), "are run by the whole engine");
+        }
+        outcome = outcome_of(swept, confirmed, limit);
+    }
+    return outcome;
+}
+
+void write_tables(const TuneOptions& options, const TunePlan& plan, const TuneOutcome& outcome) {
     if (!options.table.empty()) {
-        write_whole_file(options.table, sweep_table(candidates, results, picked));
+        write_whole_file(options.table, sweep_table(plan.candidates, outcome));
     }
-    if (!picked) {
-        throw Refusal("sweep",
-                      fmt::format("no settings at {} false per minute or fewer on training and held-out parts",
-                                  options.max_false_per_minute),
-                      "a wider grid, longer recordings or a larger --max-false-per-minute");
+    if (!options.curve.empty()) {
+        write_whole_file(options.curve, curve_table(plan.candidates, outcome));
     }
-    write_settings(tuned(base, candidates[picked->index], loaded, options.base.empty()), options.out);
-    const auto& best = results[picked->index];
-    fmt::print("picked (*), {} ranked before it passed over; truth: {}, early {} ms\n{}{}settings    {}\n",
-               picked->passed_over, options.labels.empty() ? "referee" : "labels", options.plan.early_ms,
-               part_summary("training", best.training), part_summary("held out", best.held_out), options.out.string());
+}
+
+void tell_pick(const TuneOptions& options, const TunePlan& plan, const TuneOutcome& outcome) {
+    const auto& best = *outcome.confirmed_of(*outcome.picked);
+    fmt::print("{}truth       {}, early {} ms; the pick by the whole engine, with pulses:\n{}{}{}settings    {}\n",
+               pick_sentence(plan.candidates, outcome, options.max_false_per_minute),
+               options.labels.empty() ? "referee" : "labels", plan.sweep.early_ms,
+               part_summary("training", best.training), part_summary("held out", best.held_out),
+               doubts(best, options.max_false_per_minute), options.out.string());
     if (options.base.empty()) {
         fmt::print("note        without --settings the stream is written as float32 frames on standard input\n");
     }
 }
 
-void add_grid(CLI::App& command, TuneGrid& grid) {
-    const auto list = [&](const char* name, auto& values, const char* what) {
-        command.add_option(name, values, what)->delimiter(',')->allow_extra_args(false)->capture_default_str();
+void finish(const TuneOptions& options, const TunePlan& plan, const SweepResults& swept, WorkFile* work) {
+    const auto outcome = confirm_some(plan, swept, work, options.max_false_per_minute);
+    fmt::print("{}{}{}", grid_summary(plan.candidates),
+               front_summary(plan.candidates, outcome, options.max_false_per_minute, options.show),
+               curve_picture(outcome, options.max_false_per_minute));
+    write_tables(options, plan, outcome);
+    if (!outcome.picked) {
+        throw Refusal("sweep",
+                      fmt::format("no settings at {} false per minute or fewer on training and held-out parts",
+                                  options.max_false_per_minute),
+                      fmt::format("a wider grid, longer recordings or a larger --max-false-per-minute{}",
+                                  work != nullptr ? " (with --resume nothing is swept twice)" : ""));
+    }
+    write_settings(tuned(plan.base, plan.candidates.settings[*outcome.picked], plan, options.base.empty()),
+                   options.out);
+    tell_pick(options, plan, outcome);
+}
+
+void run_part(const TuneOptions& options, const TunePlan& plan) {
+    const auto part = part_of(options.part);
+    auto work = open_work(options, plan.identity, part);
+    static_cast<void>(sweep_part(plan, work, part));
+    fmt::print(
+        "part {} of {}: {} of {} settings in {}\nonce all parts are there: the same command with --merge instead "
+        "of --part\n",
+        part.number, part.of, part.last(plan.identity.candidates) - part.first(plan.identity.candidates),
+        plan.identity.candidates, work_path(options.out, part).string());
+}
+
+void run_command(const TuneOptions& options) {
+    check_options(options);
+    if (!options.part.empty()) {
+        static_cast<void>(part_of(options.part)); // refused before anything is read
+    }
+    const auto plan = make_tune_plan(options);
+    if (!options.part.empty()) {
+        run_part(options, plan);
+    } else if (options.merge) {
+        finish(options, plan, merge_parts(options.out, plan.identity), nullptr);
+    } else {
+        auto work = open_work(options, plan.identity, {});
+        finish(options, plan, sweep_part(plan, work, {}), &work);
+        std::filesystem::remove(work_path(options.out));
+    }
+}
+
+void add_grid(CLI::App& command, TuneOptions& options) {
+    const auto list = [&](const char* name, const char* key, const char* what) {
+        command.add_option(name, options.lists.at(key), what)
+            ->delimiter(',')
+            ->allow_extra_args(false)
+            ->capture_default_str()
+            ->each([&options, key = std::string(key)](const std::string&) {
+                if (options.given_lists.empty() || options.given_lists.back() != key) {
+                    options.given_lists.push_back(key);
+                }
+            });
     };
-    list("--threshold-deviations", grid.threshold_deviations, "thresholds to try, separated by commas");
-    list("--low-hz", grid.low_hz, "lower edges of the band to try");
-    list("--high-hz", grid.high_hz, "upper edges of the band to try");
-    list("--order", grid.order, "orders of the filter to try");
-    list("--smoothing-ms", grid.smoothing_ms, "smoothings of the envelope to try");
+    list("--threshold-deviations", "threshold.deviations", "thresholds to try, separated by commas");
+    list("--low-hz", "filter.low_hz", "lower edges of the band to try");
+    list("--high-hz", "filter.high_hz", "upper edges of the band to try");
+    list("--order", "filter.order", "orders of the filter to try");
+    list("--smoothing-ms", "envelope.smoothing_ms", "smoothings of the envelope to try");
+    command.add_option("--grid", options.grid,
+                       "YAML file with the values to try: any key below `detector`, as in a settings file, each\n"
+                       "with a list. Then the five options above hold only where they are given");
+}
+
+void add_long_work(CLI::App& command, TuneOptions& options) {
+    command.add_option("--threads", options.threads, "settings tried at the same time; results do not depend on it")
+        ->check(CLI::Range(1U, 256U))
+        ->capture_default_str();
+    command.add_flag("--resume", options.resume,
+                     "go on where a sweep was stopped (Ctrl-C): its work is kept in OUT.work until it is done");
+    auto* part = command.add_option("--part", options.part,
+                                    "K/N: sweep the K-th of N parts of the grid and leave OUT.part-K-of-N, for a job\n"
+                                    "array: --part $SLURM_ARRAY_TASK_ID/$SLURM_ARRAY_TASK_COUNT with --array=1-N");
+    command.add_flag("--merge", options.merge, "put all parts beside OUT together; the outcome is that of one sweep")
+        ->excludes(part);
 }
 
 } // namespace
 
 void add_tune_command(CLI::App& program) {
-    auto options = std::make_shared<Options>();
+    auto options = std::make_shared<TuneOptions>();
     auto& command = *program.add_subcommand(
         "tune",
         "try thresholds, bands, orders and smoothings on recordings and write the settings that find most ripples\n"
         "at N false per minute or fewer\n"
         "Each recording is cut into blocks: the 1st, 3rd, 5th ... are training parts,\n"
-        "the 2nd, 4th, 6th ... are held out. Settings at N or fewer on the training parts are ranked by hit rate\n"
-        "there (then by median onset latency, then false per minute); the first of them that is at N or fewer on the\n"
-        "held-out parts too is picked. Engine and scoring are those of dryrun, armed and from an unsettled floor;\n"
-        "the time that the floor needs to settle is not scored. Recordings are held in memory, 4 bytes a sample");
+        "the 2nd, 4th, 6th ... are held out. All settings are swept as detectors without pulses, which shares the\n"
+        "filters; the best, and those on the front of hit rate, false per minute and latency, are run again by the\n"
+        "whole engine, armed, as dryrun does. Of these, those at N or fewer on the training parts are ranked by hit\n"
+        "rate there (then by median onset latency, then false per minute); the first of them that is at N or fewer\n"
+        "on the held-out parts too is picked. Floors start unsettled; the time that they need to settle is not\n"
+        "scored. Recordings are held in memory, 4 bytes a sample: 72 MB for an hour of 4 sites at 1250 Hz");
     command.add_option("RECORDING", options->recordings, "one or more recordings of the same rate")->required();
     command.add_option("--out", options->out, "settings file to write")->required();
     command.add_option("--settings", options->base, "settings to start from; without it the defaults");
@@ -199,17 +269,16 @@ void add_tune_command(CLI::App& program) {
     command.add_option("--max-false-per-minute", options->max_false_per_minute, "N of the rule above")
         ->check(CLI::Range(0.0, 1000.0))
         ->capture_default_str();
-    add_grid(command, options->grid);
-    command.add_option("--block-s", options->plan.block_s, "length of the blocks that recordings are cut into")
+    add_grid(command, *options);
+    command.add_option("--block-s", options->block_s, "length of the blocks that recordings are cut into")
         ->check(CLI::Range(1.0, 3600.0))
         ->capture_default_str();
-    command
-        .add_option("--threads", options->plan.threads, "settings tried at the same time; results do not depend on it")
-        ->check(CLI::Range(1U, 256U))
-        ->capture_default_str();
+    add_long_work(command, *options);
     command.add_option("--show", options->show, "lines of the table to print, best first")->capture_default_str();
-    command.add_option("--table", options->table, "file for the whole table, tab-separated");
-    command.add_flag("--overwrite", options->overwrite, "replace --out where it exists");
+    command.add_option("--table", options->table, "file for the table of all settings, tab-separated");
+    command.add_option("--curve", options->curve,
+                       "file for the trade-off, tab-separated: the settings that no other one beats");
+    command.add_flag("--overwrite", options->overwrite, "replace --out, and work of an earlier sweep, where it exists");
     add_example(command, "build/millpond tune replay_files/four_sites_90s.flac --labels "
                          "replay_files/four_sites_90s.flac.truth.tsv --settings config/live.yaml --block-s 15 "
                          "--out tuned.yaml");

@@ -1,28 +1,12 @@
 #include "detector/detector.hpp"
 
 #include "detector/detector_state.hpp"
+#include "detector/tiny_is_zero.hpp"
 
 #include <algorithm>
 #include <cmath>
-#include <xmmintrin.h>
 
 namespace millpond {
-namespace {
-
-// Numbers below 1e-308 count as zero while the kernel runs: a flat channel would otherwise slow it a hundredfold. Set
-// here, not by the thread, so that every command computes the same.
-class TinyIsZero {
-  public:
-    TinyIsZero() noexcept : before_(_mm_getcsr()) { _mm_setcsr(before_ | 0x8040U); }
-    ~TinyIsZero() { _mm_setcsr(before_); }
-    TinyIsZero(const TinyIsZero&) = delete;
-    TinyIsZero& operator=(const TinyIsZero&) = delete;
-
-  private:
-    unsigned before_;
-};
-
-} // namespace
 
 Detector::Detector(std::unique_ptr<State> state) noexcept : state_(std::move(state)) {}
 Detector::Detector(Detector&&) noexcept = default;
@@ -48,6 +32,33 @@ std::size_t Detector::run(const FrameBlock& block, std::optional<Crossing>& cros
     return used;
 }
 
+void Detector::envelopes(const FrameBlock& block, std::span<double> out) noexcept {
+    const TinyIsZero tiny_is_zero;
+    auto& s = *state_;
+    for (std::size_t done = 0; done < block.frames();) {
+        const auto rest = block.part(done, block.frames() - done);
+        KernelOrder order;
+        order.frames = rest.data.data();
+        order.count = s.watches_sites() ? static_cast<std::size_t>(std::min<std::uint64_t>(
+                                              rest.frames(), s.site_watch.frames_to_verdict(s.position)))
+                                        : rest.frames();
+        order.method = s.method;
+        order.resume = s.resume;
+        order.envelopes = out.data() + done * s.lanes.lanes;
+        s.kernel(s.lanes, order);
+        s.resume = false;
+        if (s.watches_sites()) {
+            s.watch_sites(rest.part(0, order.count));
+        }
+        s.position += order.count;
+        done += order.count;
+    }
+}
+
+std::size_t Detector::envelope_stride() const noexcept {
+    return state_->lanes.lanes;
+}
+
 std::size_t Detector::State::skip_blanked(std::size_t frames) noexcept {
     const auto skipped = std::min<std::uint64_t>(frames, blank_until - position);
     if (position < settling_until) {
@@ -65,7 +76,7 @@ std::size_t Detector::State::advance(const FrameBlock& block, std::optional<Cros
     const auto order = next_order(block);
     const auto result = kernel(lanes, order);
     resume = false;
-    if (evidence() && settings.evidence.site_watch.on) {
+    if (watches_sites()) {
         watch_sites(block.part(0, result.frames));
     }
     if (result.last_reference != SIZE_MAX) {
@@ -95,7 +106,7 @@ KernelOrder Detector::State::next_order(const FrameBlock& block) const noexcept 
     order.method = method;
     order.resume = resume;
     std::uint64_t limit = std::min<std::uint64_t>(block.frames(), blank_from - position);
-    if (evidence() && settings.evidence.site_watch.on) {
+    if (watches_sites()) {
         limit = std::min(limit, site_watch.frames_to_verdict(position));
     }
     const std::uint64_t still_until = std::max(settling_until, frozen_until);

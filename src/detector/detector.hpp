@@ -38,6 +38,9 @@ struct FloorState {
     std::uint64_t frames = 0; ///< frames taken into the statistics
 };
 
+/// A deviation is the running mean distance from the mean, scaled so that a Gaussian law's is its SD.
+inline constexpr double deviation_per_spread = 1.2533141373155003;
+
 /// Vector width of the kernel; all give the same bits.
 enum class KernelWidth : std::uint8_t {
     automatic,
@@ -45,6 +48,9 @@ enum class KernelWidth : std::uint8_t {
     avx2,
     avx512
 };
+
+/// Refuses settings that contradict each other or the channels; what depends on the rate, make refuses.
+void check_detector(const DetectorSettings& settings, const Channels& channels, const std::string& where = "detector");
 
 class Detector {
   public:
@@ -101,6 +107,13 @@ class Detector {
     [[nodiscard]] double threshold_deviations() const noexcept;
     /// The vector width in use.
     [[nodiscard]] KernelWidth width() const noexcept;
+
+    /// The dear half of `run` alone, for sweeps over thresholds: envelopes of all frames of a block, envelope_stride()
+    /// values a frame in the order of the floors, the rest of the stride without meaning. No floor, no threshold, no
+    /// blanking; the same bits that `run` compares where nothing blanked it. Gaps are announced as for `run`. A
+    /// detector does one or the other. Thread: one, cold.
+    void envelopes(const FrameBlock& block, std::span<double> out) noexcept;
+    [[nodiscard]] std::size_t envelope_stride() const noexcept;
 
     /// Watches every frame's envelopes, for pictures and tests; slow, never in a live session. Empty: nobody watches.
     /// Called with the frame's place and one envelope for each looked-at channel or feature, then the sum's, if any

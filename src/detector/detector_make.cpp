@@ -41,7 +41,9 @@ KernelEnvelope kernel_method(EnvelopeMethod method) noexcept {
     }
 }
 
-void check(const DetectorSettings& settings, const Channels& channels, const std::string& where) {
+} // namespace
+
+void check_detector(const DetectorSettings& settings, const Channels& channels, const std::string& where) {
     const auto ripple_sites = std::count_if(channels.begin(), channels.end(),
                                             [](const auto& channel) { return channel.role == ChannelRole::ripple; });
     if (ripple_sites == 0) {
@@ -60,11 +62,9 @@ void check(const DetectorSettings& settings, const Channels& channels, const std
     }
 }
 
-} // namespace
-
 Detector Detector::make(const DetectorSettings& settings, const Channels& channels, Hertz rate, KernelWidth width,
                         const std::string& where) {
-    check(settings, channels, where);
+    check_detector(settings, channels, where);
     auto state = std::make_unique<State>();
     state->settings = settings;
     state->rate = rate;

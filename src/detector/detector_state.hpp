@@ -14,9 +14,6 @@
 
 namespace millpond {
 
-/// A deviation is the running mean distance from the mean, scaled so that a Gaussian law's is its SD.
-inline constexpr double deviation_per_spread = 1.2533141373155003;
-
 /// Zeroed memory on a cache line's boundary, as the kernel wants it.
 template <class Value> class Lanes {
   public:
@@ -55,6 +52,7 @@ struct Detector::State {
     void clear_filters() noexcept;
     [[nodiscard]] std::uint16_t channel_at(std::size_t lane) const noexcept;
     [[nodiscard]] bool evidence() const noexcept { return settings.method == DetectionMethod::evidence; }
+    [[nodiscard]] bool watches_sites() const noexcept { return evidence() && settings.evidence.site_watch.on; }
     [[nodiscard]] std::size_t sum_lanes() const noexcept {
         return evidence() || settings.vote.rule == VoteRule::mean ? 1 : 0;
     }

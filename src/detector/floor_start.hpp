@@ -1,5 +1,5 @@
 // The floor's first second: medians, so that a start-up artefact or an early ripple does not poison what follows.
-// Thread: loop, after make. Private to this room.
+// Thread: loop, after make. For this room and for sweeps.
 #pragma once
 
 #include <cstddef>

@@ -80,6 +80,7 @@ struct KernelOrder {
     std::uint64_t warming = 0; // frames in the floor so far, while each weighs as much as those before it; 0: `weight`
     std::uint32_t stop_at_votes = 0;    // stop after a frame with this many votes (waiting for a crossing) ...
     std::uint32_t stop_below_rearm = 0; // ... or after one with fewer re-arm votes than this; 0: never
+    double* envelopes = nullptr;        // [count][lanes]: where envelopes go; then nothing is compared
 };
 
 struct KernelResult {

@@ -204,17 +204,39 @@ inline void envelopes_of_frame(KernelState& state, const float* frame, bool whol
 }
 
 template <KernelEnvelope method, bool mixed>
-inline KernelResult run_method(KernelState& state, const KernelOrder& order) {
+inline void envelope_of_every_lane(KernelState& state, const KernelOrder& order, std::size_t frame_of_order,
+                                   const float* frame, bool resume) {
+    const bool whole_vectors = state.in_stream_order && (order.count - frame_of_order) * state.channels >= state.lanes;
+    envelopes_of_frame<method, mixed>(state, frame, whole_vectors, resume);
+    if (state.sum_weight != nullptr) {
+        state.envelope[state.signal_lanes] = sum_over_lanes(state);
+    }
+}
+
+// For sweeps: what the loop below would compare, written out instead.
+template <KernelEnvelope method, bool mixed>
+inline KernelResult keep_envelopes(KernelState& state, const KernelOrder& order) {
     KernelResult result;
-    bool resume = order.resume;
+    double* kept = order.envelopes;
     for (const float* frame = order.frames; result.frames < order.count; frame += state.channels) {
-        const bool whole_vectors =
-            state.in_stream_order && (order.count - result.frames) * state.channels >= state.lanes;
-        envelopes_of_frame<method, mixed>(state, frame, whole_vectors, resume);
-        resume = false;
-        if (state.sum_weight != nullptr) {
-            state.envelope[state.signal_lanes] = sum_over_lanes(state);
+        envelope_of_every_lane<method, mixed>(state, order, result.frames, frame, order.resume && result.frames == 0);
+        for (std::size_t lane = 0; lane < state.lanes; lane += width) {
+            __builtin_memcpy(kept + lane, state.envelope + lane, sizeof(Doubles)); // the caller's memory lies anywhere
         }
+        kept += state.lanes;
+        ++result.frames;
+    }
+    return result;
+}
+
+template <KernelEnvelope method, bool mixed>
+inline KernelResult run_method(KernelState& state, const KernelOrder& order) {
+    if (order.envelopes != nullptr) {
+        return keep_envelopes<method, mixed>(state, order);
+    }
+    KernelResult result;
+    for (const float* frame = order.frames; result.frames < order.count; frame += state.channels) {
+        envelope_of_every_lane<method, mixed>(state, order, result.frames, frame, order.resume && result.frames == 0);
         const double weight =
             order.warming == 0 ? order.weight : 1.0 / static_cast<double>(order.warming + result.frames + 1);
         result.tally = compare_to_floor<mixed>(state, weight);

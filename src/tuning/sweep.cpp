@@ -1,160 +1,181 @@
 #include "tuning/sweep.hpp"
 
+#include "tuning/job_pool.hpp"
 #include "tuning/offline_engine.hpp"
+#include "tuning/shared_pass.hpp"
 
 #include <algorithm>
-#include <atomic>
-#include <chrono>
-#include <cmath>
-#include <exception>
 #include <mutex>
-#include <thread>
+#include <utility>
 
 namespace millpond {
 namespace {
 
-// Recordings one after the other on one axis of frames, so that one score covers all of them.
-struct Joined {
-    Ripples ripples;
-    std::vector<SampleIndex> detections;
-    Intervals training, held_out;
-    std::uint64_t offset = 0;
+// Settings that one thread takes through the recordings together: as many as keep a pass cheap beside its rules, few
+// enough that two threads have work to the end.
+constexpr std::size_t most_in_a_job = 64;
 
-    void add(const TuningRecording& recording, const OfflineEngine& engine, std::uint64_t block_frames) {
-        for (auto ripple : recording.truth) {
-            ripple.onset = ripple.onset + offset;
-            ripple.peak = ripple.peak + offset;
-            ripple.end = ripple.end + offset;
-            ripples.push_back(ripple);
-        }
-        for (const auto at : detections_to_score(engine.events())) {
-            detections.push_back(at + offset);
-        }
-        const auto parts = parts_of(recording.frames(), block_frames);
-        const auto eligible = without(engine.eligible(), recording.excluded);
-        append(training, intersection(eligible, parts.training));
-        append(held_out, intersection(eligible, parts.held_out));
-        // A ripple labelled beyond one recording's end must not reach into the next.
-        const auto last = ripples.empty() ? SampleIndex{0} : ripples.back().end;
-        offset = std::max(offset + recording.frames(), last.value + 1) + block_frames;
-    }
+using Places = std::vector<std::size_t>;
 
-  private:
-    void append(Intervals& to, const Intervals& from) const {
-        for (const auto& interval : from) {
-            to.push_back({interval.from + offset, interval.to + offset});
+// Places of `candidates` without a result, grouped by the pass that they share.
+std::vector<Places> jobs_for(std::span<const DetectorSettings> candidates, const SweepResults& known,
+                             unsigned threads) {
+    std::vector<Places> groups;
+    std::size_t left = 0;
+    for (std::size_t i = 0; i < candidates.size(); ++i) {
+        if (known[i]) {
+            continue;
+        }
+        ++left;
+        const auto group = std::find_if(groups.begin(), groups.end(), [&](const Places& places) {
+            return share_a_pass(candidates[places.front()], candidates[i]);
+        });
+        if (group == groups.end()) {
+            groups.push_back({i});
+        } else {
+            group->push_back(i);
         }
     }
-};
+    const std::size_t share = std::clamp<std::size_t>((left + threads - 1) / std::max(1U, threads), 1, most_in_a_job);
+    std::vector<Places> jobs;
+    for (const auto& group : groups) {
+        for (std::size_t from = 0; from < group.size(); from += share) {
+            const auto to = std::min(from + share, group.size());
+            jobs.emplace_back(group.begin() + static_cast<std::ptrdiff_t>(from),
+                              group.begin() + static_cast<std::ptrdiff_t>(to));
+        }
+    }
+    return jobs;
+}
 
-SweepResult run_candidate(std::span<const TuningRecording> recordings, const DetectorSettings& detector,
-                          const SweepPlan& plan) {
-    Joined joined;
-    SweepResult result;
+std::uint64_t block_frames(const SweepPlan& plan) {
+    return frames_in_ms(plan.block_s * 1000.0, plan.rate);
+}
+
+std::vector<SweepResult> run_job(std::span<const TuningRecording> recordings,
+                                 std::span<const DetectorSettings> candidates, const Places& places,
+                                 const SweepPlan& plan, const std::atomic<bool>& stop,
+                                 std::atomic<std::uint64_t>& seen) {
+    std::vector<DetectorSettings> settings;
+    for (const auto place : places) {
+        settings.push_back(candidates[place]);
+    }
+    std::vector<JoinedScore> joined(places.size());
+    double delay_samples = 0.0;
+    for (const auto& recording : recordings) {
+        const auto pass = run_shared_pass(settings, recording.channels, plan.rate, recording.data, stop, seen);
+        if (pass.found.empty()) {
+            return {};
+        }
+        delay_samples = pass.delay_samples;
+        for (std::size_t i = 0; i < joined.size(); ++i) {
+            joined[i].add(recording, pass.found[i].detections, pass.found[i].eligible, block_frames(plan));
+        }
+    }
+    std::vector<SweepResult> results;
+    for (const auto& each : joined) {
+        results.push_back(each.result(plan.early_ms, plan.rate));
+        results.back().delay_ms = delay_samples * 1000.0 / plan.rate.value;
+    }
+    return results;
+}
+
+SweepResult run_engine(std::span<const TuningRecording> recordings, const DetectorSettings& detector,
+                       const SweepPlan& plan) {
+    JoinedScore joined;
+    double delay_ms = 0.0;
     for (const auto& recording : recordings) {
         auto engine = OfflineEngine::make({detector, plan.arbiter}, recording.channels, plan.rate);
         engine.start(true);
         engine.process({SampleIndex{0}, recording.channels.size(), recording.data});
         engine.finish();
-        joined.add(recording, engine, frames_in_ms(plan.block_s * 1000.0, plan.rate));
-        result.delay_ms = engine.detector().delay_samples() * 1000.0 / plan.rate.value;
+        joined.add(recording, detections_to_score(engine.events()), engine.eligible(), block_frames(plan));
+        delay_ms = engine.detector().delay_samples() * 1000.0 / plan.rate.value;
     }
-    result.training = score(joined.ripples, joined.detections, joined.training, plan.early_ms, plan.rate);
-    result.held_out = score(joined.ripples, joined.detections, joined.held_out, plan.early_ms, plan.rate);
+    auto result = joined.result(plan.early_ms, plan.rate);
+    result.delay_ms = delay_ms;
     return result;
 }
 
-bool at_most(double figure, double limit) noexcept {
-    return figure <= limit; // not-a-number is not
-}
+// Results on their way from the threads that find them to the thread that asked.
+class Collected {
+  public:
+    Collected(SweepResults known, std::size_t candidates, const SweepWatch& watch)
+        : watch_(watch), results_(std::move(known)) {
+        results_.resize(candidates);
+    }
+    [[nodiscard]] const SweepResults& results() const noexcept { return results_; }
+    [[nodiscard]] const std::atomic<bool>& stop() const noexcept { return stop_; }
 
-/// Not-a-number comes last.
-double latency_of(const SweepResult& result) noexcept {
-    const double median = result.training.onset_latency_ms.median;
-    return std::isnan(median) ? INFINITY : median;
+    void put(std::size_t place, const SweepResult& result) {
+        const std::lock_guard guard(lock_);
+        fresh_.emplace_back(place, result);
+    }
+    void hand_on(double share) {
+        std::vector<std::pair<std::size_t, SweepResult>> fresh;
+        {
+            const std::lock_guard guard(lock_);
+            fresh.swap(fresh_);
+        }
+        for (const auto& [place, result] : fresh) {
+            results_[place] = result;
+            watch_.finished(place, result);
+        }
+        watch_.progress(share);
+        stop_ = stop_ || watch_.stop();
+    }
+
+  private:
+    const SweepWatch& watch_;
+    SweepResults results_;
+    std::mutex lock_;
+    std::vector<std::pair<std::size_t, SweepResult>> fresh_;
+    std::atomic<bool> stop_{false};
+};
+
+double share_of(std::uint64_t done, std::uint64_t all) noexcept {
+    return all == 0 ? 1.0 : static_cast<double>(done) / static_cast<double>(all);
 }
 
 } // namespace
 
-Parts parts_of(std::uint64_t frames, std::uint64_t block_frames) {
-    Parts parts;
-    for (std::uint64_t at = 0, block = 0; at < frames; at += block_frames, ++block) {
-        auto& side = block % 2 == 0 ? parts.training : parts.held_out;
-        side.push_back({SampleIndex{at}, SampleIndex{std::min(at + block_frames, frames)}});
+SweepResults sweep(std::span<const TuningRecording> recordings, std::span<const DetectorSettings> candidates,
+                   const SweepPlan& plan, const SweepWatch& watch, SweepResults known) {
+    Collected collected(std::move(known), candidates.size(), watch);
+    const auto jobs = jobs_for(candidates, collected.results(), plan.threads);
+    std::uint64_t frames = 0;
+    for (const auto& recording : recordings) {
+        frames += recording.frames();
     }
-    return parts;
-}
-
-std::vector<SweepResult> sweep(std::span<const TuningRecording> recordings,
-                               std::span<const DetectorSettings> candidates, const SweepPlan& plan,
-                               const std::function<void(std::size_t)>& done) {
-    std::vector<SweepResult> results(candidates.size());
-    const unsigned threads = std::max(1U, plan.threads);
-    std::atomic<std::size_t> next{0}, finished{0};
-    std::atomic<unsigned> working{threads};
-    std::exception_ptr trouble;
-    std::mutex trouble_lock;
-    const auto work = [&] {
-        for (std::size_t i = next++; i < candidates.size(); i = next++) {
-            try {
-                results[i] = run_candidate(recordings, candidates[i], plan);
-            } catch (...) {
-                const std::lock_guard guard(trouble_lock);
-                trouble = std::current_exception();
-                next = candidates.size();
+    std::atomic<std::uint64_t> seen{0};
+    run_jobs(
+        jobs.size(), plan.threads, collected.stop(),
+        [&](std::size_t job) {
+            const auto found = run_job(recordings, candidates, jobs[job], plan, collected.stop(), seen);
+            for (std::size_t i = 0; i < found.size(); ++i) {
+                collected.put(jobs[job][i], found[i]);
             }
-            ++finished;
-        }
-        --working;
-    };
-    {
-        std::vector<std::jthread> workers;
-        for (unsigned i = 0; i < threads; ++i) {
-            workers.emplace_back(work);
-        }
-        while (working > 0) {
-            done(finished);
-            std::this_thread::sleep_for(std::chrono::milliseconds(20));
-        }
-    }
-    if (trouble) {
-        std::rethrow_exception(trouble);
-    }
-    done(candidates.size());
-    return results;
+        },
+        [&] { collected.hand_on(share_of(seen, frames * jobs.size())); });
+    return collected.results();
 }
 
-std::vector<std::size_t> ranking(std::span<const SweepResult> results, double max_false_per_minute) {
-    std::vector<std::size_t> ranked;
-    for (std::size_t i = 0; i < results.size(); ++i) {
-        if (at_most(results[i].training.false_per_minute, max_false_per_minute) &&
-            results[i].training.eligible_ripples > 0) {
-            ranked.push_back(i);
-        }
-    }
-    std::stable_sort(ranked.begin(), ranked.end(), [&](std::size_t a, std::size_t b) {
-        const auto& x = results[a].training;
-        const auto& y = results[b].training;
-        if (x.hit_rate.share != y.hit_rate.share) {
-            return x.hit_rate.share > y.hit_rate.share;
-        }
-        if (latency_of(results[a]) != latency_of(results[b])) {
-            return latency_of(results[a]) < latency_of(results[b]);
-        }
-        return x.false_per_minute < y.false_per_minute;
-    });
-    return ranked;
-}
-
-std::optional<Pick> pick(std::span<const SweepResult> results, double max_false_per_minute) {
-    std::size_t passed_over = 0;
-    for (const auto index : ranking(results, max_false_per_minute)) {
-        if (at_most(results[index].held_out.false_per_minute, max_false_per_minute)) {
-            return Pick{index, passed_over};
-        }
-        ++passed_over;
-    }
-    return std::nullopt;
+SweepResults confirm(std::span<const TuningRecording> recordings, std::span<const DetectorSettings> candidates,
+                     std::span<const std::size_t> which, const SweepPlan& plan, const SweepWatch& watch,
+                     SweepResults known) {
+    Collected collected(std::move(known), candidates.size(), watch);
+    Places jobs;
+    std::copy_if(which.begin(), which.end(), std::back_inserter(jobs),
+                 [&](std::size_t place) { return !collected.results()[place]; });
+    std::atomic<std::uint64_t> done{0};
+    run_jobs(
+        jobs.size(), plan.threads, collected.stop(),
+        [&](std::size_t job) {
+            collected.put(jobs[job], run_engine(recordings, candidates[jobs[job]], plan));
+            ++done;
+        },
+        [&] { collected.hand_on(share_of(done, jobs.size())); });
+    return collected.results();
 }
 
 } // namespace millpond
