@@ -6,7 +6,6 @@
 #include "audit/audit_text.hpp"
 #include "journal/session_reader.hpp"
 #include "settings/settings.hpp"
-#include "settings/yaml_reader.hpp"
 
 #include <CLI/CLI.hpp>
 #include <fmt/format.h>
@@ -20,6 +19,7 @@ namespace {
 
 struct AuditOptions {
     std::string session, labels, referee, out;
+    LabelReading label_reading;
     bool json = false, overwrite = false;
 };
 
@@ -40,8 +40,9 @@ class Stages {
 };
 
 // A session may have been ended, or cut, before the recording that the labels are of.
-Ripples labels_for(const std::string& table, const SessionReader& session) {
-    auto ripples = ripples_from_table(table, session.rate(), UINT64_MAX);
+Ripples labels_for(const AuditOptions& options, const SessionReader& session) {
+    const auto& table = options.labels;
+    auto ripples = ripples_from_table(table, session.rate(), UINT64_MAX, options.label_reading);
     const auto beyond = std::erase_if(ripples, [&](const Ripple& ripple) { return ripple.onset >= session.end(); });
     if (beyond > 0) {
         fmt::print(stderr, "audit: {} of {} ripples of {} lie beyond the session's end at {:.3f} s and are left out\n",
@@ -58,12 +59,10 @@ AuditResult audit_with(const AuditOptions& options) {
     input.settings = {settings.detector, settings.arbiter};
     input.settings_name = session.settings_file().string();
     if (!options.labels.empty()) {
-        input.labels = labels_for(options.labels, session);
+        input.labels = labels_for(options, session);
         input.labels_name = options.labels;
     }
-    if (!options.referee.empty()) {
-        input.referee = read_yaml_file<RefereeSettings>(options.referee);
-    }
+    input.referee = referee_settings_of(options.referee);
     Stages stages;
     input.progress = [&stages](const char* doing, double share) { stages.show(doing, share); };
     return audit_session(input);
@@ -92,11 +91,12 @@ void add_audit_command(CLI::App& program) {
         program.add_subcommand("audit", "what happened in a session, and whether it decides the same again");
     const auto options = std::make_shared<AuditOptions>();
     command->add_option("SESSION", options->session, "session folder of `millpond live`, closed or cut")->required();
-    command->add_option(
-        "--labels", options->labels,
-        "events table whose rows of trial_type ripple are the truth; those beyond the session's end are\n"
-        "left out; else the referee over the stored samples");
-    command->add_option("--referee", options->referee, "YAML file with the referee's settings; else its defaults");
+    auto* labels =
+        command->add_option("--labels", options->labels,
+                            "events table with the ripples, the truth; those beyond the session's end are left out;\n"
+                            "else the referee over the stored samples");
+    add_label_options(*command, options->label_reading, labels);
+    command->add_option("--referee", options->referee, referee_help())->excludes(labels);
     command->add_option("--out", options->out, "folder for audit.json and tables; made where it does not exist");
     command->add_flag("--overwrite", options->overwrite, "replace the files of an earlier audit in --out");
     command->add_flag("--json", options->json, "print JSON with the same figures instead of text");

@@ -1,11 +1,11 @@
 #include "app/dry_run.hpp"
 
+#include "app/agreement_run.hpp"
 #include "app/from_settings.hpp"
 #include "app/progress.hpp"
 #include "app/truth.hpp"
 #include "base/clock.hpp"
 #include "recording/recording_reader.hpp"
-#include "settings/yaml_reader.hpp"
 
 #include <fmt/format.h>
 
@@ -21,8 +21,9 @@ void notice_rate(const Settings& settings, Hertz rate) {
     }
 }
 
-// One pass feeds the engine and, where it is the truth, the referee. Returns the time that the engine took.
-Nanos run_over(RecordingReader& reader, std::size_t packet_frames, OfflineEngine& engine, Referee* referee) {
+// One pass feeds the engine and whoever judges. Returns the time that the engine took.
+Nanos run_over(RecordingReader& reader, std::size_t packet_frames, OfflineEngine& engine, Referee* referee,
+               AgreementRun* agreement) {
     const auto& info = reader.info();
     Progress progress("dry run", static_cast<double>(info.frames));
     std::vector<float> buffer(std::max<std::size_t>(packet_frames, 4096) / packet_frames * packet_frames *
@@ -38,6 +39,9 @@ Nanos run_over(RecordingReader& reader, std::size_t packet_frames, OfflineEngine
         engine_time += monotonic_now() - before;
         if (referee != nullptr) {
             referee->add(block);
+        }
+        if (agreement != nullptr) {
+            agreement->add(block);
         }
         at = at + frames;
         progress.at(static_cast<double>(at.value));
@@ -76,18 +80,24 @@ DryRun dry_run(const DryRunPlan& plan) {
     // The engine first: where a band does not fit the rate, the detector's is the one to name.
     auto engine = OfflineEngine::make({settings.detector, settings.arbiter}, run.channels, run.rate,
                                       schedule_for(settings.arbiter, run.rate), warm_start_floors(settings.detector));
+    const auto judge = referee_settings_of(plan.referee);
+    const std::string judge_name = plan.referee.empty() ? "referee" : plan.referee;
     std::optional<Referee> referee;
+    std::optional<AgreementRun> agreement;
+    if (plan.agreement) {
+        agreement.emplace(judge, judge_name, run.channels, run.rate);
+    }
     if (plan.labels.empty()) {
-        run.referee_settings = plan.referee.empty() ? RefereeSettings{} : read_yaml_file<RefereeSettings>(plan.referee);
-        referee = Referee::make(*run.referee_settings, run.channels, run.rate,
-                                plan.referee.empty() ? "referee" : plan.referee.string());
+        run.referee_settings = judge;
+        referee = Referee::make(judge, run.channels, run.rate, judge_name);
         run.truth = "referee";
     } else {
-        run.findings.ripples = ripples_from_table(plan.labels, run.rate, run.frames);
+        run.findings.ripples = ripples_from_table(plan.labels, run.rate, run.frames, plan.label_reading);
         run.truth = plan.labels.filename().string();
     }
     engine.start(plan.armed);
-    const auto took = run_over(*reader, plan.packet_frames, engine, referee ? &*referee : nullptr);
+    const auto took =
+        run_over(*reader, plan.packet_frames, engine, referee ? &*referee : nullptr, agreement ? &*agreement : nullptr);
     run.real_pace = seconds_at(SampleIndex{run.frames}, run.rate) / std::chrono::duration<double>(took).count();
     run.events = engine.events();
     run.orders = engine.orders();
@@ -97,8 +107,13 @@ DryRun dry_run(const DryRunPlan& plan) {
     if (referee) {
         run.findings = referee->finish();
     }
-    run.score = score(run.findings.ripples, detections_to_score(run.events), engine.eligible(),
-                      referee ? referee_early_ms : 0.0, run.rate);
+    const auto eligible = without(engine.eligible(), run.findings.artefacts.excluded);
+    run.score = score(run.findings.ripples, detections_to_score(run.events), eligible, referee ? referee_early_ms : 0.0,
+                      run.rate);
+    if (agreement) {
+        run.agreement = agreement->finish(referee ? std::nullopt
+                                                  : std::optional(RippleList{run.truth, run.findings.ripples, true}));
+    }
     return run;
 }
 

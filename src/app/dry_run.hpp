@@ -1,8 +1,10 @@
 // A dry run: the engine over a recording, as fast as it goes, scored against labels or the referee. Thread: cold.
 #pragma once
 
+#include "app/truth.hpp"
 #include "base/channels.hpp"
 #include "recording/events_table.hpp"
+#include "referee/agreement.hpp"
 #include "referee/referee.hpp"
 #include "referee/scoring.hpp"
 #include "settings/settings.hpp"
@@ -17,7 +19,10 @@
 namespace millpond {
 
 struct DryRunPlan {
-    std::filesystem::path recording, sidecar, settings, labels, referee;
+    std::filesystem::path recording, sidecar, settings, labels;
+    LabelReading label_reading;
+    std::string referee;    ///< a rule's name or a file; empty: the default rule
+    bool agreement = false; ///< every rule beside each other, and beside the labels
     bool armed = true;
     std::size_t packet_frames = 4096; ///< frames given to the engine at a time; decisions do not depend on it
 };
@@ -42,6 +47,7 @@ struct DryRun {
     std::optional<RefereeSettings> referee_settings;
     RefereeFindings findings; ///< from labels: ripples alone
     Score score;
+    std::optional<Agreement> agreement;
 };
 
 /// Refuses settings that do not fit the recording, and labels of another one. Notices go to standard error.

@@ -2,6 +2,7 @@
 
 #include "journal/session_tables.hpp"
 #include "recording/whole_file.hpp"
+#include "referee/referee_report.hpp"
 #include "referee/score_json.hpp"
 
 #include <fmt/format.h>
@@ -77,10 +78,7 @@ Json withheld_json(const DryRun& run) {
 Json truth_json(const DryRun& run) {
     Json truth{{"from", run.truth}, {"ripples", run.findings.ripples.size()}};
     if (run.referee_settings) {
-        truth["referee"] = json_of(*run.referee_settings);
-        truth["envelope_mean_uv"] = run.findings.mean;
-        truth["envelope_deviation_uv"] = run.findings.deviation;
-        truth["frames_judged"] = run.findings.frames_judged;
+        truth["referee"] = referee_json(*run.referee_settings, run.findings, run.channels, run.rate);
     }
     return truth;
 }
@@ -92,6 +90,17 @@ std::string withheld_lines(const DryRun& run) {
             text +=
                 fmt::format("  withheld        {}, rule {}\n", run.withheld[rule], name_of(static_cast<Rule>(rule)));
         }
+    }
+    return text;
+}
+
+std::string truth_lines(const DryRun& run) {
+    const auto by = run.referee_settings ? ", rule " + rule_text(*run.referee_settings) : std::string{};
+    std::string text = fmt::format("  truth           {}{}, {} ripples, early {} ms\n", run.truth, by,
+                                   run.findings.ripples.size(), run.score.early_ms);
+    if (run.referee_settings) {
+        text += fmt::format("  artefacts       {}\n",
+                            artefacts_text(*run.referee_settings, run.findings, run.channels, run.rate));
     }
     return text;
 }
@@ -124,24 +133,27 @@ std::string dry_run_json(const DryRun& run) {
     for (const auto& channel : run.channels) {
         channels.push_back({{"name", channel.name}, {"role", word_for<ChannelRole>(channel_roles, channel.role)}});
     }
-    const Json json{{"recording", run.recording},
-                    {"format", run.format},
-                    {"rate_hz", run.rate.value},
-                    {"frames", run.frames},
-                    {"channels", channels},
-                    {"settings_fnv1a64", run.settings_hash},
-                    {"armed", run.armed},
-                    {"filter_delay_ms", run.filter_delay_ms},
-                    {"delay_ms", run.delay_ms},
-                    {"detections", count_of(run, EventKind::detection)},
-                    {"triggers", count_of(run, EventKind::trigger)},
-                    {"pulses", run.orders.size()},
-                    {"withheld", withheld_json(run)},
-                    {"gaps", run.gaps},
-                    {"gap_frames", run.gap_frames},
-                    {"truth", truth_json(run)},
-                    {"score", json_of(run.score)},
-                    {"definitions", score_definitions()}};
+    Json json{{"recording", run.recording},
+              {"format", run.format},
+              {"rate_hz", run.rate.value},
+              {"frames", run.frames},
+              {"channels", channels},
+              {"settings_fnv1a64", run.settings_hash},
+              {"armed", run.armed},
+              {"filter_delay_ms", run.filter_delay_ms},
+              {"delay_ms", run.delay_ms},
+              {"detections", count_of(run, EventKind::detection)},
+              {"triggers", count_of(run, EventKind::trigger)},
+              {"pulses", run.orders.size()},
+              {"withheld", withheld_json(run)},
+              {"gaps", run.gaps},
+              {"gap_frames", run.gap_frames},
+              {"truth", truth_json(run)},
+              {"score", json_of(run.score)},
+              {"definitions", score_definitions()}};
+    if (run.agreement) {
+        json["agreement"] = agreement_json(*run.agreement, run.rate);
+    }
     return json.dump(2) + "\n";
 }
 
@@ -159,8 +171,7 @@ std::string dry_run_summary(const DryRun& run) {
     if (run.gaps > 0) {
         text += fmt::format("  gaps            {}, {} frames\n", run.gaps, run.gap_frames);
     }
-    text += fmt::format("  truth           {}, {} ripples, early {} ms\n", run.truth, run.findings.ripples.size(),
-                        score.early_ms);
+    text += truth_lines(run);
     text +=
         fmt::format("  eligible        {:.2f} minutes, {} ripples\n", score.eligible_minutes, score.eligible_ripples);
     text += fmt::format("  hit rate        {}\n  precision       {}\n", told(score.hit_rate), told(score.precision));

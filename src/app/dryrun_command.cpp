@@ -22,6 +22,9 @@ struct Options {
 void write_results(const DryRun& run, const std::filesystem::path& folder) {
     write_dry_run_events(run, folder / "events.tsv");
     write_whole_file(folder / "score.json", dry_run_json(run));
+    if (run.agreement) {
+        write_whole_file(folder / "agreement.tsv", agreement_table(*run.agreement));
+    }
 }
 
 // The folder appears whole: it is made under another name and renamed.
@@ -49,10 +52,18 @@ void run_command(Options& options) {
         throw Refusal("--out " + options.out.string(), "something of that name",
                       "a new folder, or --overwrite for one that exists");
     }
+    if (!options.plan.referee.empty() && !options.plan.labels.empty() && !options.plan.agreement) {
+        throw Refusal("--referee", "--labels beside it, which are the truth then",
+                      "one of the two, or --agreement, which compares them");
+    }
     options.plan.armed = !options.not_armed;
     const auto run = dry_run(options.plan);
     write_folder(run, options);
-    fmt::print("{}  results         {}: events.tsv, score.json\n", dry_run_summary(run), options.out.string());
+    fmt::print("{}  results         {}: events.tsv, score.json{}\n", dry_run_summary(run), options.out.string(),
+               run.agreement ? ", agreement.tsv" : "");
+    if (run.agreement) {
+        fmt::print("{}", agreement_text(*run.agreement, run.rate));
+    }
 }
 
 } // namespace
@@ -67,11 +78,16 @@ void add_dryrun_command(CLI::App& program) {
         "channels where they list some, else the recording's");
     command.add_option("RECORDING", options->plan.recording, "WAV, RF64, W64, FLAC, raw or EDF+ file")->required();
     command.add_option("--settings", options->plan.settings, "settings file, the same as for a session")->required();
-    command.add_option("--out", options->out, "folder for events.tsv and score.json; must not exist")->required();
+    command
+        .add_option("--out", options->out,
+                    "folder for events.tsv, score.json and, with --agreement, agreement.tsv; must not exist")
+        ->required();
     auto* labels = command.add_option("--labels", options->plan.labels,
-                                      "events table whose rows of trial_type ripple are the truth; else the referee");
-    command.add_option("--referee", options->plan.referee, "YAML file with the referee's settings; else its defaults")
-        ->excludes(labels);
+                                      "events table with the ripples, the truth; else the referee");
+    add_label_options(command, options->plan.label_reading, labels);
+    command.add_option("--referee", options->plan.referee, referee_help());
+    command.add_flag("--agreement", options->plan.agreement,
+                     "compare all rules of the referee, and the labels with each: how many events they share");
     command.add_option("--sidecar", options->plan.sidecar,
                        "what the recording's file does not say; else RECORDING.yaml");
     command.add_flag("--not-armed", options->not_armed,
@@ -83,7 +99,9 @@ void add_dryrun_command(CLI::App& program) {
         ->capture_default_str();
     command.add_flag("--overwrite", options->overwrite, "write into --out where it exists");
     add_example(command, "build/millpond dryrun replay_files/four_sites_90s.flac --settings config/live.yaml "
-                         "--labels replay_files/four_sites_90s.flac.truth.tsv --out dry");
+                         "--labels replay_files/four_sites_90s.flac.truth.tsv --out dry\n"
+                         "  build/millpond dryrun replay_files/four_sites_90s.flac --settings config/live.yaml "
+                         "--referee deceuninck_2024 --agreement --out dry_by_rules");
     command.callback([options] { run_command(*options); });
 }
 

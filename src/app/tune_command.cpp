@@ -278,8 +278,8 @@ void add_tune_command(CLI::App& program) {
                            "events tables with the ripples, one for each recording in their order, separated\n"
                            "by commas; without them the referee");
     labels->delimiter(',')->allow_extra_args(false);
-    command.add_option("--referee", options->referee, "YAML file with the referee's settings; else its defaults")
-        ->excludes(labels);
+    add_label_options(command, options->label_reading, labels);
+    command.add_option("--referee", options->referee, referee_help())->excludes(labels);
     command.add_option("--max-false-per-minute", options->max_false_per_minute, "N of the rule above")
         ->check(CLI::Range(0.0, 1000.0))
         ->capture_default_str();

@@ -2,10 +2,10 @@
 
 #include "app/from_settings.hpp"
 #include "app/progress.hpp"
-#include "app/truth.hpp"
 #include "app/wiring.hpp"
 #include "base/refusal.hpp"
 #include "referee/referee.hpp"
+#include "referee/referee_report.hpp"
 #include "settings/yaml_reader.hpp"
 #include "settings/yaml_writer.hpp"
 
@@ -71,14 +71,20 @@ TuneGrid grid_of(const TuneOptions& options) {
     return grid;
 }
 
-Ripples truth_of(const TuneOptions& options, std::size_t index, const TuningRecording& recording, Hertz rate) {
+void add_truth(const TuneOptions& options, std::size_t index, TuningRecording& recording, Hertz rate) {
     if (!options.labels.empty()) {
-        return ripples_from_table(options.labels[index], rate, recording.frames());
+        recording.truth = ripples_from_table(options.labels[index], rate, recording.frames(), options.label_reading);
+        return;
     }
-    const auto settings =
-        options.referee.empty() ? RefereeSettings{} : read_yaml_file<RefereeSettings>(options.referee);
-    return find_ripples(settings, recording.channels, rate, {SampleIndex{0}, recording.channels.size(), recording.data})
-        .ripples;
+    const auto settings = referee_settings_of(options.referee);
+    auto found =
+        find_ripples(settings, recording.channels, rate, {SampleIndex{0}, recording.channels.size(), recording.data},
+                     options.referee.empty() ? "referee" : options.referee);
+    fmt::print(stderr, "referee: {}: {} ripples, rule {}; artefacts: {}\n",
+               options.recordings[index].filename().string(), found.ripples.size(), rule_text(settings),
+               artefacts_text(settings, found, recording.channels, rate));
+    recording.truth = std::move(found.ripples);
+    recording.excluded = std::move(found.artefacts.excluded);
 }
 
 void load(TunePlan& plan, const TuneOptions& options) {
@@ -91,8 +97,9 @@ void load(TunePlan& plan, const TuneOptions& options) {
             throw Refusal(path.string(), fmt::format("{} Hz", file.info.rate.value),
                           fmt::format("the rate of the first recording, {} Hz", first.info.rate.value));
         }
-        TuningRecording recording{channels_for(plan.base, file.info.channels, options.base.string()), file.data, {}};
-        recording.truth = truth_of(options, plan.recordings.size(), recording, file.info.rate);
+        TuningRecording recording{
+            channels_for(plan.base, file.info.channels, options.base.string()), file.data, {}, {}};
+        add_truth(options, plan.recordings.size(), recording, file.info.rate);
         plan.recordings.push_back(std::move(recording));
         progress.at(static_cast<double>(plan.files.size()));
     }
@@ -109,6 +116,10 @@ WorkIdentity identity_of(const TunePlan& plan) {
         for (const auto& ripple : recording.truth) {
             truth.add(ripple.onset.value);
             truth.add(ripple.end.value);
+        }
+        for (const auto& interval : recording.excluded) {
+            truth.add(interval.from.value);
+            truth.add(interval.to.value);
         }
     }
     samples.add(shortest(plan.sweep.rate.value));

@@ -1,6 +1,7 @@
 // What a sweep is about to do: recordings in memory, their ripples, the settings to try. Thread: cold.
 #pragma once
 
+#include "app/truth.hpp"
 #include "app/tune_grid.hpp"
 #include "recording/recording_reader.hpp"
 #include "settings/settings.hpp"
@@ -16,7 +17,9 @@ namespace millpond {
 
 struct TuneOptions {
     std::vector<std::filesystem::path> recordings, labels;
-    std::filesystem::path base, out, referee, table, curve, grid;
+    LabelReading label_reading;
+    std::string referee; ///< a rule's name or a file; empty: the default rule
+    std::filesystem::path base, out, table, curve, grid;
     /// Keys with an option of their own; what is given on the command line, or its default.
     std::map<std::string, std::vector<std::string>> lists{
         {"filter.low_hz", {"130", "150"}},

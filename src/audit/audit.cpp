@@ -14,7 +14,7 @@ ShareDone progress_of(const AuditInput& input, const char* doing) {
     return [&input, doing](double share) { input.progress(doing, share); };
 }
 
-Ripples ask_referee(const AuditInput& input, const SessionReader& session, SampleFileReader& samples) {
+RefereeFindings ask_referee(const AuditInput& input, const SessionReader& session, SampleFileReader& samples) {
     auto referee = Referee::make(input.referee, session.provenance().about.channels, session.rate());
     const auto progress = progress_of(input, "referee");
     std::vector<float> block(65536 / samples.channels() * samples.channels() + samples.channels());
@@ -26,7 +26,7 @@ Ripples ask_referee(const AuditInput& input, const SessionReader& session, Sampl
             progress(static_cast<double>(at.value) / static_cast<double>(samples.frames()));
         }
     }
-    return referee.finish().ripples;
+    return referee.finish();
 }
 
 Score score_as(const AuditInput& input, const SessionReader& session, const AuditScore& known, bool as_session,
@@ -37,7 +37,10 @@ Score score_as(const AuditInput& input, const SessionReader& session, const Audi
     rules.blanking_ms = input.settings.detector.blanking_ms;
     rules.session = as_session;
     rules.lockout_ms = input.settings.arbiter.lockout_ms;
-    const auto eligible = eligible_time(session.events(), rules, session.rate(), SampleIndex{}, upto);
+    auto eligible = eligible_time(session.events(), rules, session.rate(), SampleIndex{}, upto);
+    if (known.referee) {
+        eligible = without(eligible, known.referee->artefacts.excluded);
+    }
     return score(known.ripples, known.detections, eligible, input.labels ? 0.0 : referee_early_ms, session.rate());
 }
 
@@ -52,7 +55,11 @@ void add_score(const AuditInput& input, const SessionReader& session, AuditResul
     }
     AuditScore known;
     known.truth = input.labels ? input.labels_name : "referee";
-    known.ripples = input.labels ? *input.labels : ask_referee(input, session, *samples);
+    if (!input.labels) {
+        known.referee_settings = input.referee;
+        known.referee = ask_referee(input, session, *samples);
+    }
+    known.ripples = input.labels ? *input.labels : known.referee->ripples;
     known.detections = detections_to_score(session.events());
     known.pulses_given = result.figures.pulses > 0;
     known.pulses_scheduled = result.figures.scheduled_triggers > 0;

@@ -31,6 +31,8 @@ struct AuditInput {
 struct AuditScore {
     std::string truth; ///< the table's name, or "referee"
     Ripples ripples;
+    std::optional<RefereeFindings> referee; ///< its ripples are the ones above; empty: labels
+    RefereeSettings referee_settings;
     std::vector<SampleIndex> detections;
     Score detector;                ///< over all time in which the detector was fit to detect
     Score session;                 ///< over the time in which a trigger was possible

@@ -1,5 +1,6 @@
 #include "audit/audit_text.hpp"
 #include "journal/provenance.hpp"
+#include "referee/referee_report.hpp"
 
 namespace millpond {
 namespace {
@@ -106,9 +107,13 @@ Json score_json(const AuditResult& r) {
     if (!r.score) {
         return {{"known", false}, {"why_not", r.why_no_score}};
     }
+    const auto& about = r.provenance.about;
     return {{"known", true},
             {"truth", r.score->truth},
             {"ripples", r.score->ripples.size()},
+            {"referee", r.score->referee
+                            ? referee_json(r.score->referee_settings, *r.score->referee, about.channels, about.rate)
+                            : Json(nullptr)},
             {"pulses_given", r.score->pulses_given},
             {"pulses_scheduled", r.score->pulses_scheduled},
             {"detector", json_of(r.score->detector)},

@@ -1,5 +1,7 @@
 #include "audit/audit_text.hpp"
 
+#include "referee/referee_report.hpp"
+
 #include <fmt/format.h>
 
 #include <algorithm>
@@ -114,6 +116,11 @@ std::string score_text(const AuditResult& r) {
     }
     auto text = fmt::format("\nDetections against ripples ({}: {} ripples; early {} ms)\n", r.score->truth,
                             r.score->ripples.size(), r.score->detector.early_ms);
+    if (r.score->referee) {
+        text += fmt::format("  {:<20} {}\n  {:<20} {}\n", "rule", rule_text(r.score->referee_settings), "artefacts",
+                            artefacts_text(r.score->referee_settings, *r.score->referee, r.provenance.about.channels,
+                                           r.provenance.about.rate));
+    }
     text += one_score("detector, while it was fit to detect", r.score->detector);
     text += one_score("session, while a trigger was possible", r.score->session);
     if (r.score->pulses_given) {

@@ -175,6 +175,32 @@ Intervals intersection(const Intervals& a, const Intervals& b) {
     return both;
 }
 
+Intervals without(const Intervals& intervals, const Intervals& excluded) {
+    Intervals left;
+    std::size_t next = 0;
+    for (auto interval : intervals) {
+        while (next < excluded.size() && excluded[next].to <= interval.from) {
+            ++next;
+        }
+        for (std::size_t i = next; i < excluded.size() && excluded[i].from < interval.to; ++i) {
+            if (excluded[i].from > interval.from) {
+                left.push_back({interval.from, excluded[i].from});
+            }
+            interval.from = std::max(interval.from, excluded[i].to);
+        }
+        if (interval.from < interval.to) {
+            left.push_back(interval);
+        }
+    }
+    return left;
+}
+
+bool touches(const Intervals& intervals, SampleIndex first, SampleIndex last) noexcept {
+    const auto after = std::upper_bound(intervals.begin(), intervals.end(), last,
+                                        [](SampleIndex place, const Interval& i) { return place < i.from; });
+    return after != intervals.begin() && first < std::prev(after)->to;
+}
+
 std::vector<SampleIndex> detections_to_score(std::span<const Event> events) {
     std::vector<SampleIndex> detections;
     for (const auto& event : events) {

@@ -43,6 +43,10 @@ struct EligibleRules {
 [[nodiscard]] bool contains(const Intervals& intervals, SampleIndex at) noexcept;
 [[nodiscard]] std::uint64_t frames_in(const Intervals& intervals) noexcept;
 [[nodiscard]] Intervals intersection(const Intervals& a, const Intervals& b);
+/// What of `intervals` is not in `excluded`.
+[[nodiscard]] Intervals without(const Intervals& intervals, const Intervals& excluded);
+/// Whether the frames from `first` to `last`, both included, meet one of them.
+[[nodiscard]] bool touches(const Intervals& intervals, SampleIndex first, SampleIndex last) noexcept;
 
 /// Decision samples of the detector: its crossings, without those that it refused itself (rules gap, unsettled, veto).
 /// Those that the arbiter refused stay: whether the detector was right does not depend on what was allowed.

@@ -48,6 +48,28 @@ Ripples merged(const Ripples& events, double merge_gap_ms, Hertz rate) {
     return ripples;
 }
 
+// Durations run from the first frame to the last.
+bool stays_above(std::span<const float> envelope, double level, double least_ms, Hertz rate) {
+    std::size_t longest = 0, length = 0;
+    for (const float value : envelope) {
+        length = static_cast<double>(value) >= level ? length + 1 : 0;
+        longest = std::max(longest, length);
+    }
+    return longest > 0 && static_cast<double>(longest - 1) * 1000.0 >= least_ms * rate.value;
+}
+
+double partly_sorted_quantile(std::span<float> values, double q) {
+    const double place = q * static_cast<double>(values.size() - 1);
+    const auto below = values.begin() + static_cast<std::ptrdiff_t>(place);
+    std::nth_element(values.begin(), below, values.end());
+    const double low = static_cast<double>(*below);
+    if (below + 1 == values.end()) {
+        return low;
+    }
+    const double high = static_cast<double>(*std::min_element(below + 1, values.end()));
+    return low + (place - std::floor(place)) * (high - low);
+}
+
 } // namespace
 
 std::vector<FrameRun> finite_runs(std::span<const float> values) {
@@ -113,42 +135,45 @@ void smooth_gaussian(std::span<float> values, double deviation_frames) {
     }
 }
 
-ClippedStatistics clipped_statistics(std::span<const float> values, double clip_deviations) {
-    ClippedStatistics statistics;
+Floor clipped_mean(std::span<const float> values, double clip_deviations, bool clip_again) {
+    Floor floor{0.0, 0.0, values.size()};
     double ceiling = INFINITY;
-    constexpr int passes = 50; // a bound; it settles in about ten
-    for (int pass = 0; pass < passes; ++pass) {
+    const int passes = clip_deviations <= 0.0 ? 1 : clip_again ? 50 : 2; // 50: a bound; it settles in about ten
+    for (int pass = 0; pass < passes && !values.empty(); ++pass) {
         double sum = 0.0;
-        std::uint64_t count = 0;
         for (const float value : values) {
-            if (!std::isnan(value)) {
-                sum += std::min(static_cast<double>(value), ceiling);
-                ++count;
-            }
+            sum += std::min(static_cast<double>(value), ceiling);
         }
-        const double mean = count == 0 ? 0.0 : sum / static_cast<double>(count);
+        const double mean = sum / static_cast<double>(values.size());
         double squares = 0.0;
         for (const float value : values) {
-            if (!std::isnan(value)) {
-                const double off = std::min(static_cast<double>(value), ceiling) - mean;
-                squares += off * off;
-            }
+            const double off = std::min(static_cast<double>(value), ceiling) - mean;
+            squares += off * off;
         }
-        const double deviation = count == 0 ? 0.0 : std::sqrt(squares / static_cast<double>(count));
-        const bool still = std::abs(deviation - statistics.deviation) <= 1e-6 * deviation;
-        statistics = {mean, deviation, count};
+        const double deviation = std::sqrt(squares / static_cast<double>(values.size()));
+        const bool still = std::abs(deviation - floor.spread) <= 1e-6 * deviation;
+        floor.centre = mean;
+        floor.spread = deviation;
         ceiling = mean + clip_deviations * deviation;
         if (still) {
             break;
         }
     }
-    return statistics;
+    return floor;
 }
 
-Ripples pick_ripples(std::span<const float> envelope, SampleIndex first, const ClippedStatistics& floor,
+Floor median_and_quartile(std::span<float> values) {
+    if (values.empty()) {
+        return {};
+    }
+    const double median = partly_sorted_quantile(values, 0.5);
+    return {median, partly_sorted_quantile(values, 0.75) - median, values.size()};
+}
+
+Ripples pick_ripples(std::span<const float> envelope, SampleIndex first, const Floor& floor,
                      const RefereeSettings& settings, Hertz rate) {
-    const double edge = floor.mean + settings.edge_deviations * floor.deviation;
-    const double peak = floor.mean + settings.peak_deviations * floor.deviation;
+    const double edge = floor.centre + settings.edge_deviations * floor.spread;
+    const double peak = floor.centre + settings.peak_deviations * floor.spread;
     Ripples events;
     std::size_t from = 0;
     while (from < envelope.size()) {
@@ -158,7 +183,8 @@ Ripples pick_ripples(std::span<const float> envelope, SampleIndex first, const C
         }
         if (to > from) {
             const auto event = event_between(envelope, first, from, to);
-            if (event.peak_envelope >= peak) {
+            if (event.peak_envelope >= peak &&
+                stays_above(envelope.subspan(from, to - from), peak, settings.min_above_peak_ms, rate)) {
                 events.push_back(event);
             }
         }

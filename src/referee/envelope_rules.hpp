@@ -20,15 +20,22 @@ struct FrameRun {
 /// Gaussian smoothing in place, truncated at 4 SD; at the ends of the span the weights that are left add up to 1.
 void smooth_gaussian(std::span<float> values, double deviation_frames);
 
-struct ClippedStatistics {
-    double mean = 0.0, deviation = 0.0;
+/// What thresholds are counted from, and the distance that they are counted in.
+struct Floor {
+    double centre = 0.0; ///< mean or median
+    double spread = 0.0; ///< SD, or third quartile - median
     std::uint64_t frames = 0;
 };
-/// Mean and SD of the values that are not NaN, those above mean + `clip_deviations` SD counted as that.
-[[nodiscard]] ClippedStatistics clipped_statistics(std::span<const float> values, double clip_deviations);
+
+/// Mean and SD of the values, none of them NaN; those above mean + `clip_deviations` SD counted as that, once or until
+/// nothing moves; 0: none clipped.
+[[nodiscard]] Floor clipped_mean(std::span<const float> values, double clip_deviations, bool clip_again);
+
+/// Median and distance to the third quartile, with linear interpolation between neighbours. Sorts `values` partly.
+[[nodiscard]] Floor median_and_quartile(std::span<float> values);
 
 /// Events of one run of the envelope that begins at `first`.
-[[nodiscard]] Ripples pick_ripples(std::span<const float> envelope, SampleIndex first, const ClippedStatistics& floor,
+[[nodiscard]] Ripples pick_ripples(std::span<const float> envelope, SampleIndex first, const Floor& floor,
                                    const RefereeSettings& settings, Hertz rate);
 
 } // namespace millpond

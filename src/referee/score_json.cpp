@@ -6,8 +6,8 @@
 namespace millpond {
 namespace {
 
-// Writes a described struct: numbers and whole numbers are all that the referee's settings hold.
-struct NumbersToJson {
+// Writes a described struct.
+struct ToJson {
     Json json = Json::object();
 
     void number(std::string_view key, double value, Range /*range*/, std::string_view /*doc*/) {
@@ -15,6 +15,16 @@ struct NumbersToJson {
     }
     void whole(std::string_view key, int value, Range /*range*/, std::string_view /*doc*/) {
         json[std::string(key)] = value;
+    }
+    void flag(std::string_view key, bool value, std::string_view /*doc*/) { json[std::string(key)] = value; }
+    template <class Enum, std::size_t N>
+    void choice(std::string_view key, Enum value, const Choice<Enum> (&choices)[N], std::string_view /*doc*/) {
+        json[std::string(key)] = word_for<Enum>(choices, value);
+    }
+    template <class Struct> void group(std::string_view key, Struct& value, std::string_view /*doc*/) {
+        ToJson inner;
+        describe(inner, value);
+        json[std::string(key)] = std::move(inner.json);
     }
 };
 
@@ -47,7 +57,7 @@ Json json_of(const Bins& bins) {
 }
 
 Json json_of(const RefereeSettings& settings) {
-    NumbersToJson visit;
+    ToJson visit;
     auto copy = settings;
     describe(visit, copy);
     return visit.json;

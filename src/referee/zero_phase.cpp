@@ -64,21 +64,21 @@ BandPass butterworth_band_pass(Hertz low, Hertz high, int order, Hertz rate) {
     return band;
 }
 
-ZeroPhaseEnergy::ZeroPhaseEnergy(BandPass band, std::size_t sites)
-    : band_(std::move(band)), sites_(sites), look_ahead_(band_.frames_to_decay(1e-12)), chunk_(4 * look_ahead_),
-      forward_state_(band_.sections.size() * 2 * sites), backward_state_(forward_state_.size()), scratch_(sites) {
-    passed_.reserve((chunk_ + look_ahead_) * sites_);
+ZeroPhaseBand::ZeroPhaseBand(BandPass band, std::size_t channels)
+    : band_(std::move(band)), channels_(channels), look_ahead_(band_.frames_to_decay(1e-12)), chunk_(4 * look_ahead_),
+      forward_state_(band_.sections.size() * 2 * channels), backward_state_(forward_state_.size()), scratch_(channels) {
+    passed_.reserve((chunk_ + look_ahead_) * channels_);
 }
 
-void ZeroPhaseEnergy::filter(std::span<double> frame, std::vector<double>& state) const {
-    // Transposed direct form II, all sites of one section side by side so that the loop vectorises.
-    const std::size_t sites = sites_;
+void ZeroPhaseBand::filter(std::span<double> frame, std::vector<double>& state) const {
+    // Transposed direct form II, all channels of one section side by side so that the loop vectorises.
+    const std::size_t channels = channels_;
     double* __restrict value = frame.data();
     for (std::size_t k = 0; k < band_.sections.size(); ++k) {
         const auto [gain, a1, a2] = band_.sections[k];
-        double* __restrict first = state.data() + 2 * k * sites;
-        double* __restrict second = first + sites;
-        for (std::size_t i = 0; i < sites; ++i) {
+        double* __restrict first = state.data() + 2 * k * channels;
+        double* __restrict second = first + channels;
+        for (std::size_t i = 0; i < channels; ++i) {
             const double in = gain * value[i];
             const double out = in + first[i];
             first[i] = second[i] - a1 * out;
@@ -88,50 +88,47 @@ void ZeroPhaseEnergy::filter(std::span<double> frame, std::vector<double>& state
     }
 }
 
-void ZeroPhaseEnergy::forward(std::span<const double> frame) {
+void ZeroPhaseBand::forward(std::span<const double> frame) {
     if (origin_.empty()) {
         origin_.assign(frame.begin(), frame.end());
         std::fill(forward_state_.begin(), forward_state_.end(), 0.0);
     }
-    for (std::size_t i = 0; i < sites_; ++i) {
+    for (std::size_t i = 0; i < channels_; ++i) {
         scratch_[i] = frame[i] - origin_[i]; // the band-pass answers a constant with 0
     }
     filter(scratch_, forward_state_);
     passed_.insert(passed_.end(), scratch_.begin(), scratch_.end());
 }
 
-void ZeroPhaseEnergy::backward(std::size_t frames, bool at_end, std::size_t wanted, std::vector<float>& energies) {
+void ZeroPhaseBand::backward(std::size_t frames, bool at_end, std::size_t wanted, std::vector<double>& out) {
     std::fill(backward_state_.begin(), backward_state_.end(), 0.0);
-    const std::size_t start = energies.size();
-    energies.resize(start + wanted);
+    const std::size_t start = out.size();
+    out.resize(start + wanted * channels_);
     for (std::size_t frame = frames; frame-- > 0;) {
-        for (std::size_t i = 0; i < sites_; ++i) {
-            const double end_value = at_end ? passed_[(frames - 1) * sites_ + i] : 0.0;
-            scratch_[i] = passed_[frame * sites_ + i] - end_value;
+        for (std::size_t i = 0; i < channels_; ++i) {
+            const double end_value = at_end ? passed_[(frames - 1) * channels_ + i] : 0.0;
+            scratch_[i] = passed_[frame * channels_ + i] - end_value;
         }
         filter(scratch_, backward_state_);
         if (frame < wanted) {
-            double energy = 0.0;
-            for (const double value : scratch_) {
-                energy += value * value;
-            }
-            energies[start + frame] = static_cast<float>(energy);
+            std::copy(scratch_.begin(), scratch_.end(),
+                      out.begin() + static_cast<std::ptrdiff_t>(start + frame * channels_));
         }
     }
-    passed_.erase(passed_.begin(), passed_.begin() + static_cast<std::ptrdiff_t>(wanted * sites_));
+    passed_.erase(passed_.begin(), passed_.begin() + static_cast<std::ptrdiff_t>(wanted * channels_));
 }
 
-void ZeroPhaseEnergy::add(std::span<const double> frame, std::vector<float>& energies) {
-    assert(frame.size() == sites_);
+void ZeroPhaseBand::add(std::span<const double> frame, std::vector<double>& passed) {
+    assert(frame.size() == channels_);
     forward(frame);
-    if (passed_.size() == (chunk_ + look_ahead_) * sites_) {
-        backward(chunk_ + look_ahead_, false, chunk_, energies);
+    if (passed_.size() == (chunk_ + look_ahead_) * channels_) {
+        backward(chunk_ + look_ahead_, false, chunk_, passed);
     }
 }
 
-void ZeroPhaseEnergy::end_run(std::vector<float>& energies) {
-    const std::size_t frames = passed_.size() / sites_;
-    backward(frames, true, frames, energies);
+void ZeroPhaseBand::end_run(std::vector<double>& passed) {
+    const std::size_t frames = passed_.size() / channels_;
+    backward(frames, true, frames, passed);
     origin_.clear();
 }
 

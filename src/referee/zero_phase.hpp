@@ -27,29 +27,30 @@ struct BandPass {
 /// Needs 0 < low < high < rate / 2.
 [[nodiscard]] BandPass butterworth_band_pass(Hertz low, Hertz high, int order, Hertz rate);
 
-/// Sum over sites of the squared zero-phase band signal, frame by frame, for one run of frames after another.
+/// The zero-phase band signal of all channels, for one run of frames after another.
 /// Each run starts and ends as if its first and last value had stood there for ever, so no step rings at its edges.
-class ZeroPhaseEnergy {
+class ZeroPhaseBand {
   public:
-    ZeroPhaseEnergy(BandPass band, std::size_t sites);
+    ZeroPhaseBand(BandPass band, std::size_t channels);
 
-    /// One value a site. Energies come out in order, some of them at a later call.
-    void add(std::span<const double> frame, std::vector<float>& energies);
+    /// One value a channel. Frames come out behind `passed` in order, shape as they go in, some of them at a later
+    /// call.
+    void add(std::span<const double> frame, std::vector<double>& passed);
 
     /// The run of frames is over: what is still inside comes out, and the next `add` begins a new run.
-    void end_run(std::vector<float>& energies);
+    void end_run(std::vector<double>& passed);
 
   private:
     void forward(std::span<const double> frame);
-    void backward(std::size_t frames, bool at_end, std::size_t wanted, std::vector<float>& energies);
+    void backward(std::size_t frames, bool at_end, std::size_t wanted, std::vector<double>& out);
     void filter(std::span<double> frame, std::vector<double>& state) const;
 
     BandPass band_;
-    std::size_t sites_;
+    std::size_t channels_;
     std::size_t look_ahead_; // frames after which the backward pass has forgotten where it began
     std::size_t chunk_;
     std::vector<double> origin_;        // first frame of the run
-    std::vector<double> forward_state_; // section by section, two values a site
+    std::vector<double> forward_state_; // section by section, two values a channel
     std::vector<double> backward_state_;
     std::vector<double> passed_; // forward-filtered frames that wait for their backward pass
     std::vector<double> scratch_;

@@ -25,8 +25,9 @@ void JoinedScore::add(const TuningRecording& recording, const std::vector<Sample
         detections_.push_back(at + offset_);
     }
     const auto parts = parts_of(recording.frames(), block_frames);
-    append(training_, intersection(eligible, parts.training));
-    append(held_out_, intersection(eligible, parts.held_out));
+    const auto judged = without(eligible, recording.excluded);
+    append(training_, intersection(judged, parts.training));
+    append(held_out_, intersection(judged, parts.held_out));
     // A ripple labelled beyond one recording's end must not reach into the next.
     const auto last = ripples_.empty() ? SampleIndex{0} : ripples_.back().end;
     offset_ = std::max(offset_ + recording.frames(), last.value + 1) + block_frames;

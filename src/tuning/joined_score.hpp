@@ -13,6 +13,7 @@ struct TuningRecording {
     Channels channels;
     std::span<const float> data; ///< shape as in base/frames.hpp; must outlive the sweep
     Ripples truth;
+    Intervals excluded{}; ///< time that the truth does not speak of: never eligible
 
     [[nodiscard]] std::uint64_t frames() const noexcept { return data.size() / channels.size(); }
 };

@@ -82,7 +82,7 @@ TEST(AuditCommand, LabelsTakeTheRefereesPlace) {
 TEST(AuditCommand, LabelsBeyondTheSessionsEndAreLeftOutAndSaidToBe) {
     const TemporaryFolder temp;
     const auto labels = temp.path() / "labels.tsv";
-    std::ofstream(labels) << "onset\tduration\ttrial_type\n9.8\t0.06\tripple\n19.99\t0.06\tripple\n20\t0.06\tripple\n";
+    std::ofstream(labels) << "onset\tduration\ttrial_type\n9.8\t0.06\tripple\n19.99\t0.01\tripple\n20\t0.06\tripple\n";
     const auto ran = audit(eventful_session(temp) + " --labels " + labels.string()); // 20 s long
     EXPECT_EQ(ran.status, 0) << ran.err;
     EXPECT_NE(ran.out.find("labels.tsv: 2 ripples; early 0 ms"), std::string::npos) << ran.out;
