@@ -88,6 +88,7 @@ Detector Detector::make(const DetectorSettings& settings, const Channels& channe
         state->allocate_sites_floor();
     }
     state->count_frames();
+    state->state_gate = StateGate::make(settings.state_gate, channels, rate, where + ".state_gate");
     Detector detector(std::move(state));
     detector.reset();
     return detector;
@@ -158,6 +159,10 @@ void Detector::State::allocate_envelope() {
 void Detector::State::allocate_floor() {
     for (auto* values : {&mean, &spread, &above, &rearm, &sum_weight}) {
         *values = Lanes<double>(lanes.lanes);
+    }
+    for (auto& memory : memories) {
+        memory.mean = Lanes<double>(lanes.lanes);
+        memory.spread = Lanes<double>(lanes.lanes);
     }
     above_adds = Lanes<std::uint64_t>(lanes.lanes);
     rearm_adds = Lanes<std::uint64_t>(lanes.lanes);

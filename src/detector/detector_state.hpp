@@ -6,7 +6,9 @@
 #include "detector/kernel.hpp"
 #include "detector/site_mix.hpp"
 #include "detector/site_watch.hpp"
+#include "detector/state_gate.hpp"
 
+#include <array>
 #include <cstdlib>
 #include <memory>
 #include <new>
@@ -60,6 +62,8 @@ struct Detector::State {
     [[nodiscard]] std::size_t first_floor() const noexcept { return evidence() ? lanes.signal_lanes : 0; }
     void watch_sites(const FrameBlock& block) noexcept;
     void mix_anew() noexcept;
+    void watch(const FrameBlock& block) noexcept;
+    [[nodiscard]] std::uint64_t frames_to_verdict() const noexcept;
 
     void choose_inputs(const Channels& channels);
     void choose_lanes();
@@ -94,11 +98,19 @@ struct Detector::State {
     std::vector<double> mix_weights;  // room for one mix
     std::vector<SiteState> journaled; // [inputs], as the engine last heard
     bool sites_changed = false;
+    StateGate state_gate;
+    bool state_changed = false;
     Lanes<double> mean, spread, above, rearm;
     Lanes<std::uint64_t> lane_used, above_adds, rearm_adds;
 
     FloorStart start;               // the floor's first second
     std::uint64_t floor_frames = 0; // frames in the floor's statistics
+    struct Memory {
+        Lanes<double> mean, spread;
+        std::uint64_t frames = 0;
+    };
+    std::array<Memory, 2> memories; // of the floor, by gates closed or open; the one in use stands above
+    bool gates_open = true;
     std::uint64_t settle_frames = 0, full_frames = 0;
     double least_weight = 0.0;
 

@@ -116,6 +116,7 @@ void Detector::State::mix_anew() noexcept {
 void Detector::State::watch_sites(const FrameBlock& block) noexcept {
     if (site_watch.take(position, block.data.data(), block.frames(), lanes.channels, channel_of.data())) {
         mix_anew();
+        state_gate.use_alive(site_watch.alive());
         sites_changed = true;
     }
 }
