@@ -43,7 +43,7 @@ void Detector::envelopes(const FrameBlock& block, std::span<double> out) noexcep
         order.method = s.method;
         order.resume = s.resume;
         order.envelopes = out.data() + done * s.lanes.lanes;
-        s.kernel(s.lanes, order);
+        s.run_kernel(order);
         s.resume = false;
         s.watch(rest.part(0, order.count));
         s.position += order.count;
@@ -75,7 +75,7 @@ std::size_t Detector::State::skip_blanked(std::size_t frames) noexcept {
 
 std::size_t Detector::State::advance(const FrameBlock& block, std::optional<Crossing>& crossing) noexcept {
     const auto order = next_order(block);
-    const auto result = kernel(lanes, order);
+    const auto result = run_kernel(order);
     resume = false;
     watch(block.part(0, result.frames));
     if (result.last_reference != SIZE_MAX) {
@@ -225,6 +225,7 @@ void Detector::reset() noexcept {
         std::fill(s.journaled.begin(), s.journaled.end(), SiteState::alive);
         s.mix_anew();
     }
+    s.mains.reset(s.lanes);
     s.state_gate.reset();
     s.state_changed = false;
     s.gates_open = true;

@@ -1,9 +1,19 @@
-// What the detector tells the gates, and what they tell its floor. Thread: loop.
+// What is looked at beside the lanes: mains, sites, the state; and what gates tell the floor. Thread: loop.
 #include "detector/detector_state.hpp"
 
 #include <algorithm>
 
 namespace millpond {
+
+KernelResult Detector::State::run_kernel(const KernelOrder& order) noexcept {
+    if (!mains.on()) {
+        return kernel(lanes, order);
+    }
+    mains.begin(position);
+    const auto result = kernel(lanes, order);
+    mains.end(position + result.frames);
+    return result;
+}
 
 void Detector::State::watch(const FrameBlock& block) noexcept {
     if (watches_sites()) {
@@ -21,6 +31,9 @@ std::uint64_t Detector::State::frames_to_verdict() const noexcept {
     }
     if (state_gate.on()) {
         frames = std::min(frames, state_gate.frames_to_verdict(position));
+    }
+    if (mains.on()) {
+        frames = std::min(frames, mains.frames_to_step(position));
     }
     return frames;
 }

@@ -88,6 +88,7 @@ Detector Detector::make(const DetectorSettings& settings, const Channels& channe
         state->allocate_sites_floor();
     }
     state->count_frames();
+    state->mains.prepare(settings.mains, rate, state->lanes, where + ".mains");
     state->state_gate = StateGate::make(settings.state_gate, channels, rate, where + ".state_gate");
     Detector detector(std::move(state));
     detector.reset();

@@ -4,45 +4,17 @@
 #include "detector/detector.hpp"
 #include "detector/floor_start.hpp"
 #include "detector/kernel.hpp"
+#include "detector/lanes.hpp"
+#include "detector/mains_removal.hpp"
 #include "detector/site_mix.hpp"
 #include "detector/site_watch.hpp"
 #include "detector/state_gate.hpp"
 
 #include <array>
-#include <cstdlib>
 #include <memory>
-#include <new>
 #include <vector>
 
 namespace millpond {
-
-/// Zeroed memory on a cache line's boundary, as the kernel wants it.
-template <class Value> class Lanes {
-  public:
-    Lanes() = default;
-    explicit Lanes(std::size_t count)
-        : count_(count), values_(static_cast<Value*>(std::aligned_alloc(64, (count * sizeof(Value) + 63) / 64 * 64))) {
-        if (!values_) {
-            throw std::bad_alloc();
-        }
-        fill(Value{});
-    }
-    void fill(Value value) noexcept {
-        for (std::size_t i = 0; i < count_; ++i) {
-            values_.get()[i] = value;
-        }
-    }
-    [[nodiscard]] Value* data() const noexcept { return values_.get(); }
-    Value& operator[](std::size_t i) const noexcept { return values_.get()[i]; }
-    [[nodiscard]] std::size_t size() const noexcept { return count_; }
-
-  private:
-    struct Free {
-        void operator()(Value* values) const noexcept { std::free(values); }
-    };
-    std::size_t count_ = 0;
-    std::unique_ptr<Value, Free> values_;
-};
 
 struct Detector::State {
     std::size_t advance(const FrameBlock& block, std::optional<Crossing>& crossing) noexcept;
@@ -62,6 +34,7 @@ struct Detector::State {
     [[nodiscard]] std::size_t first_floor() const noexcept { return evidence() ? lanes.signal_lanes : 0; }
     void watch_sites(const FrameBlock& block) noexcept;
     void mix_anew() noexcept;
+    KernelResult run_kernel(const KernelOrder& order) noexcept;
     void watch(const FrameBlock& block) noexcept;
     [[nodiscard]] std::uint64_t frames_to_verdict() const noexcept;
 
@@ -98,6 +71,7 @@ struct Detector::State {
     std::vector<double> mix_weights;  // room for one mix
     std::vector<SiteState> journaled; // [inputs], as the engine last heard
     bool sites_changed = false;
+    MainsRemoval mains;
     StateGate state_gate;
     bool state_changed = false;
     Lanes<double> mean, spread, above, rearm;

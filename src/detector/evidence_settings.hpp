@@ -107,8 +107,8 @@ template <class Visitor> void describe(Visitor& visit, SiteWatchSettings& watch)
 // Learned with `tune --learn --plain-mean` on invented recordings of three scenes.
 inline std::vector<FeatureSettings> default_features() {
     return {
-        {"sites", 150.0, 250.0, 1, 10.0, 1.0},   {"sites", 320.0, 560.0, 2, 10.0, -0.9},
-        {"sites", 260.0, 400.0, 2, 10.0, -0.4},  {"sites", 100.0, 140.0, 1, 10.0, -0.35},
+        {"sites", 150.0, 250.0, 1, 10.0, 1.0},  {"sites", 320.0, 560.0, 2, 10.0, -0.9},
+        {"sites", 260.0, 400.0, 2, 10.0, -0.4}, {"sites", 100.0, 140.0, 1, 10.0, -0.35},
         {"sites", 60.0, 100.0, 1, 10.0, -0.07},
     };
 }
