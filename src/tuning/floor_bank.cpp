@@ -9,9 +9,12 @@ namespace millpond {
 namespace {
 
 // As the detector orders them: channels that are looked at in stream order, then the mean where it votes.
-EnvelopeColumns columns_of(const DetectorSettings& settings, const Channels& channels, std::size_t all) {
-    EnvelopeColumns columns;
-    columns.all = all;
+struct Columns {
+    std::vector<std::size_t> voting, references;
+};
+
+Columns columns_of(const DetectorSettings& settings, const Channels& channels) {
+    Columns columns;
     std::size_t column = 0;
     for (const auto& channel : channels) {
         if (channel.role == ChannelRole::unused) {
@@ -35,6 +38,9 @@ EnvelopeColumns columns_of(const DetectorSettings& settings, const Channels& cha
 FloorBank::FloorBank(std::span<const DetectorSettings> settings, const Channels& channels, Hertz rate,
                      const StatisticPass& pass)
     : settings_(settings.size()) {
+    const auto columns = columns_of(settings.front(), channels);
+    columns_ = columns.voting;
+    columns_.insert(columns_.end(), columns.references.begin(), columns.references.end());
     std::map<std::uint64_t, std::vector<std::size_t>> by_start;
     for (std::size_t i = 0; i < settings.size(); ++i) {
         by_start[FloorBatch::start_frames(settings[i], rate)].push_back(i);
@@ -48,8 +54,8 @@ FloorBank::FloorBank(std::span<const DetectorSettings> settings, const Channels&
                 of.push_back(places[i]);
                 together.push_back(settings[places[i]]);
             }
-            const auto columns = columns_of(settings.front(), channels, pass.values());
-            batches_.push_back({std::move(of), FloorBatch(together, columns, rate, pass.settle_frames())});
+            batches_.push_back({std::move(of), FloorBatch(together, {columns.voting.size(), columns.references.size()},
+                                                          rate, pass.settle_frames())});
         }
     }
 }
@@ -60,19 +66,22 @@ void FloorBank::gap(SampleIndex resumes_at) noexcept {
     }
 }
 
+// Envelopes that nobody compares are left behind: what is read for every batch lies close together.
 void FloorBank::take(SampleIndex first, std::span<const double> statistics, std::size_t values) {
     const TinyIsZero tiny_is_zero;
-    const std::size_t frames = statistics.size() / values;
-    highest_.assign((frames / stride_frames + 1) * values, 0.0);
-    for (std::size_t frame = 0; frame < frames; ++frame) {
-        double* const highest = highest_.data() + frame / stride_frames * values;
-        for (std::size_t i = 0; i < values; ++i) {
-            const double value = statistics[frame * values + i];
-            highest[i] = value > highest[i] ? value : highest[i];
+    const std::size_t frames = statistics.size() / values, used = columns_.size();
+    envelopes_.resize(frames * used);
+    highest_.assign((frames / stride_frames + 1) * used, 0.0);
+    for (std::size_t i = 0; i < used; ++i) {
+        for (std::size_t frame = 0; frame < frames; ++frame) {
+            const double value = statistics[frame * values + columns_[i]];
+            double& highest = highest_[frame / stride_frames * used + i];
+            envelopes_[frame * used + i] = value;
+            highest = value > highest ? value : highest;
         }
     }
     for (auto& batch : batches_) {
-        batch.floors.take(first.value, {statistics.data(), highest_.data(), values, frames});
+        batch.floors.take(first.value, {envelopes_.data(), highest_.data(), used, frames});
     }
 }
 

@@ -22,7 +22,8 @@ class FloorBank : public CrossingRule {
         FloorBatch floors;
     };
     std::vector<Batch> batches_;
-    std::vector<double> highest_; // EnvelopeBlock::highest
+    std::vector<std::size_t> columns_;        // of the pass that are compared: voting ones, then references
+    std::vector<double> envelopes_, highest_; // as in EnvelopeBlock
     std::size_t settings_ = 0;
 };
 

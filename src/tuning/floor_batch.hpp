@@ -63,10 +63,9 @@ struct EnvelopeBlock {
 std::size_t walk_batch(BatchState& state, const EnvelopeBlock& block, std::size_t from, std::size_t to,
                        std::uint64_t place, bool& due) noexcept;
 
-/// Where each setting's numbers stand in a frame of envelopes.
+/// Numbers in a frame of envelopes: first those that vote, then those of references.
 struct EnvelopeColumns {
-    std::vector<std::size_t> voting, references;
-    std::size_t all = 0;
+    std::size_t voting = 0, references = 0;
 };
 
 class FloorBatch {
