@@ -29,6 +29,7 @@ class KeyLister {
     template <class Whole> void whole(std::string_view key, Whole&, Range, std::string_view) { add(key); }
     void flag(std::string_view key, bool&, std::string_view) { add(key); }
     void text(std::string_view key, std::string&, std::string_view) { add(key); }
+    void numbers(std::string_view key, std::vector<double>&, Range, std::string_view) { add(key); }
     template <class Enum, std::size_t N>
     void choice(std::string_view key, Enum&, const Choice<Enum> (&)[N], std::string_view) {
         add(key);

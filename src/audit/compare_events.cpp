@@ -75,6 +75,9 @@ std::string told(const Event& event) {
     }
     case EventKind::floor:
         return fmt::format("{} at {} (site {})", name, at, event.as<FloorDetail>().site);
+    case EventKind::site:
+        return fmt::format("{} at {} (channel {} {})", name, at, event.as<SiteDetail>().channel,
+                           name_of(static_cast<SiteState>(event.code)));
     default:
         return fmt::format("{} at {}", name, at);
     }

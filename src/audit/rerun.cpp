@@ -16,6 +16,7 @@ bool decided_by_the_engine(const Event& event) {
     case EventKind::state:
     case EventKind::gate:
     case EventKind::floor:
+    case EventKind::site:
         return true;
     default:
         return false;

@@ -8,8 +8,8 @@
 //         floor"); visit.number("window_ms", veto.window_ms, {0.0, 1000.0}, "how long a reference crossing vetoes");
 //     }
 //
-// A visitor offers: number (double), whole (integers), flag (bool), choice (enum), text (string), group (a struct)
-// and list (a vector of structs). A key carries its unit in its name.
+// A visitor offers: number (double), whole (integers), flag (bool), choice (enum), text (string), numbers (a vector of
+// doubles), group (a struct) and list (a vector of structs). A key carries its unit in its name.
 #pragma once
 
 #include <span>

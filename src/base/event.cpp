@@ -11,9 +11,10 @@ std::string_view pick(const std::array<std::string_view, N>& names, std::uint8_t
 } // namespace
 
 std::string_view name_of(EventKind kind) noexcept {
-    static constexpr std::array<std::string_view, 16> names{
-        "unknown", "session start", "session end",  "detection", "trigger", "withheld", "pulse",        "pulse end",
-        "gap",     "floor",         "latency bins", "note",      "state",   "gate",     "packet count", "dropped"};
+    static constexpr std::array<std::string_view, 17> names{
+        "unknown", "session start", "session end",  "detection", "trigger",      "withheld",
+        "pulse",   "pulse end",     "gap",          "floor",     "latency bins", "note",
+        "state",   "gate",          "packet count", "dropped",   "site"};
     return pick(names, static_cast<std::uint8_t>(kind));
 }
 
@@ -31,6 +32,11 @@ std::string_view name_of(GapCause cause) noexcept {
 
 std::string_view name_of(ArmState state) noexcept {
     static constexpr std::array<std::string_view, 3> names{"not armed", "armed", "faulted"};
+    return pick(names, static_cast<std::uint8_t>(state));
+}
+
+std::string_view name_of(SiteState state) noexcept {
+    static constexpr std::array<std::string_view, 3> names{"alive", "flat", "huge"};
     return pick(names, static_cast<std::uint8_t>(state));
 }
 

@@ -28,6 +28,7 @@ enum class EventKind : std::uint8_t {
     gate = 13,         ///< a gate opened or closed
     packet_count = 14, ///< packets counted by cause since the last such event; `code` is the PacketCause
     dropped = 15,      ///< events or frames that the journal had to drop because its ring was full
+    site = 16,         ///< a channel was left out of the evidence's mixes, or taken in again; `code` is the SiteState
 };
 
 /// Why a detection was refused: exactly one rule each, the first that applies in this order. The detector's own reasons
@@ -58,6 +59,13 @@ enum class ArmState : std::uint8_t {
     not_armed = 0, ///< detects, never pulses
     armed = 1,     ///< pulses are allowed
     faulted = 2,   ///< something failed; pulses are refused until it is mended and armed anew
+};
+
+/// A channel as the evidence detector sees it. Values are part of the session format.
+enum class SiteState : std::uint8_t {
+    alive = 0,
+    flat = 1, ///< did not move for a second: broken wire, or at the end of the converter's range
+    huge = 2, ///< moved far more than it used to, while the others did not: loose contact
 };
 
 /// What moved the state. Values are part of the session format.
@@ -100,12 +108,13 @@ enum class PacketCause : std::uint8_t {
 inline constexpr std::size_t packet_cause_count = 12;
 
 struct DetectionDetail {
-    float envelope;      ///< uV, of the deciding site (the largest above its floor) or of the mean over sites
-    float floor;         ///< uV
-    float deviation;     ///< uV
-    float threshold;     ///< uV
+    float envelope;  ///< uV (evidence: weighted uV), of the deciding site (the largest above its floor) or of the mean
+                     ///< over sites
+    float floor;     ///< uV
+    float deviation; ///< uV
+    float threshold; ///< uV
     std::uint16_t votes; ///< ripple sites above their thresholds
-    std::uint16_t site;  ///< channel in the stream, 65535 for the mean over sites
+    std::uint16_t site;  ///< channel in the stream, 65535 for the mean over sites and for evidence
 };
 
 struct TriggerDetail {
@@ -132,7 +141,7 @@ struct GapDetail {
 struct FloorDetail {
     double mean, deviation; ///< uV
     float threshold;        ///< uV
-    std::uint16_t site;     ///< channel in the stream, 65535 for the mean over sites
+    std::uint16_t site;     ///< channel in the stream, 65535 for the mean over sites and for evidence
     std::uint16_t settled;  ///< 1 once enough clean signal was seen
     std::uint64_t frames;   ///< frames the statistics have taken
 };
@@ -160,6 +169,10 @@ struct GateDetail {
     std::array<char, 32> name; ///< zero-terminated
 };
 
+struct SiteDetail {
+    std::uint16_t channel; ///< in the stream
+};
+
 struct CountDetail {
     std::uint64_t count;
 };
@@ -167,7 +180,7 @@ struct CountDetail {
 /// Trivially copyable, 64 bytes, no padding left unset by the factories below.
 struct Event {
     EventKind kind{};
-    std::uint8_t code = 0; ///< Rule, GapCause, ArmState, LatencyPart or PacketCause, by kind
+    std::uint8_t code = 0; ///< Rule, GapCause, ArmState, SiteState, LatencyPart or PacketCause, by kind
     std::uint16_t reserved = 0;
     std::uint32_t sequence = 0; ///< set by the journal: counts the session's events from 0
     SampleIndex sample;         ///< where in the stream
@@ -209,6 +222,7 @@ class EventSink {
 [[nodiscard]] std::string_view name_of(Rule rule) noexcept;
 [[nodiscard]] std::string_view name_of(GapCause cause) noexcept;
 [[nodiscard]] std::string_view name_of(ArmState state) noexcept;
+[[nodiscard]] std::string_view name_of(SiteState state) noexcept;
 [[nodiscard]] std::string_view name_of(StateCause cause) noexcept;
 [[nodiscard]] std::string_view name_of(LatencyPart part) noexcept;
 [[nodiscard]] std::string_view name_of(PacketCause cause) noexcept;

@@ -271,6 +271,12 @@ BandpassDesign design_bandpass(const FilterSettings& settings, Hertz rate, const
     return {sections_of(prototype_of(settings), std::sqrt(low * high), high - low), {}};
 }
 
+double quadrature_at(Hertz centre, Hertz rate) {
+    const double warped = std::tan(std::numbers::pi * centre.value / rate.value);
+    // Forty bits, as for the band-pass: the same on every processor.
+    return std::ldexp(std::nearbyint(std::ldexp((warped - 1.0) / (warped + 1.0), 40)), -40);
+}
+
 Hertz band_centre(const FilterSettings& settings) noexcept {
     return Hertz{std::sqrt(settings.low_hz * settings.high_hz)};
 }

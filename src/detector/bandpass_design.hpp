@@ -32,6 +32,9 @@ struct BandpassDesign {
 /// Refuses edges out of order or at half the rate and above, `where` naming the settings for the message.
 [[nodiscard]] BandpassDesign design_bandpass(const FilterSettings& settings, Hertz rate, const std::string& where);
 
+/// Coefficient of the first-order all-pass that turns by 90 degrees at `centre`.
+[[nodiscard]] double quadrature_at(Hertz centre, Hertz rate);
+
 /// Centre of the band on a logarithmic axis, where delays are stated.
 [[nodiscard]] Hertz band_centre(const FilterSettings& settings) noexcept;
 

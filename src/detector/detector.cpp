@@ -35,15 +35,24 @@ std::size_t Detector::run(const FrameBlock& block, std::optional<Crossing>& cros
 void Detector::envelopes(const FrameBlock& block, std::span<double> out) noexcept {
     const TinyIsZero tiny_is_zero;
     auto& s = *state_;
-    KernelOrder order;
-    order.frames = block.data.data();
-    order.count = block.frames();
-    order.method = s.method;
-    order.resume = s.resume;
-    order.envelopes = out.data();
-    s.kernel(s.lanes, order);
-    s.resume = s.resume && order.count == 0;
-    s.position += order.count;
+    for (std::size_t done = 0; done < block.frames();) {
+        const auto rest = block.part(done, block.frames() - done);
+        KernelOrder order;
+        order.frames = rest.data.data();
+        order.count = s.watches_sites() ? static_cast<std::size_t>(std::min<std::uint64_t>(
+                                              rest.frames(), s.site_watch.frames_to_verdict(s.position)))
+                                        : rest.frames();
+        order.method = s.method;
+        order.resume = s.resume;
+        order.envelopes = out.data() + done * s.lanes.lanes;
+        s.kernel(s.lanes, order);
+        s.resume = false;
+        if (s.watches_sites()) {
+            s.watch_sites(rest.part(0, order.count));
+        }
+        s.position += order.count;
+        done += order.count;
+    }
 }
 
 std::size_t Detector::envelope_stride() const noexcept {
@@ -67,6 +76,9 @@ std::size_t Detector::State::advance(const FrameBlock& block, std::optional<Cros
     const auto order = next_order(block);
     const auto result = kernel(lanes, order);
     resume = false;
+    if (watches_sites()) {
+        watch_sites(block.part(0, result.frames));
+    }
     if (result.last_reference != SIZE_MAX) {
         newest_reference = position + result.last_reference;
     }
@@ -75,7 +87,7 @@ std::size_t Detector::State::advance(const FrameBlock& block, std::optional<Cros
         floor_frames += result.frames;
     }
     if (watcher != nullptr) {
-        watcher(watcher_context, SampleIndex{position - 1}, {envelope.data(), lanes.channel_lanes + mean_lanes()});
+        watcher(watcher_context, SampleIndex{position - 1}, {envelope.data(), lanes.signal_lanes + sum_lanes()});
     }
     if (!start.done()) {
         start_floor();
@@ -94,6 +106,9 @@ KernelOrder Detector::State::next_order(const FrameBlock& block) const noexcept 
     order.method = method;
     order.resume = resume;
     std::uint64_t limit = std::min<std::uint64_t>(block.frames(), blank_from - position);
+    if (watches_sites()) {
+        limit = std::min(limit, site_watch.frames_to_verdict(position));
+    }
     const std::uint64_t still_until = std::max(settling_until, frozen_until);
     const bool still = position < still_until;
     if (still) {
@@ -177,6 +192,7 @@ void Detector::gap(SampleIndex resumes_at) noexcept {
     s.position = resumes_at.value;
     s.settling_until = s.position + s.filter_settle;
     s.above_run = 0;
+    s.site_watch.gap();
     s.resume = true; // the level starts at the first sample: no step into the fresh filter
     if (s.blank_until <= s.position) {
         s.blank_from = UINT64_MAX;
@@ -206,6 +222,11 @@ void Detector::reset() noexcept {
     s.blank_until = 0;
     s.newest_reference = UINT64_MAX;
     s.spent = false;
+    if (s.evidence()) {
+        s.site_watch.reset();
+        std::fill(s.journaled.begin(), s.journaled.end(), SiteState::alive);
+        s.mix_anew();
+    }
     gap(SampleIndex{0});
 }
 
@@ -217,15 +238,17 @@ void Detector::State::clear_filters() noexcept {
 }
 
 std::uint16_t Detector::State::channel_at(std::size_t lane) const noexcept {
-    return lane < lanes.channel_lanes ? static_cast<std::uint16_t>(channel_of[lane]) : std::uint16_t{65535};
+    return !evidence() && lane < lanes.signal_lanes ? static_cast<std::uint16_t>(channel_of[lane])
+                                                    : std::uint16_t{65535};
 }
 
 std::size_t Detector::floor_count() const noexcept {
-    return state_->lanes.channel_lanes + state_->mean_lanes();
+    return state_->lanes.signal_lanes + state_->sum_lanes() - state_->first_floor();
 }
 
-FloorDetail Detector::floor(std::size_t i) const noexcept {
+FloorDetail Detector::floor(std::size_t number) const noexcept {
     const auto& s = *state_;
+    const std::size_t i = s.first_floor() + number;
     return {s.mean[i],
             s.spread[i] * deviation_per_spread,
             static_cast<float>(s.mean[i] + s.above[i] * s.spread[i]),
@@ -247,11 +270,15 @@ bool Detector::settling() const noexcept {
 }
 
 double Detector::filter_delay_samples() const noexcept {
-    return state_->design.group_delay_samples(band_centre(state_->settings.filter), state_->rate);
+    return state_->filter_delay;
 }
 
 double Detector::delay_samples() const noexcept {
-    return filter_delay_samples() + state_->settings.envelope.smoothing_ms * state_->rate.value / 1000.0;
+    return state_->delay;
+}
+
+double Detector::threshold_deviations() const noexcept {
+    return state_->settings.threshold.deviations;
 }
 
 const BandpassDesign& Detector::bandpass() const noexcept {

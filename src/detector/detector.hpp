@@ -1,4 +1,5 @@
-// The detector: band-pass, envelope, floor, threshold, vote and veto over all channels, frame by frame.
+// The detector: band-pass, envelope, floor, threshold, vote and veto over all channels, frame by frame; or, with method
+// evidence, the same floor and threshold over the weighted envelopes of several bands and mixes of channels.
 // Decisions depend on the samples alone: not on block size, processor, vector width or optimisation level.
 #pragma once
 
@@ -22,6 +23,12 @@ struct Crossing {
     bool settling;  ///< filters are still settling after a gap or the start
     bool unsettled; ///< the floor has not seen enough clean signal
     bool vetoed;    ///< a reference channel was above its threshold within the veto window
+};
+
+/// A channel that was left out of the evidence's mixes, or taken in again.
+struct SiteChange {
+    std::uint16_t channel; ///< in the stream
+    SiteState state;
 };
 
 /// One channel's floor, to carry from one session into the next. uV.
@@ -72,11 +79,15 @@ class Detector {
     /// As new. Thread: loop.
     void reset() noexcept;
 
+    /// The next channel, in stream order, that died or came back since the last call. Thread: loop.
+    std::optional<SiteChange> site_change() noexcept;
+
     /// Starts from floors of an earlier session, one for each ripple and reference channel in stream order, then, with
-    /// rule mean, that of the mean. Thread: control, before the first block.
+    /// rule mean, that of the mean; with method evidence just that of the evidence. Thread: control, before the first
+    /// block.
     void warm_start(const std::vector<FloorState>& floors);
 
-    /// Number of floors: ripple and reference channels, and one more with rule mean.
+    /// Number of floors: ripple and reference channels, and one more with rule mean; one with method evidence.
     [[nodiscard]] std::size_t floor_count() const noexcept;
     /// The floor `i` as an event detail. Thread: loop.
     [[nodiscard]] FloorDetail floor(std::size_t i) const noexcept;
@@ -87,11 +98,13 @@ class Detector {
     [[nodiscard]] bool settling() const noexcept;
     /// Frames that filters and smoother need after a gap before a crossing counts.
     [[nodiscard]] std::uint64_t filter_settle_frames() const noexcept;
-    /// Group delay of the band-pass at the band's centre, in samples.
+    /// Group delay of the band-pass at the band's centre, in samples; with method evidence of its heaviest feature.
     [[nodiscard]] double filter_delay_samples() const noexcept;
     /// The same and the smoother's delay.
     [[nodiscard]] double delay_samples() const noexcept;
     [[nodiscard]] const BandpassDesign& bandpass() const noexcept;
+    /// Threshold in deviations above the floor.
+    [[nodiscard]] double threshold_deviations() const noexcept;
     /// The vector width in use.
     [[nodiscard]] KernelWidth width() const noexcept;
 
@@ -103,7 +116,8 @@ class Detector {
     [[nodiscard]] std::size_t envelope_stride() const noexcept;
 
     /// Watches every frame's envelopes, for pictures and tests; slow, never in a live session. Empty: nobody watches.
-    /// Called with the frame's place and one envelope for each floor (uV).
+    /// Called with the frame's place and one envelope for each looked-at channel or feature, then the sum's, if any
+    /// (uV).
     using Watcher = void (*)(void* context, SampleIndex at, std::span<const double> envelopes);
     void watch(Watcher watcher, void* context) noexcept;
 

@@ -4,7 +4,6 @@
 
 #include <algorithm>
 #include <cmath>
-#include <numbers>
 
 namespace millpond {
 namespace {
@@ -42,13 +41,6 @@ KernelEnvelope kernel_method(EnvelopeMethod method) noexcept {
     }
 }
 
-// First-order all-pass that turns by 90 degrees at `centre`.
-double quadrature_at(Hertz centre, Hertz rate) {
-    const double warped = std::tan(std::numbers::pi * centre.value / rate.value);
-    // Forty bits, as for the band-pass: the same on every processor.
-    return std::ldexp(std::nearbyint(std::ldexp((warped - 1.0) / (warped + 1.0), 40)), -40);
-}
-
 } // namespace
 
 void check_detector(const DetectorSettings& settings, const Channels& channels, const std::string& where) {
@@ -56,6 +48,9 @@ void check_detector(const DetectorSettings& settings, const Channels& channels, 
                                             [](const auto& channel) { return channel.role == ChannelRole::ripple; });
     if (ripple_sites == 0) {
         throw Refusal(where + ": channels", "no channel of role ripple", "at least one");
+    }
+    if (settings.method == DetectionMethod::evidence) {
+        return; // its own settings are checked where they are used
     }
     if (settings.vote.rule == VoteRule::count && settings.vote.sites_needed > ripple_sites) {
         throw Refusal(where + ".vote.sites_needed", std::to_string(settings.vote.sites_needed),
@@ -73,35 +68,52 @@ Detector Detector::make(const DetectorSettings& settings, const Channels& channe
     auto state = std::make_unique<State>();
     state->settings = settings;
     state->rate = rate;
-    state->design = design_bandpass(settings.filter, rate, where + ".filter");
     state->width = width == KernelWidth::automatic ? widest_here() : width;
     state->kernel = kernel_of(state->width, where);
     state->method = kernel_method(settings.envelope.method);
-    state->choose_lanes(channels);
-    state->allocate_filter();
+    state->choose_inputs(channels);
+    if (state->evidence()) {
+        state->choose_features(where + ".evidence");
+        state->allocate_own_filters(where + ".evidence");
+    } else {
+        state->design = design_bandpass(settings.filter, rate, where + ".filter");
+        state->choose_lanes();
+        state->allocate_filter();
+    }
     state->allocate_envelope();
-    state->allocate_floor(channels);
+    state->allocate_floor();
+    if (state->evidence()) {
+        state->allocate_evidence_floor(where + ".evidence");
+    } else {
+        state->allocate_sites_floor();
+    }
     state->count_frames();
     Detector detector(std::move(state));
     detector.reset();
     return detector;
 }
 
-void Detector::State::choose_lanes(const Channels& channels) {
+void Detector::State::choose_inputs(const Channels& channels) {
     for (std::uint32_t channel = 0; channel < channels.size(); ++channel) {
         if (channels[channel].role != ChannelRole::unused) {
             channel_of.push_back(channel);
+            inputs.push_back(channels[channel].role);
         }
     }
     lanes.channels = channels.size();
-    lanes.channel_lanes = channel_of.size();
+    lanes.inputs = inputs.size();
+    lanes.channel_of = channel_of.data();
+}
+
+void Detector::State::choose_lanes() {
+    lanes.signal_lanes = inputs.size();
     lanes.in_stream_order = channel_of.back() + 1 == channel_of.size();
-    const std::size_t used = lanes.channel_lanes + mean_lanes();
+    const std::size_t used = lanes.signal_lanes + sum_lanes();
     lanes.lanes = (used + lane_group - 1) / lane_group * lane_group;
     channel_of.resize(lanes.lanes);
     lanes.channel_of = channel_of.data();
     lane_used = Lanes<std::uint64_t>(lanes.lanes);
-    for (std::size_t lane = 0; lane < lanes.channel_lanes; ++lane) {
+    for (std::size_t lane = 0; lane < lanes.signal_lanes; ++lane) {
         lane_used[lane] = UINT64_MAX;
     }
     lanes.lane_used = lane_used.data();
@@ -138,13 +150,13 @@ void Detector::State::allocate_envelope() {
     lanes.smooth1 = lane_array(smooth1);
     lanes.smooth2 = lane_array(smooth2);
     lanes.envelope = lane_array(envelope);
-    lanes.quadrature = quadrature_at(band_centre(settings.filter), rate);
     const double section_delay_frames = settings.envelope.smoothing_ms * rate.value / 1000.0 / 2.0;
+    lanes.quadrature = quadrature_at(band_centre(settings.filter), rate);
     lanes.smoothing = 1.0 / (1.0 + section_delay_frames);
 }
 
-void Detector::State::allocate_floor(const Channels& channels) {
-    for (auto* values : {&mean, &spread, &above, &rearm, &mean_weight}) {
+void Detector::State::allocate_floor() {
+    for (auto* values : {&mean, &spread, &above, &rearm, &sum_weight}) {
         *values = Lanes<double>(lanes.lanes);
     }
     above_adds = Lanes<std::uint64_t>(lanes.lanes);
@@ -156,34 +168,33 @@ void Detector::State::allocate_floor(const Channels& channels) {
     lanes.rearm = rearm.data();
     lanes.above_adds = above_adds.data();
     lanes.rearm_adds = rearm_adds.data();
+    lanes.sum_weight = sum_lanes() > 0 ? sum_weight.data() : nullptr;
+}
 
+void Detector::State::vote_of(std::size_t lane) {
+    above[lane] = settings.threshold.deviations * deviation_per_spread;
+    rearm[lane] = settings.threshold.rearm_deviations * deviation_per_spread;
+    above_adds[lane] = Tally::vote;
+    rearm_adds[lane] = Tally::vote_rearm;
+}
+
+void Detector::State::allocate_sites_floor() {
     const bool by_mean = settings.vote.rule == VoteRule::mean;
-    const auto votes = [&](std::size_t lane) {
-        above[lane] = settings.threshold.deviations * deviation_per_spread;
-        rearm[lane] = settings.threshold.rearm_deviations * deviation_per_spread;
-        above_adds[lane] = Tally::vote;
-        rearm_adds[lane] = Tally::vote_rearm;
-    };
-    std::size_t ripple_sites = 0;
-    for (std::size_t lane = 0; lane < lanes.channel_lanes; ++lane) {
-        if (channels[channel_of[lane]].role == ChannelRole::reference) {
+    const auto ripple_sites = static_cast<double>(std::count(inputs.begin(), inputs.end(), ChannelRole::ripple));
+    for (std::size_t lane = 0; lane < lanes.signal_lanes; ++lane) {
+        if (inputs[lane] == ChannelRole::reference) {
             above[lane] = settings.veto.deviations * deviation_per_spread;
             above_adds[lane] = Tally::reference;
             continue;
         }
-        votes(lane);
-        mean_weight[lane] = 1.0;
-        ++ripple_sites;
+        vote_of(lane);
+        sum_weight[lane] = 1.0 / ripple_sites;
         if (by_mean) {
             above_adds[lane] = rearm_adds[lane] = 0; // its threshold stays, for the journal's floors
         }
     }
     if (by_mean) {
-        votes(lanes.channel_lanes);
-        for (std::size_t lane = 0; lane < lanes.channel_lanes; ++lane) {
-            mean_weight[lane] /= static_cast<double>(ripple_sites);
-        }
-        lanes.mean_weight = mean_weight.data();
+        vote_of(lanes.signal_lanes);
     }
     votes_needed = by_mean ? 1 : static_cast<std::uint32_t>(settings.vote.sites_needed);
 }
@@ -199,7 +210,11 @@ void Detector::State::count_frames() {
     blanking = frames(settings.blanking_ms);
     veto_window = frames(settings.veto.window_ms);
     // The smoother's energy is down to a ten-thousandth after five times its delay.
-    filter_settle = design.settle_samples() + frames(5.0 * settings.envelope.smoothing_ms);
+    if (!evidence()) {
+        filter_delay = design.group_delay_samples(band_centre(settings.filter), rate);
+        delay = filter_delay + settings.envelope.smoothing_ms * rate.value / 1000.0;
+        filter_settle = design.settle_samples() + frames(5.0 * settings.envelope.smoothing_ms);
+    }
 }
 
 void Detector::warm_start(const std::vector<FloorState>& floors) {
@@ -209,8 +224,8 @@ void Detector::warm_start(const std::vector<FloorState>& floors) {
                       "as many as this session has, " + std::to_string(floor_count()));
     }
     for (std::size_t i = 0; i < floors.size(); ++i) {
-        s.mean[i] = floors[i].mean;
-        s.spread[i] = floors[i].deviation / deviation_per_spread;
+        s.mean[s.first_floor() + i] = floors[i].mean;
+        s.spread[s.first_floor() + i] = floors[i].deviation / deviation_per_spread;
     }
     s.floor_frames = floors.front().frames;
     s.start.skip();

@@ -2,6 +2,7 @@
 #pragma once
 
 #include "base/describe.hpp"
+#include "detector/evidence_settings.hpp"
 
 #include <cstdint>
 #include <string>
@@ -135,22 +136,35 @@ template <class Visitor> void describe(Visitor& visit, VetoSettings& veto) {
                  "a reference channel above its threshold within this time before a detection vetoes it");
 }
 
+enum class DetectionMethod : std::uint8_t {
+    envelope, ///< envelope of one band, each site against its own floor, then vote and veto
+    evidence  ///< weighted sum of envelopes of several bands and mixes against one floor
+};
+inline constexpr Choice<DetectionMethod> detection_methods[] = {{DetectionMethod::envelope, "envelope"},
+                                                                {DetectionMethod::evidence, "evidence"}};
+
 // The defaults of filter, envelope, floor and threshold were picked by `millpond tune` on three invented recordings of
 // 15 min (typical scene, four sites and a reference, seeds 101 to 103): 96 % of the ripples found at 0.4 false per
 // minute.
 struct DetectorSettings {
+    DetectionMethod method = DetectionMethod::envelope;
     FilterSettings filter;
     EnvelopeSettings envelope;
     FloorSettings floor;
     ThresholdSettings threshold;
     VoteSettings vote;
     VetoSettings veto;
+    EvidenceSettings evidence;
     double blanking_ms = 25.0;
 
     bool operator==(const DetectorSettings&) const = default;
 };
 
 template <class Visitor> void describe(Visitor& visit, DetectorSettings& detector) {
+    visit.choice(
+        "method", detector.method, detection_methods,
+        "what crosses the threshold: the envelope of one band (filter, envelope, vote, veto), or the evidence of "
+        "several bands and site mixes (evidence)");
     visit.group("filter", detector.filter, "causal band-pass of the ripple band");
     visit.group("envelope", detector.envelope, "size of the band-passed signal");
     visit.group("floor", detector.floor, "what the envelope is without ripples");
@@ -158,6 +172,7 @@ template <class Visitor> void describe(Visitor& visit, DetectorSettings& detecto
     visit.group("vote", detector.vote, "how sites decide together");
     visit.group("veto", detector.veto,
                 "when the reference says that it is no ripple (needs a channel of role reference)");
+    visit.group("evidence", detector.evidence, "weighted bands and site mixes (method: evidence)");
     visit.number("blanking_ms", detector.blanking_ms, {0.0, 1000.0},
                  "after a pulse's place in the stream the detector holds its state this long; must cover the loop's "
                  "latency, the pulse or train, and its artefact");

@@ -4,6 +4,8 @@
 #include "detector/detector.hpp"
 #include "detector/floor_start.hpp"
 #include "detector/kernel.hpp"
+#include "detector/site_mix.hpp"
+#include "detector/site_watch.hpp"
 
 #include <cstdlib>
 #include <memory>
@@ -49,12 +51,26 @@ struct Detector::State {
     [[nodiscard]] Crossing crossing_here(Tally tally) const noexcept;
     void clear_filters() noexcept;
     [[nodiscard]] std::uint16_t channel_at(std::size_t lane) const noexcept;
-    [[nodiscard]] std::size_t mean_lanes() const noexcept { return settings.vote.rule == VoteRule::mean ? 1 : 0; }
+    [[nodiscard]] bool evidence() const noexcept { return settings.method == DetectionMethod::evidence; }
+    [[nodiscard]] bool watches_sites() const noexcept { return evidence() && settings.evidence.site_watch.on; }
+    [[nodiscard]] std::size_t sum_lanes() const noexcept {
+        return evidence() || settings.vote.rule == VoteRule::mean ? 1 : 0;
+    }
+    /// The evidence's features have no floors that anyone looks at.
+    [[nodiscard]] std::size_t first_floor() const noexcept { return evidence() ? lanes.signal_lanes : 0; }
+    void watch_sites(const FrameBlock& block) noexcept;
+    void mix_anew() noexcept;
 
-    void choose_lanes(const Channels& channels);
+    void choose_inputs(const Channels& channels);
+    void choose_lanes();
+    void choose_features(const std::string& where);
     void allocate_filter();
+    void allocate_own_filters(const std::string& where);
     void allocate_envelope();
-    void allocate_floor(const Channels& channels);
+    void allocate_floor();
+    void vote_of(std::size_t lane);
+    void allocate_sites_floor();
+    void allocate_evidence_floor(const std::string& where);
     void count_frames();
 
     DetectorSettings settings;
@@ -65,9 +81,19 @@ struct Detector::State {
     KernelEnvelope method = KernelEnvelope::rectify;
     KernelState lanes;
 
+    std::vector<ChannelRole> inputs; // roles of the looked-at channels
     std::vector<std::uint32_t> channel_of;
     Lanes<double> coefficients, section_states, tap_values, history;
-    Lanes<double> level, last, in_phase, turned, smooth1, smooth2, envelope, mean_weight;
+    Lanes<double> level, last, in_phase, turned, smooth1, smooth2, envelope, sum_weight;
+    Lanes<double> mix, quadratures, smoothings; // evidence only
+
+    std::vector<FeatureSettings> features; // those that have something to look at
+    std::vector<std::size_t> mix_of;       // [features]
+    SiteMixes mixes;
+    SiteWatch site_watch;
+    std::vector<double> mix_weights;  // room for one mix
+    std::vector<SiteState> journaled; // [inputs], as the engine last heard
+    bool sites_changed = false;
     Lanes<double> mean, spread, above, rearm;
     Lanes<std::uint64_t> lane_used, above_adds, rearm_adds;
 
@@ -76,7 +102,8 @@ struct Detector::State {
     std::uint64_t settle_frames = 0, full_frames = 0;
     double least_weight = 0.0;
 
-    std::uint64_t filter_settle = 0; // frames the chain needs after a gap
+    double filter_delay = 0.0, delay = 0.0; // samples
+    std::uint64_t filter_settle = 0;        // frames the chain needs after a gap
     std::uint64_t freeze = 0, min_above = 0, blanking = 0, veto_window = 0;
     std::uint32_t votes_needed = 1;
 

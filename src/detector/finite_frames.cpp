@@ -14,8 +14,8 @@ bool is_finite(float value) noexcept {
 
 bool looked_at_finite(const float* frame, const KernelState& state) noexcept {
     bool finite = true;
-    for (std::size_t lane = 0; lane < state.channel_lanes; ++lane) {
-        finite = finite && is_finite(frame[state.channel_of[lane]]);
+    for (std::size_t input = 0; input < state.inputs; ++input) {
+        finite = finite && is_finite(frame[state.channel_of[input]]);
     }
     return finite;
 }

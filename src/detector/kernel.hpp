@@ -1,6 +1,7 @@
 // The detector's inner loop: all lanes of a frame in one pass, frame after frame, until something must be decided.
-// A lane is one looked-at channel, or the mean over ripple sites. Thread: loop. Plain data and arithmetic only, so that
-// the same text compiled for three vector widths gives the same bits: every lane's operations are the same IEEE ones.
+// A lane is one looked-at channel, or one feature of the evidence; the last one used may be the sum over others.
+// Thread: loop. Plain data and arithmetic only, so that the same text compiled for three vector widths gives the same
+// bits: every lane's operations are the same IEEE ones.
 #pragma once
 
 #include <cstddef>
@@ -14,30 +15,34 @@ inline constexpr std::size_t lane_group = 8;
 /// Everything the loop reads and writes. Arrays are 64-byte aligned; `[lanes]` unless said otherwise.
 struct KernelState {
     std::size_t lanes = 0;                     // a multiple of lane_group
-    std::size_t channel_lanes = 0;             // lanes that read a channel; the mean's lane, if any, is the next one
+    std::size_t signal_lanes = 0;              // lanes that carry a signal; the sum's lane, if any, is the next one
     std::size_t channels = 0;                  // values a frame in the stream
-    const std::uint32_t* channel_of = nullptr; // [lanes]; 0 for lanes without a channel
+    std::size_t inputs = 0;                    // channels looked at
+    const std::uint32_t* channel_of = nullptr; // [inputs], and 0 up to [lanes]
     const std::uint64_t* lane_used = nullptr;  // all ones for lanes with a channel, else 0
-    bool in_stream_order = false;              // channel_of[i] == i for all that are used
+    const double* mix = nullptr;  // [inputs][lanes]: what a lane takes of each channel; null: lane i is input i
+    bool in_stream_order = false; // channel_of[i] == i for all that are used
 
     std::size_t sections = 0;
-    const double* coefficients = nullptr; // [sections][5]: b0 b1 b2 a1 a2
+    const double* coefficients = nullptr; // [sections][5]: b0 b1 b2 a1 a2; with a mix [sections][5][lanes]
     double* section_states = nullptr;     // [lanes / lane_group][sections][2][lane_group]
     std::size_t taps = 0;
     const double* tap_values = nullptr; // [taps]
     double* history = nullptr;          // [2 * taps][lanes]: written twice, so that the last `taps` are one run
     std::size_t history_at = 0;
 
-    double* level = nullptr;    // taken off every sample: the band-pass ignores it, and a splice makes no step
-    double* last = nullptr;     // the last sample, less its level
-    double quadrature = 0.0;    // all-pass coefficient: 90 degrees at the centre of the band
-    double* in_phase = nullptr; // the all-pass filter's last input
-    double* turned = nullptr;   // and its last output
-    double smoothing = 1.0;     // 1 / (1 + delay of one section in frames)
+    double* level = nullptr;             // taken off every sample: the band-pass ignores it, and a splice makes no step
+    double* last = nullptr;              // the last sample, less its level
+    double quadrature = 0.0;             // all-pass coefficient: 90 degrees at the centre of the band
+    const double* quadratures = nullptr; // [lanes], with a mix
+    double* in_phase = nullptr;          // the all-pass filter's last input
+    double* turned = nullptr;            // and its last output
+    double smoothing = 1.0;              // 1 / (1 + delay of one section in frames)
+    const double* smoothings = nullptr;  // [lanes], with a mix
     double* smooth1 = nullptr;
     double* smooth2 = nullptr;
     double* envelope = nullptr;
-    const double* mean_weight = nullptr; // 1 / ripple sites on ripple lanes, else 0
+    const double* sum_weight = nullptr; // [lanes]: mean over sites, or weights of the evidence; null: no sum
 
     double* mean = nullptr;        // the floor
     double* spread = nullptr;      // running mean of |envelope - mean|

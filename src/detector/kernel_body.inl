@@ -41,6 +41,31 @@ inline Doubles raw_lanes(const KernelState& state, const float* frame, std::size
     return reinterpret_cast<Doubles>(reinterpret_cast<Words>(value) & at(state.lane_used, lane));
 }
 
+// Channel after channel, so that the sum has the same bits at every width.
+inline Doubles mixed_lanes(const KernelState& state, const float* frame, std::size_t lane) {
+    Doubles sum = {};
+    for (std::size_t i = 0; i < state.inputs; ++i) {
+        sum += static_cast<double>(frame[state.channel_of[i]]) * at(state.mix + i * state.lanes, lane);
+    }
+    return sum;
+}
+
+// As filter_sections, each lane with coefficients of its own.
+inline Doubles filter_own_sections(KernelState& state, std::size_t lane, Doubles value) {
+    const std::size_t group = lane / lane_group;
+    double* states = state.section_states + group * state.sections * 2 * lane_group + lane % lane_group;
+    const double* c = state.coefficients + lane;
+    for (std::size_t i = 0; i < state.sections; ++i, states += 2 * lane_group, c += 5 * state.lanes) {
+        Doubles& first = at(states, 0);
+        Doubles& second = at(states, lane_group);
+        const Doubles out = at(c, 0) * value + first;
+        first = (at(c, state.lanes) * value + second) - at(c, 3 * state.lanes) * out;
+        second = at(c, 2 * state.lanes) * value - at(c, 4 * state.lanes) * out;
+        value = out;
+    }
+    return value;
+}
+
 inline Doubles filter_sections(KernelState& state, std::size_t lane, Doubles value) {
     const std::size_t group = lane / lane_group;
     double* states = state.section_states + group * state.sections * 2 * lane_group + lane % lane_group;
@@ -68,10 +93,11 @@ inline Doubles filter_taps(KernelState& state, std::size_t lane, Doubles value) 
 }
 
 // The analytic magnitude needs the band signal turned by 90 degrees: a first-order all-pass does so at the centre.
-inline Doubles energy_with_turned(KernelState& state, std::size_t lane, Doubles band) {
+template <class Coefficient>
+inline Doubles energy_with_turned(KernelState& state, std::size_t lane, Doubles band, Coefficient quadrature) {
     Doubles& before = at(state.in_phase, lane);
     Doubles& turned = at(state.turned, lane);
-    turned = state.quadrature * (band - turned) + before;
+    turned = quadrature * (band - turned) + before;
     before = band;
     return band * band + turned * turned;
 }
@@ -83,7 +109,7 @@ template <KernelEnvelope method> inline Doubles envelope_of(KernelState& state, 
     } else if constexpr (method == KernelEnvelope::energy) {
         size = band * band;
     } else {
-        size = MILLPOND_SQRT(energy_with_turned(state, lane, band));
+        size = MILLPOND_SQRT(energy_with_turned(state, lane, band, state.quadrature));
     }
     Doubles& first = at(state.smooth1, lane);
     Doubles& second = at(state.smooth2, lane);
@@ -96,12 +122,22 @@ template <KernelEnvelope method> inline Doubles envelope_of(KernelState& state, 
     }
 }
 
-// Eight partial sums whatever the width, then one fixed order: the mean over sites has the same bits at every width.
-inline double mean_of_sites(const KernelState& state) {
+inline Doubles own_envelope_of(KernelState& state, std::size_t lane, Doubles band) {
+    const Doubles size = MILLPOND_SQRT(energy_with_turned(state, lane, band, at(state.quadratures, lane)));
+    const Doubles smoothing = at(state.smoothings, lane);
+    Doubles& first = at(state.smooth1, lane);
+    Doubles& second = at(state.smooth2, lane);
+    first += smoothing * (size - first);
+    second += smoothing * (first - second);
+    return second;
+}
+
+// Eight partial sums whatever the width, then one fixed order: the sum has the same bits at every width.
+inline double sum_over_lanes(const KernelState& state) {
     Doubles sums[vectors_in_group] = {};
     for (std::size_t lane = 0; lane < state.lanes; lane += lane_group) {
         for (std::size_t v = 0; v < vectors_in_group; ++v) {
-            sums[v] += at(state.mean_weight, lane + v * width) * at(state.envelope, lane + v * width);
+            sums[v] += at(state.sum_weight, lane + v * width) * at(state.envelope, lane + v * width);
         }
     }
     alignas(64) double part[lane_group];
@@ -111,7 +147,8 @@ inline double mean_of_sites(const KernelState& state) {
     return ((part[0] + part[4]) + (part[2] + part[6])) + ((part[1] + part[5]) + (part[3] + part[7]));
 }
 
-inline Tally compare_to_floor(KernelState& state, double weight) {
+// Evidence can fall as far as it can rise, so there the floor is clipped on both sides.
+template <bool mixed> inline Tally compare_to_floor(KernelState& state, double weight) {
     Words tally = {};
     for (std::size_t lane = 0; lane < state.lanes; lane += width) {
         const Doubles envelope = at(state.envelope, lane);
@@ -119,7 +156,11 @@ inline Tally compare_to_floor(KernelState& state, double weight) {
         Doubles& spread = at(state.spread, lane);
         if (weight > 0.0) {
             const Doubles ceiling = mean + state.clip * spread;
-            const Doubles taken = envelope < ceiling ? envelope : ceiling;
+            Doubles taken = envelope < ceiling ? envelope : ceiling;
+            if constexpr (mixed) {
+                const Doubles bottom = mean - state.clip * spread;
+                taken = taken > bottom ? taken : bottom;
+            }
             const Doubles off = taken - mean;
             mean += weight * off;
             spread += weight * (magnitude(off) - spread);
@@ -135,40 +176,50 @@ inline Tally compare_to_floor(KernelState& state, double weight) {
     return Tally{sum};
 }
 
-template <KernelEnvelope method>
+template <KernelEnvelope method, bool mixed>
 inline void envelopes_of_frame(KernelState& state, const float* frame, bool whole_vectors, bool resume) {
     for (std::size_t lane = 0; lane < state.lanes; lane += width) {
-        const Doubles raw = raw_lanes(state, frame, lane, whole_vectors);
+        Doubles raw;
+        if constexpr (mixed) {
+            raw = mixed_lanes(state, frame, lane);
+        } else {
+            raw = raw_lanes(state, frame, lane, whole_vectors);
+        }
         Doubles& level = at(state.level, lane);
         Doubles& last = at(state.last, lane);
         if (resume) {
             level = raw - last;
         }
         last = raw - level;
-        const Doubles band = state.taps == 0 ? filter_sections(state, lane, last) : filter_taps(state, lane, last);
-        at(state.envelope, lane) = envelope_of<method>(state, lane, band);
+        if constexpr (mixed) {
+            at(state.envelope, lane) = own_envelope_of(state, lane, filter_own_sections(state, lane, last));
+        } else {
+            const Doubles band = state.taps == 0 ? filter_sections(state, lane, last) : filter_taps(state, lane, last);
+            at(state.envelope, lane) = envelope_of<method>(state, lane, band);
+        }
     }
     if (state.taps != 0) {
         state.history_at = state.history_at + 1 == state.taps ? 0 : state.history_at + 1;
     }
 }
 
-template <KernelEnvelope method>
+template <KernelEnvelope method, bool mixed>
 inline void envelope_of_every_lane(KernelState& state, const KernelOrder& order, std::size_t frame_of_order,
                                    const float* frame, bool resume) {
     const bool whole_vectors = state.in_stream_order && (order.count - frame_of_order) * state.channels >= state.lanes;
-    envelopes_of_frame<method>(state, frame, whole_vectors, resume);
-    if (state.mean_weight != nullptr) {
-        state.envelope[state.channel_lanes] = mean_of_sites(state);
+    envelopes_of_frame<method, mixed>(state, frame, whole_vectors, resume);
+    if (state.sum_weight != nullptr) {
+        state.envelope[state.signal_lanes] = sum_over_lanes(state);
     }
 }
 
 // For sweeps: what the loop below would compare, written out instead.
-template <KernelEnvelope method> inline KernelResult keep_envelopes(KernelState& state, const KernelOrder& order) {
+template <KernelEnvelope method, bool mixed>
+inline KernelResult keep_envelopes(KernelState& state, const KernelOrder& order) {
     KernelResult result;
     double* kept = order.envelopes;
     for (const float* frame = order.frames; result.frames < order.count; frame += state.channels) {
-        envelope_of_every_lane<method>(state, order, result.frames, frame, order.resume && result.frames == 0);
+        envelope_of_every_lane<method, mixed>(state, order, result.frames, frame, order.resume && result.frames == 0);
         for (std::size_t lane = 0; lane < state.lanes; lane += width) {
             __builtin_memcpy(kept + lane, state.envelope + lane, sizeof(Doubles)); // the caller's memory lies anywhere
         }
@@ -178,16 +229,17 @@ template <KernelEnvelope method> inline KernelResult keep_envelopes(KernelState&
     return result;
 }
 
-template <KernelEnvelope method> inline KernelResult run_method(KernelState& state, const KernelOrder& order) {
+template <KernelEnvelope method, bool mixed>
+inline KernelResult run_method(KernelState& state, const KernelOrder& order) {
     if (order.envelopes != nullptr) {
-        return keep_envelopes<method>(state, order);
+        return keep_envelopes<method, mixed>(state, order);
     }
     KernelResult result;
     for (const float* frame = order.frames; result.frames < order.count; frame += state.channels) {
-        envelope_of_every_lane<method>(state, order, result.frames, frame, order.resume && result.frames == 0);
+        envelope_of_every_lane<method, mixed>(state, order, result.frames, frame, order.resume && result.frames == 0);
         const double weight =
             order.warming == 0 ? order.weight : 1.0 / static_cast<double>(order.warming + result.frames + 1);
-        result.tally = compare_to_floor(state, weight);
+        result.tally = compare_to_floor<mixed>(state, weight);
         if (result.tally.references() != 0) {
             result.last_reference = result.frames;
         }
@@ -203,13 +255,16 @@ template <KernelEnvelope method> inline KernelResult run_method(KernelState& sta
 } // namespace
 
 KernelResult MILLPOND_KERNEL(KernelState& state, const KernelOrder& order) noexcept {
+    if (state.mix != nullptr) {
+        return run_method<KernelEnvelope::analytic, true>(state, order);
+    }
     switch (order.method) {
     case KernelEnvelope::rectify:
-        return run_method<KernelEnvelope::rectify>(state, order);
+        return run_method<KernelEnvelope::rectify, false>(state, order);
     case KernelEnvelope::energy:
-        return run_method<KernelEnvelope::energy>(state, order);
+        return run_method<KernelEnvelope::energy, false>(state, order);
     default:
-        return run_method<KernelEnvelope::analytic>(state, order);
+        return run_method<KernelEnvelope::analytic, false>(state, order);
     }
 }
 

@@ -69,6 +69,10 @@ std::size_t Engine::run_detector(const FrameBlock& block) noexcept {
     std::optional<Crossing> crossing;
     const std::size_t frames = detector_.run(block, crossing);
     next_ = next_ + frames;
+    while (const auto change = detector_.site_change()) {
+        sink_.take(
+            Event::make(EventKind::site, static_cast<std::uint8_t>(change->state), next_, SiteDetail{change->channel}));
+    }
     if (crossing) {
         on_crossing(*crossing);
     }

@@ -35,15 +35,18 @@ class ReferenceWriter {
         }
         row(key, words, std::string(word_for<Enum>(choices, value)), doc);
     }
+    void numbers(std::string_view key, const std::vector<double>& values, Range range, std::string_view doc) {
+        row(key, "list of numbers, " + shortest(range.least) + " to " + shortest(range.most),
+            values.empty() ? "empty" : std::to_string(values.size()) + " numbers", doc);
+    }
     template <class Struct> void group(std::string_view key, Struct& value, std::string_view doc) {
         row(key, "group", "", doc);
         ReferenceWriter inner(prefix_ + std::string(key) + ".");
         describe(inner, value);
         table_ += inner.table_;
     }
-    template <class Struct>
-    void list(std::string_view key, [[maybe_unused]] std::vector<Struct>& values, std::string_view doc) {
-        row(key, "list", "empty", doc);
+    template <class Struct> void list(std::string_view key, const std::vector<Struct>& values, std::string_view doc) {
+        row(key, "list", values.empty() ? "empty" : std::to_string(values.size()) + " entries", doc);
         ReferenceWriter inner(prefix_ + std::string(key) + "[].");
         Struct one{};
         describe(inner, one);

@@ -68,13 +68,29 @@ void YamlReader::number(std::string_view key, double& value, Range range, std::s
     if (!node) {
         return;
     }
+    value = number_in(node, key, range);
+}
+
+double YamlReader::number_in(const YAML::Node& node, std::string_view key, Range range) const {
     double read = 0.0;
     // NaN and infinity are YAML numbers; the range check refuses both.
     if (!node.IsScalar() || !YAML::convert<double>::decode(node, read) ||
         !(read >= range.least && read <= range.most)) {
         throw Refusal(where(key, node), shown(node), allowed_range("a number", range));
     }
-    value = read;
+    return read;
+}
+
+void YamlReader::numbers(std::string_view key, std::vector<double>& values, Range range, std::string_view /*doc*/) {
+    const auto node = take(key);
+    if (!node) {
+        return;
+    }
+    require_sequence(key, node);
+    values.clear();
+    for (const auto& each : node) {
+        values.push_back(number_in(each, key, range));
+    }
 }
 
 void YamlReader::read_whole(std::string_view key, std::int64_t& value, Range range) {

@@ -25,6 +25,7 @@ class YamlReader {
     void number(std::string_view key, double& value, Range range, std::string_view doc);
     void flag(std::string_view key, bool& value, std::string_view doc);
     void text(std::string_view key, std::string& value, std::string_view doc);
+    void numbers(std::string_view key, std::vector<double>& values, Range range, std::string_view doc);
 
     template <class Whole>
     void whole(std::string_view key, Whole& value, Range range, [[maybe_unused]] std::string_view doc) {
@@ -77,6 +78,7 @@ class YamlReader {
 
   private:
     YAML::Node take(std::string_view key);
+    [[nodiscard]] double number_in(const YAML::Node& node, std::string_view key, Range range) const;
     void read_whole(std::string_view key, std::int64_t& value, Range range);
     std::size_t read_choice(std::string_view key, const std::vector<std::string>& words);
     void require_sequence(std::string_view key, const YAML::Node& node) const;

@@ -32,6 +32,13 @@ class YamlWriter {
     void choice(std::string_view key, Enum value, const Choice<Enum> (&choices)[N], std::string_view /*doc*/) {
         entry(key) << std::string(word_for<Enum>(choices, value));
     }
+    void numbers(std::string_view key, const std::vector<double>& values, Range /*range*/, std::string_view /*doc*/) {
+        entry(key) << YAML::Flow << YAML::BeginSeq;
+        for (const double value : values) {
+            out_ << shortest(value);
+        }
+        out_ << YAML::EndSeq;
+    }
     template <class Struct> void group(std::string_view key, Struct& value, std::string_view /*doc*/) {
         entry(key);
         mapping(value);
