@@ -36,6 +36,7 @@ FloorBatch::FloorBatch(std::span<const DetectorSettings> settings, const Envelop
     state_.needed.values.fill(INT64_MAX); // lanes without a setting never cross
     state_.newest_reference.values.fill(never);
     state_.clip.values.fill(beyond_all);
+    state_.clips_below = settings.front().method == DetectionMethod::evidence;
     for (auto* floors : {&state_.voting, &state_.references}) {
         for (auto& column : *floors) {
             column.waited_for.values.fill(beyond_all);

@@ -44,16 +44,18 @@ struct BatchState {
     BatchOf<std::int64_t> newest_reference;
     BatchOf<std::int64_t> votes, rearm_votes; ///< of the last frame worked through
     bool warming = true;                      ///< weights still change from frame to frame
+    bool clips_below = false;                 ///< evidence can fall as far as it can rise
     bool any_counting = false, any_spent = false;
 };
 
 /// Frames that are tried at once; `EnvelopeBlock::highest` has one row for each.
 inline constexpr std::size_t stride_frames = 8;
 
-/// A block of envelopes, `values` numbers a frame, and the highest of each number over every whole stride.
+/// A block of envelopes, `values` numbers a frame, and the highest and lowest of each number over every stride.
 struct EnvelopeBlock {
     const double* envelopes = nullptr;
     const double* highest = nullptr;
+    const double* lowest = nullptr;
     std::size_t values = 0, frames = 0;
 };
 

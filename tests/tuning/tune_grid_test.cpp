@@ -96,6 +96,16 @@ TEST(TuneGrid, RefusesKeysThatNoRecordingWithoutPulsesCanJudge) {
     expect_refused("detector: {floor: {warm_start_session: [a]}}", {"warm_start_session", "no sweep can judge"});
 }
 
+TEST(TuneGrid, TakesTheMethodAndWhatEvidenceIsAskedForButNoLists) {
+    const auto candidates = candidates_of(
+        TuneGrid::from_text("detector: {method: [evidence], evidence: {false_per_minute: [0.5, 2]}}", "here"), {});
+    ASSERT_EQ(candidates.settings.size(), 2U);
+    EXPECT_EQ(candidates.settings[1].method, DetectionMethod::evidence);
+    EXPECT_EQ(candidates.settings[1].evidence.false_per_minute, 2.0);
+    expect_refused("detector: {evidence: {background: [[1, 2], [3, 4]]}}",
+                   {"evidence.background", "lists are learned"});
+}
+
 TEST(TuneGrid, TakesInAnotherOneButNoKeyTwice) {
     auto grid = TuneGrid::from_text("detector: {filter: {order: [1, 2]}}", "here");
     grid.add(TuneGrid::from_text("detector: {filter: {low_hz: [120, 130]}, threshold: {deviations: [4]}}", "there"));
