@@ -70,6 +70,9 @@ TEST(TuneCommand, TakesOptionsBesideAGridAndRefusesAKeyThatBothHave) {
     EXPECT_NE(ran.err.find("detector.filter.order"), std::string::npos) << ran.err;
     const auto bad = bench.tune("--smoothing-ms soon --out p.yaml");
     EXPECT_EQ(bad.status, 2);
+    const auto beyond = bench.tune("--low-hz 700 --high-hz 900 --out p.yaml"); // half the rate is 625 Hz
+    EXPECT_EQ(beyond.status, 2);
+    EXPECT_FALSE(bench.has("p.yaml.work"));
 }
 
 TEST(TuneCommand, WritesNothingWhereNoSettingsKeepTheLimitAndDoesNotSweepAgainForAnotherLimit) {
