@@ -2,6 +2,7 @@
 
 #include "base/refusal.hpp"
 #include "recording/events_table.hpp"
+#include "synth/scene_element.hpp"
 
 #include <fmt/format.h>
 
@@ -13,6 +14,12 @@ namespace {
 
 SampleIndex frame_at(double seconds, Hertz rate) {
     return SampleIndex{static_cast<std::uint64_t>(std::llround(std::max(0.0, seconds * rate.value)))};
+}
+
+/// A row that `synth` writes of what is no ripple: an invented recording may hold nothing else.
+bool stands_beside_ripples(const TableEvent& event) {
+    return std::any_of(std::begin(happening_kinds), std::end(happening_kinds),
+                       [&](const auto& kind) { return kind.word == event.trial_type; });
 }
 
 } // namespace
@@ -34,7 +41,8 @@ Ripples ripples_from_table(const std::filesystem::path& table, Hertz rate, std::
         }
         ripples.push_back(ripple);
     }
-    if (ripples.empty() && !events.empty()) {
+    const bool invented = std::all_of(events.begin(), events.end(), stands_beside_ripples);
+    if (ripples.empty() && !invented) {
         throw Refusal(table.string(), fmt::format("{} rows, none of trial_type ripple", events.size()),
                       "ripples, or a table without rows where there are none");
     }

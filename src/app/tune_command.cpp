@@ -2,6 +2,7 @@
 #include "app/dry_run_tables.hpp"
 #include "app/progress.hpp"
 #include "app/stop_signals.hpp"
+#include "app/tune_learn.hpp"
 #include "app/tune_plan.hpp"
 #include "app/tune_tables.hpp"
 #include "base/refusal.hpp"
@@ -197,6 +198,17 @@ void finish(const TuneOptions& options, const TunePlan& plan, const SweepResults
     tell_pick(options, plan, outcome);
 }
 
+void finish_learning(const TuneOptions& options, const TunePlan& plan) {
+    const auto learned = learn_from(options, plan);
+    write_settings(tuned(plan.base, learned.detector, plan, options.base.empty()), options.out);
+    fmt::print(
+        "{}asked       {} false per minute\ntruth       {}, early {} ms; by the whole engine, with pulses:\n{}{}{}"
+        "settings    {}\n",
+        learned.text, options.max_false_per_minute, options.labels.empty() ? "referee" : "labels", plan.sweep.early_ms,
+        part_summary("training", learned.figures.training), part_summary("held out", learned.figures.held_out),
+        doubts(learned.figures, options.max_false_per_minute), options.out.string());
+}
+
 void run_part(const TuneOptions& options, const TunePlan& plan) {
     const auto part = part_of(options.part);
     auto work = open_work(options, plan.identity, part);
@@ -214,7 +226,9 @@ void run_command(const TuneOptions& options) {
         static_cast<void>(part_of(options.part)); // refused before anything is read
     }
     const auto plan = make_tune_plan(options);
-    if (!options.part.empty()) {
+    if (options.learn) {
+        finish_learning(options, plan);
+    } else if (!options.part.empty()) {
         run_part(options, plan);
     } else if (options.merge) {
         finish(options, plan, merge_parts(options.out, plan.identity), nullptr);
@@ -288,6 +302,14 @@ void add_tune_command(CLI::App& program) {
     command.add_option("--max-false-per-minute", options->max_false_per_minute, "N of the rule above")
         ->check(CLI::Range(0.0, 1000.0))
         ->capture_default_str();
+    auto* learn = command.add_flag("--learn", options->learn,
+                                   "instead of a sweep: learn the evidence detector, that is a mix of the sites, the "
+                                   "weights of its bands and the\n"
+                                   "threshold for N false per minute, on the training parts");
+    command
+        .add_flag("--plain-mean", options->plain_mean,
+                  "learn for the plain mean of the sites, so that the settings serve any number of them")
+        ->needs(learn);
     add_grid(command, *options);
     command.add_option("--block-s", options->block_s, "length of the blocks that recordings are cut into")
         ->check(CLI::Range(1.0, 3600.0))

@@ -30,6 +30,7 @@ struct TuneOptions {
     unsigned threads = 2;
     std::size_t show = 20;
     std::string part;
+    bool learn = false, plain_mean = false; ///< the evidence detector instead of a sweep; without a mix of its own
     bool merge = false, resume = false, overwrite = false;
 };
 

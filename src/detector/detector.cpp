@@ -63,6 +63,10 @@ std::size_t Detector::floor_column(std::size_t i) const noexcept {
     return state_->first_floor() + i;
 }
 
+std::size_t Detector::feature_count() const noexcept {
+    return state_->features.size();
+}
+
 std::size_t Detector::State::skip_blanked(std::size_t frames) noexcept {
     const auto skipped = std::min<std::uint64_t>(frames, blank_until - position);
     if (position < settling_until) {

@@ -116,6 +116,8 @@ class Detector {
     [[nodiscard]] std::size_t envelope_stride() const noexcept;
     /// Where the envelope of floor `i` stands among them.
     [[nodiscard]] std::size_t floor_column(std::size_t i) const noexcept;
+    /// Features of the evidence that have something to look at; the first ones of that stride. 0 with method envelope.
+    [[nodiscard]] std::size_t feature_count() const noexcept;
 
     /// Watches every frame's envelopes, for pictures and tests; slow, never in a live session. Empty: nobody watches.
     /// Called with the frame's place and one envelope for each looked-at channel or feature, then the sum's, if any

@@ -104,6 +104,19 @@ template <class Visitor> void describe(Visitor& visit, SiteWatchSettings& watch)
                  "a site that is well again for this long comes back");
 }
 
+// Learned with `tune --learn --plain-mean` on invented recordings of three scenes.
+inline std::vector<FeatureSettings> default_features() {
+    return {
+        {"sites", 150.0, 250.0, 1, 10.0, 1.0},   {"sites", 320.0, 560.0, 2, 10.0, -0.9},
+        {"sites", 260.0, 400.0, 2, 10.0, -0.4},  {"sites", 100.0, 140.0, 1, 10.0, -0.35},
+        {"sites", 60.0, 100.0, 1, 10.0, -0.07},
+    };
+}
+
+inline std::vector<CalibrationPoint> default_calibration() {
+    return {{4.0, 10.0}, {6.0, 1.0}};
+}
+
 struct EvidenceSettings {
     double false_per_minute = 1.0;
     std::vector<FeatureSettings> features = default_features();
@@ -114,9 +127,6 @@ struct EvidenceSettings {
     SiteWatchSettings site_watch;
 
     bool operator==(const EvidenceSettings&) const = default;
-
-    [[nodiscard]] static std::vector<FeatureSettings> default_features();
-    [[nodiscard]] static std::vector<CalibrationPoint> default_calibration();
 };
 
 template <class Visitor> void describe(Visitor& visit, EvidenceSettings& evidence) {

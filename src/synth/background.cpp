@@ -1,5 +1,7 @@
 #include "synth/background.hpp"
 
+#include <algorithm>
+
 namespace millpond {
 namespace {
 
@@ -42,29 +44,49 @@ double SlopeFilter::next(double white) noexcept {
     return gain_ * filtered(white);
 }
 
-Background::Background(const SceneSettings& settings, std::size_t channels)
+Background::Background(const SceneSettings& settings, const std::vector<ChannelGains>& gains)
     : shared_uv_(settings.background.rms_uv * std::sqrt(settings.background.shared)),
       own_uv_(settings.background.rms_uv * std::sqrt(1.0 - settings.background.shared)),
       amplifier_uv_(settings.background.amplifier_uv),
       shared_{Random(settings.seed, number_of(RandomStream::background_shared)),
               SlopeFilter(settings.background.slope, settings.background.corner_hz, Hertz{settings.rate_hz})} {
-    for (std::size_t i = 0; i < channels; ++i) {
+    const double reach_um = settings.background.correlation_um;
+    shared_now_.assign(gains.size(), 0.0);
+    for (std::size_t i = 0; i < gains.size(); ++i) {
+        if (reach_um > 0.0) {
+            near_.push_back({Random(settings.seed, number_of(RandomStream::background_near, i)), shared_.filter});
+            // The reference, last in the list, lies beyond the first site.
+            neighbour_.push_back(gains[i].reference || i == 0 ? 0 : i - 1);
+            const double distance_um = std::abs(gains[i].below_um - gains[neighbour_[i]].below_um);
+            correlation_.push_back(i == 0 ? 0.0 : portable_exp(-distance_um / reach_um));
+        }
         own_.push_back({Random(settings.seed, number_of(RandomStream::background_own, i)), shared_.filter});
         amplifier_.emplace_back(settings.seed, number_of(RandomStream::amplifier, i));
     }
     // Slow noise needs time to become stationary: that time passes before the first frame.
     for (std::uint64_t i = 0; i < memory_frames(settings.background.corner_hz, Hertz{settings.rate_hz}); ++i) {
-        shared_.next();
+        share();
         for (auto& own : own_) {
             own.next();
         }
     }
 }
 
+void Background::share() {
+    if (near_.empty()) {
+        std::fill(shared_now_.begin(), shared_now_.end(), shared_.next());
+        return;
+    }
+    for (std::size_t i = 0; i < near_.size(); ++i) {
+        const double kept = correlation_[i];
+        shared_now_[i] = kept * shared_now_[neighbour_[i]] + std::sqrt(1.0 - kept * kept) * near_[i].next();
+    }
+}
+
 void Background::add(SampleIndex /*at*/, std::span<double> frame) {
-    const double shared = shared_uv_ * shared_.next();
+    share();
     for (std::size_t i = 0; i < frame.size(); ++i) {
-        frame[i] += shared + own_uv_ * own_[i].next() + amplifier_uv_ * amplifier_[i].normal();
+        frame[i] += shared_uv_ * shared_now_[i] + own_uv_ * own_[i].next() + amplifier_uv_ * amplifier_[i].normal();
     }
 }
 

@@ -25,9 +25,11 @@ class SlopeFilter {
     double gain_ = 1.0;
 };
 
+/// The shared part is the same on all channels, or its correlation falls as exp(-distance / correlation_um): then each
+/// channel takes it from its neighbour and adds something of its own.
 class Background : public SceneElement {
   public:
-    Background(const SceneSettings& settings, std::size_t channels);
+    Background(const SceneSettings& settings, const std::vector<ChannelGains>& gains);
     void add(SampleIndex at, std::span<double> frame) override;
 
   private:
@@ -37,10 +39,17 @@ class Background : public SceneElement {
         double next() noexcept { return filter.next(random.normal()); }
     };
 
+    /// The shared part's next value on each channel, of variance 1, into `shared_now_`.
+    void share();
+
     double shared_uv_;
     double own_uv_;
     double amplifier_uv_;
     Noise shared_;
+    std::vector<Noise> near_; ///< by channel, where the shared part is not the same on all of them
+    std::vector<std::size_t> neighbour_;
+    std::vector<double> correlation_; ///< of it with the neighbour's
+    std::vector<double> shared_now_;
     std::vector<Noise> own_;
     std::vector<Random> amplifier_;
 };

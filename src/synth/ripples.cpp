@@ -10,6 +10,7 @@ namespace {
 constexpr double tenth = 0.1;
 /// Where sin^2(pi x / 2) is a tenth: x = (2 / pi) asin(sqrt(0.1)).
 constexpr double tenth_at = 0.204832764699133;
+constexpr double doublet_gap_ms = 20.0; ///< least time from a ripple's end to the onset of one that follows it
 constexpr double most_deviations = 2.5; ///< log-normal values beyond are drawn again: no absurd ripples
 
 /// 0 at 0, 1 at 1.
@@ -20,7 +21,7 @@ double half_hann(double x) noexcept {
 
 } // namespace
 
-double Ripples::Ripple::envelope(double t) const noexcept {
+double RippleTrain::Ripple::envelope(double t) const noexcept {
     if (t <= begin_s || t >= stop_s) {
         return 0.0;
     }
@@ -29,40 +30,71 @@ double Ripples::Ripple::envelope(double t) const noexcept {
     return shape * cut_gain(t);
 }
 
-double Ripples::Ripple::cut_gain(double t) const noexcept {
+double RippleTrain::Ripple::cut_gain(double t) const noexcept {
     if (t <= cut_s) {
         return 1.0;
     }
     return t >= cut_s + fall_s ? 0.0 : half_hann(1.0 - (t - cut_s) / fall_s);
 }
 
-Ripples::Ripples(const SceneSettings& settings, std::vector<ChannelGains> gains)
+RippleTrain::RippleTrain(const SceneSettings& settings, std::vector<ChannelGains> gains,
+                         std::shared_ptr<const States> states)
     : ripples_(settings.ripples), sharp_wave_(settings.sharp_wave), rate_{settings.rate_hz},
-      duration_s_(settings.duration_s), gains_(std::move(gains)),
-      random_(settings.seed, number_of(RandomStream::ripples)) {
-    for (const auto& gain : gains_) {
-        largest_gain_ = std::max(largest_gain_, gain.ripple);
-    }
-    mean_wait_s_ = ripples_.rate_per_s == 0.0
-                       ? 0.0
-                       : 1.0 / ripples_.rate_per_s - (ripples_.duration_ms + ripples_.min_gap_ms) / 1000.0;
+      duration_s_(settings.duration_s), gains_(std::move(gains)), states_(std::move(states)),
+      ripples_in_run_(settings.states.ripples_in_run), random_(settings.seed, number_of(RandomStream::ripples)),
+      more_(settings.seed, number_of(RandomStream::more_of_ripples)) {
+    mean_wait_s_ = ripples_.rate_per_s == 0.0 ? 0.0 : mean_wait_s();
     draw_next(settings.quiet_start_s);
 }
 
-void Ripples::draw_next(double not_before_s) {
+/// Of p followed by another each, one in 1 - p begins a chain, which takes as much longer as it has more ripples.
+double RippleTrain::mean_wait_s() const {
+    const double first_s = (ripples_.duration_ms + ripples_.min_gap_ms) / 1000.0;
+    const double apart_s =
+        std::max(0.5 * (ripples_.doublet_least_ms + ripples_.doublet_most_ms), ripples_.duration_ms + doublet_gap_ms) /
+        1000.0;
+    const double followed = ripples_.doublet_share;
+    return 1.0 / (ripples_.rate_per_s * (1.0 - followed)) - first_s - followed / (1.0 - followed) * apart_s;
+}
+
+double RippleTrain::draw_onset(double not_before_s) {
+    if (next_.onset_s > 0.0 && ripples_.doublet_share > 0.0 && more_.uniform() < ripples_.doublet_share) {
+        const double range_ms = ripples_.doublet_most_ms - ripples_.doublet_least_ms;
+        const double apart_s = (ripples_.doublet_least_ms + range_ms * more_.uniform()) / 1000.0;
+        return std::max(next_.onset_s + apart_s, next_.end_s + doublet_gap_ms / 1000.0);
+    }
+    double onset_s = not_before_s + random_.exponential(mean_wait_s_);
+    while (states_->runs_at(onset_s) && onset_s < duration_s_ && more_.uniform() >= ripples_in_run_) {
+        onset_s += random_.exponential(mean_wait_s_);
+    }
+    return onset_s;
+}
+
+double RippleTrain::share(const Ripple& ripple, std::size_t channel) const noexcept {
+    if (ripple.depth_um == 0.0 || gains_[channel].reference) {
+        return gains_[channel].ripple;
+    }
+    const double spread = (gains_[channel].below_um - ripple.depth_um) / ripples_.spread_um;
+    return portable_exp(-0.5 * spread * spread);
+}
+
+void RippleTrain::draw_next(double not_before_s) {
     constexpr double never = std::numeric_limits<double>::infinity();
-    next_ = Ripple{};
-    next_.begin_s = next_.sharp_begin_s = never;
     if (ripples_.rate_per_s == 0.0) {
+        next_.begin_s = next_.sharp_begin_s = never;
         return;
     }
+    const double onset_s = draw_onset(not_before_s);
+    next_ = Ripple{};
+    next_.begin_s = next_.sharp_begin_s = never;
     const double log_sd = ripples_.duration_log_sd;
     const double log_mean = portable_log(ripples_.duration_ms / 1000.0) - 0.5 * log_sd * log_sd;
-    const double onset_s = not_before_s + random_.exponential(mean_wait_s_);
     const double duration_s = portable_exp(log_mean + log_sd * random_.normal_within(most_deviations));
-    const double size = portable_exp(ripples_.amplitude_log_sd * random_.normal_within(most_deviations));
+    double size = portable_exp(ripples_.amplitude_log_sd * random_.normal_within(most_deviations));
     const double shift_hz = ripples_.frequency_sd_hz * random_.normal_within(most_deviations);
     const double phase_turns = random_.uniform();
+    const double depth_um = ripples_.depth_sd_um * more_.normal_within(most_deviations);
+    size *= more_.uniform() < ripples_.small_share ? ripples_.small_size : 1.0;
 
     // Between the tenths lies all but tenth_at of the whole envelope, of its rise as of its fall.
     const double whole_s = duration_s / (1.0 - tenth_at);
@@ -79,13 +111,14 @@ void Ripples::draw_next(double not_before_s) {
     ripple.hz_per_s = (ripples_.end_hz - ripples_.start_hz) / duration_s;
     ripple.peak_hz = ripples_.start_hz + shift_hz + ripple.hz_per_s * (ripple.peak_s - onset_s);
     ripple.phase_turns = phase_turns;
+    ripple.depth_um = depth_um;
     // No ripple that the recording's end would cut: its truth could not be told.
     if (ripple.last_s() < duration_s_) {
         next_ = ripple;
     }
 }
 
-void Ripples::add(SampleIndex at, std::span<double> frame) {
+void RippleTrain::add(SampleIndex at, std::span<double> frame) {
     const double t = seconds_at(at, rate_);
     while (next_.first_s() <= t) {
         active_.push_back(next_);
@@ -94,17 +127,17 @@ void Ripples::add(SampleIndex at, std::span<double> frame) {
     for (auto& ripple : active_) {
         add_one(ripple, at, frame);
     }
-    std::erase_if(active_, [&](const Ripple& ripple) {
-        const bool over = ripple.last_s() <= t;
+    // In order of their begin, so that the truth is in order though a short one may end before a long one's last trace.
+    while (!active_.empty() && active_.front().last_s() <= t) {
         // A pulse may have cut it before its envelope was ever above a tenth: then there was no ripple.
-        if (over && ripple.largest > tenth) {
-            truth_.push_back(ripple.truth);
+        if (active_.front().largest > tenth) {
+            truth_.push_back(active_.front().truth);
         }
-        return over;
-    });
+        active_.erase(active_.begin());
+    }
 }
 
-void Ripples::add_one(Ripple& ripple, SampleIndex at, std::span<double> frame) const {
+void RippleTrain::add_one(Ripple& ripple, SampleIndex at, std::span<double> frame) const {
     const double t = seconds_at(at, rate_);
     const double envelope = ripple.envelope(t);
     if (envelope > tenth) {
@@ -114,7 +147,11 @@ void Ripples::add_one(Ripple& ripple, SampleIndex at, std::span<double> frame) c
     if (envelope > ripple.largest) {
         ripple.largest = envelope;
         ripple.truth.peak = at;
-        ripple.truth.amplitude_uv = envelope * ripple.amplitude_uv * largest_gain_;
+        double largest_share = 0.0;
+        for (std::size_t i = 0; i < frame.size(); ++i) {
+            largest_share = std::max(largest_share, share(ripple, i));
+        }
+        ripple.truth.amplitude_uv = envelope * ripple.amplitude_uv * largest_share;
         ripple.truth.frequency_hz = ripple.peak_hz;
     }
     const double since_peak_s = t - ripple.peak_s;
@@ -123,11 +160,11 @@ void Ripples::add_one(Ripple& ripple, SampleIndex at, std::span<double> frame) c
     const double distance = std::abs(since_peak_s) * 2000.0 / sharp_wave_.duration_ms;
     const double sharp = distance < 1.0 ? ripple.sharp_wave_uv * half_hann(1.0 - distance) * ripple.cut_gain(t) : 0.0;
     for (std::size_t i = 0; i < frame.size(); ++i) {
-        frame[i] += gains_[i].ripple * wave + gains_[i].sharp_wave * sharp;
+        frame[i] += share(ripple, i) * wave + gains_[i].sharp_wave * sharp;
     }
 }
 
-void Ripples::cut(SampleIndex now, double delay_ms, double fall_ms) {
+void RippleTrain::cut(SampleIndex now, double delay_ms, double fall_ms) {
     const double t = seconds_at(now, rate_);
     for (auto& ripple : active_) {
         const double cut_s = t + delay_ms / 1000.0;

@@ -2,7 +2,7 @@
 #pragma once
 
 #include "base/random.hpp"
-#include "synth/scene_element.hpp"
+#include "synth/states.hpp"
 
 #include <algorithm>
 #include <limits>
@@ -21,9 +21,9 @@ struct RippleTruth {
     bool cut;            ///< cut short by a pulse
 };
 
-class Ripples : public SceneElement {
+class RippleTrain : public SceneElement {
   public:
-    Ripples(const SceneSettings& settings, std::vector<ChannelGains> gains);
+    RippleTrain(const SceneSettings& settings, std::vector<ChannelGains> gains, std::shared_ptr<const States> states);
     void add(SampleIndex at, std::span<double> frame) override;
 
     /// A ripple whose interval [onset, end] holds `now` falls to nothing from `delay_ms` later, within `fall_ms`.
@@ -41,7 +41,8 @@ class Ripples : public SceneElement {
         double peak_hz, hz_per_s, phase_turns;
         double cut_s = std::numeric_limits<double>::infinity();
         double fall_s = 0.0;
-        double largest = 0.0; ///< envelope so far, as a share of the planned peak
+        double depth_um = 0.0; ///< below the layer's middle, where it is largest
+        double largest = 0.0;  ///< envelope so far, as a share of the planned peak
         RippleTruth truth{};
 
         [[nodiscard]] double first_s() const noexcept { return std::min(begin_s, sharp_begin_s); }
@@ -53,6 +54,10 @@ class Ripples : public SceneElement {
     };
 
     void draw_next(double not_before_s);
+    [[nodiscard]] double draw_onset(double not_before_s);
+    [[nodiscard]] double mean_wait_s() const;
+    /// Size of a ripple on a channel, as a share of its size where it is largest.
+    [[nodiscard]] double share(const Ripple& ripple, std::size_t channel) const noexcept;
     void add_one(Ripple& ripple, SampleIndex at, std::span<double> frame) const;
 
     RippleSettings ripples_;
@@ -60,9 +65,10 @@ class Ripples : public SceneElement {
     Hertz rate_;
     double duration_s_;
     std::vector<ChannelGains> gains_;
-    double largest_gain_ = 0.0;
+    std::shared_ptr<const States> states_;
+    double ripples_in_run_;
     double mean_wait_s_ = 0.0;
-    Random random_;
+    Random random_, more_;
     Ripple next_{};
     std::vector<Ripple> active_;
     std::vector<RippleTruth> truth_;

@@ -1,33 +1,18 @@
 #include "synth/scene.hpp"
 
-#include "base/refusal.hpp"
 #include "synth/artefacts.hpp"
 #include "synth/background.hpp"
+#include "synth/faults.hpp"
+#include "synth/gamma.hpp"
 #include "synth/rhythms.hpp"
+#include "synth/scene_check.hpp"
+#include "synth/spikes.hpp"
 
+#include <algorithm>
 #include <cmath>
 
 namespace millpond {
 namespace {
-
-void check(const SceneSettings& settings, const std::string& where) {
-    const auto& ripples = settings.ripples;
-    const auto refuse_unless = [&](bool good, const char* key, const std::string& found, const std::string& allowed) {
-        if (!good) {
-            throw Refusal(where + ": " + key, found, allowed);
-        }
-    };
-    const double busy_s = (ripples.duration_ms + ripples.min_gap_ms) / 1000.0;
-    refuse_unless(ripples.rate_per_s * busy_s < 0.9, "ripples.rate_per_s", std::to_string(ripples.rate_per_s),
-                  "at most 0.9 / (duration + min_gap), here " + std::to_string(0.9 / busy_s));
-    refuse_unless(settings.sharp_wave.duration_ms <= 2.0 * ripples.min_gap_ms, "sharp_wave.duration_ms",
-                  std::to_string(settings.sharp_wave.duration_ms), "at most twice ripples.min_gap_ms");
-    const double highest_hz = std::max(ripples.start_hz, ripples.end_hz) + 3.0 * ripples.frequency_sd_hz;
-    refuse_unless(highest_hz < 0.45 * settings.rate_hz, "ripples.start_hz, end_hz, frequency_sd_hz",
-                  "ripples up to " + std::to_string(highest_hz) + " Hz", "below 0.45 of rate_hz");
-    refuse_unless(5.0 * settings.mains.frequency_hz < 0.5 * settings.rate_hz || settings.mains.amplitude_uv == 0.0,
-                  "mains.frequency_hz", "a fifth harmonic above half of rate_hz", "a lower frequency, or no mains");
-}
 
 Channels channels_of(const SceneSettings& settings) {
     Channels channels;
@@ -49,16 +34,18 @@ std::vector<ChannelGains> channel_gains(const SceneSettings& settings) {
         const double spread = below_um / settings.ripples.spread_um;
         const double depth = below_um / settings.sharp_wave.depth_um;
         // The sharp wave turns its sign in the layer, and is largest one depth below (negative) and above (positive).
-        gains.push_back({portable_exp(-0.5 * spread * spread), -depth * portable_exp(0.5 - 0.5 * depth * depth), 1.0});
+        gains.push_back(
+            {portable_exp(-0.5 * spread * spread), -depth * portable_exp(0.5 - 0.5 * depth * depth), 1.0, below_um});
     }
     if (settings.reference) {
-        gains.push_back({0.0, 0.0, 0.5});
+        const double uppermost_um = -0.5 * (settings.sites - 1) * settings.site_spacing_um;
+        gains.push_back({0.0, 0.0, 0.5, uppermost_um - settings.reference_um, true});
     }
     return gains;
 }
 
 Scene Scene::make(const SceneSettings& settings, const std::string& where) {
-    check(settings, where);
+    check_scene(settings, where);
     return Scene(settings);
 }
 
@@ -67,22 +54,41 @@ Scene::Scene(const SceneSettings& settings)
       frames_(static_cast<std::uint64_t>(std::llround(settings.duration_s * settings.rate_hz))),
       frame_(channels_.size()) {
     const auto gains = channel_gains(settings);
-    elements_.push_back(std::make_unique<Background>(settings, channels_.size()));
-    auto ripples = std::make_unique<Ripples>(settings, gains);
-    ripples_ = ripples.get();
-    elements_.push_back(std::move(ripples));
-    if (settings.theta.amplitude_uv > 0.0) {
-        elements_.push_back(std::make_unique<Theta>(settings, gains));
+    states_ = std::make_shared<const States>(settings);
+    add<Background>(true, settings, gains);
+    ripples_ = add<RippleTrain>(true, settings, gains, states_);
+    const bool bursts = settings.spike_bursts.share_of_cycles > 0.0;
+    const auto* theta = add<Theta>(settings.theta.amplitude_uv > 0.0 || bursts, settings, gains, states_);
+    add<Mains>(settings.mains.amplitude_uv > 0.0, settings);
+    add<Steps>(settings.artefacts.steps_per_min > 0.0, settings, StepReach::all_channels);
+    add<Muscle>(settings.artefacts.muscle_per_min > 0.0, settings, gains);
+    add<Delta>(settings.delta.rms_uv > 0.0, settings, gains, states_);
+    add<Gamma>(settings.gamma.rate_per_s > 0.0, settings, gains);
+    add<SpikeBursts>(bursts, settings, gains, states_, theta);
+    add<Steps>(settings.artefacts.site_steps_per_min > 0.0, settings, StepReach::one_channel);
+    add<SingleSpikes>(settings.artefacts.spikes_per_min > 0.0, settings, channels_.size());
+    // What changes the channel as a whole comes last.
+    add<GainDrift>(settings.gain_drift.log_sd > 0.0, settings, channels_.size());
+    add<Faults>(settings.faults.dead_site > 0 || settings.faults.failing_site > 0, settings);
+}
+
+template <class Element, class... Arguments> Element* Scene::add(bool wanted, Arguments&&... arguments) {
+    if (!wanted) {
+        return nullptr;
     }
-    if (settings.mains.amplitude_uv > 0.0) {
-        elements_.push_back(std::make_unique<Mains>(settings));
+    auto element = std::make_unique<Element>(std::forward<Arguments>(arguments)...);
+    auto* place = element.get();
+    elements_.push_back(std::move(element));
+    return place;
+}
+
+std::vector<Happening> Scene::happenings() const {
+    auto all = states_->happenings();
+    for (const auto& element : elements_) {
+        all.insert(all.end(), element->happenings().begin(), element->happenings().end());
     }
-    if (settings.artefacts.steps_per_min > 0.0) {
-        elements_.push_back(std::make_unique<Steps>(settings));
-    }
-    if (settings.artefacts.muscle_per_min > 0.0) {
-        elements_.push_back(std::make_unique<Muscle>(settings));
-    }
+    std::stable_sort(all.begin(), all.end(), [](const auto& a, const auto& b) { return a.onset_s < b.onset_s; });
+    return all;
 }
 
 std::size_t Scene::next(std::span<float> frames) {

@@ -32,17 +32,24 @@ class Scene {
 
     /// Ripples that are over, in order.
     [[nodiscard]] const std::vector<RippleTruth>& truth() const noexcept { return ripples_->truth(); }
-    [[nodiscard]] Ripples& ripples() noexcept { return *ripples_; }
+    [[nodiscard]] RippleTrain& ripples() noexcept { return *ripples_; }
+    /// What else there is, in order of onset: states, bursts, artefacts, faults. Onset and end may lie beyond the
+    /// recording's end.
+    [[nodiscard]] std::vector<Happening> happenings() const;
 
   private:
+    /// The new element, or null where it is not wanted.
+    template <class Element, class... Arguments> Element* add(bool wanted, Arguments&&... arguments);
+
     explicit Scene(const SceneSettings& settings);
 
     Channels channels_;
     Hertz rate_;
     std::uint64_t frames_;
+    std::shared_ptr<const States> states_;
     SampleIndex next_{};
     std::vector<std::unique_ptr<SceneElement>> elements_; ///< in the order in which they are added up
-    Ripples* ripples_ = nullptr;                          ///< one of them
+    RippleTrain* ripples_ = nullptr;                      ///< one of them
     std::vector<double> frame_;
 };
 

@@ -3,6 +3,7 @@
 #pragma once
 
 #include "base/describe.hpp"
+#include "synth/disturbance_settings.hpp"
 
 #include <cstdint>
 
@@ -13,6 +14,7 @@ struct BackgroundSettings {
     double slope = 1.5;
     double corner_hz = 0.5;
     double shared = 0.7;
+    double correlation_um = 0.0;
     double amplifier_uv = 3.0;
 
     bool operator==(const BackgroundSettings&) const = default;
@@ -23,6 +25,8 @@ template <class Visitor> void describe(Visitor& visit, BackgroundSettings& backg
     visit.number("slope", background.slope, {0.0, 2.0}, "its power falls with frequency to this power");
     visit.number("corner_hz", background.corner_hz, {0.05, 50.0}, "below this frequency its power is flat");
     visit.number("shared", background.shared, {0.0, 1.0}, "share of its variance that all channels have in common");
+    visit.number("correlation_um", background.correlation_um, {0.0, 1e6},
+                 "distance in which the correlation of that share falls to 0.37; 0: it does not fall");
     visit.number("amplifier_uv", background.amplifier_uv, {0.0, 1000.0}, "white noise of each channel's own, rms");
 }
 
@@ -40,6 +44,12 @@ struct RippleSettings {
     double end_hz = 150.0;
     double frequency_sd_hz = 8.0;
     double spread_um = 120.0;
+    double depth_sd_um = 0.0;      // invented: where a ripple is largest is not the same each time
+    double doublet_share = 0.0;    // common practice: doublets and triplets 100-200 ms apart are common
+    double doublet_least_ms = 100; // from memory
+    double doublet_most_ms = 200;  // from memory
+    double small_share = 0.0;      // invented
+    double small_size = 0.4;       // invented
 
     bool operator==(const RippleSettings&) const = default;
 };
@@ -60,6 +70,15 @@ template <class Visitor> void describe(Visitor& visit, RippleSettings& ripples) 
     visit.number("frequency_sd_hz", ripples.frequency_sd_hz, {0.0, 100.0}, "deviation of both from ripple to ripple");
     visit.number("spread_um", ripples.spread_um, {1.0, 10000.0},
                  "distance from the layer's middle at which ripples have 0.61 of their size");
+    visit.number("depth_sd_um", ripples.depth_sd_um, {0.0, 1000.0},
+                 "deviation, from ripple to ripple, of the depth at which one is largest");
+    visit.number("doublet_share", ripples.doublet_share, {0.0, 0.8},
+                 "share of ripples that another follows soon: doublets, triplets, more");
+    visit.number("doublet_least_ms", ripples.doublet_least_ms, {20.0, 1000.0},
+                 "least time from one onset to the next within a doublet, but never before the first has ended");
+    visit.number("doublet_most_ms", ripples.doublet_most_ms, {20.0, 1000.0}, "most time from one onset to the next");
+    visit.number("small_share", ripples.small_share, {0.0, 1.0}, "share of ripples that are small");
+    visit.number("small_size", ripples.small_size, {0.05, 1.0}, "their size, as a share of what it would have been");
 }
 
 struct SharpWaveSettings {
@@ -78,57 +97,6 @@ template <class Visitor> void describe(Visitor& visit, SharpWaveSettings& sharp_
                  "distance below the layer's middle where it is most negative; as far above it is most positive");
 }
 
-struct ThetaSettings {
-    double amplitude_uv = 0.0;
-    double frequency_hz = 7.5;
-    double wander_hz = 0.4;
-
-    bool operator==(const ThetaSettings&) const = default;
-};
-
-template <class Visitor> void describe(Visitor& visit, ThetaSettings& theta) {
-    visit.number("amplitude_uv", theta.amplitude_uv, {0.0, 10000.0}, "size of theta; half of it on the reference");
-    visit.number("frequency_hz", theta.frequency_hz, {3.0, 15.0}, "mean frequency");
-    visit.number("wander_hz", theta.wander_hz, {0.0, 2.0}, "deviation of the frequency, which wanders within a second");
-}
-
-struct MainsSettings {
-    double amplitude_uv = 0.0;
-    double frequency_hz = 50.0;
-    double third_harmonic = 0.3;
-    double fifth_harmonic = 0.15;
-
-    bool operator==(const MainsSettings&) const = default;
-};
-
-template <class Visitor> void describe(Visitor& visit, MainsSettings& mains) {
-    visit.number("amplitude_uv", mains.amplitude_uv, {0.0, 10000.0}, "size of mains hum, the same on all channels");
-    visit.number("frequency_hz", mains.frequency_hz, {10.0, 100.0}, "frequency of the mains");
-    visit.number("third_harmonic", mains.third_harmonic, {0.0, 1.0}, "size of its third harmonic, as a share");
-    visit.number("fifth_harmonic", mains.fifth_harmonic, {0.0, 1.0}, "size of its fifth harmonic, as a share");
-}
-
-struct ArtefactSettings {
-    double steps_per_min = 0.0;
-    double step_uv = 3000.0;
-    double step_recovery_ms = 300.0;
-    double muscle_per_min = 0.0;
-    double muscle_uv = 200.0;
-    double muscle_ms = 300.0;
-
-    bool operator==(const ArtefactSettings&) const = default;
-};
-
-template <class Visitor> void describe(Visitor& visit, ArtefactSettings& artefacts) {
-    visit.number("steps_per_min", artefacts.steps_per_min, {0.0, 600.0}, "sudden steps, the same on all channels");
-    visit.number("step_uv", artefacts.step_uv, {0.0, 100000.0}, "height of a step, up or down");
-    visit.number("step_recovery_ms", artefacts.step_recovery_ms, {1.0, 60000.0}, "time constant of the return from it");
-    visit.number("muscle_per_min", artefacts.muscle_per_min, {0.0, 600.0},
-                 "bursts of fast noise as from muscles, the same on all channels");
-    visit.number("muscle_uv", artefacts.muscle_uv, {0.0, 100000.0}, "rms in the middle of a burst");
-    visit.number("muscle_ms", artefacts.muscle_ms, {10.0, 10000.0}, "length of a burst");
-}
-
 struct SceneSettings {
     double duration_s = 60.0;
     double rate_hz = 1250.0;
@@ -136,13 +104,20 @@ struct SceneSettings {
     int sites = 4;
     bool reference = false;
     double site_spacing_um = 40.0;
+    double reference_um = 1500.0; // invented: cortex above dorsal CA1 of a rat
     double quiet_start_s = 15.0;
     BackgroundSettings background;
     RippleSettings ripples;
     SharpWaveSettings sharp_wave;
+    StateSettings states;
     ThetaSettings theta;
+    DeltaSettings delta;
+    GammaSettings gamma;
+    SpikeBurstSettings spike_bursts;
     MainsSettings mains;
     ArtefactSettings artefacts;
+    GainDriftSettings gain_drift;
+    FaultSettings faults;
 
     bool operator==(const SceneSettings&) const = default;
 };
@@ -154,13 +129,20 @@ template <class Visitor> void describe(Visitor& visit, SceneSettings& scene) {
     visit.whole("sites", scene.sites, {1, 256}, "channels of role ripple, spread evenly about the pyramidal layer");
     visit.flag("reference", scene.reference, "one more channel, of role reference, far from the ripples");
     visit.number("site_spacing_um", scene.site_spacing_um, {0.0, 1000.0}, "distance between neighbouring sites");
+    visit.number("reference_um", scene.reference_um, {0.0, 1e6}, "distance from the uppermost site to the reference");
     visit.number("quiet_start_s", scene.quiet_start_s, {0.0, 3600.0}, "no ripples before, so that a floor can settle");
     visit.group("background", scene.background, "what is there without ripples");
     visit.group("ripples", scene.ripples, "the events to find");
     visit.group("sharp_wave", scene.sharp_wave, "the slow deflection under each ripple");
+    visit.group("states", scene.states, "rest and running by turns");
     visit.group("theta", scene.theta, "rhythm of running");
+    visit.group("delta", scene.delta, "slow waves of rest");
+    visit.group("gamma", scene.gamma, "bursts of fast gamma, below the ripple band");
+    visit.group("spike_bursts", scene.spike_bursts, "bursts of large spikes locked to theta, which leak into the band");
     visit.group("mains", scene.mains, "hum");
     visit.group("artefacts", scene.artefacts, "what looks like ripples and is none");
+    visit.group("gain_drift", scene.gain_drift, "each site's own slow change of gain");
+    visit.group("faults", scene.faults, "sites that are dead or fail");
 }
 
 } // namespace millpond

@@ -2,6 +2,7 @@
 #include "support/python.hpp"
 #include "support/text.hpp"
 #include "synth/all_frames.hpp"
+#include "synth/bare_scene.hpp"
 #include "synth/scene.hpp"
 
 #include <gtest/gtest.h>
@@ -13,6 +14,7 @@ namespace millpond {
 namespace {
 
 using test::all_frames;
+using test::bare;
 
 SceneSettings everything() {
     SceneSettings settings;
@@ -23,15 +25,6 @@ SceneSettings everything() {
     settings.mains.amplitude_uv = 10.0;
     settings.artefacts.steps_per_min = 10.0;
     settings.artefacts.muscle_per_min = 10.0;
-    return settings;
-}
-
-/// Ripples and nothing else.
-SceneSettings bare() {
-    SceneSettings settings;
-    settings.sites = 1;
-    settings.background.rms_uv = settings.background.amplifier_uv = 0.0;
-    settings.sharp_wave.amplitude_uv = 0.0;
     return settings;
 }
 
@@ -93,6 +86,27 @@ TEST(Scene, RefusesSettingsThatContradictEachOther) {
                                s.mains.amplitude_uv = 1.0;
                            }),
                            "mains.frequency_hz"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) {
+                               s.ripples.rate_per_s = 3.0;
+                               s.ripples.doublet_share = 0.8;
+                               s.ripples.doublet_least_ms = s.ripples.doublet_most_ms = 400.0;
+                           }),
+                           "less with doublets"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) { s.ripples.doublet_least_ms = 300.0; }), "doublet_least_ms"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) { s.gamma.low_hz = 150.0; }), "gamma.low_hz"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) {
+                               s.gamma.rate_per_s = 1.0;
+                               s.gamma.high_hz = 700.0;
+                           }),
+                           "gamma.high_hz"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) { s.spike_bursts.least_spikes = 7; }), "spike_bursts.least_spikes"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) {
+                               s.spike_bursts.share_of_cycles = 0.5;
+                               s.spike_bursts.site = 5;
+                           }),
+                           "a site, here 1 to 4"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) { s.faults.dead_site = 5; }), "faults.dead_site"));
+    EXPECT_TRUE(test::says(refusal([](auto& s) { s.faults.failing_site = 9; }), "faults.failing_site"));
 }
 
 class ManyRipples : public ::testing::Test {

@@ -1,4 +1,5 @@
 // The command as a user types it.
+#include "app/truth.hpp"
 #include "base/refusal.hpp"
 #include "recording/events_table.hpp"
 #include "recording/recording_reader.hpp"
@@ -7,6 +8,7 @@
 #include "support/files.hpp"
 #include "support/process.hpp"
 #include "support/text.hpp"
+#include "synth/named_scenes.hpp"
 #include "synth/scene.hpp"
 
 #include <gtest/gtest.h>
@@ -80,6 +82,49 @@ TEST(SynthCommand, OptionsOverrideTheSceneFile) {
     EXPECT_EQ(loaded.info.channels, (Channels{{"site1", ChannelRole::ripple}}));
 }
 
+TEST(SynthCommand, OptionsOverrideANamedScene) {
+    const TemporaryFolder scratch;
+    const auto file = scratch / "a.rf64";
+    ASSERT_EQ(
+        synth(file.string() + " --scene hard --duration-s 90 --seed 5 --ripples-rate-per-s 0.7 --encoding float32")
+            .status,
+        0);
+    auto settings = named_scene(SceneName::hard);
+    settings.duration_s = 90.0;
+    settings.seed = 5;
+    settings.ripples.rate_per_s = 0.7;
+    auto scene = Scene::make(settings);
+    std::vector<float> made(scene.frames() * 5);
+    scene.next(made);
+    EXPECT_EQ(load_recording(file).data, made);
+
+    std::map<std::string, std::size_t> rows, expected;
+    for (const auto& row : read_events_table(truth_path(file), 1250.0)) {
+        ++rows[row.trial_type];
+        EXPECT_LE(row.onset_s + row.duration_s, 90.0);
+    }
+    expected["ripple"] = scene.truth().size();
+    for (const auto& happening : scene.happenings()) {
+        expected[std::string(word_for<HappeningKind>(happening_kinds, happening.kind))] +=
+            happening.onset_s < 90.0 ? 1 : 0;
+    }
+    EXPECT_EQ(rows, expected);
+    EXPECT_GT(rows["rest"], 0u);
+    EXPECT_GT(rows["run"], 0u);
+    EXPECT_GT(rows["gamma"], 0u);
+}
+
+TEST(SynthCommand, TruthOfARecordingWithoutRipplesIsATruthButALabelOfAnotherKindIsNone) {
+    const TemporaryFolder scratch;
+    const auto file = scratch / "a.wav";
+    ASSERT_EQ(synth(file.string() + " --scene typical --duration-s 60 --ripples-rate-per-s 0").status, 0);
+    ASSERT_FALSE(read_events_table(truth_path(file), 1250.0).empty());
+    EXPECT_TRUE(ripples_from_table(truth_path(file), Hertz{1250.0}, 75'000).empty());
+    const auto other = scratch.file("labels.tsv", "onset\tduration\ttrial_type\n1\t0.1\tspindle\n");
+    EXPECT_TRUE(test::says(test::line_of<Refusal>([&] { (void)ripples_from_table(other, Hertz{1250.0}, 75'000); }),
+                           "none of trial_type ripple"));
+}
+
 TEST(SynthCommand, RefusesBadInputWithStatus2AndOneLine) {
     const TemporaryFolder scratch;
     const auto file = (scratch / "a.wav").string();
@@ -90,6 +135,9 @@ TEST(SynthCommand, RefusesBadInputWithStatus2AndOneLine) {
              {file + " --sites 2.5", "--sites: found '2.5'; allowed: a whole number"},
              {file + " --encoding int8", "--encoding: found 'int8'; allowed: one of int16, int24, int32, float32"},
              {file + " --ripples-start-hz 700", "below 0.45 of rate_hz"},
+             {file + " --scene hrad", "found 'hrad', which is no file; allowed: quiet, typical, hard, running"},
+             {file + " --faults-dead-kind gone",
+              "--faults-dead-kind: found 'gone'; allowed: one of flat, railed, huge"},
              {file + " --scene " + scene.string(), "did you mean 'rate_per_s'?"},
              {(scratch / "a.mp3").string(), "the ending '.mp3'"}}) {
         const auto ran = synth(arguments);
