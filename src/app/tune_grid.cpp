@@ -141,6 +141,12 @@ void TuneGrid::read_group(const YAML::Node& group, const std::string& path) {
         } else {
             leaf.values.push_back(entry.second);
         }
+        for (const auto& value : leaf.values) {
+            if (value.IsSequence() || value.IsMap()) {
+                throw Refusal(place(source.name, value, key), "a list or a group among the values to try",
+                              "single values: lists are learned, not swept");
+            }
+        }
         if (leaf.values.empty()) {
             throw Refusal(place(source.name, entry.first, key), "an empty list", "one value or more");
         }

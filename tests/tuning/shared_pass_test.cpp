@@ -151,6 +151,35 @@ TEST(SharedPass, DoesSoForVotesOfSitesAndOtherEnvelopes) {
     expect_the_engines_own(Trial().with_gaps(), many(base, 18));
 }
 
+// Evidence may be below zero, sites may die, and its threshold follows from the false per minute asked for.
+TEST(SharedPass, DoesSoForEvidenceWithASiteThatDies) {
+    DetectorSettings base;
+    base.method = DetectionMethod::evidence;
+    auto settings = many(base, 24);
+    for (std::size_t i = 0; i < settings.size(); ++i) {
+        settings[i].evidence.false_per_minute = 0.05 * std::pow(2.0, static_cast<double>(i % 12));
+    }
+    auto trial = Trial().with_gaps();
+    expect_the_engines_own(trial, settings);
+    for (std::size_t f = 35000; f < trial.frames(); ++f) {
+        trial.data[f * trial.channels.size() + 1] = 7.0F; // flat
+    }
+    expect_the_engines_own(trial, settings);
+}
+
+TEST(SharedPass, DoesSoForEvidenceThatHangsFarBelowZero) {
+    DetectorSettings base;
+    base.method = DetectionMethod::evidence;
+    for (auto& feature : base.evidence.features) {
+        feature.weight = feature.weight > 0.0 ? feature.weight : 4.0 * feature.weight;
+    }
+    auto settings = many(base, 20);
+    for (std::size_t i = 0; i < settings.size(); ++i) {
+        settings[i].evidence.false_per_minute = 10.0 * static_cast<double>(i + 1);
+    }
+    expect_the_engines_own(Trial(), settings);
+}
+
 TEST(SharedPass, DoesSoOnAFlatChannelAndARecordingTooShortToSettle) {
     Trial trial(20.0);
     for (std::size_t f = 15000; f < trial.frames(); ++f) {
