@@ -174,6 +174,7 @@ Crossing Detector::State::crossing_here(Tally tally) const noexcept {
     crossing.settling = at < settling_until;
     crossing.unsettled = floor_frames < settle_frames;
     crossing.vetoed = newest_reference != UINT64_MAX && at - newest_reference <= veto_window;
+    crossing.vetoed = crossing.vetoed || jumped();
     crossing.detail = {static_cast<float>(envelope[site]),
                        static_cast<float>(mean[site]),
                        static_cast<float>(spread[site] * deviation_per_spread),
@@ -227,6 +228,8 @@ void Detector::reset() noexcept {
     if (s.evidence()) {
         s.site_watch.reset();
         std::fill(s.journaled.begin(), s.journaled.end(), SiteState::alive);
+        s.usual_jump.fill(0.0);
+        s.lanes.jump.frames = 0;
         s.mix_anew();
     }
     s.mains.reset(s.lanes);
@@ -244,6 +247,8 @@ void Detector::State::clear_filters() noexcept {
         values->fill(0.0);
     }
     lanes.history_at = 0;
+    followed.fill(0.0);
+    largest_jump.fill(0.0);
 }
 
 std::uint16_t Detector::State::channel_at(std::size_t lane) const noexcept {

@@ -83,6 +83,7 @@ Detector Detector::make(const DetectorSettings& settings, const Channels& channe
     state->allocate_envelope();
     state->allocate_floor();
     if (state->evidence()) {
+        state->allocate_jumps();
         state->allocate_evidence_floor(where + ".evidence");
     } else {
         state->allocate_sites_floor();

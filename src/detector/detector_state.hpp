@@ -34,6 +34,7 @@ struct Detector::State {
     [[nodiscard]] std::size_t first_floor() const noexcept { return evidence() ? lanes.signal_lanes : 0; }
     void watch_sites(const FrameBlock& block) noexcept;
     void mix_anew() noexcept;
+    [[nodiscard]] bool jumped() const noexcept;
     KernelResult run_kernel(const KernelOrder& order) noexcept;
     void watch(const FrameBlock& block) noexcept;
     [[nodiscard]] std::uint64_t frames_to_verdict() const noexcept;
@@ -47,6 +48,7 @@ struct Detector::State {
     void allocate_floor();
     void vote_of(std::size_t lane);
     void allocate_sites_floor();
+    void allocate_jumps();
     void allocate_evidence_floor(const std::string& where);
     void count_frames();
 
@@ -68,6 +70,8 @@ struct Detector::State {
     std::vector<std::size_t> mix_of;       // [features]
     SiteMixes mixes;
     SiteWatch site_watch;
+    Lanes<double> followed, largest_jump, usual_jump;
+    std::size_t heaviest = 0;         // feature that speaks loudest for a ripple
     std::vector<double> mix_weights;  // room for one mix
     std::vector<SiteState> journaled; // [inputs], as the engine last heard
     bool sites_changed = false;

@@ -29,6 +29,18 @@ struct KernelHum {
     std::uint64_t calm_frames = 0, calm_needed = 0; // seen; before so many, all is taken for usual
 };
 
+/// Sudden steps: how far the signal stands from where it was 0.4 ms ago, the largest of late, and what is usual.
+/// With a mix only.
+struct KernelJump {
+    double follow = 1.0; // 1 / (1 + 0.4 ms in frames)
+    double fade = 0.0;   // of the largest, a frame
+    double weight = 0.0; // of a frame in the usual
+    double* followed = nullptr;
+    double* largest = nullptr;
+    double* usual = nullptr;
+    std::uint64_t frames = 0, full_frames = 0; // taken into the usual; until then all weigh the same
+};
+
 /// Everything the loop reads and writes. Arrays are 64-byte aligned; `[lanes]` unless said otherwise.
 struct KernelState {
     std::size_t lanes = 0;                     // a multiple of lane_group
@@ -62,6 +74,7 @@ struct KernelState {
     const double* sum_weight = nullptr; // [lanes]: mean over sites, or weights of the evidence; null: no sum
 
     KernelHum hum;
+    KernelJump jump;
 
     double* mean = nullptr;        // the floor
     double* spread = nullptr;      // running mean of |envelope - mean|

@@ -203,6 +203,23 @@ inline Doubles without_hum(KernelState& state, std::size_t lane, Doubles signal,
     return left;
 }
 
+// Beyond ten times the usual a distance enters the usual as that much, and a little more, so that a channel which was
+// flat finds back.
+inline void watch_for_jumps(KernelState& state, std::size_t lane, Doubles signal, double weight) {
+    auto& jump = state.jump;
+    Doubles& followed = at(jump.followed, lane);
+    Doubles& largest = at(jump.largest, lane);
+    Doubles& usual = at(jump.usual, lane);
+    const Doubles distance = magnitude(signal - followed);
+    followed += jump.follow * (signal - followed);
+    const Doubles faded = jump.fade * largest;
+    largest = distance > faded ? distance : faded;
+    const Doubles most = 10.0 * usual + 0.001;
+    const Doubles clipped = distance < most ? distance : most;
+    const Doubles taken = jump.frames < jump.full_frames ? distance : clipped;
+    usual += weight * (taken - usual);
+}
+
 inline void turn_oscillators(KernelHum& hum) {
     for (std::size_t i = 0; i < hum.oscillators; i += width) {
         Doubles& cosine = at(hum.cosine, i);
@@ -220,6 +237,11 @@ inline void envelopes_of_frame(KernelState& state, const float* frame, bool whol
         calm_weight = state.hum.calm_frames < state.hum.calm_needed
                           ? 1.0 / (static_cast<double>(state.hum.calm_frames) + 1.0)
                           : state.hum.calm_weight;
+    }
+    double jump_weight = 0.0;
+    if constexpr (mixed) {
+        jump_weight = state.jump.frames < state.jump.full_frames ? 1.0 / (static_cast<double>(state.jump.frames) + 1.0)
+                                                                 : state.jump.weight;
     }
     for (std::size_t lane = 0; lane < state.lanes; lane += width) {
         Doubles raw;
@@ -239,6 +261,7 @@ inline void envelopes_of_frame(KernelState& state, const float* frame, bool whol
             signal = without_hum(state, lane, last, calm_weight);
         }
         if constexpr (mixed) {
+            watch_for_jumps(state, lane, signal, jump_weight);
             at(state.envelope, lane) = own_envelope_of(state, lane, filter_own_sections(state, lane, signal));
         } else {
             const Doubles band =
@@ -249,6 +272,9 @@ inline void envelopes_of_frame(KernelState& state, const float* frame, bool whol
     if constexpr (hum) {
         turn_oscillators(state.hum);
         ++state.hum.calm_frames;
+    }
+    if constexpr (mixed) {
+        ++state.jump.frames;
     }
     if (state.taps != 0) {
         state.history_at = state.history_at + 1 == state.taps ? 0 : state.history_at + 1;

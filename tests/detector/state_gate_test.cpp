@@ -209,6 +209,7 @@ TEST(StateGate, WithoutItACommandMayCallAGateState) {
 // Disrupting at every chance: each pulse takes 25 ms of signal away.
 TEST(StateGate, PulsesHardlyMoveIt) {
     auto pulsing = gated(), quiet = gated();
+    pulsing.detector.method = quiet.detector.method = DetectionMethod::envelope;
     pulsing.detector.threshold.deviations = pulsing.detector.threshold.rearm_deviations = 1.0;
     pulsing.arbiter.lockout_ms = 30.0;
     pulsing.arbiter.max_pulses_per_second = 1000;
@@ -255,6 +256,7 @@ TEST(StateGate, RunningDoesNotSpoilTheFloorOfRest) {
         Kept kept;
         EngineSettings settings;
         settings.arbiter.gates = {{"speed", true}};
+        settings.detector.method = DetectionMethod::envelope;
         settings.detector.floor.time_constant_s = 5.0;
         settings.detector.floor.clip_deviations = 100.0;
         Engine engine(Detector::make(settings.detector, ripple_channels(1), Hertz{1250.0}),
