@@ -32,7 +32,7 @@ std::size_t Detector::run(const FrameBlock& block, std::optional<Crossing>& cros
     return used;
 }
 
-void Detector::envelopes(const FrameBlock& block, std::span<double> out) noexcept {
+void Detector::envelopes(const FrameBlock& block, std::span<double> out, std::span<unsigned char> jumped) noexcept {
     const TinyIsZero tiny_is_zero;
     auto& s = *state_;
     for (std::size_t done = 0; done < block.frames();) {
@@ -43,6 +43,7 @@ void Detector::envelopes(const FrameBlock& block, std::span<double> out) noexcep
         order.method = s.method;
         order.resume = s.resume;
         order.envelopes = out.data() + done * s.lanes.lanes;
+        order.jumped = jumped.empty() ? nullptr : jumped.data() + done;
         s.run_kernel(order);
         s.resume = false;
         s.watch(rest.part(0, order.count));

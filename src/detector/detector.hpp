@@ -22,7 +22,7 @@ struct Crossing {
     DetectionDetail detail;
     bool settling;  ///< filters are still settling after a gap or the start
     bool unsettled; ///< the floor has not seen enough clean signal
-    bool vetoed;    ///< a reference channel was above its threshold within the veto window
+    bool vetoed;    ///< a reference channel was above its threshold within the veto window, or the signal jumped
 };
 
 /// A channel that was left out of the evidence's mixes, or taken in again.
@@ -90,8 +90,8 @@ class Detector {
     [[nodiscard]] bool state_gate_open() const noexcept;
 
     /// The floor keeps a memory for time with all gates open and one for the rest, so that running does not spoil the
-    /// floor of rest. The first time that one is used it begins as a copy of the other, and adapts as fast as one that
-    /// has just settled. Thread: loop.
+    /// floor of rest. One that has not settled yet begins as a copy of the other, and adapts as fast as one
+    /// that has just settled. Thread: loop.
     void use_memory(bool gates_open) noexcept;
 
     /// Frames from here to where the gate or the watch over sites may next change something. Thread: loop.
@@ -127,7 +127,8 @@ class Detector {
     /// values a frame, that of floor `i` at floor_column(i). No floor, no threshold, no
     /// blanking; the same bits that `run` compares where nothing blanked it. Gaps are announced as for `run`. A
     /// detector does one or the other. Thread: one, cold.
-    void envelopes(const FrameBlock& block, std::span<double> out) noexcept;
+    /// `jumped`, where given, gets 1 for a frame at which a crossing would be vetoed by a sudden step (evidence only).
+    void envelopes(const FrameBlock& block, std::span<double> out, std::span<unsigned char> jumped = {}) noexcept;
     [[nodiscard]] std::size_t envelope_stride() const noexcept;
     /// Where the envelope of floor `i` stands among them.
     [[nodiscard]] std::size_t floor_column(std::size_t i) const noexcept;

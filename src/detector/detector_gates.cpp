@@ -74,7 +74,7 @@ void Detector::use_memory(bool gates_open) noexcept {
     __builtin_memcpy(left.mean.data(), s.mean.data(), bytes);
     __builtin_memcpy(left.spread.data(), s.spread.data(), bytes);
     left.frames = s.floor_frames;
-    if (entered.frames == 0) {
+    if (entered.frames < s.settle_frames) { // never settled: what is known is better than that
         s.floor_frames = std::min(s.floor_frames, s.settle_frames);
         return;
     }

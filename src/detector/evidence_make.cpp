@@ -105,6 +105,8 @@ void Detector::State::allocate_jumps() {
         *values = Lanes<double>(lanes.lanes);
     }
     auto& jump = lanes.jump;
+    jump.lane = heaviest;
+    jump.times = jump_times;
     jump.followed = followed.data();
     jump.largest = largest_jump.data();
     jump.usual = usual_jump.data();
@@ -116,7 +118,7 @@ void Detector::State::allocate_jumps() {
 
 // A step lifts what is smoothed little before what speaks against it has risen; its own height gives it away.
 bool Detector::State::jumped() const noexcept {
-    return evidence() && largest_jump[heaviest] > jump_times * usual_jump[heaviest];
+    return evidence() && millpond::jumped(lanes.jump);
 }
 
 void Detector::State::allocate_evidence_floor(const std::string& where) {

@@ -32,9 +32,11 @@ struct KernelHum {
 /// Sudden steps: how far the signal stands from where it was 0.4 ms ago, the largest of late, and what is usual.
 /// With a mix only.
 struct KernelJump {
-    double follow = 1.0; // 1 / (1 + 0.4 ms in frames)
-    double fade = 0.0;   // of the largest, a frame
-    double weight = 0.0; // of a frame in the usual
+    double follow = 1.0;  // 1 / (1 + 0.4 ms in frames)
+    double fade = 0.0;    // of the largest, a frame
+    double weight = 0.0;  // of a frame in the usual
+    std::size_t lane = 0; // the one that is asked
+    double times = 0.0;   // the usual: beyond it is a jump
     double* followed = nullptr;
     double* largest = nullptr;
     double* usual = nullptr;
@@ -85,6 +87,11 @@ struct KernelState {
     const std::uint64_t* rearm_adds = nullptr;
 };
 
+/// Always inlined: a copy compiled for wide vectors must not serve all.
+[[nodiscard, gnu::always_inline]] inline bool jumped(const KernelJump& jump) noexcept {
+    return jump.largest[jump.lane] > jump.times * jump.usual[jump.lane];
+}
+
 /// A frame's tally: three counts in one word. Always inlined: a copy compiled for wide vectors must not serve all.
 struct Tally {
     static constexpr std::uint64_t vote = 1;                // voting lanes above the threshold
@@ -113,6 +120,7 @@ struct KernelOrder {
     std::uint32_t stop_at_votes = 0;    // stop after a frame with this many votes (waiting for a crossing) ...
     std::uint32_t stop_below_rearm = 0; // ... or after one with fewer re-arm votes than this; 0: never
     double* envelopes = nullptr;        // [count][lanes]: where envelopes go; then nothing is compared
+    unsigned char* jumped = nullptr;    // [count]: and where 1 goes for a frame soon after a jump
 };
 
 struct KernelResult {

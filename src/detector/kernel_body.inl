@@ -302,6 +302,9 @@ inline KernelResult keep_envelopes(KernelState& state, const KernelOrder& order)
         for (std::size_t lane = 0; lane < state.lanes; lane += width) {
             __builtin_memcpy(kept + lane, state.envelope + lane, sizeof(Doubles)); // the caller's memory lies anywhere
         }
+        if (order.jumped != nullptr) {
+            order.jumped[result.frames] = mixed && jumped(state.jump) ? 1 : 0;
+        }
         kept += state.lanes;
         ++result.frames;
     }

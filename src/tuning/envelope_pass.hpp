@@ -6,6 +6,8 @@
 #include "detector/detector.hpp"
 #include "tuning/statistic_pass.hpp"
 
+#include <vector>
+
 namespace millpond {
 
 class EnvelopePass : public StatisticPass {
@@ -20,9 +22,11 @@ class EnvelopePass : public StatisticPass {
     }
     [[nodiscard]] std::uint64_t settle_frames() const noexcept override { return detector_.filter_settle_frames(); }
     [[nodiscard]] double delay_samples() const noexcept override { return detector_.delay_samples(); }
+    [[nodiscard]] std::uint64_t frames_to_change() const noexcept override { return detector_.frames_to_verdict(); }
     void gap(SampleIndex resumes_at) noexcept override { detector_.gap(resumes_at); }
     void run(const FrameBlock& block, std::span<double> statistics) noexcept override {
-        detector_.envelopes(block, statistics);
+        jumped_.resize(block.frames());
+        detector_.envelopes(block, statistics, jumped_);
     }
 
     /// True where both give the same statistics: one pass serves both.
@@ -31,15 +35,21 @@ class EnvelopePass : public StatisticPass {
         evidence.false_per_minute = b.evidence.false_per_minute;
         evidence.calibration = b.evidence.calibration;
         return a.method == b.method && a.filter == b.filter && a.envelope == b.envelope && a.vote.rule == b.vote.rule &&
-               evidence == b.evidence;
+               evidence == b.evidence && a.mains == b.mains && a.state_gate == b.state_gate;
     }
 
     /// Where the statistic of floor `i` stands among a frame's values.
     [[nodiscard]] std::size_t floor_column(std::size_t i) const noexcept { return detector_.floor_column(i); }
     [[nodiscard]] std::size_t floor_count() const noexcept { return detector_.floor_count(); }
 
+    /// Of the last block, frame by frame: 1 where a crossing would be vetoed by a sudden step.
+    [[nodiscard]] const std::vector<unsigned char>& jumped() const noexcept { return jumped_; }
+    /// The gate of the animal's state after the last block; true where there is none.
+    [[nodiscard]] bool gate_open() const noexcept { return detector_.state_gate_open(); }
+
   private:
     Detector detector_;
+    std::vector<unsigned char> jumped_;
 };
 
 } // namespace millpond

@@ -51,7 +51,7 @@ DetectorSettings with_threshold(DetectorSettings settings) {
 
 FloorBank::FloorBank(std::span<const DetectorSettings> settings, const Channels& channels, Hertz rate,
                      const EnvelopePass& pass)
-    : settings_(settings.size()) {
+    : pass_(pass), settings_(settings.size()) {
     const auto columns = columns_of(settings.front(), channels, pass);
     columns_ = columns.voting;
     columns_.insert(columns_.end(), columns.references.begin(), columns.references.end());
@@ -98,7 +98,9 @@ void FloorBank::take(SampleIndex first, std::span<const double> statistics, std:
         }
     }
     for (auto& batch : batches_) {
-        batch.floors.take(first.value, {envelopes_.data(), highest_.data(), lowest_.data(), used, frames});
+        batch.floors.take(first.value,
+                          {envelopes_.data(), highest_.data(), lowest_.data(), pass_.jumped().data(), used, frames});
+        batch.floors.use_memory(pass_.gate_open(), first.value + frames);
     }
 }
 

@@ -9,7 +9,8 @@ namespace millpond {
 
 class FloorBank : public CrossingRule {
   public:
-    /// Settings whose passes are shared (EnvelopePass::shared_by).
+    /// Settings whose passes are shared (EnvelopePass::shared_by). Asks `pass`, which must outlive it, about the block
+    /// that it takes.
     FloorBank(std::span<const DetectorSettings> settings, const Channels& channels, Hertz rate,
               const EnvelopePass& pass);
 
@@ -25,6 +26,7 @@ class FloorBank : public CrossingRule {
     std::vector<Batch> batches_;
     std::vector<std::size_t> columns_;                 // of the pass that are compared: voting ones, then references
     std::vector<double> envelopes_, highest_, lowest_; // as in EnvelopeBlock
+    const EnvelopePass& pass_;
     std::size_t settings_ = 0;
 };
 

@@ -43,6 +43,10 @@ FloorBatch::FloorBatch(std::span<const DetectorSettings> settings, const Envelop
             column.quiet.values.fill(beyond_all);
         }
     }
+    for (auto& memory : memories_) {
+        memory.mean.resize(columns.voting + columns.references);
+        memory.spread.resize(columns.voting + columns.references);
+    }
     for (std::size_t lane = 0; lane < settings.size(); ++lane) {
         fill(lane, settings[lane], rate);
     }
@@ -110,7 +114,7 @@ void FloorBatch::take(std::uint64_t first, const EnvelopeBlock& block) {
         bool due = false;
         done += walk_batch(state_, block, done, done + stretch(position, block.frames - done), first, due);
         if (due) {
-            decide(first + done - 1);
+            decide(first + done - 1, block.jumped[done - 1] != 0);
         }
         if (state_.warming && (first + done) % second_ == 0) {
             look_at_clock(first + done);
@@ -154,7 +158,7 @@ std::size_t FloorBatch::begin(std::uint64_t first, const EnvelopeBlock& block) {
 }
 
 // After the last frame walked, at `position`: some setting crossed, re-armed or counts how long it is above.
-void FloorBatch::decide(std::uint64_t position) {
+void FloorBatch::decide(std::uint64_t position, bool jumped) {
     bool crossed = false;
     state_.any_counting = state_.any_spent = false;
     for (std::size_t lane = 0; lane < settings_.size(); ++lane) {
@@ -163,7 +167,7 @@ void FloorBatch::decide(std::uint64_t position) {
                 set_spent(lane, no);
             }
         } else if (state_.votes[lane] >= state_.needed[lane] || state_.counting[lane] != no) {
-            crossed = count_above(lane, position) || crossed;
+            crossed = count_above(lane, position, jumped) || crossed;
         }
         state_.any_counting = state_.any_counting || state_.counting[lane] != no;
         state_.any_spent = state_.any_spent || state_.spent[lane] != no;
@@ -174,7 +178,7 @@ void FloorBatch::decide(std::uint64_t position) {
 }
 
 // True where the crossing is due.
-bool FloorBatch::count_above(std::size_t lane, std::uint64_t position) {
+bool FloorBatch::count_above(std::size_t lane, std::uint64_t position, bool jumped) {
     auto& setting = settings_[lane];
     setting.above_run = state_.votes[lane] >= state_.needed[lane] ? setting.above_run + 1 : 0;
     if (setting.above_run < setting.min_above) {
@@ -186,7 +190,8 @@ bool FloorBatch::count_above(std::size_t lane, std::uint64_t position) {
     set_spent(lane, yes);
     setting.frozen_until = std::max(setting.frozen_until, position + 1 + setting.freeze);
     const auto reference = state_.newest_reference[lane];
-    const bool vetoed = reference != never && position - static_cast<std::uint64_t>(reference) <= setting.veto_window;
+    const bool vetoed =
+        jumped || (reference != never && position - static_cast<std::uint64_t>(reference) <= setting.veto_window);
     const bool unsettled = state_.warming && state_.frames[lane] < static_cast<double>(setting.settle);
     if (position >= settling_until_ && !unsettled && !vetoed) {
         found_[lane].places.push_back(SampleIndex{position});
@@ -199,6 +204,40 @@ void FloorBatch::set_spent(std::size_t lane, std::int64_t spent) noexcept {
     for (auto& column : state_.voting) {
         column.waited_for[lane] = spent != no ? column.rearm[lane] : column.above[lane];
     }
+}
+
+void FloorBatch::use_memory(bool gates_open, std::uint64_t position) noexcept {
+    if (gates_open == gates_open_) {
+        return;
+    }
+    auto& left = memories_[gates_open_ ? 1 : 0];
+    const auto& entered = memories_[gates_open ? 1 : 0];
+    gates_open_ = gates_open;
+    if (!start_.done()) {
+        return; // there is nothing to remember yet
+    }
+    left.frames = state_.frames;
+    for (std::size_t lane = 0; lane < settings_.size(); ++lane) {
+        const auto settle = static_cast<double>(settings_[lane].settle);
+        const bool settled = entered.frames[lane] >= settle;
+        state_.frames[lane] = settled ? entered.frames[lane] : std::min(state_.frames[lane], settle);
+    }
+    std::size_t place = 0;
+    for (auto* columns : {&state_.voting, &state_.references}) {
+        for (auto& column : *columns) {
+            left.mean[place] = column.mean;
+            left.spread[place] = column.spread;
+            for (std::size_t lane = 0; lane < settings_.size(); ++lane) {
+                if (entered.frames[lane] >= static_cast<double>(settings_[lane].settle)) {
+                    column.mean[lane] = entered.mean[place][lane];
+                    column.spread[lane] = entered.spread[place][lane];
+                }
+            }
+            ++place;
+        }
+    }
+    state_.warming = true;
+    set_active(position);
 }
 
 // The journal says once a second whether a floor has settled. Once all have, and weights stay, nothing is counted.

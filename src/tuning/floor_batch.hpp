@@ -56,6 +56,7 @@ struct EnvelopeBlock {
     const double* envelopes = nullptr;
     const double* highest = nullptr;
     const double* lowest = nullptr;
+    const unsigned char* jumped = nullptr; ///< by frame: 1 where a crossing is vetoed by a sudden step
     std::size_t values = 0, frames = 0;
 };
 
@@ -78,6 +79,8 @@ class FloorBatch {
 
     void gap(std::uint64_t resumes_at) noexcept;
     void take(std::uint64_t first, const EnvelopeBlock& block);
+    /// From `position` on, as Detector::use_memory.
+    void use_memory(bool gates_open, std::uint64_t position) noexcept;
     [[nodiscard]] std::vector<Detections>& detections() noexcept { return found_; }
 
     /// Frames of the floor's start: settings of one batch share them.
@@ -94,12 +97,20 @@ class FloorBatch {
     [[nodiscard]] std::size_t stretch(std::uint64_t position, std::size_t count) const noexcept;
     std::size_t begin(std::uint64_t first, const EnvelopeBlock& block);
     void set_active(std::uint64_t position) noexcept;
-    void decide(std::uint64_t position);
-    bool count_above(std::size_t lane, std::uint64_t position);
+    void decide(std::uint64_t position, bool jumped);
+    bool count_above(std::size_t lane, std::uint64_t position, bool jumped);
     void set_spent(std::size_t lane, std::int64_t spent) noexcept;
     void look_at_clock(std::uint64_t position) noexcept;
 
+    /// A floor that is not in use: of each column, voting ones first.
+    struct Memory {
+        std::vector<BatchOf<double>> mean, spread;
+        BatchOf<double> frames;
+    };
+
     BatchState state_;
+    std::array<Memory, 2> memories_; // by gates closed or open
+    bool gates_open_ = true;
     FloorStart start_;
     std::vector<Setting> settings_;
     std::vector<Detections> found_;

@@ -43,7 +43,9 @@ class Walk {
     [[nodiscard]] const Intervals& gaps() const noexcept { return gaps_; }
 
     void step() {
-        const auto rest = recording_.part(at_, std::min(frames_at_a_time, recording_.frames() - at_));
+        const auto most =
+            static_cast<std::size_t>(std::min<std::uint64_t>(frames_at_a_time, kind_.pass->frames_to_change()));
+        const auto rest = recording_.part(at_, std::min(most, recording_.frames() - at_));
         const std::size_t finite = kind_.pass->finite_frames(rest);
         if (finite == 0) {
             miss_one();

@@ -29,6 +29,9 @@ class StatisticPass {
     [[nodiscard]] virtual std::uint64_t settle_frames() const noexcept = 0;
     [[nodiscard]] virtual double delay_samples() const noexcept = 0;
 
+    /// Frames from here within which the gate of the animal's state stays as it is.
+    [[nodiscard]] virtual std::uint64_t frames_to_change() const noexcept = 0;
+
     /// Frames are missing before `resumes_at`; the first call of a recording is gap(0).
     virtual void gap(SampleIndex resumes_at) noexcept = 0;
     /// Over all of a block without missing frames: `statistics[frame * values() + i]`.

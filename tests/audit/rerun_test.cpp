@@ -66,6 +66,44 @@ TEST(Rerun, ReproducesAControlScheduleFromThePlacesTheJournalNames) {
     EXPECT_EQ(session_figures(session.events()).scheduled_triggers, 2U) << "one in the gap, one after the fault";
 }
 
+// Theta from the 20th to the 40th second, and a command to another gate in between.
+TEST(Rerun, FindsTheGateOfTheStateAgainFromTheSamplesAlone) {
+    for (const auto method : {DetectionMethod::envelope, DetectionMethod::evidence}) {
+        const TemporaryFolder temp;
+        auto settings = test_engine_settings();
+        settings.detector.method = method;
+        settings.detector.state_gate.on = true;
+        settings.detector.mains.method = MainsMethod::adaptive;
+        settings.arbiter.start_armed = true;
+        HandMadeLoop loop(temp, settings);
+        auto data = bursts(75'000);
+        for (std::size_t i = 0; i < 75'000; ++i) {
+            const bool theta = i >= 25'000 && i < 50'000;
+            const double turns = (theta ? 7.5 : 2.0) * static_cast<double>(i) / test_rate.value;
+            const auto wave = static_cast<float>(300.0 * std::sin(2.0 * std::numbers::pi * turns));
+            data[2 * i] += wave;
+            data[2 * i + 1] += wave;
+        }
+        for (std::size_t at = 0; at < 75'000; at += 8) {
+            if (at == 40'000 || at == 60'000) {
+                loop.engine().set_gate("still", at == 60'000);
+            }
+            if (at < 66'000 || at >= 66'400) { // packets that never came
+                loop.block(SampleIndex{at}, std::span(data).subspan(2 * at, 16));
+            }
+        }
+        const SessionReader session(loop.close());
+        const auto rerun = rerun_session(session, settings, "test");
+        EXPECT_TRUE(rerun.reproduced()) << all(rerun);
+        EXPECT_GT(rerun.decisions, 20U);
+        std::size_t moves = 0;
+        for (const auto& event : session.events()) {
+            moves += event.kind == EventKind::gate && gate_name(event.as<GateDetail>()) == state_gate_name ? 1 : 0;
+        }
+        EXPECT_EQ(moves, 3U) << "open from the start, closed, open";
+    }
+}
+
 TEST(Rerun, CutSessionIsReproducedAsFarAsItsRecordsGo) {
     const TemporaryFolder temp;
     HandMadeLoop loop(temp, test_engine_settings());

@@ -6,6 +6,8 @@
 
 #include <gtest/gtest.h>
 
+#include <cmath>
+
 namespace millpond {
 namespace {
 
@@ -131,6 +133,33 @@ TEST(SharedPass, DetectsWhatTheEngineDetectsForEveryThreshold) {
         settings.back().threshold.rearm_deviations = std::min(deviations, 3.0);
     }
     expect_the_engines_own(Trial(), settings);
+}
+
+// The gate of the animal's state moves: floors change their memories, some before they have settled. And steps.
+TEST(SharedPass, DoesSoWhereTheStateChangesAndTheSignalJumps) {
+    auto trial = Trial();
+    for (std::size_t f = 0; f < trial.frames(); ++f) {
+        const bool theta = f / 6250 % 3 == 1; // from 5 to 10 s, from 20 to 25 s, and so on
+        const double turns = (theta ? 7.5 : 2.0) * static_cast<double>(f) / rate.value;
+        const double step = f % 4001 > 2000 ? 1500.0 : 0.0;
+        for (std::size_t c = 0; c < trial.channels.size(); ++c) {
+            trial.data[f * trial.channels.size() + c] +=
+                static_cast<float>(100.0 * std::sin(2.0 * 3.14159265358979 * turns) + step);
+        }
+    }
+    for (const auto method : {DetectionMethod::envelope, DetectionMethod::evidence}) {
+        DetectorSettings base;
+        base.method = method;
+        base.state_gate.on = true;
+        base.state_gate.smoothing_s = 0.3;
+        base.mains.method = MainsMethod::adaptive;
+        auto settings = many(base, 20);
+        for (std::size_t i = 0; i < settings.size(); ++i) {
+            settings[i].evidence.false_per_minute = 2.0 + static_cast<double>(i);
+        }
+        expect_the_engines_own(trial, settings);
+        expect_the_engines_own(trial.with_gaps(), settings);
+    }
 }
 
 TEST(SharedPass, DoesSoAcrossGapsVetoesFreezesAndHoldTimes) {
