@@ -148,6 +148,7 @@ TEST(Sweep, RefusesSettingsThatTheRateCannotCarryBeforeAnyIsRun) {
     const InventedRecording recording(20.0);
     const auto tuning = tuning_recording(recording);
     std::vector<DetectorSettings> candidates(6);
+    candidates[5].method = DetectionMethod::envelope;
     candidates[5].filter.high_hz = 700.0;
     SweepWatch watch;
     watch.finished = [](std::size_t, const SweepResult&) { ADD_FAILURE(); };

@@ -27,7 +27,7 @@ struct Tune {
         const InventedRecording recording(seconds, 10.0, ripple_uv);
         recording.write(folder / "r.wav");
         recording.write_truth(folder / "truth.tsv");
-        write_text(folder / "grid.yaml", "detector:\n  filter: {order: [1, 2]}\n  envelope: {smoothing_ms: [4, 8]}\n"
+        write_text(folder / "grid.yaml", "detector:\n  method: [envelope]\n  filter: {order: [1, 2]}\n  envelope: {smoothing_ms: [4, 8]}\n"
                                          "  threshold: {deviations: [3, 3.5, 4, 4.5, 5, 6]}\n");
     }
     static std::string arguments(const std::string& more) {
@@ -132,7 +132,7 @@ TEST(TuneCommand, RefusesWorkOfOtherRecordingsLabelsOrGrids) {
 
 TEST(TuneCommand, StopsAtCtrlCKeepsWhatIsDoneAndGoesOn) {
     const Tune bench(240.0);
-    std::string grid = "detector:\n  filter: {low_hz: [";
+    std::string grid = "detector:\n  method: [envelope]\n  filter: {low_hz: [";
     for (int low = 100; low < 160; ++low) {
         grid += std::to_string(low) + (low < 159 ? ", " : "], order: [2, 3, 4]}\n");
     }
