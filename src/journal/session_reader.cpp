@@ -61,7 +61,10 @@ std::vector<FloorDetail> last_floors(std::span<const Event> events) {
     for (const auto& event : events) {
         if (event.kind == EventKind::floor) {
             const auto floor = event.as<FloorDetail>();
-            newest[floor.site] = floor;
+            const auto known = newest.find(floor.site);
+            if (known == newest.end() || floor.gates_closed <= known->second.gates_closed) {
+                newest[floor.site] = floor;
+            }
         }
     }
     std::vector<FloorDetail> floors;
