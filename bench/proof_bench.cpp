@@ -32,7 +32,7 @@ double now_s() {
 }
 
 std::vector<double> floor_rates() {
-    return {0.1, 0.2, 0.3, 0.5, 1.0, 2.0, 3.0, 5.0, 10.0};
+    return {10.0, 5.0, 3.0, 2.0, 1.0, 0.5, 0.3, 0.2, 0.1};
 }
 
 double ripples_in(const std::vector<ProofRecording>& recordings) {

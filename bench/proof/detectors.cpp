@@ -12,17 +12,16 @@ namespace millpond::bench {
 namespace {
 
 constexpr double all_of_it_s = 1e9; // one block of sweep.hpp: nothing is held out of a training recording
-constexpr double first_threshold = 1.5;
-constexpr double threshold_step = 1.05;
-constexpr std::size_t thresholds = 66; // up to about 36 deviations
 
-std::vector<double> ladder() {
-    std::vector<double> steps;
-    for (std::size_t i = 0; i < thresholds; ++i) {
-        steps.push_back(first_threshold * std::pow(threshold_step, static_cast<double>(i)));
-    }
-    return steps;
-}
+// Thresholds in deviations, each so many times the last.
+struct Ladder {
+    double first, step;
+    std::size_t count;
+    [[nodiscard]] double at(std::size_t i) const { return first * std::pow(step, static_cast<double>(i)); }
+};
+constexpr Ladder textbook_ladder{1.5, 1.05, 66}; // up to 36: bursts of spikes reach far above the floor
+constexpr Ladder evidence_ladder{2.2, 1.06, 34}; // up to 15
+constexpr Ladder training_ladder{2.5, 1.13, 16}; // up to 16; one batch of the sweep
 
 DetectorSettings at_threshold(DetectorSettings settings, double deviations) {
     settings.threshold.deviations = deviations;
@@ -46,10 +45,10 @@ Counts run_engine(const DetectorSettings& settings, const ProofRecording& record
     return counts_of(recording, detections_to_score(engine.events()), engine.eligible());
 }
 
-Curve empty_curve(std::size_t recordings) {
+Curve empty_curve(const Ladder& ladder, std::size_t recordings) {
     Curve curve;
-    for (const double threshold : ladder()) {
-        curve.push_back({threshold, std::vector<Counts>(recordings)});
+    for (std::size_t i = 0; i < ladder.count; ++i) {
+        curve.push_back({ladder.at(i), std::vector<Counts>(recordings)});
     }
     return curve;
 }
@@ -57,7 +56,7 @@ Curve empty_curve(std::size_t recordings) {
 } // namespace
 
 Curve textbook_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings) {
-    auto curve = empty_curve(recordings.size());
+    auto curve = empty_curve(textbook_ladder, recordings.size());
     std::vector<DetectorSettings> all;
     for (const auto& point : curve) {
         all.push_back(at_threshold(settings, point.threshold));
@@ -75,7 +74,7 @@ Curve textbook_curve(const DetectorSettings& settings, const std::vector<ProofRe
 }
 
 Curve evidence_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings) {
-    auto curve = empty_curve(recordings.size());
+    auto curve = empty_curve(evidence_ladder, recordings.size());
     in_parallel(curve.size() * recordings.size(), [&](std::size_t job) {
         auto& point = curve[job / recordings.size()];
         const std::size_t i = job % recordings.size();
@@ -104,7 +103,7 @@ DetectorSettings two_bands(double factor, double smoothing_ms) {
 DetectorSettings choose_two_bands(const std::vector<ProofRecording>& training) {
     DetectorSettings best;
     double most = -1.0;
-    for (const double smoothing_ms : {4.0, 6.0, 8.0, 10.0, 12.0, 16.0}) {
+    for (const double smoothing_ms : {4.0, 8.0, 12.0}) {
         const auto settings = two_bands(1.5, smoothing_ms);
         double found = 0.0;
         for (const auto& point : evidence_curve(settings, training)) {
@@ -131,10 +130,7 @@ Learned learn_ours(const std::vector<ProofRecording>& training, const std::vecto
 
 namespace {
 
-constexpr double first_training_threshold = 2.5;
-constexpr double training_threshold_step = 1.13;
-constexpr std::size_t training_thresholds = 16; // one batch of the sweep, up to about 16 deviations
-constexpr double no_veto = 1000.0;              // the most that settings may say: nothing is so far out
+constexpr double no_veto = 1000.0; // the most that settings may say: nothing is so far out
 
 // One place of the grid, at every training threshold.
 std::vector<DetectorSettings> grid_of(Grid grid, bool reference, std::size_t sites) {
@@ -207,9 +203,8 @@ TextbookChoice choose_textbook(const std::vector<ProofRecording>& training, Grid
     const auto places = grid_of(grid, count(ChannelRole::reference) > 0, count(ChannelRole::ripple));
     std::vector<DetectorSettings> candidates;
     for (const auto& place : places) {
-        for (std::size_t i = 0; i < training_thresholds; ++i) {
-            candidates.push_back(
-                at_threshold(place, first_training_threshold * std::pow(training_threshold_step, static_cast<double>(i))));
+        for (std::size_t i = 0; i < training_ladder.count; ++i) {
+            candidates.push_back(at_threshold(place, training_ladder.at(i)));
         }
     }
     SweepPlan plan;
@@ -219,7 +214,7 @@ TextbookChoice choose_textbook(const std::vector<ProofRecording>& training, Grid
     const auto recordings = for_tuning(training);
     const auto results = sweep(recordings, candidates, plan);
     const auto figures = [&](std::size_t place, double limit) {
-        return at_rate(std::span(results).subspan(place * training_thresholds, training_thresholds), limit);
+        return at_rate(std::span(results).subspan(place * training_ladder.count, training_ladder.count), limit);
     };
     TextbookChoice choice;
     choice.tried = places.size();
