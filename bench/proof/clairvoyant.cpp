@@ -131,18 +131,36 @@ Counts clairvoyant_counts(const ProofRecording& recording, const Whitener& white
     return counts;
 }
 
-Curve clairvoyant_floor(const std::vector<ProofRecording>& recordings, std::span<const double> false_per_minute) {
+namespace {
+
+using WhitenerOf = std::function<Whitener(const ProofRecording&)>;
+
+Curve floor_with(const std::vector<ProofRecording>& recordings, std::span<const double> false_per_minute,
+                 const WhitenerOf& whitener_of) {
     Curve curve;
     for (const double rate : false_per_minute) {
         curve.push_back({std::sqrt(threshold_energy(rate)), std::vector<Counts>(recordings.size())});
     }
     in_parallel(recordings.size(), [&](std::size_t i) {
-        const Whitener whitener(recordings[i].background, recordings[i].channels.size());
+        const auto whitener = whitener_of(recordings[i]);
         for (std::size_t k = 0; k < curve.size(); ++k) {
             curve[k].by_recording[i] = clairvoyant_counts(recordings[i], whitener, false_per_minute[k], 1.0);
         }
     });
     return curve;
+}
+
+} // namespace
+
+Curve clairvoyant_floor(const std::vector<ProofRecording>& recordings, std::span<const double> false_per_minute) {
+    return floor_with(recordings, false_per_minute, [](const ProofRecording& recording) {
+        return Whitener(recording.background, recording.channels.size());
+    });
+}
+
+Curve clairvoyant_floor(const std::vector<ProofRecording>& recordings, const Whitener& whitener,
+                        std::span<const double> false_per_minute) {
+    return floor_with(recordings, false_per_minute, [&](const ProofRecording&) { return whitener; });
 }
 
 } // namespace millpond::bench

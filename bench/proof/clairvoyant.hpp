@@ -39,7 +39,11 @@ class Whitener {
 [[nodiscard]] Curve clairvoyant_floor(const std::vector<ProofRecording>& recordings,
                                       std::span<const double> false_per_minute);
 
-/// The same of a recording whose whitener is known, its ripples `scale` times as large.
+/// The same of recordings whose background one whitener knows.
+[[nodiscard]] Curve clairvoyant_floor(const std::vector<ProofRecording>& recordings, const Whitener& whitener,
+                                      std::span<const double> false_per_minute);
+
+/// One recording, its ripples `scale` times as large; 
 [[nodiscard]] Counts clairvoyant_counts(const ProofRecording& recording, const Whitener& whitener,
                                         double false_per_minute, double scale);
 

@@ -23,26 +23,24 @@ constexpr Ladder textbook_ladder{1.5, 1.05, 66}; // up to 36: bursts of spikes r
 constexpr Ladder evidence_ladder{2.2, 1.06, 34}; // up to 15
 constexpr Ladder training_ladder{2.5, 1.13, 16}; // up to 16; one batch of the sweep
 
-DetectorSettings at_threshold(DetectorSettings settings, double deviations) {
-    settings.threshold.deviations = deviations;
-    if (settings.method == DetectionMethod::evidence) {
-        // A calibration of two points puts the threshold where it is wanted, whatever else it says.
-        settings.evidence.false_per_minute = 1.0;
-        settings.evidence.calibration = {{deviations, 1.0}, {deviations + 1.0, 0.5}};
-    } else {
-        settings.threshold.rearm_deviations = 0.5 * deviations; // common practice
-    }
-    return settings;
-}
-
-Counts run_engine(const DetectorSettings& settings, const ProofRecording& recording) {
+OfflineEngine ran(const DetectorSettings& settings, const ProofRecording& recording) {
     EngineSettings whole{settings, {}};
     whole.arbiter.condition = Condition::none;
     auto engine = OfflineEngine::make(whole, recording.channels, recording.rate);
     engine.start(true);
     engine.process({SampleIndex{0}, recording.channels.size(), recording.data});
     engine.finish();
-    return counts_of(recording, detections_to_score(engine.events()), engine.eligible());
+    return engine;
+}
+
+Counts run_engine(const DetectorSettings& settings, const ProofRecording& recording, const Judged& judged = {}) {
+    const auto engine = ran(settings, recording);
+    auto eligible = engine.eligible();
+    if (judged.block_s > 0.0) {
+        const auto block = frames_in_ms(judged.block_s * 1000.0, recording.rate);
+        eligible = intersection(eligible, parts_of(recording.frames(), block).held_out);
+    }
+    return counts_of(recording, detections_to_score(engine.events()), eligible);
 }
 
 Curve empty_curve(const Ladder& ladder, std::size_t recordings) {
@@ -55,11 +53,27 @@ Curve empty_curve(const Ladder& ladder, std::size_t recordings) {
 
 } // namespace
 
+DetectorSettings with_threshold(DetectorSettings settings, double deviations) {
+    settings.threshold.deviations = deviations;
+    if (settings.method == DetectionMethod::evidence) {
+        // A calibration of two points puts the threshold where it is wanted, whatever else it says.
+        settings.evidence.false_per_minute = 1.0;
+        settings.evidence.calibration = {{deviations, 1.0}, {deviations + 1.0, 0.5}};
+    } else {
+        settings.threshold.rearm_deviations = 0.5 * deviations; // common practice
+    }
+    return settings;
+}
+
+std::vector<SampleIndex> detections_of(const DetectorSettings& settings, const ProofRecording& recording) {
+    return detections_to_score(ran(settings, recording).events());
+}
+
 Curve textbook_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings) {
     auto curve = empty_curve(textbook_ladder, recordings.size());
     std::vector<DetectorSettings> all;
     for (const auto& point : curve) {
-        all.push_back(at_threshold(settings, point.threshold));
+        all.push_back(with_threshold(settings, point.threshold));
     }
     in_parallel(recordings.size(), [&](std::size_t i) {
         const auto& recording = recordings[i];
@@ -73,12 +87,13 @@ Curve textbook_curve(const DetectorSettings& settings, const std::vector<ProofRe
     return curve;
 }
 
-Curve evidence_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings) {
+Curve evidence_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings,
+                     const Judged& judged) {
     auto curve = empty_curve(evidence_ladder, recordings.size());
     in_parallel(curve.size() * recordings.size(), [&](std::size_t job) {
         auto& point = curve[job / recordings.size()];
         const std::size_t i = job % recordings.size();
-        point.by_recording[i] = run_engine(at_threshold(settings, point.threshold), recordings[i]);
+        point.by_recording[i] = run_engine(with_threshold(settings, point.threshold), recordings[i], judged);
     });
     return curve;
 }
@@ -119,10 +134,15 @@ DetectorSettings choose_two_bands(const std::vector<ProofRecording>& training) {
 }
 
 Learned learn_ours(const std::vector<ProofRecording>& training, const std::vector<FeatureSettings>& features) {
+    return learn_ours_in_blocks(training, features, all_of_it_s);
+}
+
+Learned learn_ours_in_blocks(const std::vector<ProofRecording>& training, const std::vector<FeatureSettings>& features,
+                             double block_s) {
     LearningPlan plan;
     plan.sweep.rate = training.front().rate;
     plan.sweep.arbiter.condition = Condition::none;
-    plan.sweep.block_s = all_of_it_s;
+    plan.sweep.block_s = block_s;
     plan.sweep.threads = processors();
     plan.features = features;
     return learn_evidence(for_tuning(training), DetectorSettings{}, plan);
@@ -204,7 +224,7 @@ TextbookChoice choose_textbook(const std::vector<ProofRecording>& training, Grid
     std::vector<DetectorSettings> candidates;
     for (const auto& place : places) {
         for (std::size_t i = 0; i < training_ladder.count; ++i) {
-            candidates.push_back(at_threshold(place, training_ladder.at(i)));
+            candidates.push_back(with_threshold(place, training_ladder.at(i)));
         }
     }
     SweepPlan plan;

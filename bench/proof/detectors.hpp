@@ -17,6 +17,11 @@ enum class Grid : std::uint8_t {
     coarse ///< for a quick look
 };
 
+/// Frames that are judged: all, or those outside the blocks that learn_ours_in_blocks looks at.
+struct Judged {
+    double block_s = 0.0; ///< 0: all
+};
+
 /// The textbook chain's settings with the most hits at one false rate, without their threshold.
 struct BestTextbook {
     DetectorSettings settings;
@@ -35,7 +40,8 @@ struct TextbookChoice {
 
 /// Over thresholds.
 [[nodiscard]] Curve textbook_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings);
-[[nodiscard]] Curve evidence_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings);
+[[nodiscard]] Curve evidence_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings,
+                                   const Judged& judged = {});
 
 /// As it stands: its own threshold.
 [[nodiscard]] CurvePoint run_as_is(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings);
@@ -48,5 +54,11 @@ struct TextbookChoice {
 /// Learned from recordings, all of them for training; asked for 1 false a minute.
 [[nodiscard]] Learned learn_ours(const std::vector<ProofRecording>& training,
                                  const std::vector<FeatureSettings>& features);
+/// Learned from the blocks 1, 3, ... of `block_s` alone.
+[[nodiscard]] Learned learn_ours_in_blocks(const std::vector<ProofRecording>& training,
+                                           const std::vector<FeatureSettings>& features, double block_s);
+/// What the detector finds, by its own threshold.
+[[nodiscard]] std::vector<SampleIndex> detections_of(const DetectorSettings& settings, const ProofRecording& recording);
+[[nodiscard]] DetectorSettings with_threshold(DetectorSettings settings, double deviations);
 
 } // namespace millpond::bench

@@ -21,8 +21,9 @@ std::string rate(const Estimate& estimate) {
 
 } // namespace
 
-void Report::begin(const std::string& scene) {
+void Report::begin(const std::string& scene, Hertz rate_of_scene) {
     scene_ = scene;
+    rate_ = rate_of_scene;
 }
 
 void Report::say(const std::string& sentence) const {

@@ -7,9 +7,8 @@ namespace millpond::bench {
 
 class Report {
   public:
-    explicit Report(Hertz rate) : rate_(rate) {}
-
-    void begin(const std::string& scene);
+    /// What follows is of this scene.
+    void begin(const std::string& scene, Hertz rate);
     void say(const std::string& sentence) const;
     void head() const;
     /// One row at each of asked_false_per_minute, and the curve's points for the picture.
