@@ -3,10 +3,9 @@
 // Settings are learned and chosen on scenes of seeds 901, 902, ...; every figure is of seeds 1001, 1002, ..., which
 // nothing was ever tuned on. FILE: a recording without ripples, its first channel; else rat_hippocampus_60s.wav of the
 // folder that MILLPOND_RECORDINGS names, where there is one.
-#include "proof/parts.hpp"
-
 #include "base/clock.hpp"
 #include "base/refusal.hpp"
+#include "proof/parts.hpp"
 #include "recording/whole_file.hpp"
 
 #include <CLI/CLI.hpp>

@@ -9,7 +9,7 @@ namespace {
 constexpr Eigen::Index order = 25;
 constexpr std::size_t most_frames = 150000; // of the background: two minutes tell it well enough
 constexpr double bandwidth_hz = 100.0;
-constexpr double far_out = 5.0;    // deviations in which a frame is no longer taken for background
+constexpr double far_out = 5.0;     // deviations in which a frame is no longer taken for background
 constexpr double lead_in_ms = 20.0; // before the onset: what of a ripple lies below a tenth of its peak
 
 Eigen::MatrixXd matrix_of(std::span<const float> frames, Eigen::Index channels, std::size_t from, std::size_t to) {
@@ -17,9 +17,9 @@ Eigen::MatrixXd matrix_of(std::span<const float> frames, Eigen::Index channels, 
     Eigen::MatrixXd x(rows, channels);
     for (Eigen::Index t = 0; t < rows; ++t) {
         for (Eigen::Index c = 0; c < channels; ++c) {
-            x(t, c) = static_cast<double>(
-                frames[(from + static_cast<std::size_t>(t)) * static_cast<std::size_t>(channels) +
-                       static_cast<std::size_t>(c)]);
+            x(t, c) =
+                static_cast<double>(frames[(from + static_cast<std::size_t>(t)) * static_cast<std::size_t>(channels) +
+                                           static_cast<std::size_t>(c)]);
         }
     }
     return x;
@@ -100,8 +100,8 @@ Eigen::MatrixXd Whitener::residual(const Eigen::MatrixXd& x) const {
 
 std::vector<double> Whitener::running_energy(std::span<const float> frames, std::size_t from, std::size_t to) const {
     const auto past = static_cast<std::size_t>(order);
-    const Eigen::MatrixXd white = root_.triangularView<Eigen::Lower>().solve(
-        residual(matrix_of(frames, channels_, from - past, to)).transpose());
+    const Eigen::MatrixXd white =
+        root_.triangularView<Eigen::Lower>().solve(residual(matrix_of(frames, channels_, from - past, to)).transpose());
     std::vector<double> energy;
     double sum = 0.0;
     for (Eigen::Index t = 0; t < white.cols(); ++t) {

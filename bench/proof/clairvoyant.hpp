@@ -43,7 +43,7 @@ class Whitener {
 [[nodiscard]] Curve clairvoyant_floor(const std::vector<ProofRecording>& recordings, const Whitener& whitener,
                                       std::span<const double> false_per_minute);
 
-/// One recording, its ripples `scale` times as large; 
+/// One recording, its ripples `scale` times as large;
 [[nodiscard]] Counts clairvoyant_counts(const ProofRecording& recording, const Whitener& whitener,
                                         double false_per_minute, double scale);
 

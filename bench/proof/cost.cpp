@@ -15,8 +15,7 @@ double ns_a_frame(const DetectorSettings& settings, const Channels& channels, He
     engine.start(false);
     const auto began = monotonic_now();
     engine.process({SampleIndex{0}, channels.size(), data});
-    return static_cast<double>((monotonic_now() - began).count()) /
-           static_cast<double>(data.size() / channels.size());
+    return static_cast<double>((monotonic_now() - began).count()) / static_cast<double>(data.size() / channels.size());
 }
 
 } // namespace

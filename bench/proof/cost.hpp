@@ -1,8 +1,8 @@
 // What a frame costs, ours beside the textbook chain, in the whole engine. Thread: bench.
 #pragma once
 
-#include "detector/detector_settings.hpp"
 #include "base/units.hpp"
+#include "detector/detector_settings.hpp"
 
 namespace millpond::bench {
 

@@ -100,10 +100,9 @@ Curve evidence_curve(const DetectorSettings& settings, const std::vector<ProofRe
 
 CurvePoint run_as_is(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings) {
     CurvePoint point{0.0, std::vector<Counts>(recordings.size())};
-    in_parallel(recordings.size(),
-                [&](std::size_t i) { point.by_recording[i] = run_engine(settings, recordings[i]); });
-    point.threshold = Detector::make(settings, recordings.front().channels, recordings.front().rate)
-                          .threshold_deviations();
+    in_parallel(recordings.size(), [&](std::size_t i) { point.by_recording[i] = run_engine(settings, recordings[i]); });
+    point.threshold =
+        Detector::make(settings, recordings.front().channels, recordings.front().rate).threshold_deviations();
     return point;
 }
 
@@ -156,8 +155,8 @@ constexpr double no_veto = 1000.0; // the most that settings may say: nothing is
 std::vector<DetectorSettings> grid_of(Grid grid, bool reference, std::size_t sites) {
     const bool full = grid == Grid::full;
     using Band = std::pair<double, double>;
-    const auto bands = full ? std::vector<Band>{{130, 250}, {140, 250}, {150, 250}, {150, 220}}
-                            : std::vector<Band>{{150, 250}};
+    const auto bands =
+        full ? std::vector<Band>{{130, 250}, {140, 250}, {150, 250}, {150, 220}} : std::vector<Band>{{150, 250}};
     const auto smoothings = full ? std::vector<double>{2, 4, 6, 8, 10, 12} : std::vector<double>{4, 8};
     const auto vetoes = reference ? std::vector<double>{3, 4, 6, no_veto} : std::vector<double>{no_veto};
     auto votes = std::vector<VoteSettings>{{VoteRule::mean, 1}};
@@ -203,8 +202,8 @@ AtRate at_rate(std::span<const std::optional<SweepResult>> by_threshold, double 
         AtRate at{here.hit_rate().share, here.latency_median_ms};
         if (i > 0) {
             const auto& before = by_threshold[i - 1]->training;
-            const double share = (false_per_minute - here.false_per_minute) /
-                                 (before.false_per_minute - here.false_per_minute);
+            const double share =
+                (false_per_minute - here.false_per_minute) / (before.false_per_minute - here.false_per_minute);
             at.found += share * (before.hit_rate().share - at.found);
         }
         return at;
@@ -217,8 +216,8 @@ AtRate at_rate(std::span<const std::optional<SweepResult>> by_threshold, double 
 TextbookChoice choose_textbook(const std::vector<ProofRecording>& training, Grid grid) {
     const auto& channels = training.front().channels;
     const auto count = [&](ChannelRole role) {
-        return static_cast<std::size_t>(std::count_if(channels.begin(), channels.end(),
-                                                      [&](const auto& channel) { return channel.role == role; }));
+        return static_cast<std::size_t>(
+            std::count_if(channels.begin(), channels.end(), [&](const auto& channel) { return channel.role == role; }));
     };
     const auto places = grid_of(grid, count(ChannelRole::reference) > 0, count(ChannelRole::ripple));
     std::vector<DetectorSettings> candidates;

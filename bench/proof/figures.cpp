@@ -128,9 +128,8 @@ Counts counts_of(const ProofRecording& recording, std::span<const SampleIndex> d
         if (scored.detections[i] != DetectionOutcome::hit) {
             continue;
         }
-        const auto next =
-            std::upper_bound(recording.truth.begin(), recording.truth.end(), detections[i],
-                             [](SampleIndex at, const Ripple& ripple) { return at < ripple.onset; });
+        const auto next = std::upper_bound(recording.truth.begin(), recording.truth.end(), detections[i],
+                                           [](SampleIndex at, const Ripple& ripple) { return at < ripple.onset; });
         const auto& ripple = *std::prev(next); // a scene's ripples do not overlap
         counts.add_hit(detections[i] - ripple.onset, ripple.end - ripple.onset);
     }
@@ -155,7 +154,8 @@ std::optional<Figures> figures_at(const Curve& curve, double most_false_per_minu
 }
 
 Figures figures_of(const CurvePoint& point, Hertz rate) {
-    return with_intervals(point, [&](const auto&) { return &point; }, rate);
+    return with_intervals(
+        point, [&](const auto&) { return &point; }, rate);
 }
 
 } // namespace millpond::bench

@@ -62,10 +62,9 @@ void prove_outside(Report& report, const std::string& recording, const ProofSize
     }
     const double began = now_s();
     const auto outside = load_outside(recording);
-    const auto repeats =
-        std::max<std::size_t>(1, static_cast<std::size_t>(size.minutes * 60.0 * outside.rate.value /
-                                                              static_cast<double>(outside.once.size()) +
-                                                          0.5));
+    const auto repeats = std::max<std::size_t>(
+        1, static_cast<std::size_t>(
+               size.minutes * 60.0 * outside.rate.value / static_cast<double>(outside.once.size()) + 0.5));
     const double scale = scale_for(outside, first_training_seed, repeats, floor_reaches);
     const auto training = injected(outside, first_training_seed, size.training_seeds, repeats, scale);
     const auto test = injected(outside, first_test_seed, size.test_seeds, repeats, scale);
@@ -121,7 +120,8 @@ void prove_cost(Report& report, const ProofSize& size) {
 
 void prove_by_scipy(Report& report, const ProofSize& size) {
     const auto test = invented(SceneName::typical, first_test_seed, 1, size.minutes * 30.0, Split::whole);
-    report.say("\nthe textbook chain by ours and by bench/scipy_textbook.py, typical scene, same samples, same settings");
+    report.say(
+        "\nthe textbook chain by ours and by bench/scipy_textbook.py, typical scene, same samples, same settings");
     for (const auto rule : {VoteRule::mean, VoteRule::count}) {
         for (const auto method : {EnvelopeMethod::rectify, EnvelopeMethod::analytic}) {
             DetectorSettings settings;
@@ -137,9 +137,8 @@ void prove_by_scipy(Report& report, const ProofSize& size) {
                 "{:<8} order {}, {:<5}: ours {} detections, {:.1f} % found; SciPy's {}, {:.1f} %; {} at the same "
                 "sample, {} within two",
                 word_for<EnvelopeMethod>(envelope_methods, method), settings.filter.order,
-                word_for<VoteRule>(vote_rules, rule), ours.size(),
-                100.0 * counts_of(recording, ours, all).hit_rate(), theirs.size(),
-                100.0 * counts_of(recording, theirs, all).hit_rate(), shared(ours, theirs, 0),
+                word_for<VoteRule>(vote_rules, rule), ours.size(), 100.0 * counts_of(recording, ours, all).hit_rate(),
+                theirs.size(), 100.0 * counts_of(recording, theirs, all).hit_rate(), shared(ours, theirs, 0),
                 shared(ours, theirs, 2)));
         }
     }

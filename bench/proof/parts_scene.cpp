@@ -1,7 +1,6 @@
+#include "base/clock.hpp"
 #include "proof/clairvoyant.hpp"
 #include "proof/parts.hpp"
-
-#include "base/clock.hpp"
 
 #include <fmt/format.h>
 

@@ -23,7 +23,7 @@ struct ProofRecording {
 };
 
 enum class Split : std::uint8_t {
-    whole,  ///< data and truth
+    whole,   ///< data and truth
     in_parts ///< background and ripples as well
 };
 

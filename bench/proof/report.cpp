@@ -8,7 +8,8 @@ namespace millpond::bench {
 namespace {
 
 std::string share(const Estimate& estimate) {
-    return fmt::format("{:5.1f} [{:5.1f},{:6.1f}]", 100.0 * estimate.value, 100.0 * estimate.low, 100.0 * estimate.high);
+    return fmt::format("{:5.1f} [{:5.1f},{:6.1f}]", 100.0 * estimate.value, 100.0 * estimate.low,
+                       100.0 * estimate.high);
 }
 
 std::string number(const Estimate& estimate) {
@@ -61,9 +62,9 @@ void Report::row(const std::string& detector, const std::string& asked, const Fi
 void Report::keep(const std::string& detector, const Curve& curve) {
     for (const auto& point : curve) {
         const auto sum = point.sum();
-        curves_ += fmt::format("{}\t{}\t{:.3f}\t{:.4f}\t{:.4f}\t{:.1f}\t{:.1f}\n", scene_, detector, point.threshold,
-                               sum.false_per_minute(), sum.hit_rate(), sum.latency_ms(0.5, rate_),
-                               sum.latency_ms(0.9, rate_));
+        curves_ +=
+            fmt::format("{}\t{}\t{:.3f}\t{:.4f}\t{:.4f}\t{:.1f}\t{:.1f}\n", scene_, detector, point.threshold,
+                        sum.false_per_minute(), sum.hit_rate(), sum.latency_ms(0.5, rate_), sum.latency_ms(0.9, rate_));
     }
 }
 

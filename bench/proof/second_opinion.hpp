@@ -3,8 +3,8 @@
 #pragma once
 
 #include "base/channels.hpp"
-#include "detector/detector_settings.hpp"
 #include "base/units.hpp"
+#include "detector/detector_settings.hpp"
 
 #include <span>
 #include <vector>
