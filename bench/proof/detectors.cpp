@@ -7,6 +7,8 @@
 
 #include <algorithm>
 #include <cmath>
+#include <numeric>
+#include <set>
 
 namespace millpond::bench {
 namespace {
@@ -132,6 +134,12 @@ DetectorSettings choose_two_bands(const std::vector<ProofRecording>& training) {
     return best;
 }
 
+DetectorSettings unlearned() {
+    DetectorSettings settings;
+    settings.method = DetectionMethod::evidence;
+    return settings;
+}
+
 Learned learn_ours(const std::vector<ProofRecording>& training, const std::vector<FeatureSettings>& features) {
     return learn_ours_in_blocks(training, features, all_of_it_s);
 }
@@ -211,15 +219,11 @@ AtRate at_rate(std::span<const std::optional<SweepResult>> by_threshold, double 
     return {};
 }
 
-} // namespace
+using AtRates = std::array<AtRate, asked_false_per_minute.size()>;
+constexpr std::size_t at_one = 1; // place of 1 a minute
 
-TextbookChoice choose_textbook(const std::vector<ProofRecording>& training, Grid grid) {
-    const auto& channels = training.front().channels;
-    const auto count = [&](ChannelRole role) {
-        return static_cast<std::size_t>(
-            std::count_if(channels.begin(), channels.end(), [&](const auto& channel) { return channel.role == role; }));
-    };
-    const auto places = grid_of(grid, count(ChannelRole::reference) > 0, count(ChannelRole::ripple));
+std::vector<AtRates> at_rates(const std::vector<DetectorSettings>& places, std::span<const TuningRecording> recordings,
+                              Hertz rate) {
     std::vector<DetectorSettings> candidates;
     for (const auto& place : places) {
         for (std::size_t i = 0; i < training_ladder.count; ++i) {
@@ -227,29 +231,76 @@ TextbookChoice choose_textbook(const std::vector<ProofRecording>& training, Grid
         }
     }
     SweepPlan plan;
-    plan.rate = training.front().rate;
+    plan.rate = rate;
     plan.block_s = all_of_it_s;
     plan.threads = processors();
-    const auto recordings = for_tuning(training);
     const auto results = sweep(recordings, candidates, plan);
-    const auto figures = [&](std::size_t place, double limit) {
-        return at_rate(std::span(results).subspan(place * training_ladder.count, training_ladder.count), limit);
+    std::vector<AtRates> all(places.size());
+    for (std::size_t place = 0; place < places.size(); ++place) {
+        for (std::size_t k = 0; k < all[place].size(); ++k) {
+            all[place][k] = at_rate(std::span(results).subspan(place * training_ladder.count, training_ladder.count),
+                                    asked_false_per_minute[k]);
+        }
+    }
+    return all;
+}
+
+// Those with the most hits at each false rate, and the quickest within `points` of the most at 1 a minute.
+std::vector<DetectorSettings> most_promising(const std::vector<DetectorSettings>& places,
+                                             const std::vector<AtRates>& figures, std::size_t each, double points) {
+    std::vector<std::size_t> order(places.size());
+    std::iota(order.begin(), order.end(), std::size_t{0});
+    std::set<std::size_t> kept;
+    const auto keep = [&] {
+        kept.insert(order.begin(), order.begin() + static_cast<std::ptrdiff_t>(std::min(each, order.size())));
     };
-    TextbookChoice choice;
-    choice.tried = places.size();
     for (std::size_t k = 0; k < asked_false_per_minute.size(); ++k) {
-        for (std::size_t place = 0; place < places.size(); ++place) {
-            const auto at = figures(place, asked_false_per_minute[k]);
-            if (place == 0 || at.found > choice.best[k].found) {
-                choice.best[k] = {places[place], at.found, at.latency_ms};
+        std::stable_sort(order.begin(), order.end(),
+                         [&](auto a, auto b) { return figures[a][k].found > figures[b][k].found; });
+        keep();
+        if (k == at_one) {
+            const double most = figures[order.front()][k].found;
+            const auto good = std::stable_partition(order.begin(), order.end(),
+                                                    [&](auto i) { return figures[i][k].found >= most - points; });
+            std::stable_sort(order.begin(), good,
+                             [&](auto a, auto b) { return figures[a][k].latency_ms < figures[b][k].latency_ms; });
+            keep();
+        }
+    }
+    std::vector<DetectorSettings> chosen;
+    std::transform(kept.begin(), kept.end(), std::back_inserter(chosen), [&](auto i) { return places[i]; });
+    return chosen;
+}
+
+} // namespace
+
+// Every setting on the first recording, the most promising ones on all of them.
+TextbookChoice choose_textbook(const std::vector<ProofRecording>& training, Grid grid) {
+    const auto& channels = training.front().channels;
+    const auto count = [&](ChannelRole role) {
+        return static_cast<std::size_t>(
+            std::count_if(channels.begin(), channels.end(), [&](const auto& channel) { return channel.role == role; }));
+    };
+    const auto rate = training.front().rate;
+    const auto recordings = for_tuning(training);
+    const auto all = grid_of(grid, count(ChannelRole::reference) > 0, count(ChannelRole::ripple));
+    const auto places = most_promising(all, at_rates(all, std::span(recordings).first(1), rate), 30, 0.05);
+    const auto figures = at_rates(places, recordings, rate);
+    TextbookChoice choice;
+    choice.tried = all.size();
+    for (std::size_t k = 0; k < asked_false_per_minute.size(); ++k) {
+        choice.best[k].settings = places.front();
+        for (std::size_t i = 0; i < places.size(); ++i) {
+            if (figures[i][k].found > choice.best[k].found) {
+                choice.best[k] = {places[i], figures[i][k].found, figures[i][k].latency_ms};
             }
         }
     }
-    choice.quick = choice.best[1];
-    for (std::size_t place = 0; place < places.size(); ++place) {
-        const auto at = figures(place, 1.0);
-        if (at.found >= choice.best[1].found - 0.03 && at.latency_ms < choice.quick.latency_ms) {
-            choice.quick = {places[place], at.found, at.latency_ms};
+    choice.quick = choice.best[at_one];
+    for (std::size_t i = 0; i < places.size(); ++i) {
+        const auto& at = figures[i][at_one];
+        if (at.found >= choice.best[at_one].found - 0.03 && at.latency_ms < choice.quick.latency_ms) {
+            choice.quick = {places[i], at.found, at.latency_ms};
         }
     }
     return choice;

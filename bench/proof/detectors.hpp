@@ -51,6 +51,9 @@ struct TextbookChoice {
 /// The best of a few smoothings on `training` at 1 a minute.
 [[nodiscard]] DetectorSettings choose_two_bands(const std::vector<ProofRecording>& training);
 
+/// Method evidence as it comes, nothing learned.
+[[nodiscard]] DetectorSettings unlearned();
+
 /// Learned from recordings, all of them for training; asked for 1 false a minute.
 [[nodiscard]] Learned learn_ours(const std::vector<ProofRecording>& training,
                                  const std::vector<FeatureSettings>& features);

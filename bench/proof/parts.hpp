@@ -25,6 +25,9 @@ void prove_by_scipy(Report& report, const ProofSize& size);
 /// By this computer's clock.
 [[nodiscard]] double now_s();
 
+/// At each of asked_false_per_minute the setting chosen for it, and the quick one at 1.
+void textbook_rows(Report& report, const TextbookChoice& textbook, const std::vector<ProofRecording>& test);
+
 /// A threshold that a user gets by asking for a false rate: one row for each of asked_false_per_minute.
 void asked_and_got(Report& report, const std::string& name, DetectorSettings settings,
                    const std::vector<ProofRecording>& test);

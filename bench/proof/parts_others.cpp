@@ -12,12 +12,6 @@ namespace {
 constexpr double floor_reaches = 0.87; // of the ripples put in
 constexpr std::array<double, 6> floor_rates{10.0, 3.0, 1.0, 0.5, 0.3, 0.1};
 
-DetectorSettings defaults() {
-    DetectorSettings settings;
-    settings.method = DetectionMethod::evidence;
-    return settings;
-}
-
 // Both halves of the background, each judged by what was learned on the other; thresholds are in deviations, so that
 // one ladder serves both.
 Curve of_both_halves(const Outside& outside, const ProofSize& size, std::size_t repeats, double scale,
@@ -79,21 +73,15 @@ void prove_outside(Report& report, const std::string& recording, const ProofSize
                "in steps of about one a time through it");
     report.head();
     const auto textbook = choose_textbook(training, size.grid);
-    for (std::size_t k = 0; k < asked_false_per_minute.size(); ++k) {
-        const auto curve = textbook_curve(textbook.best[k].settings, test);
-        report.row("textbook", asked_false_per_minute[k], curve);
-        if (asked_false_per_minute[k] == 1.0) {
-            report.keep("textbook", curve);
-        }
-    }
+    textbook_rows(report, textbook, test);
     report.rows("two bands", evidence_curve(choose_two_bands(training), test));
     Learned learned;
     report.rows("ours", of_both_halves(outside, size, repeats, scale, learned));
-    report.rows("ours, defaults", evidence_curve(defaults(), test));
-    asked_and_got(report, "ours, defaults", defaults(), test);
+    report.rows("ours, defaults", evidence_curve(unlearned(), test));
+    asked_and_got(report, "ours, defaults", unlearned(), test);
     report.rows("floor", outside_floor(outside, test, floor_rates));
     report.say(fmt::format("textbook at 1.0: {}", textbook.best[1].name()));
-    say_untouched(report, outside, "ours, defaults, asked for 1 a minute", defaults());
+    say_untouched(report, outside, "ours, defaults, asked for 1 a minute", unlearned());
     say_untouched(report, outside, "ours, learned on its first half, asked for 1 a minute", learned.detector);
     say_untouched(report, outside, "textbook, default settings", DetectorSettings{});
     report.say(fmt::format("all {:.0f} s", now_s() - began));
@@ -102,7 +90,7 @@ void prove_outside(Report& report, const std::string& recording, const ProofSize
 void prove_cost(Report& report, const ProofSize& size) {
     DetectorSettings textbook;
     textbook.filter.order = 2;
-    auto ours = defaults();
+    auto ours = unlearned();
     ours.evidence.features = usual_features(learned_mix);
     ours.evidence.mixes = {{std::string(learned_mix), {}, {}}};
     const double share = size.grid == Grid::full ? 1.0 : 0.2;

@@ -17,17 +17,6 @@ std::size_t ripples_in(const std::vector<ProofRecording>& recordings) {
     return count;
 }
 
-void textbook_rows(Report& report, const TextbookChoice& textbook, const std::vector<ProofRecording>& test) {
-    for (std::size_t k = 0; k < asked_false_per_minute.size(); ++k) {
-        const auto curve = textbook_curve(textbook.best[k].settings, test);
-        report.row("textbook", asked_false_per_minute[k], curve);
-        if (asked_false_per_minute[k] == 1.0) {
-            report.keep("textbook", curve);
-        }
-    }
-    report.row("textbook, quick", 1.0, textbook_curve(textbook.quick.settings, test));
-}
-
 void say_settings(Report& report, const TextbookChoice& textbook, const DetectorSettings& ours) {
     for (std::size_t k = 0; k < asked_false_per_minute.size(); ++k) {
         report.say(fmt::format("textbook at {:.1f}: {}", asked_false_per_minute[k], textbook.best[k].name()));
@@ -39,13 +28,18 @@ void say_settings(Report& report, const TextbookChoice& textbook, const Detector
     }
 }
 
-DetectorSettings defaults() {
-    DetectorSettings settings;
-    settings.method = DetectionMethod::evidence;
-    return settings;
-}
-
 } // namespace
+
+void textbook_rows(Report& report, const TextbookChoice& textbook, const std::vector<ProofRecording>& test) {
+    for (std::size_t k = 0; k < asked_false_per_minute.size(); ++k) {
+        const auto curve = textbook_curve(textbook.best[k].settings, test);
+        report.row("textbook", asked_false_per_minute[k], curve);
+        if (asked_false_per_minute[k] == 1.0) {
+            report.keep("textbook", curve);
+        }
+    }
+    report.row("textbook, quick", 1.0, textbook_curve(textbook.quick.settings, test));
+}
 
 double now_s() {
     return static_cast<double>(monotonic_now().count()) / 1e9;
@@ -81,8 +75,8 @@ void prove_scene(Report& report, SceneName scene, const ProofSize& size) {
     report.rows("two bands", evidence_curve(choose_two_bands(training), test));
     report.rows("ours", evidence_curve(ours.detector, test));
     asked_and_got(report, "ours", ours.detector, test);
-    report.rows("ours, defaults", evidence_curve(defaults(), test));
-    asked_and_got(report, "ours, defaults", defaults(), test);
+    report.rows("ours, defaults", evidence_curve(unlearned(), test));
+    asked_and_got(report, "ours, defaults", unlearned(), test);
     report.rows("floor", clairvoyant_floor(test, floor_rates));
     say_settings(report, textbook, ours.detector);
     report.say(fmt::format("{} textbook settings in {:.0f} s, learning {:.0f} s, all {:.0f} s", textbook.tried,
