@@ -96,6 +96,16 @@ bool all_known(std::span<const std::optional<SweepResult>> results) {
     return std::all_of(results.begin(), results.end(), [](const auto& each) { return each.has_value(); });
 }
 
+// A file that holds nothing yet would only stand in the way of the next try.
+void remove_empty_work(const TuneOptions& options, SweepPart part, const WorkFile& work) {
+    const auto empty = [](const SweepResults& results) {
+        return std::none_of(results.begin(), results.end(), [](const auto& each) { return each.has_value(); });
+    };
+    if (empty(work.swept())) {
+        std::filesystem::remove(options.part.empty() ? work_path(options.out) : work_path(options.out, part));
+    }
+}
+
 SweepResults sweep_part(const TunePlan& plan, WorkFile& work, SweepPart part) {
     const auto first = part.first(plan.identity.candidates), last = part.last(plan.identity.candidates);
     const auto from = static_cast<std::ptrdiff_t>(first), to = static_cast<std::ptrdiff_t>(last);
@@ -114,6 +124,15 @@ SweepResults sweep_part(const TunePlan& plan, WorkFile& work, SweepPart part) {
         end_stopped(results, results.size(), "are swept");
     }
     return results;
+}
+
+SweepResults sweep_or_clean(const TuneOptions& options, const TunePlan& plan, WorkFile& work, SweepPart part) {
+    try {
+        return sweep_part(plan, work, part);
+    } catch (const Refusal&) {
+        remove_empty_work(options, part, work);
+        throw;
+    }
 }
 
 // The whole engine over the finalists, and over the next ones of the ranking as long as none can be picked.
@@ -193,7 +212,7 @@ void finish_learning(const TuneOptions& options, const TunePlan& plan) {
 void run_part(const TuneOptions& options, const TunePlan& plan) {
     const auto part = part_of(options.part);
     auto work = open_work(options, plan.identity, part);
-    static_cast<void>(sweep_part(plan, work, part));
+    static_cast<void>(sweep_or_clean(options, plan, work, part));
     fmt::print(
         "part {} of {}: {} of {} settings in {}\nonce all parts are there: the same command with --merge instead "
         "of --part\n",
@@ -215,7 +234,7 @@ void run_command(const TuneOptions& options) {
         finish(options, plan, merge_parts(options.out, plan.identity), nullptr);
     } else {
         auto work = open_work(options, plan.identity, {});
-        finish(options, plan, sweep_part(plan, work, {}), &work);
+        finish(options, plan, sweep_or_clean(options, plan, work, {}), &work);
         std::filesystem::remove(work_path(options.out));
     }
 }

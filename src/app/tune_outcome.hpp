@@ -12,7 +12,7 @@
 namespace millpond {
 
 /// Settings run again by the whole engine at first, and as many again for each round in which none of them is picked.
-inline constexpr std::size_t finalist_count = 12;
+inline constexpr std::size_t finalist_count = 10;
 
 struct TuneOutcome {
     std::vector<SweepResult> swept;           ///< of every candidate

@@ -56,8 +56,16 @@ TuneGrid listed(const TuneOptions& options, const std::vector<std::string>& keys
     return TuneGrid::from_text(YAML::Dump(root), "command line");
 }
 
-TuneGrid grid_of(const TuneOptions& options) {
+// Without a grid of its own each method has what is worth trying of it.
+TuneGrid grid_of(const TuneOptions& options, const DetectorSettings& base) {
+    const bool evidence = base.method == DetectionMethod::evidence;
     if (options.grid.empty()) {
+        if (evidence && options.given_lists.empty()) {
+            return TuneGrid::from_text(
+                "detector: {evidence: {false_per_minute: [0.1, 0.2, 0.3, 0.5, 0.7, 1, 1.5, 2, 3, "
+                "5, 10]}, floor: {time_constant_s: [10, 20, 60]}}",
+                "defaults");
+        }
         std::vector<std::string> keys;
         for (const auto& list : options.lists) {
             keys.push_back(list.first);
@@ -147,7 +155,7 @@ SweepPart part_of(const std::string& text) {
 TunePlan make_tune_plan(const TuneOptions& options) {
     TunePlan plan;
     plan.base = options.base.empty() ? Settings{} : load_settings(options.base);
-    plan.candidates = candidates_of(grid_of(options), plan.base.detector);
+    plan.candidates = candidates_of(grid_of(options, plan.base.detector), plan.base.detector);
     if (plan.candidates.settings.empty()) {
         throw Refusal("grid", "no combination with low_hz below high_hz and the re-arm level at most the threshold",
                       "one or more");

@@ -138,16 +138,15 @@ std::string front_summary(const TuneCandidates& candidates, const TuneOutcome& o
 std::string pick_sentence(const TuneCandidates& candidates, const TuneOutcome& outcome, double max_false_per_minute) {
     const auto& picked = *outcome.confirmed_of(*outcome.picked);
     const auto ranked = ranking(outcome.confirmed, max_false_per_minute);
-    auto sentence = fmt::format(
-        "picked {}, because of the {} confirmed settings at {} false per minute or fewer on the training parts it "
-        "finds "
-        "{} of the ripples there ({:.1f} % at {:.2f} false per minute, {:.1f} ms after their onset)",
-        named(candidates, *outcome.picked), ranked.size(), max_false_per_minute,
-        outcome.passed_over == 0 ? "most" : fmt::format("most but for {}", outcome.passed_over),
-        100.0 * picked.training.hit_rate().share, picked.training.false_per_minute, picked.training.latency_median_ms);
+    auto sentence = fmt::format("picked {}, because of the {} confirmed settings at {} false per minute or fewer on "
+                                "the training parts it finds "
+                                "most ripples there ({:.1f} % at {:.2f} false per minute, {:.1f} ms after their onset)",
+                                named(candidates, *outcome.picked), ranked.size(), max_false_per_minute,
+                                100.0 * picked.training.hit_rate().share, picked.training.false_per_minute,
+                                picked.training.latency_median_ms);
     if (outcome.passed_over > 0) {
-        sentence += fmt::format(", {} above the limit on the held-out parts",
-                                outcome.passed_over == 1 ? "which is" : "which are");
+        sentence += fmt::format(" once {} ranked before it {} left out, above the limit on the held-out parts",
+                                outcome.passed_over, outcome.passed_over == 1 ? "is" : "are");
     }
     if (ranked.size() > outcome.passed_over + 1) {
         const auto& next = outcome.confirmed[ranked[outcome.passed_over + 1]].training;

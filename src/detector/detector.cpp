@@ -59,6 +59,10 @@ std::size_t Detector::envelope_stride() const noexcept {
     return state_->lanes.lanes;
 }
 
+std::size_t Detector::floor_column(std::size_t i) const noexcept {
+    return state_->first_floor() + i;
+}
+
 std::size_t Detector::feature_count() const noexcept {
     return state_->features.size();
 }

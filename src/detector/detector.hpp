@@ -109,11 +109,13 @@ class Detector {
     [[nodiscard]] KernelWidth width() const noexcept;
 
     /// The dear half of `run` alone, for sweeps over thresholds: envelopes of all frames of a block, envelope_stride()
-    /// values a frame in the order of the floors, the rest of the stride without meaning. No floor, no threshold, no
+    /// values a frame, that of floor `i` at floor_column(i). No floor, no threshold, no
     /// blanking; the same bits that `run` compares where nothing blanked it. Gaps are announced as for `run`. A
     /// detector does one or the other. Thread: one, cold.
     void envelopes(const FrameBlock& block, std::span<double> out) noexcept;
     [[nodiscard]] std::size_t envelope_stride() const noexcept;
+    /// Where the envelope of floor `i` stands among them.
+    [[nodiscard]] std::size_t floor_column(std::size_t i) const noexcept;
     /// Features of the evidence that have something to look at; the first ones of that stride. 0 with method envelope.
     [[nodiscard]] std::size_t feature_count() const noexcept;
 

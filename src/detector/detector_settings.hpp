@@ -147,7 +147,7 @@ inline constexpr Choice<DetectionMethod> detection_methods[] = {{DetectionMethod
 // 15 min (typical scene, four sites and a reference, seeds 101 to 103): 96 % of the ripples found at 0.4 false per
 // minute.
 struct DetectorSettings {
-    DetectionMethod method = DetectionMethod::envelope;
+    DetectionMethod method = DetectionMethod::evidence;
     FilterSettings filter;
     EnvelopeSettings envelope;
     FloorSettings floor;

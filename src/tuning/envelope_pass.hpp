@@ -1,4 +1,5 @@
-// The pass of the envelope detector: band-pass and envelope of every looked-at channel, and of their mean. Thread: one.
+// The pass of both methods. Envelope: band-pass and envelope of every looked-at channel, and of their mean. Evidence:
+// envelopes of its features, and their weighted sum, whose course does not depend on the threshold either. Thread: one.
 #pragma once
 
 #include "base/channels.hpp"
@@ -26,8 +27,16 @@ class EnvelopePass : public StatisticPass {
 
     /// True where both give the same statistics: one pass serves both.
     [[nodiscard]] static bool shared_by(const DetectorSettings& a, const DetectorSettings& b) noexcept {
-        return a.filter == b.filter && a.envelope == b.envelope && a.vote.rule == b.vote.rule;
+        auto evidence = a.evidence; // all of it but what only sets the threshold
+        evidence.false_per_minute = b.evidence.false_per_minute;
+        evidence.calibration = b.evidence.calibration;
+        return a.method == b.method && a.filter == b.filter && a.envelope == b.envelope && a.vote.rule == b.vote.rule &&
+               evidence == b.evidence;
     }
+
+    /// Where the statistic of floor `i` stands among a frame's values.
+    [[nodiscard]] std::size_t floor_column(std::size_t i) const noexcept { return detector_.floor_column(i); }
+    [[nodiscard]] std::size_t floor_count() const noexcept { return detector_.floor_count(); }
 
   private:
     Detector detector_;

@@ -1,7 +1,8 @@
-// The rule of the envelope detector for many settings at once: their floors, thresholds, votes, vetoes. Thread: one.
+// The rule of both methods for many settings at once: their floors, thresholds, votes, vetoes. Thread: one.
 #pragma once
 
 #include "base/channels.hpp"
+#include "tuning/envelope_pass.hpp"
 #include "tuning/floor_batch.hpp"
 
 namespace millpond {
@@ -10,7 +11,7 @@ class FloorBank : public CrossingRule {
   public:
     /// Settings whose passes are shared (EnvelopePass::shared_by).
     FloorBank(std::span<const DetectorSettings> settings, const Channels& channels, Hertz rate,
-              const StatisticPass& pass);
+              const EnvelopePass& pass);
 
     void gap(SampleIndex resumes_at) noexcept override;
     void take(SampleIndex first, std::span<const double> statistics, std::size_t values) override;
@@ -22,7 +23,8 @@ class FloorBank : public CrossingRule {
         FloorBatch floors;
     };
     std::vector<Batch> batches_;
-    std::vector<double> highest_; // EnvelopeBlock::highest
+    std::vector<std::size_t> columns_;                 // of the pass that are compared: voting ones, then references
+    std::vector<double> envelopes_, highest_, lowest_; // as in EnvelopeBlock
     std::size_t settings_ = 0;
 };
 

@@ -11,10 +11,10 @@ constexpr std::int64_t yes = -1, no = 0;
 constexpr std::int64_t never = -1;
 constexpr double beyond_all = 1e6; // spreads; for lanes without a setting
 
-std::vector<ColumnFloor> floors_of(const std::vector<std::size_t>& columns) {
-    std::vector<ColumnFloor> floors(columns.size());
-    for (std::size_t i = 0; i < columns.size(); ++i) {
-        floors[i].column = columns[i];
+std::vector<ColumnFloor> floors_of(std::size_t count, std::size_t first) {
+    std::vector<ColumnFloor> floors(count);
+    for (std::size_t i = 0; i < count; ++i) {
+        floors[i].column = first + i;
     }
     return floors;
 }
@@ -28,13 +28,15 @@ std::uint64_t FloorBatch::start_frames(const DetectorSettings& settings, Hertz r
 
 FloorBatch::FloorBatch(std::span<const DetectorSettings> settings, const EnvelopeColumns& columns, Hertz rate,
                        std::uint64_t filter_settle_frames)
-    : start_(FloorStart::make(columns.all, start_frames(settings.front(), rate))), settings_(settings.size()),
-      found_(settings.size()), filter_settle_(filter_settle_frames), second_(frames_in_ms(1000.0, rate)) {
-    state_.voting = floors_of(columns.voting);
-    state_.references = floors_of(columns.references);
+    : start_(FloorStart::make(columns.voting + columns.references, start_frames(settings.front(), rate))),
+      settings_(settings.size()), found_(settings.size()), filter_settle_(filter_settle_frames),
+      second_(frames_in_ms(1000.0, rate)) {
+    state_.voting = floors_of(columns.voting, 0);
+    state_.references = floors_of(columns.references, columns.voting);
     state_.needed.values.fill(INT64_MAX); // lanes without a setting never cross
     state_.newest_reference.values.fill(never);
     state_.clip.values.fill(beyond_all);
+    state_.clips_below = settings.front().method == DetectionMethod::evidence;
     for (auto* floors : {&state_.voting, &state_.references}) {
         for (auto& column : *floors) {
             column.waited_for.values.fill(beyond_all);

@@ -44,16 +44,18 @@ struct BatchState {
     BatchOf<std::int64_t> newest_reference;
     BatchOf<std::int64_t> votes, rearm_votes; ///< of the last frame worked through
     bool warming = true;                      ///< weights still change from frame to frame
+    bool clips_below = false;                 ///< evidence can fall as far as it can rise
     bool any_counting = false, any_spent = false;
 };
 
 /// Frames that are tried at once; `EnvelopeBlock::highest` has one row for each.
 inline constexpr std::size_t stride_frames = 8;
 
-/// A block of envelopes, `values` numbers a frame, and the highest of each number over every whole stride.
+/// A block of envelopes, `values` numbers a frame, and the highest and lowest of each number over every stride.
 struct EnvelopeBlock {
     const double* envelopes = nullptr;
     const double* highest = nullptr;
+    const double* lowest = nullptr;
     std::size_t values = 0, frames = 0;
 };
 
@@ -63,10 +65,9 @@ struct EnvelopeBlock {
 std::size_t walk_batch(BatchState& state, const EnvelopeBlock& block, std::size_t from, std::size_t to,
                        std::uint64_t place, bool& due) noexcept;
 
-/// Where each setting's numbers stand in a frame of envelopes.
+/// Numbers in a frame of envelopes: first those that vote, then those of references.
 struct EnvelopeColumns {
-    std::vector<std::size_t> voting, references;
-    std::size_t all = 0;
+    std::size_t voting = 0, references = 0;
 };
 
 class FloorBatch {

@@ -37,19 +37,24 @@ template <class Doubles, class Words>
 }
 template <class Doubles, class Words>
 [[gnu::always_inline]] inline void take_in(Doubles& mean, Doubles& spread, const Doubles& envelope, const Doubles& clip,
-                                           const Doubles& weight) {
+                                           bool clips_below, const Doubles& weight) {
     const Doubles ceiling = mean + clip * spread;
-    average<Doubles, Words>(mean, spread, envelope < ceiling ? envelope : ceiling, weight);
+    Doubles taken = envelope < ceiling ? envelope : ceiling;
+    if (clips_below) {
+        const Doubles bottom = mean - clip * spread;
+        taken = taken > bottom ? taken : bottom;
+    }
+    average<Doubles, Words>(mean, spread, taken, weight);
 }
 
 // And its comparison, for one column and settings `i` of the batch.
 template <class Doubles, class Words>
 [[gnu::always_inline]] inline Words above_floor(ColumnFloor& floor, std::size_t i, double value, const Doubles& clip,
-                                                const Doubles& weight, Words& rearm) {
+                                                bool clips_below, const Doubles& weight, Words& rearm) {
     const Doubles envelope = value - Doubles{};
     Doubles& mean = at<Doubles>(floor.mean, i);
     Doubles& spread = at<Doubles>(floor.spread, i);
-    take_in<Doubles, Words>(mean, spread, envelope, clip, weight);
+    take_in<Doubles, Words>(mean, spread, envelope, clip, clips_below, weight);
     rearm = envelope > mean + at<Doubles>(floor.rearm, i) * spread;
     return envelope > mean + at<Doubles>(floor.above, i) * spread;
 }
@@ -70,11 +75,13 @@ template <class Doubles, class Words>
     const Doubles clip = at<Doubles>(state.clip, i), weight = at<Doubles>(state.weight, i);
     Words votes{}, rearm_votes{}, rearm{};
     for (auto& column : state.voting) {
-        votes -= above_floor<Doubles, Words>(column, i, envelopes[column.column], clip, weight, rearm);
+        votes -=
+            above_floor<Doubles, Words>(column, i, envelopes[column.column], clip, state.clips_below, weight, rearm);
         rearm_votes -= rearm;
     }
     for (auto& column : state.references) {
-        const Words above = above_floor<Doubles, Words>(column, i, envelopes[column.column], clip, weight, rearm);
+        const Words above =
+            above_floor<Doubles, Words>(column, i, envelopes[column.column], clip, state.clips_below, weight, rearm);
         Words& newest = at<Words>(state.newest_reference, i);
         newest = above != 0 ? place - Words{} : newest;
     }
@@ -99,8 +106,8 @@ constexpr std::size_t turns = 2;
 // for.
 template <class Doubles, class Words>
 [[gnu::always_inline]] inline void try_column(ColumnFloor& column, std::size_t i, const double* envelopes,
-                                              std::size_t values, const Doubles* clip, const Doubles* weight,
-                                              Words (*above)[turns]) {
+                                              std::size_t values, const Doubles* clip, bool clips_below,
+                                              const Doubles* weight, Words (*above)[turns]) {
     Doubles mean[turns], spread[turns], waited_for[turns];
     for (std::size_t turn = 0; turn < turns; ++turn) {
         mean[turn] = at<Doubles>(column.mean, i + turn);
@@ -110,7 +117,7 @@ template <class Doubles, class Words>
     for (std::size_t f = 0; f < stride_frames; ++f) {
         const Doubles envelope = envelopes[f * values + column.column] - Doubles{};
         for (std::size_t turn = 0; turn < turns; ++turn) {
-            take_in<Doubles, Words>(mean[turn], spread[turn], envelope, clip[turn], weight[turn]);
+            take_in<Doubles, Words>(mean[turn], spread[turn], envelope, clip[turn], clips_below, weight[turn]);
             above[f][turn] += envelope > mean[turn] + waited_for[turn] * spread[turn];
         }
     }
@@ -130,10 +137,10 @@ template <class Doubles, class Words>
     }
     Words votes[stride_frames][turns] = {}, references[stride_frames][turns] = {}, due = {};
     for (auto& column : state.voting) {
-        try_column<Doubles, Words>(column, i, envelopes, values, clip, weight, votes);
+        try_column<Doubles, Words>(column, i, envelopes, values, clip, state.clips_below, weight, votes);
     }
     for (auto& column : state.references) {
-        try_column<Doubles, Words>(column, i, envelopes, values, clip, weight, references);
+        try_column<Doubles, Words>(column, i, envelopes, values, clip, state.clips_below, weight, references);
     }
     for (std::size_t turn = 0; turn < turns; ++turn) {
         const Words missing = -at<Words>(state.needed, i + turn), spent = at<Words>(state.spent, i + turn);
@@ -144,16 +151,24 @@ template <class Doubles, class Words>
     return due;
 }
 
-// True where all envelopes of the column lie below what they are clipped at and what is waited for, whatever the floor
-// does meanwhile: in a frame mean and spread lose at most their share `weight`, in a stride less than 8 of them; the
-// other 8 are far more than rounding needs.
+// True where all envelopes of the column lie within what they are clipped at and below what is waited for, whatever the
+// floor does meanwhile: in a frame the mean moves by at most `weight` of its distance from the furthest envelope, the
+// spread falls by at most `weight` of itself, so in a stride by less than 8 of those; the other 8 are far more than
+// rounding needs.
 template <class Doubles, class Words>
-[[gnu::always_inline]] inline bool below(const ColumnFloor& column, const BatchState& state, double highest) {
+[[gnu::always_inline]] inline bool quiet(const ColumnFloor& column, const BatchState& state, double highest,
+                                         double lowest) {
+    const double furthest = (highest > 0.0 ? highest : 0.0) - (lowest < 0.0 ? lowest : 0.0);
     Words beyond{};
     for (std::size_t i = 0; i < batch_width * sizeof(double) / sizeof(Doubles); ++i) {
-        const Doubles level =
-            at<Doubles>(column.mean, i) + at<Doubles>(column.quiet, i) * at<Doubles>(column.spread, i);
-        beyond |= ~(highest <= level * (1.0 - 16.0 * at<Doubles>(state.weight, i)));
+        const Doubles mean = at<Doubles>(column.mean, i), spread = at<Doubles>(column.spread, i);
+        const Doubles over = at<Doubles>(column.quiet, i) * spread, under = at<Doubles>(state.clip, i) * spread;
+        const Doubles size = reinterpret_cast<Doubles>(reinterpret_cast<Words>(mean) & (INT64_MAX - Words{}));
+        const Doubles margin = 16.0 * at<Doubles>(state.weight, i) * (size + furthest + under);
+        beyond |= ~(highest <= mean + over - margin);
+        if (state.clips_below) {
+            beyond |= ~(lowest >= mean - under + margin);
+        }
     }
     return !any_of(beyond, sizeof(Doubles) / sizeof(double));
 }
@@ -182,24 +197,26 @@ template <class Doubles, class Words>
     }
 }
 
-template <class Vectors> [[gnu::always_inline]] inline bool all_below(const BatchState& state, const double* highest) {
-    bool quiet = !state.any_spent;
+template <class Vectors>
+[[gnu::always_inline]] inline bool all_quiet(const BatchState& state, const double* highest, const double* lowest) {
+    bool all = !state.any_spent;
     for (const auto* columns : {&state.voting, &state.references}) {
         for (const auto& column : *columns) {
-            quiet = quiet &&
-                    below<typename Vectors::Doubles, typename Vectors::Words>(column, state, highest[column.column]);
+            all = all && quiet<typename Vectors::Doubles, typename Vectors::Words>(
+                             column, state, highest[column.column], lowest[column.column]);
         }
     }
-    return quiet;
+    return all;
 }
 
 // True where a whole stride went by with nothing to decide and no reference above: the floors have moved on.
 template <class Vectors>
-[[gnu::always_inline]] inline bool quiet_stride(BatchState& state, const double* envelopes, const double* highest,
-                                                std::size_t values) {
+[[gnu::always_inline]] inline bool quiet_stride(BatchState& state, const EnvelopeBlock& block, std::size_t stride) {
     using Doubles = typename Vectors::Doubles;
     using Words = typename Vectors::Words;
-    if (all_below<Vectors>(state, highest)) {
+    const std::size_t values = block.values;
+    const double* envelopes = block.envelopes + stride * stride_frames * values;
+    if (all_quiet<Vectors>(state, block.highest + stride * values, block.lowest + stride * values)) {
         for (auto* columns : {&state.voting, &state.references}) {
             for (auto& column : *columns) {
                 average_only<Doubles, Words>(column, state, envelopes, values);
@@ -243,10 +260,9 @@ template <class Vectors>
     const bool strides = !state.warming && !state.any_counting;
     due = false;
     for (std::size_t frame = from; frame < to && !due;) {
-        const double* envelopes = block.envelopes + frame * block.values;
         const std::size_t stride = frame / stride_frames;
         const bool whole = strides && frame % stride_frames == 0 && frame + stride_frames <= to;
-        if (whole && quiet_stride<Vectors>(state, envelopes, block.highest + stride * block.values, block.values)) {
+        if (whole && quiet_stride<Vectors>(state, block, stride)) {
             frame += stride_frames;
             continue;
         }

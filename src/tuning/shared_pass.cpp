@@ -13,7 +13,7 @@ namespace {
 // Frames that are worked on at a time: their statistics stay in the processor's cache.
 constexpr std::size_t frames_at_a_time = 1024;
 
-// The pair of pass and rule that the settings' kind of detector needs.
+// The pair of pass and rule for the settings' method; both methods have the same, one with other statistics.
 struct Kind {
     std::unique_ptr<StatisticPass> pass;
     std::unique_ptr<CrossingRule> rule;
@@ -21,11 +21,12 @@ struct Kind {
 
 Kind kind_for(std::span<const DetectorSettings> settings, const Channels& channels, Hertz rate) {
     Kind kind;
-    kind.pass = std::make_unique<EnvelopePass>(settings.front(), channels, rate);
+    auto pass = std::make_unique<EnvelopePass>(settings.front(), channels, rate);
     for (const auto& each : settings.subspan(1)) {
         check_detector(each, channels);
     }
-    kind.rule = std::make_unique<FloorBank>(settings, channels, rate, *kind.pass);
+    kind.rule = std::make_unique<FloorBank>(settings, channels, rate, *pass);
+    kind.pass = std::move(pass);
     return kind;
 }
 

@@ -48,6 +48,19 @@ std::vector<Places> jobs_for(std::span<const DetectorSettings> candidates, const
     return jobs;
 }
 
+// A sweep may take hours: what is wrong with its last setting is said before the first one is run.
+void refuse_early(std::span<const TuningRecording> recordings, std::span<const DetectorSettings> candidates,
+                  const std::vector<Places>& jobs, const SweepPlan& plan) {
+    for (const auto& recording : recordings) {
+        for (const auto& job : jobs) {
+            static_cast<void>(Detector::make(candidates[job.front()], recording.channels, plan.rate));
+            for (const auto place : job) {
+                check_detector(candidates[place], recording.channels);
+            }
+        }
+    }
+}
+
 std::uint64_t block_frames(const SweepPlan& plan) {
     return frames_in_ms(plan.block_s * 1000.0, plan.rate);
 }
@@ -143,6 +156,7 @@ SweepResults sweep(std::span<const TuningRecording> recordings, std::span<const 
                    const SweepPlan& plan, const SweepWatch& watch, SweepResults known) {
     Collected collected(std::move(known), candidates.size(), watch);
     const auto jobs = jobs_for(candidates, collected.results(), plan.threads);
+    refuse_early(recordings, candidates, jobs, plan);
     std::uint64_t frames = 0;
     for (const auto& recording : recordings) {
         frames += recording.frames();

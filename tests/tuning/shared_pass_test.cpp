@@ -104,6 +104,12 @@ void expect_the_engines_own(const Trial& trial, std::span<const DetectorSettings
 }
 
 // More settings than one batch holds, everything after the envelope different from one to the next.
+DetectorSettings envelope_settings() {
+    DetectorSettings settings;
+    settings.method = DetectionMethod::envelope;
+    return settings;
+}
+
 std::vector<DetectorSettings> many(const DetectorSettings& base, std::size_t count) {
     std::vector<DetectorSettings> settings;
     for (std::size_t i = 0; i < count; ++i) {
@@ -135,12 +141,12 @@ TEST(SharedPass, DetectsWhatTheEngineDetectsForEveryThreshold) {
 
 TEST(SharedPass, DoesSoAcrossGapsVetoesFreezesAndHoldTimes) {
     const auto trial = Trial().with_gaps();
-    expect_the_engines_own(trial, many({}, 40));
-    EXPECT_GT(engine_without_pulses(trial, many({}, 40)[1]).refused_by_detector, 3U);
+    expect_the_engines_own(trial, many(envelope_settings(), 40));
+    EXPECT_GT(engine_without_pulses(trial, many(envelope_settings(), 40)[1]).refused_by_detector, 3U);
 }
 
 TEST(SharedPass, DoesSoForVotesOfSitesAndOtherEnvelopes) {
-    DetectorSettings base;
+    auto base = envelope_settings();
     base.vote.rule = VoteRule::count;
     base.envelope.method = EnvelopeMethod::energy;
     base.filter.family = FilterFamily::fir_minimum_phase;
@@ -151,12 +157,41 @@ TEST(SharedPass, DoesSoForVotesOfSitesAndOtherEnvelopes) {
     expect_the_engines_own(Trial().with_gaps(), many(base, 18));
 }
 
+// Evidence may be below zero, sites may die, and its threshold follows from the false per minute asked for.
+TEST(SharedPass, DoesSoForEvidenceWithASiteThatDies) {
+    DetectorSettings base;
+    base.method = DetectionMethod::evidence;
+    auto settings = many(base, 24);
+    for (std::size_t i = 0; i < settings.size(); ++i) {
+        settings[i].evidence.false_per_minute = 0.05 * std::pow(2.0, static_cast<double>(i % 12));
+    }
+    auto trial = Trial().with_gaps();
+    expect_the_engines_own(trial, settings);
+    for (std::size_t f = 35000; f < trial.frames(); ++f) {
+        trial.data[f * trial.channels.size() + 1] = 7.0F; // flat
+    }
+    expect_the_engines_own(trial, settings);
+}
+
+TEST(SharedPass, DoesSoForEvidenceThatHangsFarBelowZero) {
+    DetectorSettings base;
+    base.method = DetectionMethod::evidence;
+    for (auto& feature : base.evidence.features) {
+        feature.weight = feature.weight > 0.0 ? feature.weight : 4.0 * feature.weight;
+    }
+    auto settings = many(base, 20);
+    for (std::size_t i = 0; i < settings.size(); ++i) {
+        settings[i].evidence.false_per_minute = 10.0 * static_cast<double>(i + 1);
+    }
+    expect_the_engines_own(Trial(), settings);
+}
+
 TEST(SharedPass, DoesSoOnAFlatChannelAndARecordingTooShortToSettle) {
     Trial trial(20.0);
     for (std::size_t f = 15000; f < trial.frames(); ++f) {
         trial.data[f * 5 + 4] = 0.0F; // numbers below the least normal one come up here
     }
-    const auto settings = many({}, 5);
+    const auto settings = many(envelope_settings(), 5);
     const auto pass = pass_over(trial, settings);
     for (std::size_t i = 0; i < settings.size(); ++i) {
         const auto expected = engine_without_pulses(trial, settings[i]);
@@ -168,7 +203,7 @@ TEST(SharedPass, DoesSoOnAFlatChannelAndARecordingTooShortToSettle) {
 }
 
 TEST(SharedPass, RefusesSettingsThatContradictThemselvesWhereverTheyStand) {
-    auto settings = many({}, 3);
+    auto settings = many(envelope_settings(), 3);
     settings[2].threshold.rearm_deviations = settings[2].threshold.deviations + 1.0;
     EXPECT_THROW(static_cast<void>(pass_over(Trial(20.0), settings)), Refusal);
 }
@@ -177,7 +212,7 @@ TEST(SharedPass, EndsEarlyWhenToldTo) {
     const Trial trial(20.0);
     const std::atomic<bool> stop{true};
     std::atomic<std::uint64_t> seen{0};
-    const auto settings = many({}, 2);
+    const auto settings = many(envelope_settings(), 2);
     EXPECT_TRUE(run_shared_pass(settings, trial.channels, rate, trial.data, stop, seen).found.empty());
     EXPECT_EQ(seen, 0U);
 }

@@ -50,6 +50,7 @@ int main() {
             for (const auto& method : envelope_methods) {
                 for (const int order : {2, 3, 5}) {
                     DetectorSettings detector;
+                    detector.method = DetectionMethod::envelope;
                     detector.filter.family = family.value;
                     detector.filter.order = order;
                     detector.filter.transition_hz = 100.0;
