@@ -22,7 +22,7 @@ struct Ladder {
     [[nodiscard]] double at(std::size_t i) const { return first * std::pow(step, static_cast<double>(i)); }
 };
 constexpr Ladder textbook_ladder{1.5, 1.05, 66}; // up to 36: bursts of spikes reach far above the floor
-constexpr Ladder evidence_ladder{2.2, 1.06, 34}; // up to 15
+constexpr Ladder evidence_ladder{2.0, 1.05, 48}; // up to 20
 constexpr Ladder training_ladder{2.5, 1.13, 16}; // up to 16; one batch of the sweep
 
 OfflineEngine ran(const DetectorSettings& settings, const ProofRecording& recording) {
@@ -35,22 +35,12 @@ OfflineEngine ran(const DetectorSettings& settings, const ProofRecording& record
     return engine;
 }
 
-Counts run_engine(const DetectorSettings& settings, const ProofRecording& recording, const Judged& judged = {}) {
-    const auto engine = ran(settings, recording);
-    auto eligible = engine.eligible();
-    if (judged.block_s > 0.0) {
-        const auto block = frames_in_ms(judged.block_s * 1000.0, recording.rate);
-        eligible = intersection(eligible, parts_of(recording.frames(), block).held_out);
+Intervals judged_part(const Intervals& eligible, const ProofRecording& recording, const Judged& judged) {
+    if (judged.block_s == 0.0) {
+        return eligible;
     }
-    return counts_of(recording, detections_to_score(engine.events()), eligible);
-}
-
-Curve empty_curve(const Ladder& ladder, std::size_t recordings) {
-    Curve curve;
-    for (std::size_t i = 0; i < ladder.count; ++i) {
-        curve.push_back({ladder.at(i), std::vector<Counts>(recordings)});
-    }
-    return curve;
+    const auto block = frames_in_ms(judged.block_s * 1000.0, recording.rate);
+    return intersection(eligible, parts_of(recording.frames(), block).held_out);
 }
 
 } // namespace
@@ -71,11 +61,13 @@ std::vector<SampleIndex> detections_of(const DetectorSettings& settings, const P
     return detections_to_score(ran(settings, recording).events());
 }
 
-Curve textbook_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings) {
-    auto curve = empty_curve(textbook_ladder, recordings.size());
+Curve curve_of(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings, const Judged& judged) {
+    const auto& ladder = settings.method == DetectionMethod::evidence ? evidence_ladder : textbook_ladder;
+    Curve curve;
     std::vector<DetectorSettings> all;
-    for (const auto& point : curve) {
-        all.push_back(with_threshold(settings, point.threshold));
+    for (std::size_t i = 0; i < ladder.count; ++i) {
+        curve.push_back({ladder.at(i), std::vector<Counts>(recordings.size())});
+        all.push_back(with_threshold(settings, ladder.at(i)));
     }
     in_parallel(recordings.size(), [&](std::size_t i) {
         const auto& recording = recordings[i];
@@ -83,29 +75,31 @@ Curve textbook_curve(const DetectorSettings& settings, const std::vector<ProofRe
         std::atomic<std::uint64_t> seen{0};
         const auto pass = run_shared_pass(all, recording.channels, recording.rate, recording.data, never, seen);
         for (std::size_t k = 0; k < curve.size(); ++k) {
-            curve[k].by_recording[i] = counts_of(recording, pass.found[k].detections, pass.found[k].eligible);
+            const auto& found = pass.found[k];
+            curve[k].by_recording[i] =
+                counts_of(recording, found.detections, judged_part(found.eligible, recording, judged));
         }
-    });
-    return curve;
-}
-
-Curve evidence_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings,
-                     const Judged& judged) {
-    auto curve = empty_curve(evidence_ladder, recordings.size());
-    in_parallel(curve.size() * recordings.size(), [&](std::size_t job) {
-        auto& point = curve[job / recordings.size()];
-        const std::size_t i = job % recordings.size();
-        point.by_recording[i] = run_engine(with_threshold(settings, point.threshold), recordings[i], judged);
     });
     return curve;
 }
 
 CurvePoint run_as_is(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings) {
     CurvePoint point{0.0, std::vector<Counts>(recordings.size())};
-    in_parallel(recordings.size(), [&](std::size_t i) { point.by_recording[i] = run_engine(settings, recordings[i]); });
+    in_parallel(recordings.size(), [&](std::size_t i) {
+        const auto engine = ran(settings, recordings[i]);
+        point.by_recording[i] = counts_of(recordings[i], detections_to_score(engine.events()), engine.eligible());
+    });
     point.threshold =
         Detector::make(settings, recordings.front().channels, recordings.front().rate).threshold_deviations();
     return point;
+}
+
+DetectorSettings textbook_chain() {
+    DetectorSettings settings;
+    settings.method = DetectionMethod::envelope;
+    settings.evidence.features.clear(); // not looked at, and dear to compare where there are thousands of settings
+    settings.evidence.calibration.clear();
+    return settings;
 }
 
 DetectorSettings two_bands(double factor, double smoothing_ms) {
@@ -119,10 +113,10 @@ DetectorSettings two_bands(double factor, double smoothing_ms) {
 DetectorSettings choose_two_bands(const std::vector<ProofRecording>& training) {
     DetectorSettings best;
     double most = -1.0;
-    for (const double smoothing_ms : {4.0, 8.0, 12.0}) {
+    for (const double smoothing_ms : {4.0, 6.0, 8.0, 10.0, 12.0, 16.0}) {
         const auto settings = two_bands(1.5, smoothing_ms);
         double found = 0.0;
-        for (const auto& point : evidence_curve(settings, training)) {
+        for (const auto& point : curve_of(settings, training)) {
             const auto sum = point.sum();
             found = sum.false_per_minute() <= 1.0 ? std::max(found, sum.hit_rate()) : found;
         }
@@ -165,7 +159,7 @@ std::vector<DetectorSettings> grid_of(Grid grid, bool reference, std::size_t sit
     using Band = std::pair<double, double>;
     const auto bands =
         full ? std::vector<Band>{{130, 250}, {140, 250}, {150, 250}, {150, 220}} : std::vector<Band>{{150, 250}};
-    const auto smoothings = full ? std::vector<double>{2, 4, 6, 8, 10, 12} : std::vector<double>{4, 8};
+    const auto smoothings = full ? std::vector<double>{2, 4, 6, 8, 10, 12, 16} : std::vector<double>{4, 8};
     const auto vetoes = reference ? std::vector<double>{3, 4, 6, no_veto} : std::vector<double>{no_veto};
     auto votes = std::vector<VoteSettings>{{VoteRule::mean, 1}};
     if (sites > 1) {
@@ -179,7 +173,7 @@ std::vector<DetectorSettings> grid_of(Grid grid, bool reference, std::size_t sit
                 for (const double smoothing : smoothings) {
                     for (const auto& vote : votes) {
                         for (const double veto : vetoes) {
-                            DetectorSettings settings;
+                            auto settings = textbook_chain();
                             settings.filter.low_hz = low;
                             settings.filter.high_hz = high;
                             settings.filter.order = order;

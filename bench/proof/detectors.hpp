@@ -38,10 +38,12 @@ struct TextbookChoice {
 /// Bands, orders, rectified or analytic, smoothing, votes, veto or none.
 [[nodiscard]] TextbookChoice choose_textbook(const std::vector<ProofRecording>& training, Grid grid);
 
-/// Over thresholds.
-[[nodiscard]] Curve textbook_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings);
-[[nodiscard]] Curve evidence_curve(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings,
-                                   const Judged& judged = {});
+/// The envelope detector as settings have it, before anything is chosen.
+[[nodiscard]] DetectorSettings textbook_chain();
+
+/// Over thresholds, in the place of its own.
+[[nodiscard]] Curve curve_of(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings,
+                             const Judged& judged = {});
 
 /// As it stands: its own threshold.
 [[nodiscard]] CurvePoint run_as_is(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings);

@@ -21,8 +21,8 @@ Curve of_both_halves(const Outside& outside, const ProofSize& size, std::size_t 
     for (const auto& each : {turned(outside), outside}) {
         learned = learn_ours_in_blocks(injected(each, first_training_seed, size.training_seeds, repeats, scale),
                                        usual_features(sites_mix), half_s);
-        const auto curve = evidence_curve(learned.detector,
-                                          injected(each, first_test_seed, size.test_seeds, repeats, scale), {half_s});
+        const auto curve =
+            curve_of(learned.detector, injected(each, first_test_seed, size.test_seeds, repeats, scale), {half_s});
         if (both.empty()) {
             both = curve;
             continue;
@@ -74,21 +74,21 @@ void prove_outside(Report& report, const std::string& recording, const ProofSize
     report.head();
     const auto textbook = choose_textbook(training, size.grid);
     textbook_rows(report, textbook, test);
-    report.rows("two bands", evidence_curve(choose_two_bands(training), test));
+    report.rows("two bands", curve_of(choose_two_bands(training), test));
     Learned learned;
     report.rows("ours", of_both_halves(outside, size, repeats, scale, learned));
-    report.rows("ours, defaults", evidence_curve(unlearned(), test));
+    report.rows("ours, defaults", curve_of(unlearned(), test));
     asked_and_got(report, "ours, defaults", unlearned(), test);
     report.rows("floor", outside_floor(outside, test, floor_rates));
     report.say(fmt::format("textbook at 1.0: {}", textbook.best[1].name()));
     say_untouched(report, outside, "ours, defaults, asked for 1 a minute", unlearned());
     say_untouched(report, outside, "ours, learned on its first half, asked for 1 a minute", learned.detector);
-    say_untouched(report, outside, "textbook, default settings", DetectorSettings{});
+    say_untouched(report, outside, "textbook, its default settings", textbook_chain());
     report.say(fmt::format("all {:.0f} s", now_s() - began));
 }
 
 void prove_cost(Report& report, const ProofSize& size) {
-    DetectorSettings textbook;
+    auto textbook = textbook_chain();
     textbook.filter.order = 2;
     auto ours = unlearned();
     ours.evidence.features = usual_features(learned_mix);
@@ -112,7 +112,7 @@ void prove_by_scipy(Report& report, const ProofSize& size) {
         "\nthe textbook chain by ours and by bench/scipy_textbook.py, typical scene, same samples, same settings");
     for (const auto rule : {VoteRule::mean, VoteRule::count}) {
         for (const auto method : {EnvelopeMethod::rectify, EnvelopeMethod::analytic}) {
-            DetectorSettings settings;
+            auto settings = textbook_chain();
             settings.filter.order = method == EnvelopeMethod::analytic ? 1 : 2;
             settings.envelope.method = method;
             settings.vote = {rule, rule == VoteRule::count ? 2 : 1};

@@ -32,13 +32,13 @@ void say_settings(Report& report, const TextbookChoice& textbook, const Detector
 
 void textbook_rows(Report& report, const TextbookChoice& textbook, const std::vector<ProofRecording>& test) {
     for (std::size_t k = 0; k < asked_false_per_minute.size(); ++k) {
-        const auto curve = textbook_curve(textbook.best[k].settings, test);
+        const auto curve = curve_of(textbook.best[k].settings, test);
         report.row("textbook", asked_false_per_minute[k], curve);
         if (asked_false_per_minute[k] == 1.0) {
             report.keep("textbook", curve);
         }
     }
-    report.row("textbook, quick", 1.0, textbook_curve(textbook.quick.settings, test));
+    report.row("textbook, quick", 1.0, curve_of(textbook.quick.settings, test));
 }
 
 double now_s() {
@@ -72,10 +72,10 @@ void prove_scene(Report& report, SceneName scene, const ProofSize& size) {
     const double learned = now_s();
     report.head();
     textbook_rows(report, textbook, test);
-    report.rows("two bands", evidence_curve(choose_two_bands(training), test));
-    report.rows("ours", evidence_curve(ours.detector, test));
+    report.rows("two bands", curve_of(choose_two_bands(training), test));
+    report.rows("ours", curve_of(ours.detector, test));
     asked_and_got(report, "ours", ours.detector, test);
-    report.rows("ours, defaults", evidence_curve(unlearned(), test));
+    report.rows("ours, defaults", curve_of(unlearned(), test));
     asked_and_got(report, "ours, defaults", unlearned(), test);
     report.rows("floor", clairvoyant_floor(test, floor_rates));
     say_settings(report, textbook, ours.detector);

@@ -90,6 +90,7 @@ void expect_the_same(const DetectorSettings& settings) {
 TEST(TextbookChain, RectifiedMeanWithVetoCrossesWhereScipyDoes) {
     MILLPOND_NEEDS_SCIPY();
     DetectorSettings settings;
+    settings.method = DetectionMethod::envelope;
     settings.filter.order = 2;
     settings.envelope = {EnvelopeMethod::rectify, 6.0};
     settings.threshold = {3.5, 1.75, 0.0};
@@ -99,6 +100,7 @@ TEST(TextbookChain, RectifiedMeanWithVetoCrossesWhereScipyDoes) {
 TEST(TextbookChain, AnalyticCountOfSitesCrossesWhereScipyDoes) {
     MILLPOND_NEEDS_SCIPY();
     DetectorSettings settings;
+    settings.method = DetectionMethod::envelope;
     settings.filter.low_hz = 140.0;
     settings.envelope = {EnvelopeMethod::analytic, 4.0};
     settings.vote = {VoteRule::count, 2};
