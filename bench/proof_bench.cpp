@@ -5,6 +5,7 @@
 // folder that MILLPOND_RECORDINGS names, where there is one.
 #include "base/clock.hpp"
 #include "base/refusal.hpp"
+#include "proof/clairvoyant.hpp"
 #include "proof/parts.hpp"
 #include "recording/whole_file.hpp"
 
@@ -35,6 +36,7 @@ std::string background_of(const Options& options) {
 
 void prove(const Options& options) {
     const double began = now_s();
+    check_whitener();
     Report report;
     const auto size = options.quick ? quick_size : full_size;
     for (const auto& [scene, word] : scene_names) {

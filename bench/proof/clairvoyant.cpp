@@ -1,5 +1,7 @@
 #include "proof/clairvoyant.hpp"
 
+#include "support/bench.hpp"
+
 #include <algorithm>
 #include <cmath>
 
@@ -129,6 +131,22 @@ Counts clairvoyant_counts(const ProofRecording& recording, const Whitener& white
         }
     }
     return counts;
+}
+
+void check_whitener() {
+    constexpr double sd = 20.0;
+    constexpr std::size_t channels = 2, frames = 60;
+    const Whitener whitener(noise(200000 * channels, sd), channels);
+    std::vector<float> wave(frames * channels, 0.0F);
+    double energy = 0.0;
+    for (std::size_t i = wave.size() / 2; i < wave.size(); ++i) {
+        wave[i] = static_cast<float>(60.0 * std::cos(1.1 * static_cast<double>(i)));
+        energy += static_cast<double>(wave[i]) * static_cast<double>(wave[i]) / (sd * sd);
+    }
+    const double found = whitener.running_energy(wave, order, frames).back();
+    if (std::abs(found / energy - 1.0) > 0.05) {
+        throw std::runtime_error("whitened energy " + std::to_string(found) + ", plain sum " + std::to_string(energy));
+    }
 }
 
 namespace {

@@ -35,6 +35,9 @@ class Whitener {
     double left_out_ = 0.0;
 };
 
+/// Throws where a waveform in white noise, whose energy anyone can add up, does not come out right.
+void check_whitener();
+
 /// The floor at each of `false_per_minute`, as a curve whose thresholds are eta. Recordings split in parts.
 [[nodiscard]] Curve clairvoyant_floor(const std::vector<ProofRecording>& recordings,
                                       std::span<const double> false_per_minute);
