@@ -27,6 +27,7 @@ struct Counted : EventSink, PulsePort {
 
 double engine_seconds(const Case& each, const std::vector<float>& data) {
     DetectorSettings detector;
+    detector.method = DetectionMethod::envelope;
     detector.filter.order = each.order;
     detector.envelope.method = EnvelopeMethod::rectify;
     detector.vote.rule = VoteRule::count;

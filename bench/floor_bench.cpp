@@ -26,6 +26,7 @@ std::vector<float> scene_of(double ripples_per_s) {
 
 FloorDetail floor_after(const std::vector<float>& data, double clip) {
     DetectorSettings settings;
+    settings.method = DetectionMethod::envelope;
     settings.floor.clip_deviations = clip;
     settings.floor.freeze_ms = 0.0; // the clip alone
     settings.threshold.deviations = 100.0;

@@ -152,6 +152,7 @@ struct NotedJournal : LoopJournal {
 
 DetectorSettings quick_detector() {
     DetectorSettings detector;
+    detector.method = DetectionMethod::envelope;
     detector.filter.order = 2;
     detector.envelope = {EnvelopeMethod::rectify, 1.0};
     detector.floor.settle_s = 0.2;

@@ -199,6 +199,27 @@ void TuneGrid::apply(const std::vector<std::size_t>& places, DetectorSettings& d
     }
 }
 
+namespace {
+
+// A key that the method does not look at would make settings that differ in name alone.
+void refuse_idle(const std::vector<TuneGrid::Axis>& axes, DetectionMethod method) {
+    const std::vector<std::string> of_envelope{"filter.", "envelope.", "vote.", "veto.", "threshold.deviations"};
+    const std::vector<std::string> of_evidence{"evidence."};
+    const auto& idle = method == DetectionMethod::evidence ? of_envelope : of_evidence;
+    for (const auto& axis : axes) {
+        for (const auto& begin : idle) {
+            if (axis.key.starts_with(begin)) {
+                throw Refusal("values to try",
+                              fmt::format("detector.{}, which method {} does not look at", axis.key,
+                                          word_for<DetectionMethod>(detection_methods, method)),
+                              "method in the settings or the grid, or other keys");
+            }
+        }
+    }
+}
+
+} // namespace
+
 TuneCandidates candidates_of(const TuneGrid& grid, const DetectorSettings& base) {
     TuneCandidates candidates{grid.axes(), {}, {}, 0};
     const auto& axes = candidates.axes;
@@ -208,6 +229,9 @@ TuneCandidates candidates_of(const TuneGrid& grid, const DetectorSettings& base)
     for (bool more = true; more;) {
         auto detector = base;
         grid.apply(places, detector);
+        if (candidates.settings.empty()) {
+            refuse_idle(axes, detector.method);
+        }
         auto& threshold = detector.threshold;
         if (!rearm_given) {
             threshold.rearm_deviations = std::min(base.threshold.rearm_deviations, threshold.deviations);

@@ -59,12 +59,8 @@ TuneGrid listed(const TuneOptions& options, const std::vector<std::string>& keys
 // Without a grid of its own each method has what is worth trying of it.
 TuneGrid grid_of(const TuneOptions& options, const DetectorSettings& base) {
     const bool evidence = base.method == DetectionMethod::evidence;
-    if (evidence && !options.given_lists.empty()) {
-        throw Refusal("command line", "detector." + options.given_lists.front() + " to try with method evidence",
-                      "--grid with keys that evidence uses");
-    }
     if (options.grid.empty()) {
-        if (evidence) {
+        if (evidence && options.given_lists.empty()) {
             return TuneGrid::from_text(
                 "detector: {evidence: {false_per_minute: [0.1, 0.2, 0.3, 0.5, 0.7, 1, 1.5, 2, 3, "
                 "5, 10]}, floor: {time_constant_s: [10, 20, 60]}}",

@@ -5,6 +5,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <cstdio>
 
 namespace millpond {
 namespace {
@@ -17,6 +18,12 @@ constexpr double jump_fade_ms = 8.0;
 constexpr double jump_usual_ms = 2000.0;
 
 constexpr Section straight_through{1.0, 0.0, 0.0, 0.0, 0.0};
+
+std::string shown(double hertz) {
+    char text[32];
+    std::snprintf(text, sizeof text, "%g", hertz);
+    return text;
+}
 
 BandpassDesign design_feature(const FeatureSettings& feature, Hertz rate, const std::string& where) {
     FilterSettings filter;
@@ -44,7 +51,15 @@ void Detector::State::choose_features(const std::string& where) {
         if (!mixes.takes_something(mix_place)) {
             continue; // looks at references, and this stream has none
         }
-        feature.high_hz = std::min(feature.high_hz, 0.45 * rate.value);
+        const double highest_hz = 0.45 * rate.value;
+        if (feature.low_hz >= highest_hz) {
+            if (feature.weight > 0.0) {
+                throw Refusal(where + ".features[" + std::to_string(i) + "].low_hz", shown(feature.low_hz),
+                              "below 0.45 of the rate, " + shown(highest_hz) + " Hz");
+            }
+            continue; // speaks against ripples in a band that this stream does not have
+        }
+        feature.high_hz = std::min(feature.high_hz, highest_hz);
         features.push_back(feature);
         mix_of.push_back(mix_place);
     }

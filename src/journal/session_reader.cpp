@@ -25,7 +25,7 @@ const std::filesystem::path& checked(const std::filesystem::path& folder) {
 bool said_by_the_engine(EventKind kind) {
     return kind == EventKind::detection || kind == EventKind::trigger || kind == EventKind::withheld ||
            kind == EventKind::gap || kind == EventKind::floor || kind == EventKind::state || kind == EventKind::gate ||
-           kind == EventKind::note;
+           kind == EventKind::site || kind == EventKind::note;
 }
 
 SampleIndex end_of(const ReadRecords& records) {

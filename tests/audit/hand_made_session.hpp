@@ -36,6 +36,7 @@ inline std::vector<float> bursts(std::size_t frames) {
 
 inline EngineSettings test_engine_settings() {
     EngineSettings settings;
+    settings.detector.method = DetectionMethod::envelope;
     settings.detector.floor.settle_s = 2.0;
     settings.detector.floor.time_constant_s = 5.0;
     settings.arbiter.start_armed = false;

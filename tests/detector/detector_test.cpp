@@ -17,6 +17,7 @@ constexpr Hertz rate{1250.0};
 
 DetectorSettings quick_settings() {
     DetectorSettings settings;
+    settings.method = DetectionMethod::envelope;
     settings.filter.order = 2;
     settings.envelope = {EnvelopeMethod::analytic, 4.0};
     settings.floor.settle_s = 2.0;
@@ -135,6 +136,7 @@ TEST(Detector, GivesTheSameBitsAtAnyBlockSizeAndVectorWidthForEveryFilterEnvelop
 void compare_to_liquid(Hertz at_rate, double tolerance) {
     const std::size_t frames = 20000, channels = 3;
     DetectorSettings settings;
+    settings.method = DetectionMethod::envelope;
     settings.filter.order = 4;
     settings.envelope = {EnvelopeMethod::rectify, 0.0};
     settings.vote.rule = VoteRule::count;
@@ -174,6 +176,7 @@ TEST(Detector, FiltersAsLiquidDoesWithinATenThousandthOfFullScale) {
 // mean by 3 SD with p = 0.0056.
 TEST(Detector, EnvelopeOfBandNoiseFollowsTheRayleighLaw) {
     DetectorSettings settings;
+    settings.method = DetectionMethod::envelope;
     settings.filter.order = 4;
     settings.envelope = {EnvelopeMethod::analytic, 0.0};
     settings.filter.low_hz = 190.0;

@@ -26,6 +26,7 @@ struct Kept : EventSink, PulsePort {
 
 EngineSettings quick_settings() {
     EngineSettings settings;
+    settings.detector.method = DetectionMethod::envelope;
     settings.detector.floor.settle_s = 2.0;
     settings.detector.floor.time_constant_s = 5.0;
     settings.detector.threshold.deviations = 6.0;

@@ -82,6 +82,7 @@ struct Rig {
     explicit Rig(LiveLoopSettings settings, ArbiterSettings arbiter = {})
         : loop(settings, source, line, journal, commands, [&](EventSink& sink, PulsePort& port) {
               DetectorSettings detector;
+              detector.method = DetectionMethod::envelope;
               detector.floor.settle_s = 2.0;
               detector.threshold.deviations = 6.0;
               return Engine(Detector::make(detector, ripple_channels(2), rate), Arbiter::make(arbiter, rate), rate,

@@ -117,7 +117,7 @@ TEST(DryRun, RefusesAListOfChannelsThatTheRecordingDoesNotHave) {
 
 TEST(DryRun, TakesTheRolesOfTheSettings) {
     const Bench bench(InventedRecording(45.0), "channels: [{name: a, role: ripple}, {name: b, role: reference}]\n"
-                                               "detector: {veto: {deviations: 2}}\n");
+                                               "detector: {method: envelope, veto: {deviations: 2}}\n");
     const auto run = dry_run(bench.plan);
     // The reference carries the same ripples, and its threshold is the lower one: it vetoes.
     EXPECT_GT(run.withheld[static_cast<std::size_t>(Rule::veto)], 10U);

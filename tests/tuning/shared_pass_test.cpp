@@ -106,6 +106,12 @@ void expect_the_engines_own(const Trial& trial, std::span<const DetectorSettings
 }
 
 // More settings than one batch holds, everything after the envelope different from one to the next.
+DetectorSettings envelope_settings() {
+    DetectorSettings settings;
+    settings.method = DetectionMethod::envelope;
+    return settings;
+}
+
 std::vector<DetectorSettings> many(const DetectorSettings& base, std::size_t count) {
     std::vector<DetectorSettings> settings;
     for (std::size_t i = 0; i < count; ++i) {
@@ -164,12 +170,12 @@ TEST(SharedPass, DoesSoWhereTheStateChangesAndTheSignalJumps) {
 
 TEST(SharedPass, DoesSoAcrossGapsVetoesFreezesAndHoldTimes) {
     const auto trial = Trial().with_gaps();
-    expect_the_engines_own(trial, many({}, 40));
-    EXPECT_GT(engine_without_pulses(trial, many({}, 40)[1]).refused_by_detector, 3U);
+    expect_the_engines_own(trial, many(envelope_settings(), 40));
+    EXPECT_GT(engine_without_pulses(trial, many(envelope_settings(), 40)[1]).refused_by_detector, 3U);
 }
 
 TEST(SharedPass, DoesSoForVotesOfSitesAndOtherEnvelopes) {
-    DetectorSettings base;
+    auto base = envelope_settings();
     base.vote.rule = VoteRule::count;
     base.envelope.method = EnvelopeMethod::energy;
     base.filter.family = FilterFamily::fir_minimum_phase;
@@ -214,7 +220,7 @@ TEST(SharedPass, DoesSoOnAFlatChannelAndARecordingTooShortToSettle) {
     for (std::size_t f = 15000; f < trial.frames(); ++f) {
         trial.data[f * 5 + 4] = 0.0F; // numbers below the least normal one come up here
     }
-    const auto settings = many({}, 5);
+    const auto settings = many(envelope_settings(), 5);
     const auto pass = pass_over(trial, settings);
     for (std::size_t i = 0; i < settings.size(); ++i) {
         const auto expected = engine_without_pulses(trial, settings[i]);
@@ -226,7 +232,7 @@ TEST(SharedPass, DoesSoOnAFlatChannelAndARecordingTooShortToSettle) {
 }
 
 TEST(SharedPass, RefusesSettingsThatContradictThemselvesWhereverTheyStand) {
-    auto settings = many({}, 3);
+    auto settings = many(envelope_settings(), 3);
     settings[2].threshold.rearm_deviations = settings[2].threshold.deviations + 1.0;
     EXPECT_THROW(static_cast<void>(pass_over(Trial(20.0), settings)), Refusal);
 }
@@ -235,7 +241,7 @@ TEST(SharedPass, EndsEarlyWhenToldTo) {
     const Trial trial(20.0);
     const std::atomic<bool> stop{true};
     std::atomic<std::uint64_t> seen{0};
-    const auto settings = many({}, 2);
+    const auto settings = many(envelope_settings(), 2);
     EXPECT_TRUE(run_shared_pass(settings, trial.channels, rate, trial.data, stop, seen).found.empty());
     EXPECT_EQ(seen, 0U);
 }

@@ -42,7 +42,8 @@ SweepPlan plan_of(double block_s, unsigned threads) {
 
 std::vector<DetectorSettings>
 some(const std::string& values = "order: [1, 2]}, threshold: {deviations: [2, 3, 4, 6]}") {
-    return candidates_of(TuneGrid::from_text("detector: {filter: {" + values + "}", "here"), {}).settings;
+    return candidates_of(TuneGrid::from_text("detector: {method: [envelope], filter: {" + values + "}", "here"), {})
+        .settings;
 }
 
 bool same(const PartFigures& a, const PartFigures& b) {
@@ -148,6 +149,7 @@ TEST(Sweep, RefusesSettingsThatTheRateCannotCarryBeforeAnyIsRun) {
     const InventedRecording recording(20.0);
     const auto tuning = tuning_recording(recording);
     std::vector<DetectorSettings> candidates(6);
+    candidates[5].method = DetectionMethod::envelope;
     candidates[5].filter.high_hz = 700.0;
     SweepWatch watch;
     watch.finished = [](std::size_t, const SweepResult&) { ADD_FAILURE(); };
