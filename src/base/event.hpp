@@ -37,7 +37,7 @@ enum class Rule : std::uint8_t {
     none = 0,           ///< not refused
     gap = 1,            ///< filters are settling after the start or missing frames: look at packets lost
     unsettled = 2,      ///< the floor has not seen enough clean signal yet: wait
-    veto = 3,           ///< the reference channel rose too: most likely not a ripple
+    veto = 3,           ///< the reference rose too, or the signal jumped: most likely not a ripple
     faulted = 4,        ///< an output, the journal or the stream failed: mend it, then arm again
     not_armed = 5,      ///< pulses are not allowed: arm when the protocol says so
     gate = 6,           ///< a gate is closed

@@ -43,7 +43,8 @@ class SessionReader {
     SampleIndex end_{};
 };
 
-/// The newest floor of each site, by site, the mean over sites (65535) last: what a later session can start from.
+/// The newest floor of each site while gates were open, or, where there is none, the newest at all; by site, the mean
+/// over sites (65535) last: what a later session can start from.
 [[nodiscard]] std::vector<FloorDetail> last_floors(std::span<const Event> events);
 
 /// Up to its zero, or all 32 characters.

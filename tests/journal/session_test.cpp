@@ -277,5 +277,17 @@ TEST(SessionReader, DryRunOutputIsRefusedAndSaysWhatItIs) {
     }
 }
 
+TEST(LastFloors, TakeThoseOfOpenGatesBeforeNewerOnesOfClosedGates) {
+    const auto floor = [](std::uint64_t at, double mean, std::uint16_t site, std::uint64_t closed) {
+        return Event::make(EventKind::floor, 0, SampleIndex{at}, FloorDetail{mean, 1.0, 3.0F, site, 1, at, closed});
+    };
+    const std::vector<Event> events{floor(1, 10.0, 0, 0), floor(2, 11.0, 0, 0), floor(3, 90.0, 0, 1),
+                                    floor(2, 80.0, 1, 1), floor(3, 81.0, 1, 1)};
+    const auto floors = last_floors(events);
+    ASSERT_EQ(floors.size(), 2U);
+    EXPECT_EQ(floors[0].mean, 11.0);
+    EXPECT_EQ(floors[1].mean, 81.0) << "never open: the newest there is";
+}
+
 } // namespace
 } // namespace millpond
