@@ -93,10 +93,24 @@ class Operator {
             log_->warn("{} ({})", name_of(figures.state), name_of(figures.state_cause));
             state_ = figures.state;
         }
+        if (figures.sites_out != sites_out_) {
+            leave_status();
+            tell_sites(figures.sites_out);
+            sites_out_ = figures.sites_out;
+        }
         if (figures.trouble != trouble_) {
             leave_status();
             log_->error("{}", figures.trouble);
             trouble_ = figures.trouble;
+        }
+    }
+
+    void tell_sites(const std::vector<std::pair<std::uint16_t, SiteState>>& out) {
+        for (const auto& [channel, state] : out) {
+            log_->warn("channel {} is {}: left out of the evidence", channel + 1, name_of(state));
+        }
+        if (out.empty()) {
+            log_->warn("all channels are in the evidence again");
         }
     }
 
@@ -126,6 +140,7 @@ class Operator {
     double next_status_s_ = 0.0;
     bool status_shown_ = false;
     ArmState state_ = ArmState::not_armed;
+    std::vector<std::pair<std::uint16_t, SiteState>> sites_out_;
     std::string trouble_;
 };
 

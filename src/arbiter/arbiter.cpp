@@ -84,6 +84,10 @@ bool Arbiter::set_gate(std::string_view name, bool open) noexcept {
     return true;
 }
 
+bool Arbiter::has_gate(std::string_view name) const noexcept {
+    return std::any_of(gates_.begin(), gates_.end(), [&](const auto& gate) { return gate.name == name; });
+}
+
 bool Arbiter::gates_open() const noexcept {
     return std::all_of(gates_.begin(), gates_.end(), [](const auto& gate) { return gate.open; });
 }

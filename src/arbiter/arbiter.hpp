@@ -25,6 +25,9 @@ class Arbiter {
     /// `schedule`: places of a control schedule in ascending order, empty without one.
     static Arbiter make(const ArbiterSettings& settings, Hertz rate, std::vector<SampleIndex> schedule = {});
 
+    /// One more gate, beside those of the settings. Thread: control.
+    void add_gate(std::string name, bool open) { gates_.push_back({std::move(name), open}); }
+
     /// Rule::none where the candidate is a trigger, which then counts for lock-out and limits.
     [[nodiscard]] Rule judge(const Candidate& candidate) noexcept;
 
@@ -38,6 +41,7 @@ class Arbiter {
 
     /// False where no gate has that name.
     bool set_gate(std::string_view name, bool open) noexcept;
+    [[nodiscard]] bool has_gate(std::string_view name) const noexcept;
     [[nodiscard]] bool gates_open() const noexcept;
 
     [[nodiscard]] std::uint32_t triggers() const noexcept { return triggers_; }

@@ -75,6 +75,10 @@ Json stream_json(const AuditResult& r) {
     for (const auto& gate : r.figures.gates) {
         gates.push_back({{"sample", gate.at.value}, {"name", gate.name}, {"open", gate.open}});
     }
+    auto sites = Json::array();
+    for (const auto& site : r.figures.sites) {
+        sites.push_back({{"sample", site.at.value}, {"channel", site.channel}, {"state", name_of(site.state)}});
+    }
     auto notes = Json::array();
     for (const auto& note : r.figures.notes) {
         notes.push_back({{"sample", note.sample.value}, {"utc", utc_text(note.time_ns)}, {"text", note.text}});
@@ -84,6 +88,7 @@ Json stream_json(const AuditResult& r) {
             {"packets", counts_json<PacketCause>(r.figures.packets)},
             {"states", states},
             {"gates", gates},
+            {"sites", sites},
             {"notes", notes}};
 }
 

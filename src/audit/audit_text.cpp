@@ -34,7 +34,7 @@ std::string share(const Proportion& part) {
 
 std::string site_text(std::uint16_t site, const AuditResult& result) {
     const auto& channels = result.provenance.about.channels;
-    return site == 65535 ? "mean of sites" : site < channels.size() ? channels[site].name : fmt::format("{}", site);
+    return site == 65535 ? "sites together" : site < channels.size() ? channels[site].name : fmt::format("{}", site);
 }
 
 // One line each, the first few of many.
@@ -169,6 +169,12 @@ std::string stream_text(const AuditResult& r) {
     text += listed(f.gates, [rate](const GateFigure& gate) {
         return fmt::format("{}: gate {} {}", at_text(gate.at, rate), gate.name, gate.open ? "open" : "closed");
     });
+    if (!f.sites.empty()) {
+        text += fmt::format("\nSites left out of the evidence, and back: {}\n", f.sites.size());
+        text += listed(f.sites, [&](const SiteFigure& site) {
+            return fmt::format("{}: {} {}", at_text(site.at, rate), site_text(site.channel, r), name_of(site.state));
+        });
+    }
     text += fmt::format("\nNotes: {}\n", f.notes.size());
     text += listed(f.notes,
                    [rate](const Note& note) { return fmt::format("{}: {}", at_text(note.sample, rate), note.text); });

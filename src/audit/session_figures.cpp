@@ -51,6 +51,8 @@ void list(SessionFigures& figures, const Event& event) {
     } else if (event.kind == EventKind::gate) {
         const auto gate = event.as<GateDetail>();
         figures.gates.push_back({event.sample, gate_name(gate), gate.open != 0});
+    } else if (event.kind == EventKind::site) {
+        figures.sites.push_back({event.sample, event.as<SiteDetail>().channel, static_cast<SiteState>(event.code)});
     }
 }
 

@@ -43,6 +43,12 @@ struct FloorFigure {
     double deviation_last = 0.0, threshold_last = 0.0;
 };
 
+struct SiteFigure {
+    SampleIndex at;
+    std::uint16_t channel = 0;
+    SiteState state{};
+};
+
 struct SessionFigures {
     std::uint64_t detections = 0, triggers = 0, scheduled_triggers = 0, pulses = 0, pulse_ends = 0;
     std::array<std::uint64_t, rule_count> withheld{};        ///< by Rule
@@ -51,6 +57,7 @@ struct SessionFigures {
     std::vector<GapFigure> gaps;
     std::vector<StateFigure> states;
     std::vector<GateFigure> gates;
+    std::vector<SiteFigure> sites; ///< left out of the evidence, and back
     std::vector<Note> notes;
     std::vector<FloorFigure> floors;
 

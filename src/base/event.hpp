@@ -139,11 +139,12 @@ struct GapDetail {
 };
 
 struct FloorDetail {
-    double mean, deviation; ///< uV
-    float threshold;        ///< uV
-    std::uint16_t site;     ///< channel in the stream, 65535 for the mean over sites and for evidence
-    std::uint16_t settled;  ///< 1 once enough clean signal was seen
-    std::uint64_t frames;   ///< frames the statistics have taken
+    double mean, deviation;         ///< uV
+    float threshold;                ///< uV
+    std::uint16_t site;             ///< channel in the stream, 65535 for the mean over sites and for evidence
+    std::uint16_t settled;          ///< 1 once enough clean signal was seen
+    std::uint64_t frames;           ///< frames the statistics have taken
+    std::uint64_t gates_closed = 0; ///< 1 where it is the memory of time with a gate closed
 };
 
 struct LatencyBins {

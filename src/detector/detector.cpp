@@ -25,7 +25,7 @@ std::size_t Detector::run(const FrameBlock& block, std::optional<Crossing>& cros
             continue;
         }
         used += s.advance(block.part(used, count - used), crossing);
-        if (crossing) {
+        if (crossing || s.sites_changed || s.state_changed) {
             break;
         }
     }
@@ -39,17 +39,13 @@ void Detector::envelopes(const FrameBlock& block, std::span<double> out) noexcep
         const auto rest = block.part(done, block.frames() - done);
         KernelOrder order;
         order.frames = rest.data.data();
-        order.count = s.watches_sites() ? static_cast<std::size_t>(std::min<std::uint64_t>(
-                                              rest.frames(), s.site_watch.frames_to_verdict(s.position)))
-                                        : rest.frames();
+        order.count = static_cast<std::size_t>(std::min<std::uint64_t>(rest.frames(), s.frames_to_verdict()));
         order.method = s.method;
         order.resume = s.resume;
         order.envelopes = out.data() + done * s.lanes.lanes;
-        s.kernel(s.lanes, order);
+        s.run_kernel(order);
         s.resume = false;
-        if (s.watches_sites()) {
-            s.watch_sites(rest.part(0, order.count));
-        }
+        s.watch(rest.part(0, order.count));
         s.position += order.count;
         done += order.count;
     }
@@ -77,16 +73,15 @@ std::size_t Detector::State::skip_blanked(std::size_t frames) noexcept {
         blank_from = UINT64_MAX;
     }
     resume = true;
+    state_gate.splice();
     return static_cast<std::size_t>(skipped);
 }
 
 std::size_t Detector::State::advance(const FrameBlock& block, std::optional<Crossing>& crossing) noexcept {
     const auto order = next_order(block);
-    const auto result = kernel(lanes, order);
+    const auto result = run_kernel(order);
     resume = false;
-    if (watches_sites()) {
-        watch_sites(block.part(0, result.frames));
-    }
+    watch(block.part(0, result.frames));
     if (result.last_reference != SIZE_MAX) {
         newest_reference = position + result.last_reference;
     }
@@ -114,9 +109,7 @@ KernelOrder Detector::State::next_order(const FrameBlock& block) const noexcept 
     order.method = method;
     order.resume = resume;
     std::uint64_t limit = std::min<std::uint64_t>(block.frames(), blank_from - position);
-    if (watches_sites()) {
-        limit = std::min(limit, site_watch.frames_to_verdict(position));
-    }
+    limit = std::min(limit, frames_to_verdict());
     const std::uint64_t still_until = std::max(settling_until, frozen_until);
     const bool still = position < still_until;
     if (still) {
@@ -181,6 +174,7 @@ Crossing Detector::State::crossing_here(Tally tally) const noexcept {
     crossing.settling = at < settling_until;
     crossing.unsettled = floor_frames < settle_frames;
     crossing.vetoed = newest_reference != UINT64_MAX && at - newest_reference <= veto_window;
+    crossing.vetoed = crossing.vetoed || jumped();
     crossing.detail = {static_cast<float>(envelope[site]),
                        static_cast<float>(mean[site]),
                        static_cast<float>(spread[site] * deviation_per_spread),
@@ -201,6 +195,7 @@ void Detector::gap(SampleIndex resumes_at) noexcept {
     s.settling_until = s.position + s.filter_settle;
     s.above_run = 0;
     s.site_watch.gap();
+    s.state_gate.splice();
     s.resume = true; // the level starts at the first sample: no step into the fresh filter
     if (s.blank_until <= s.position) {
         s.blank_from = UINT64_MAX;
@@ -233,7 +228,16 @@ void Detector::reset() noexcept {
     if (s.evidence()) {
         s.site_watch.reset();
         std::fill(s.journaled.begin(), s.journaled.end(), SiteState::alive);
+        s.usual_jump.fill(0.0);
+        s.lanes.jump.frames = 0;
         s.mix_anew();
+    }
+    s.mains.reset(s.lanes);
+    s.state_gate.reset();
+    s.state_changed = false;
+    s.gates_open = true;
+    for (auto& memory : s.memories) {
+        memory.frames = 0;
     }
     gap(SampleIndex{0});
 }
@@ -243,6 +247,8 @@ void Detector::State::clear_filters() noexcept {
         values->fill(0.0);
     }
     lanes.history_at = 0;
+    followed.fill(0.0);
+    largest_jump.fill(0.0);
 }
 
 std::uint16_t Detector::State::channel_at(std::size_t lane) const noexcept {
@@ -262,7 +268,8 @@ FloorDetail Detector::floor(std::size_t number) const noexcept {
             static_cast<float>(s.mean[i] + s.above[i] * s.spread[i]),
             s.channel_at(i),
             static_cast<std::uint16_t>(settled() ? 1 : 0),
-            s.floor_frames};
+            s.floor_frames,
+            s.gates_open ? 0U : 1U};
 }
 
 bool Detector::settled() const noexcept {

@@ -61,7 +61,8 @@ class Detector {
     Detector& operator=(Detector&&) noexcept;
     ~Detector();
 
-    /// Runs over the block from its start and stops after the first crossing.
+    /// Runs over the block from its start and stops after the first crossing, or where a site died or came back or the
+    /// state's gate moved, so that each is told at its place.
     /// Returns the frames consumed; the crossing, if any, is that of the last frame consumed.
     /// A block that does not begin where the last one ended must be announced by `gap` first.
     /// Thread: loop. Fixed work a frame; allocates, locks and throws nothing.
@@ -81,6 +82,20 @@ class Detector {
 
     /// The next channel, in stream order, that died or came back since the last call. Thread: loop.
     std::optional<SiteChange> site_change() noexcept;
+
+    /// Whether the gate that follows the animal's state opened (true) or closed since the last call. Thread: loop.
+    std::optional<bool> state_gate_change() noexcept;
+    /// There is such a gate. It is open until it has seen enough.
+    [[nodiscard]] bool has_state_gate() const noexcept;
+    [[nodiscard]] bool state_gate_open() const noexcept;
+
+    /// The floor keeps a memory for time with all gates open and one for the rest, so that running does not spoil the
+    /// floor of rest. The first time that one is used it begins as a copy of the other, and adapts as fast as one that
+    /// has just settled. Thread: loop.
+    void use_memory(bool gates_open) noexcept;
+
+    /// Frames from here to where the gate or the watch over sites may next change something. Thread: loop.
+    [[nodiscard]] std::uint64_t frames_to_verdict() const noexcept;
 
     /// Starts from floors of an earlier session, one for each ripple and reference channel in stream order, then, with
     /// rule mean, that of the mean; with method evidence just that of the evidence. Thread: control, before the first

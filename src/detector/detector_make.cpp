@@ -83,11 +83,14 @@ Detector Detector::make(const DetectorSettings& settings, const Channels& channe
     state->allocate_envelope();
     state->allocate_floor();
     if (state->evidence()) {
+        state->allocate_jumps();
         state->allocate_evidence_floor(where + ".evidence");
     } else {
         state->allocate_sites_floor();
     }
     state->count_frames();
+    state->mains.prepare(settings.mains, rate, state->lanes, where + ".mains");
+    state->state_gate = StateGate::make(settings.state_gate, channels, rate, where + ".state_gate");
     Detector detector(std::move(state));
     detector.reset();
     return detector;
@@ -158,6 +161,10 @@ void Detector::State::allocate_envelope() {
 void Detector::State::allocate_floor() {
     for (auto* values : {&mean, &spread, &above, &rearm, &sum_weight}) {
         *values = Lanes<double>(lanes.lanes);
+    }
+    for (auto& memory : memories) {
+        memory.mean = Lanes<double>(lanes.lanes);
+        memory.spread = Lanes<double>(lanes.lanes);
     }
     above_adds = Lanes<std::uint64_t>(lanes.lanes);
     rearm_adds = Lanes<std::uint64_t>(lanes.lanes);

@@ -3,6 +3,8 @@
 
 #include "base/describe.hpp"
 #include "detector/evidence_settings.hpp"
+#include "detector/mains_removal_settings.hpp"
+#include "detector/state_gate_settings.hpp"
 
 #include <cstdint>
 #include <string>
@@ -155,6 +157,8 @@ struct DetectorSettings {
     VoteSettings vote;
     VetoSettings veto;
     EvidenceSettings evidence;
+    MainsRemovalSettings mains;
+    StateGateSettings state_gate;
     double blanking_ms = 25.0;
 
     bool operator==(const DetectorSettings&) const = default;
@@ -173,6 +177,8 @@ template <class Visitor> void describe(Visitor& visit, DetectorSettings& detecto
     visit.group("veto", detector.veto,
                 "when the reference says that it is no ripple (needs a channel of role reference)");
     visit.group("evidence", detector.evidence, "weighted bands and site mixes (method: evidence)");
+    visit.group("mains", detector.mains, "mains hum and its multiples inside the band");
+    visit.group("state_gate", detector.state_gate, "a gate that follows the animal's state by the signal itself");
     visit.number("blanking_ms", detector.blanking_ms, {0.0, 1000.0},
                  "after a pulse's place in the stream the detector holds its state this long; must cover the loop's "
                  "latency, the pulse or train, and its artefact");

@@ -4,43 +4,17 @@
 #include "detector/detector.hpp"
 #include "detector/floor_start.hpp"
 #include "detector/kernel.hpp"
+#include "detector/lanes.hpp"
+#include "detector/mains_removal.hpp"
 #include "detector/site_mix.hpp"
 #include "detector/site_watch.hpp"
+#include "detector/state_gate.hpp"
 
-#include <cstdlib>
+#include <array>
 #include <memory>
-#include <new>
 #include <vector>
 
 namespace millpond {
-
-/// Zeroed memory on a cache line's boundary, as the kernel wants it.
-template <class Value> class Lanes {
-  public:
-    Lanes() = default;
-    explicit Lanes(std::size_t count)
-        : count_(count), values_(static_cast<Value*>(std::aligned_alloc(64, (count * sizeof(Value) + 63) / 64 * 64))) {
-        if (!values_) {
-            throw std::bad_alloc();
-        }
-        fill(Value{});
-    }
-    void fill(Value value) noexcept {
-        for (std::size_t i = 0; i < count_; ++i) {
-            values_.get()[i] = value;
-        }
-    }
-    [[nodiscard]] Value* data() const noexcept { return values_.get(); }
-    Value& operator[](std::size_t i) const noexcept { return values_.get()[i]; }
-    [[nodiscard]] std::size_t size() const noexcept { return count_; }
-
-  private:
-    struct Free {
-        void operator()(Value* values) const noexcept { std::free(values); }
-    };
-    std::size_t count_ = 0;
-    std::unique_ptr<Value, Free> values_;
-};
 
 struct Detector::State {
     std::size_t advance(const FrameBlock& block, std::optional<Crossing>& crossing) noexcept;
@@ -60,6 +34,10 @@ struct Detector::State {
     [[nodiscard]] std::size_t first_floor() const noexcept { return evidence() ? lanes.signal_lanes : 0; }
     void watch_sites(const FrameBlock& block) noexcept;
     void mix_anew() noexcept;
+    [[nodiscard]] bool jumped() const noexcept;
+    KernelResult run_kernel(const KernelOrder& order) noexcept;
+    void watch(const FrameBlock& block) noexcept;
+    [[nodiscard]] std::uint64_t frames_to_verdict() const noexcept;
 
     void choose_inputs(const Channels& channels);
     void choose_lanes();
@@ -70,6 +48,7 @@ struct Detector::State {
     void allocate_floor();
     void vote_of(std::size_t lane);
     void allocate_sites_floor();
+    void allocate_jumps();
     void allocate_evidence_floor(const std::string& where);
     void count_frames();
 
@@ -91,14 +70,25 @@ struct Detector::State {
     std::vector<std::size_t> mix_of;       // [features]
     SiteMixes mixes;
     SiteWatch site_watch;
+    Lanes<double> followed, largest_jump, usual_jump;
+    std::size_t heaviest = 0;         // feature that speaks loudest for a ripple
     std::vector<double> mix_weights;  // room for one mix
     std::vector<SiteState> journaled; // [inputs], as the engine last heard
     bool sites_changed = false;
+    MainsRemoval mains;
+    StateGate state_gate;
+    bool state_changed = false;
     Lanes<double> mean, spread, above, rearm;
     Lanes<std::uint64_t> lane_used, above_adds, rearm_adds;
 
     FloorStart start;               // the floor's first second
     std::uint64_t floor_frames = 0; // frames in the floor's statistics
+    struct Memory {
+        Lanes<double> mean, spread;
+        std::uint64_t frames = 0;
+    };
+    std::array<Memory, 2> memories; // of the floor, by gates closed or open; the one in use stands above
+    bool gates_open = true;
     std::uint64_t settle_frames = 0, full_frames = 0;
     double least_weight = 0.0;
 

@@ -10,6 +10,13 @@
 namespace millpond {
 namespace {
 
+// A ripple of 160 uV stands some 8 times as far from where it was 0.4 ms ago as the background of the quiet scene does,
+// a step of 1250 uV more than 100 times.
+constexpr double jump_times = 20.0;
+constexpr double jump_follow_ms = 0.4;
+constexpr double jump_fade_ms = 8.0;
+constexpr double jump_usual_ms = 2000.0;
+
 constexpr Section straight_through{1.0, 0.0, 0.0, 0.0, 0.0};
 
 std::string shown(double hertz) {
@@ -70,15 +77,16 @@ void Detector::State::choose_features(const std::string& where) {
 
 void Detector::State::allocate_own_filters(const std::string& where) {
     std::vector<BandpassDesign> designs;
-    double heaviest = 0.0;
+    double most_weight = 0.0;
     for (std::size_t i = 0; i < features.size(); ++i) {
         const auto& feature = features[i];
         designs.push_back(design_feature(feature, rate, where + ".features[" + std::to_string(i) + "]"));
         lanes.sections = std::max(lanes.sections, designs.back().sections.size());
         filter_settle =
             std::max(filter_settle, designs.back().settle_samples() + frames_in_ms(5.0 * feature.smoothing_ms, rate));
-        if (feature.weight > heaviest) {
-            heaviest = feature.weight;
+        if (feature.weight > most_weight) {
+            heaviest = i;
+            most_weight = feature.weight;
             design = designs.back();
             filter_delay = design.group_delay_samples(centre_of(feature), rate);
             delay = filter_delay + feature.smoothing_ms * rate.value / 1000.0;
@@ -107,6 +115,25 @@ void Detector::State::allocate_own_filters(const std::string& where) {
     lanes.smoothings = smoothings.data();
 }
 
+void Detector::State::allocate_jumps() {
+    for (auto* values : {&followed, &largest_jump, &usual_jump}) {
+        *values = Lanes<double>(lanes.lanes);
+    }
+    auto& jump = lanes.jump;
+    jump.followed = followed.data();
+    jump.largest = largest_jump.data();
+    jump.usual = usual_jump.data();
+    jump.follow = 1.0 / (1.0 + jump_follow_ms * rate.value / 1000.0);
+    jump.fade = 1.0 - 1.0 / (1.0 + jump_fade_ms * rate.value / 1000.0);
+    jump.full_frames = frames_in_ms(jump_usual_ms, rate);
+    jump.weight = 1.0 / (static_cast<double>(jump.full_frames) + 1.0);
+}
+
+// A step lifts what is smoothed little before what speaks against it has risen; its own height gives it away.
+bool Detector::State::jumped() const noexcept {
+    return evidence() && largest_jump[heaviest] > jump_times * usual_jump[heaviest];
+}
+
 void Detector::State::allocate_evidence_floor(const std::string& where) {
     for (std::size_t lane = 0; lane < features.size(); ++lane) {
         sum_weight[lane] = features[lane].weight;
@@ -131,6 +158,7 @@ void Detector::State::mix_anew() noexcept {
 void Detector::State::watch_sites(const FrameBlock& block) noexcept {
     if (site_watch.take(position, block.data.data(), block.frames(), lanes.channels, channel_of.data())) {
         mix_anew();
+        state_gate.use_alive(site_watch.alive());
         sites_changed = true;
     }
 }

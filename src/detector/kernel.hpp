@@ -12,6 +12,35 @@ namespace millpond {
 /// Lanes come in groups of eight, the widest vector; what is left over is silent.
 inline constexpr std::size_t lane_group = 8;
 
+/// Mains hum: what every lane has learned of each multiple of the mains frequency, and the oscillators it is held
+/// against.
+struct KernelHum {
+    std::size_t harmonics = 0;    // 0: nothing is taken out
+    std::size_t oscillators = 0;  // the same, up to a multiple of lane_group
+    double* in_phase = nullptr;   // [harmonics][lanes]
+    double* quadrature = nullptr; // [harmonics][lanes]
+    double* cosine = nullptr;     // [oscillators], of the next frame
+    double* sine = nullptr;
+    const double* turn_cosine = nullptr; // [oscillators], of one frame's turn
+    const double* turn_sine = nullptr;
+    double* calm = nullptr; // [lanes]: the usual envelope; far above it nothing is learned
+    double gain = 0.0;      // what a frame adds to what is learned
+    double calm_weight = 0.0;
+    std::uint64_t calm_frames = 0, calm_needed = 0; // seen; before so many, all is taken for usual
+};
+
+/// Sudden steps: how far the signal stands from where it was 0.4 ms ago, the largest of late, and what is usual.
+/// With a mix only.
+struct KernelJump {
+    double follow = 1.0; // 1 / (1 + 0.4 ms in frames)
+    double fade = 0.0;   // of the largest, a frame
+    double weight = 0.0; // of a frame in the usual
+    double* followed = nullptr;
+    double* largest = nullptr;
+    double* usual = nullptr;
+    std::uint64_t frames = 0, full_frames = 0; // taken into the usual; until then all weigh the same
+};
+
 /// Everything the loop reads and writes. Arrays are 64-byte aligned; `[lanes]` unless said otherwise.
 struct KernelState {
     std::size_t lanes = 0;                     // a multiple of lane_group
@@ -43,6 +72,9 @@ struct KernelState {
     double* smooth2 = nullptr;
     double* envelope = nullptr;
     const double* sum_weight = nullptr; // [lanes]: mean over sites, or weights of the evidence; null: no sum
+
+    KernelHum hum;
+    KernelJump jump;
 
     double* mean = nullptr;        // the floor
     double* spread = nullptr;      // running mean of |envelope - mean|

@@ -176,8 +176,73 @@ template <bool mixed> inline Tally compare_to_floor(KernelState& state, double w
     return Tally{sum};
 }
 
-template <KernelEnvelope method, bool mixed>
+// An envelope of twice its usual size is an event, not hum.
+constexpr double far_above_calm = 2.0, most_of_calm = 4.0;
+
+// `signal` without the hum that its lane has learned; learns from what is left.
+inline Doubles without_hum(KernelState& state, std::size_t lane, Doubles signal, double calm_weight) {
+    auto& hum = state.hum;
+    Doubles left = signal;
+    for (std::size_t h = 0; h < hum.harmonics; ++h) {
+        left -= hum.cosine[h] * at(hum.in_phase + h * state.lanes, lane) +
+                hum.sine[h] * at(hum.quadrature + h * state.lanes, lane);
+    }
+    const Doubles envelope = at(state.envelope, lane);
+    Doubles& calm = at(hum.calm, lane);
+    const bool warming = hum.calm_frames < hum.calm_needed;
+    const Doubles most = most_of_calm * calm;
+    const Doubles taken = warming ? envelope : envelope < most ? envelope : most;
+    calm += calm_weight * (taken - calm);
+    const Doubles nothing = {};
+    const Doubles lesson = warming ? left : envelope <= far_above_calm * calm ? left : nothing;
+    const Doubles step = hum.gain * lesson;
+    for (std::size_t h = 0; h < hum.harmonics; ++h) {
+        at(hum.in_phase + h * state.lanes, lane) += step * hum.cosine[h];
+        at(hum.quadrature + h * state.lanes, lane) += step * hum.sine[h];
+    }
+    return left;
+}
+
+// Beyond ten times the usual a distance enters the usual as that much, and a little more, so that a channel which was
+// flat finds back.
+inline void watch_for_jumps(KernelState& state, std::size_t lane, Doubles signal, double weight) {
+    auto& jump = state.jump;
+    Doubles& followed = at(jump.followed, lane);
+    Doubles& largest = at(jump.largest, lane);
+    Doubles& usual = at(jump.usual, lane);
+    const Doubles distance = magnitude(signal - followed);
+    followed += jump.follow * (signal - followed);
+    const Doubles faded = jump.fade * largest;
+    largest = distance > faded ? distance : faded;
+    const Doubles most = 10.0 * usual + 0.001;
+    const Doubles clipped = distance < most ? distance : most;
+    const Doubles taken = jump.frames < jump.full_frames ? distance : clipped;
+    usual += weight * (taken - usual);
+}
+
+inline void turn_oscillators(KernelHum& hum) {
+    for (std::size_t i = 0; i < hum.oscillators; i += width) {
+        Doubles& cosine = at(hum.cosine, i);
+        Doubles& sine = at(hum.sine, i);
+        const Doubles before = cosine;
+        cosine = before * at(hum.turn_cosine, i) - sine * at(hum.turn_sine, i);
+        sine = sine * at(hum.turn_cosine, i) + before * at(hum.turn_sine, i);
+    }
+}
+
+template <KernelEnvelope method, bool mixed, bool hum>
 inline void envelopes_of_frame(KernelState& state, const float* frame, bool whole_vectors, bool resume) {
+    double calm_weight = 0.0;
+    if constexpr (hum) {
+        calm_weight = state.hum.calm_frames < state.hum.calm_needed
+                          ? 1.0 / (static_cast<double>(state.hum.calm_frames) + 1.0)
+                          : state.hum.calm_weight;
+    }
+    double jump_weight = 0.0;
+    if constexpr (mixed) {
+        jump_weight = state.jump.frames < state.jump.full_frames ? 1.0 / (static_cast<double>(state.jump.frames) + 1.0)
+                                                                 : state.jump.weight;
+    }
     for (std::size_t lane = 0; lane < state.lanes; lane += width) {
         Doubles raw;
         if constexpr (mixed) {
@@ -191,35 +256,49 @@ inline void envelopes_of_frame(KernelState& state, const float* frame, bool whol
             level = raw - last;
         }
         last = raw - level;
+        Doubles signal = last;
+        if constexpr (hum) {
+            signal = without_hum(state, lane, last, calm_weight);
+        }
         if constexpr (mixed) {
-            at(state.envelope, lane) = own_envelope_of(state, lane, filter_own_sections(state, lane, last));
+            watch_for_jumps(state, lane, signal, jump_weight);
+            at(state.envelope, lane) = own_envelope_of(state, lane, filter_own_sections(state, lane, signal));
         } else {
-            const Doubles band = state.taps == 0 ? filter_sections(state, lane, last) : filter_taps(state, lane, last);
+            const Doubles band =
+                state.taps == 0 ? filter_sections(state, lane, signal) : filter_taps(state, lane, signal);
             at(state.envelope, lane) = envelope_of<method>(state, lane, band);
         }
+    }
+    if constexpr (hum) {
+        turn_oscillators(state.hum);
+        ++state.hum.calm_frames;
+    }
+    if constexpr (mixed) {
+        ++state.jump.frames;
     }
     if (state.taps != 0) {
         state.history_at = state.history_at + 1 == state.taps ? 0 : state.history_at + 1;
     }
 }
 
-template <KernelEnvelope method, bool mixed>
+template <KernelEnvelope method, bool mixed, bool hum>
 inline void envelope_of_every_lane(KernelState& state, const KernelOrder& order, std::size_t frame_of_order,
                                    const float* frame, bool resume) {
     const bool whole_vectors = state.in_stream_order && (order.count - frame_of_order) * state.channels >= state.lanes;
-    envelopes_of_frame<method, mixed>(state, frame, whole_vectors, resume);
+    envelopes_of_frame<method, mixed, hum>(state, frame, whole_vectors, resume);
     if (state.sum_weight != nullptr) {
         state.envelope[state.signal_lanes] = sum_over_lanes(state);
     }
 }
 
 // For sweeps: what the loop below would compare, written out instead.
-template <KernelEnvelope method, bool mixed>
+template <KernelEnvelope method, bool mixed, bool hum>
 inline KernelResult keep_envelopes(KernelState& state, const KernelOrder& order) {
     KernelResult result;
     double* kept = order.envelopes;
     for (const float* frame = order.frames; result.frames < order.count; frame += state.channels) {
-        envelope_of_every_lane<method, mixed>(state, order, result.frames, frame, order.resume && result.frames == 0);
+        envelope_of_every_lane<method, mixed, hum>(state, order, result.frames, frame,
+                                                   order.resume && result.frames == 0);
         for (std::size_t lane = 0; lane < state.lanes; lane += width) {
             __builtin_memcpy(kept + lane, state.envelope + lane, sizeof(Doubles)); // the caller's memory lies anywhere
         }
@@ -229,14 +308,15 @@ inline KernelResult keep_envelopes(KernelState& state, const KernelOrder& order)
     return result;
 }
 
-template <KernelEnvelope method, bool mixed>
+template <KernelEnvelope method, bool mixed, bool hum>
 inline KernelResult run_method(KernelState& state, const KernelOrder& order) {
     if (order.envelopes != nullptr) {
-        return keep_envelopes<method, mixed>(state, order);
+        return keep_envelopes<method, mixed, hum>(state, order);
     }
     KernelResult result;
     for (const float* frame = order.frames; result.frames < order.count; frame += state.channels) {
-        envelope_of_every_lane<method, mixed>(state, order, result.frames, frame, order.resume && result.frames == 0);
+        envelope_of_every_lane<method, mixed, hum>(state, order, result.frames, frame,
+                                                   order.resume && result.frames == 0);
         const double weight =
             order.warming == 0 ? order.weight : 1.0 / static_cast<double>(order.warming + result.frames + 1);
         result.tally = compare_to_floor<mixed>(state, weight);
@@ -252,20 +332,25 @@ inline KernelResult run_method(KernelState& state, const KernelOrder& order) {
     return result;
 }
 
-} // namespace
-
-KernelResult MILLPOND_KERNEL(KernelState& state, const KernelOrder& order) noexcept {
+// Apart for each case, so that what is off costs nothing.
+template <bool hum> inline KernelResult run_chosen(KernelState& state, const KernelOrder& order) {
     if (state.mix != nullptr) {
-        return run_method<KernelEnvelope::analytic, true>(state, order);
+        return run_method<KernelEnvelope::analytic, true, hum>(state, order);
     }
     switch (order.method) {
     case KernelEnvelope::rectify:
-        return run_method<KernelEnvelope::rectify, false>(state, order);
+        return run_method<KernelEnvelope::rectify, false, hum>(state, order);
     case KernelEnvelope::energy:
-        return run_method<KernelEnvelope::energy, false>(state, order);
+        return run_method<KernelEnvelope::energy, false, hum>(state, order);
     default:
-        return run_method<KernelEnvelope::analytic, false>(state, order);
+        return run_method<KernelEnvelope::analytic, false, hum>(state, order);
     }
+}
+
+} // namespace
+
+KernelResult MILLPOND_KERNEL(KernelState& state, const KernelOrder& order) noexcept {
+    return state.hum.harmonics > 0 ? run_chosen<true>(state, order) : run_chosen<false>(state, order);
 }
 
 } // namespace millpond

@@ -4,14 +4,19 @@
 
 namespace millpond {
 
-Engine::Engine(Detector detector, Arbiter arbiter, Hertz rate, EventSink& sink, PulsePort& port) noexcept
+Engine::Engine(Detector detector, Arbiter arbiter, Hertz rate, EventSink& sink, PulsePort& port)
     : detector_(std::move(detector)), arbiter_(std::move(arbiter)), sink_(sink), port_(port),
-      second_frames_(frames_in_ms(1000.0, rate)) {}
+      second_frames_(frames_in_ms(1000.0, rate)) {
+    if (detector_.has_state_gate()) {
+        arbiter_.add_gate(std::string(state_gate_name), detector_.state_gate_open());
+    }
+}
 
 void Engine::start(SampleIndex at, bool armed) noexcept {
     next_ = at;
     next_floor_ = at + second_frames_;
     detector_.gap(at);
+    detector_.use_memory(arbiter_.gates_open());
     for (std::size_t i = 0; i < arbiter_.gate_count(); ++i) {
         journal_gate(arbiter_.gate_name(i), arbiter_.gate_open(i));
     }
@@ -69,14 +74,21 @@ std::size_t Engine::run_detector(const FrameBlock& block) noexcept {
     std::optional<Crossing> crossing;
     const std::size_t frames = detector_.run(block, crossing);
     next_ = next_ + frames;
+    if (crossing) {
+        on_crossing(*crossing);
+    }
     while (const auto change = detector_.site_change()) {
         sink_.take(
             Event::make(EventKind::site, static_cast<std::uint8_t>(change->state), next_, SiteDetail{change->channel}));
     }
-    if (crossing) {
-        on_crossing(*crossing);
-    }
+    follow_state();
     return frames;
+}
+
+void Engine::follow_state() noexcept {
+    if (const auto open = detector_.state_gate_change()) {
+        move_gate(state_gate_name, *open);
+    }
 }
 
 void Engine::on_crossing(const Crossing& crossing) noexcept {
@@ -160,11 +172,18 @@ void Engine::set_state(ArmState state, StateCause cause) noexcept {
 }
 
 bool Engine::set_gate(std::string_view name, bool open) noexcept {
-    if (!arbiter_.set_gate(name, open)) {
-        return false;
+    const bool own = detector_.has_state_gate() && name == state_gate_name;
+    const bool known = !own && arbiter_.has_gate(name);
+    if (known) {
+        move_gate(name, open);
     }
+    return known;
+}
+
+void Engine::move_gate(std::string_view name, bool open) noexcept {
+    arbiter_.set_gate(name, open);
+    detector_.use_memory(arbiter_.gates_open());
     journal_gate(name, open);
-    return true;
 }
 
 void Engine::journal_gate(std::string_view name, bool open) noexcept {

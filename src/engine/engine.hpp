@@ -36,8 +36,9 @@ struct EngineSettings {
 /// Thread: one, whoever owns it (the loop, in a session). After make nothing here allocates, locks, throws or formats.
 class Engine {
   public:
-    /// Emits nothing yet. The engine keeps references to `sink` and `port`; they must outlive it.
-    Engine(Detector detector, Arbiter arbiter, Hertz rate, EventSink& sink, PulsePort& port) noexcept;
+    /// Emits nothing yet. Allocates: where the detector has a gate of its own, the arbiter hears of it here. The engine
+    /// keeps references to `sink` and `port`; they must outlive it.
+    Engine(Detector detector, Arbiter arbiter, Hertz rate, EventSink& sink, PulsePort& port);
 
     /// First call of a session or run: emits the starting state and the gates. `armed`: start armed.
     void start(SampleIndex at, bool armed) noexcept;
@@ -51,7 +52,7 @@ class Engine {
 
     /// Commands take effect before the next frame, `next_sample()`, and are journaled there.
     void set_state(ArmState state, StateCause cause) noexcept;
-    /// False, and nothing happens, where no gate has that name.
+    /// False, and nothing happens, where no gate has that name that commands may move: the detector's own is not one.
     bool set_gate(std::string_view name, bool open) noexcept;
     /// The operator's text into the journal, cut into as many note events as it needs.
     void note(std::string_view text) noexcept;
@@ -70,6 +71,8 @@ class Engine {
     void skip(std::uint64_t frames, GapCause cause) noexcept;
     void close_gap() noexcept;
     void journal_floors() noexcept;
+    void follow_state() noexcept;
+    void move_gate(std::string_view name, bool open) noexcept;
     void journal_gate(std::string_view name, bool open) noexcept;
     [[nodiscard]] Event trigger_event(const Candidate& candidate) const noexcept;
     [[nodiscard]] static Event withheld_event(const Candidate& candidate, Rule rule) noexcept;

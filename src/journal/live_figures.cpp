@@ -46,6 +46,15 @@ void LiveCounters::count_one(const Event& event) {
         f.state = static_cast<ArmState>(event.code);
         f.state_cause = static_cast<StateCause>(event.as<StateDetail>().cause);
         break;
+    case EventKind::site: {
+        const auto channel = event.as<SiteDetail>().channel;
+        const auto state = static_cast<SiteState>(event.code);
+        std::erase_if(f.sites_out, [channel](const auto& out) { return out.first == channel; });
+        if (state != SiteState::alive) {
+            f.sites_out.emplace_back(channel, state);
+        }
+        break;
+    }
     case EventKind::floor: {
         const auto floor = event.as<FloorDetail>();
         const auto known = std::find_if(f.floors.begin(), f.floors.end(),

@@ -21,9 +21,10 @@ struct LiveFigures {
     std::array<std::uint64_t, packet_cause_count> packets{}; ///< by PacketCause
     std::uint64_t events_dropped = 0, frames_dropped = 0;    ///< rings were full, or the disk did not take them
     ArmState state = ArmState::not_armed;
-    StateCause state_cause = StateCause::start; ///< what moved it there
-    SampleIndex upto;                           ///< last place that an event or a stored frame spoke of
-    std::vector<FloorDetail> floors;            ///< newest of each site, in order of first appearance
+    StateCause state_cause = StateCause::start;                 ///< what moved it there
+    SampleIndex upto;                                           ///< last place that an event or a stored frame spoke of
+    std::vector<std::pair<std::uint16_t, SiteState>> sites_out; ///< channels left out of the evidence now, and why
+    std::vector<FloorDetail> floors;                            ///< newest of each site, in order of first appearance
     /// Packet arrived to loop done with it, over the last 4 to 5 s; empty where nothing was measured.
     std::optional<std::int64_t> loop_p50_ns, loop_p99_ns;
     std::uint64_t records = 0; ///< written to disk

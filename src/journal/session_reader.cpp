@@ -25,7 +25,7 @@ const std::filesystem::path& checked(const std::filesystem::path& folder) {
 bool said_by_the_engine(EventKind kind) {
     return kind == EventKind::detection || kind == EventKind::trigger || kind == EventKind::withheld ||
            kind == EventKind::gap || kind == EventKind::floor || kind == EventKind::state || kind == EventKind::gate ||
-           kind == EventKind::note;
+           kind == EventKind::site || kind == EventKind::note;
 }
 
 SampleIndex end_of(const ReadRecords& records) {
@@ -61,7 +61,10 @@ std::vector<FloorDetail> last_floors(std::span<const Event> events) {
     for (const auto& event : events) {
         if (event.kind == EventKind::floor) {
             const auto floor = event.as<FloorDetail>();
-            newest[floor.site] = floor;
+            const auto known = newest.find(floor.site);
+            if (known == newest.end() || floor.gates_closed <= known->second.gates_closed) {
+                newest[floor.site] = floor;
+            }
         }
     }
     std::vector<FloorDetail> floors;

@@ -53,6 +53,10 @@ TableEvent row_of(const Event& event, Hertz rate) {
     case EventKind::pulse:
         fill_pulse(row, event.as<PulseDetail>());
         break;
+    case EventKind::site:
+        row.extra["site"] = site_text(event.as<SiteDetail>().channel);
+        row.extra["cause"] = name_of(static_cast<SiteState>(event.code));
+        break;
     case EventKind::gap:
         row.duration_s = static_cast<double>(event.as<GapDetail>().frames) / rate.value;
         row.extra["cause"] = name_of(static_cast<GapCause>(event.code));
@@ -90,10 +94,10 @@ nlohmann::json dictionary() {
         {"duration", column("Pulse: order to rise until order to fall; gap: frames missing; else 0", "s")},
         {"sample", column("Place in the stream, counted in frames from 0; missing frames are counted too")},
         {"rule", column("The one rule that refused a withheld detection")},
-        {"cause", column("Why frames are missing")},
+        {"cause", column("Why frames are missing; site: flat or huge where it is left out, alive where it is back")},
         {"number", column("Count of the session's triggers, from 1")},
         {"scheduled", column("1 where a control schedule asked for the trigger, else 0")},
-        {"site", column("Channel in the stream that decided, or `mean` for the mean over sites")},
+        {"site", column("Channel in the stream that decided, or `mean` for the mean over sites and for evidence")},
         {"votes", column("Ripple sites above their thresholds")},
         {"envelope_uv", column("Envelope at the decision sample", "uV")},
         {"floor_uv", column("Running mean of the envelope", "uV")},
@@ -110,6 +114,7 @@ nlohmann::json dictionary() {
                                     {"withheld", "A detection that was refused"},
                                     {"pulse", "The order was written to the output"},
                                     {"gap", "Frames are missing from here"},
+                                    {"site", "A channel is left out of the evidence from here, or is back"},
                                     {"note", "The operator's mark"}};
     return json;
 }

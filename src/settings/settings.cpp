@@ -51,6 +51,12 @@ void check_together(const Settings& settings, const std::string& file) {
         throw Refusal(file + ": arbiter.schedule_file", "none", "a control schedule (condition: schedule)");
     }
     check_gates(settings.arbiter.gates, file);
+    const auto& gates = settings.arbiter.gates;
+    if (settings.detector.state_gate.on &&
+        std::any_of(gates.begin(), gates.end(), [](const auto& gate) { return gate.name == state_gate_name; })) {
+        throw Refusal(file + ": arbiter.gates", "a gate named '" + std::string(state_gate_name) + "'",
+                      "another name: the signal itself moves that one (detector.state_gate)");
+    }
 }
 
 } // namespace

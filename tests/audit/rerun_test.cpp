@@ -1,6 +1,7 @@
 #include "audit/hand_made_session.hpp"
 #include "audit/rerun.hpp"
 #include "audit/session_figures.hpp"
+#include "journal/session_tables.hpp"
 
 #include <gtest/gtest.h>
 
@@ -106,6 +107,35 @@ TEST(Rerun, FramesThatTheJournalDroppedEndTheComparison) {
     const auto rerun = rerun_session(session, loop.settings(), "test");
     EXPECT_TRUE(rerun.reproduced()) << all(rerun);
     EXPECT_EQ(rerun.upto, SampleIndex{5'000});
+}
+
+TEST(Rerun, ReproducesASessionOfEvidenceInWhichASiteDiesAndTellsOfIt) {
+    const TemporaryFolder temp;
+    auto settings = test_engine_settings();
+    settings.detector.method = DetectionMethod::evidence;
+    HandMadeLoop loop(temp, settings);
+    auto data = bursts(10'000);
+    for (std::size_t frame = 5'000; frame < 10'000; ++frame) {
+        data[2 * frame + 1] = 12.0F; // flat
+    }
+    loop.block(SampleIndex{0}, data);
+    const SessionReader session(loop.close());
+    const auto rerun = rerun_session(session, loop.settings(), "test");
+    EXPECT_TRUE(rerun.reproduced()) << all(rerun);
+    const auto& events = session.events();
+    const auto site =
+        std::find_if(events.begin(), events.end(), [](const Event& event) { return event.kind == EventKind::site; });
+    ASSERT_NE(site, events.end());
+    EXPECT_EQ(site->as<SiteDetail>().channel, 1);
+    EXPECT_EQ(site->code, static_cast<std::uint8_t>(SiteState::flat));
+    EXPECT_LE(site->sample.value, 5'000U + 2 * 1'250U) << "a whole second of it, and no more than the one before";
+    const auto figures = session_figures(events);
+    ASSERT_EQ(figures.sites.size(), 1U);
+    EXPECT_EQ(figures.sites[0].channel, 1);
+    const auto rows = session_table(events, Hertz{1250.0});
+    EXPECT_TRUE(std::any_of(rows.begin(), rows.end(), [](const TableEvent& row) {
+        return row.trial_type == "site" && row.extra.at("cause") == "flat";
+    }));
 }
 
 TEST(Rerun, ForgedVerdictIsReportedAsADifference) {

@@ -42,7 +42,8 @@ SweepPlan plan_of(double block_s, unsigned threads) {
 
 std::vector<DetectorSettings>
 some(const std::string& values = "order: [1, 2]}, threshold: {deviations: [2, 3, 4, 6]}") {
-    return candidates_of(TuneGrid::from_text("detector: {method: [envelope], filter: {" + values + "}", "here"), {}).settings;
+    return candidates_of(TuneGrid::from_text("detector: {method: [envelope], filter: {" + values + "}", "here"), {})
+        .settings;
 }
 
 bool same(const PartFigures& a, const PartFigures& b) {

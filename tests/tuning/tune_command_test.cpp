@@ -27,8 +27,9 @@ struct Tune {
         const InventedRecording recording(seconds, 10.0, ripple_uv);
         recording.write(folder / "r.wav");
         recording.write_truth(folder / "truth.tsv");
-        write_text(folder / "grid.yaml", "detector:\n  method: [envelope]\n  filter: {order: [1, 2]}\n  envelope: {smoothing_ms: [4, 8]}\n"
-                                         "  threshold: {deviations: [3, 3.5, 4, 4.5, 5, 6]}\n");
+        write_text(folder / "grid.yaml",
+                   "detector:\n  method: [envelope]\n  filter: {order: [1, 2]}\n  envelope: {smoothing_ms: [4, 8]}\n"
+                   "  threshold: {deviations: [3, 3.5, 4, 4.5, 5, 6]}\n");
     }
     static std::string arguments(const std::string& more) {
         return "tune r.wav --labels truth.tsv --grid grid.yaml --block-s 10 " + more;
@@ -59,6 +60,35 @@ TEST(TuneCommand, WritesSettingsThatADryRunTakesWithTheFiguresThatWerePromised) 
     EXPECT_NE(ran.out.find("\n*"), std::string::npos) << ran.out;
     EXPECT_GE(bench.text("curve.tsv").size(), 100U);
     EXPECT_FALSE(bench.has("tuned.yaml.work"));
+}
+
+// What is learned stands in the settings file, and a dry run with it gives the figures that were told.
+TEST(TuneCommand, LearnsTheEvidenceIntoSettingsThatADryRunTakes) {
+    const Tune bench(120.0, 45.0);
+    const auto ran = run_millpond("tune r.wav --labels truth.tsv --block-s 10 --learn --max-false-per-minute 3 "
+                                  "--out learned.yaml",
+                                  bench.folder.path());
+    ASSERT_EQ(ran.status, 0) << ran.err;
+    const auto settings = load_settings(bench.folder / "learned.yaml");
+    const auto& evidence = settings.detector.evidence;
+    EXPECT_EQ(settings.detector.method, DetectionMethod::evidence);
+    EXPECT_EQ(evidence.false_per_minute, 3.0);
+    ASSERT_EQ(evidence.mixes.size(), 1U);
+    EXPECT_EQ(evidence.mixes[0].weights.size(), 2U);
+    EXPECT_EQ(evidence.background.size(), 3U);
+    ASSERT_EQ(evidence.trained_on.size(), 1U);
+    EXPECT_EQ(evidence.trained_on[0].recording, "r.wav");
+    EXPECT_EQ(evidence.trained_on[0].checksum.size(), 8U);
+    EXPECT_NEAR(evidence.trained_on[0].minutes, 1.0, 0.01) << "every other block";
+    DryRunPlan dry;
+    dry.recording = bench.folder / "r.wav";
+    dry.settings = bench.folder / "learned.yaml";
+    dry.labels = bench.folder / "truth.tsv";
+    const auto score = dry_run(dry).score;
+    EXPECT_GT(score.hit_rate.share, 0.9);
+    EXPECT_NE(ran.out.find("training "), std::string::npos) << ran.out;
+    EXPECT_NE(ran.out.find("held out "), std::string::npos) << ran.out;
+    EXPECT_NE(ran.out.find("pattern uV"), std::string::npos) << ran.out;
 }
 
 TEST(TuneCommand, TakesOptionsBesideAGridAndRefusesAKeyThatBothHave) {

@@ -33,6 +33,9 @@ void run(const DetectorSettings& detector, Hertz rate, KernelWidth width, const 
     for (std::size_t second = 3; second < seconds; ++second) {
         test::add_burst(data, channels, second * per_second, per_second / 12, rate.value, 200.0, 400.0);
     }
+    for (std::size_t i = 4 * per_second; i < 6 * per_second; ++i) {
+        data[i * channels + 1] = detector.method == DetectionMethod::evidence ? 5.0F : data[i * channels + 1];
+    }
     Digest digest;
     Engine engine(Detector::make(detector, ripple_channels(channels), rate, width), Arbiter::make({}, rate), rate,
                   digest, digest);
@@ -44,8 +47,30 @@ void run(const DetectorSettings& detector, Hertz rate, KernelWidth width, const 
 
 } // namespace
 
+namespace {
+
+// Site 2 dies and comes back, so that weights are solved anew; gate and mains removal are on as well.
+void run_evidence(Hertz rate, bool learned) {
+    DetectorSettings detector;
+    detector.method = DetectionMethod::evidence;
+    detector.floor.settle_s = 1.0;
+    detector.evidence.site_watch.back_after_s = 1.0;
+    detector.state_gate.on = true;
+    detector.mains.method = MainsMethod::adaptive;
+    if (learned) {
+        detector.evidence.mixes = {{"learned", {0.2, 0.3, 0.2, 0.2, 0.1}, {1.0, 3.0, 2.0, 1.0, 0.5}}};
+        detector.evidence.background = {2.0, 0.5, 3.0, 0.2, 0.6, 2.0, 0.1, 0.2, 0.5, 2.5, 0.1, 0.1, 0.2, 0.4, 1.5};
+        detector.evidence.features[0].mix = "learned";
+    }
+    run(detector, rate, KernelWidth::automatic, learned ? "evidence learned" : "evidence default");
+}
+
+} // namespace
+
 int main() {
     for (const double rate : {1250.0, 20000.0, 30000.0}) {
+        run_evidence(Hertz{rate}, false);
+        run_evidence(Hertz{rate}, true);
         for (const auto& family : filter_families) {
             for (const auto& method : envelope_methods) {
                 for (const int order : {2, 3, 5}) {
