@@ -61,14 +61,15 @@ std::vector<SampleIndex> detections_of(const DetectorSettings& settings, const P
     return detections_to_score(ran(settings, recording).events());
 }
 
-Curve curve_of(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings, const Judged& judged) {
-    const auto& ladder = settings.method == DetectionMethod::evidence ? evidence_ladder : textbook_ladder;
-    Curve curve;
-    std::vector<DetectorSettings> all;
-    for (std::size_t i = 0; i < ladder.count; ++i) {
-        curve.push_back({ladder.at(i), std::vector<Counts>(recordings.size())});
-        all.push_back(with_threshold(settings, ladder.at(i)));
-    }
+namespace {
+
+Counts judged_counts(const ProofRecording& recording, std::span<const SampleIndex> detections,
+                     const Intervals& eligible, const Judged& judged) {
+    return counts_of(recording, detections, judged_part(eligible, recording, judged));
+}
+
+void run_thresholds_together(Curve& curve, const std::vector<DetectorSettings>& all,
+                             const std::vector<ProofRecording>& recordings, const Judged& judged) {
     in_parallel(recordings.size(), [&](std::size_t i) {
         const auto& recording = recordings[i];
         const std::atomic<bool> never{false};
@@ -76,10 +77,34 @@ Curve curve_of(const DetectorSettings& settings, const std::vector<ProofRecordin
         const auto pass = run_shared_pass(all, recording.channels, recording.rate, recording.data, never, seen);
         for (std::size_t k = 0; k < curve.size(); ++k) {
             const auto& found = pass.found[k];
-            curve[k].by_recording[i] =
-                counts_of(recording, found.detections, judged_part(found.eligible, recording, judged));
+            curve[k].by_recording[i] = judged_counts(recording, found.detections, found.eligible, judged);
         }
     });
+}
+
+void run_thresholds_apart(Curve& curve, const std::vector<DetectorSettings>& all,
+                          const std::vector<ProofRecording>& recordings, const Judged& judged) {
+    in_parallel(all.size() * recordings.size(), [&](std::size_t job) {
+        const std::size_t k = job / recordings.size(), i = job % recordings.size();
+        const auto engine = ran(all[k], recordings[i]);
+        curve[k].by_recording[i] =
+            judged_counts(recordings[i], detections_to_score(engine.events()), engine.eligible(), judged);
+    });
+}
+
+} // namespace
+
+// The evidence detector has vetoes of its own that a shared pass does not know: there the whole engine runs.
+Curve curve_of(const DetectorSettings& settings, const std::vector<ProofRecording>& recordings, const Judged& judged) {
+    const bool evidence = settings.method == DetectionMethod::evidence;
+    const auto& ladder = evidence ? evidence_ladder : textbook_ladder;
+    Curve curve;
+    std::vector<DetectorSettings> all;
+    for (std::size_t i = 0; i < ladder.count; ++i) {
+        curve.push_back({ladder.at(i), std::vector<Counts>(recordings.size())});
+        all.push_back(with_threshold(settings, ladder.at(i)));
+    }
+    (evidence ? run_thresholds_apart : run_thresholds_together)(curve, all, recordings, judged);
     return curve;
 }
 
@@ -113,7 +138,7 @@ DetectorSettings two_bands(double factor, double smoothing_ms) {
 DetectorSettings choose_two_bands(const std::vector<ProofRecording>& training) {
     DetectorSettings best;
     double most = -1.0;
-    for (const double smoothing_ms : {4.0, 6.0, 8.0, 10.0, 12.0, 16.0}) {
+    for (const double smoothing_ms : {6.0, 10.0, 16.0}) {
         const auto settings = two_bands(1.5, smoothing_ms);
         double found = 0.0;
         for (const auto& point : curve_of(settings, training)) {
