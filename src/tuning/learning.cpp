@@ -20,6 +20,11 @@ constexpr std::size_t thresholds = 28; // up to about 20 deviations
 constexpr std::uint64_t fewest_false = 3;
 constexpr double least_fall = 1.3; // of the rate from one point to the next that is kept
 
+bool has_reference(const TuningRecording& recording) {
+    return std::any_of(recording.channels.begin(), recording.channels.end(),
+                       [](const auto& channel) { return channel.role == ChannelRole::reference; });
+}
+
 bool needs_mix(const FeatureSettings& feature) {
     return feature.mix == learned_mix;
 }
@@ -97,8 +102,13 @@ std::vector<CalibrationPoint> calibrate(std::span<const TuningRecording> recordi
 
 std::vector<FeatureSettings> usual_features(std::string_view mix) {
     const std::string on(mix);
-    return {{on, 150.0, 240.0, 1, 10.0, 1.0},  {on, 175.0, 215.0, 1, 0.0, 1.0},   {on, 320.0, 560.0, 2, 12.0, -1.0},
-            {on, 260.0, 400.0, 2, 12.0, -1.0}, {on, 100.0, 140.0, 1, 12.0, -1.0}, {on, 60.0, 100.0, 1, 12.0, -1.0}};
+    std::vector<FeatureSettings> features{{on, 150.0, 240.0, 1, 10.0, 1.0},  {on, 175.0, 215.0, 1, 0.0, 1.0},
+                                          {on, 320.0, 560.0, 2, 12.0, -1.0}, {on, 260.0, 400.0, 2, 12.0, -1.0},
+                                          {on, 100.0, 140.0, 1, 12.0, -1.0}, {on, 60.0, 100.0, 1, 12.0, -1.0}};
+    if (mix == sites_mix) {
+        features.push_back({std::string(reference_mix), 150.0, 240.0, 1, 10.0, -1.0}); // a learned mix has it in itself
+    }
+    return features;
 }
 
 Learned learn_evidence(std::span<const TuningRecording> recordings, const DetectorSettings& base,
@@ -112,6 +122,9 @@ Learned learn_evidence(std::span<const TuningRecording> recordings, const Detect
     auto& evidence = learned.detector.evidence;
     learned.detector.method = DetectionMethod::evidence;
     evidence.features = plan.features;
+    if (!std::all_of(recordings.begin(), recordings.end(), has_reference)) {
+        std::erase_if(evidence.features, [](const auto& feature) { return feature.mix == reference_mix; });
+    }
     evidence.mixes.clear();
     evidence.background.clear();
     if (std::any_of(plan.features.begin(), plan.features.end(), needs_mix)) {

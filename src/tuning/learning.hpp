@@ -29,7 +29,8 @@ struct LearningPlan {
 inline constexpr std::string_view learned_mix = "ripple";
 
 /// Features that did best on invented recordings: ripple band twice (broad and smooth, narrow and quick), the bands
-/// above and below it against it. On the mix of that name.
+/// above and below it against it. On the mix of that name; on the plain mean of sites the reference counts against it
+/// too, where all recordings have one.
 [[nodiscard]] std::vector<FeatureSettings> usual_features(std::string_view mix);
 
 struct Learned {
