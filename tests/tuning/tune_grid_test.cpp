@@ -7,6 +7,12 @@
 namespace millpond {
 namespace {
 
+DetectorSettings one_band() {
+    DetectorSettings settings;
+    settings.method = DetectionMethod::envelope;
+    return settings;
+}
+
 using test::TemporaryFolder;
 
 std::string refusal_of(const std::string& yaml) {
@@ -30,7 +36,7 @@ TEST(TuneGrid, HoldsEveryCombinationTheLastKeyOfTheSettingsInnermost) {
     const auto grid = TuneGrid::from_text("detector: {threshold: {deviations: [4, 5]}, filter: {order: [1, 2, 3]},\n"
                                           "  envelope: {method: [rectify, energy]}, vote: {rule: count}}",
                                           "here");
-    const auto candidates = candidates_of(grid, {});
+    const auto candidates = candidates_of(grid, one_band());
     ASSERT_EQ(candidates.settings.size(), 12U);
     ASSERT_EQ(candidates.axes.size(), 4U);
     EXPECT_EQ(candidates.axes[0].key, "filter.order");
@@ -43,7 +49,7 @@ TEST(TuneGrid, HoldsEveryCombinationTheLastKeyOfTheSettingsInnermost) {
 }
 
 TEST(TuneGrid, LeavesOtherKeysAsTheSettingsHaveThem) {
-    DetectorSettings base;
+    auto base = one_band();
     base.filter.low_hz = 111.0;
     base.blanking_ms = 7.0;
     const auto candidates = candidates_of(TuneGrid::from_text("detector: {filter: {order: [2]}}", "here"), base);
@@ -53,18 +59,20 @@ TEST(TuneGrid, LeavesOtherKeysAsTheSettingsHaveThem) {
 }
 
 TEST(TuneGrid, KeepsTheReArmLevelBelowTheThresholdUnlessItIsSweptItself) {
-    const auto kept = candidates_of(TuneGrid::from_text("detector: {threshold: {deviations: [1.5, 4]}}", "here"), {});
+    const auto kept =
+        candidates_of(TuneGrid::from_text("detector: {threshold: {deviations: [1.5, 4]}}", "here"), one_band());
     EXPECT_EQ(kept.settings[0].threshold.rearm_deviations, 1.5);
     EXPECT_EQ(kept.settings[1].threshold.rearm_deviations, ThresholdSettings{}.rearm_deviations);
     const auto swept = candidates_of(
-        TuneGrid::from_text("detector: {threshold: {deviations: [1.5, 4], rearm_deviations: [1, 3]}}", "here"), {});
+        TuneGrid::from_text("detector: {threshold: {deviations: [1.5, 4], rearm_deviations: [1, 3]}}", "here"),
+        one_band());
     EXPECT_EQ(swept.settings.size(), 3U); // re-arming at 3 above a threshold of 1.5 is none
     EXPECT_EQ(swept.left_out, 1U);
 }
 
 TEST(TuneGrid, LeavesOutBandsWithTheirEdgesTheWrongWayRound) {
-    const auto candidates =
-        candidates_of(TuneGrid::from_text("detector: {filter: {low_hz: [130, 260], high_hz: [250, 300]}}", "here"), {});
+    const auto candidates = candidates_of(
+        TuneGrid::from_text("detector: {filter: {low_hz: [130, 260], high_hz: [250, 300]}}", "here"), one_band());
     EXPECT_EQ(candidates.settings.size(), 3U);
     EXPECT_EQ(candidates.left_out, 1U);
 }
@@ -98,7 +106,8 @@ TEST(TuneGrid, RefusesKeysThatNoRecordingWithoutPulsesCanJudge) {
 
 TEST(TuneGrid, TakesTheMethodAndWhatEvidenceIsAskedForButNoLists) {
     const auto candidates = candidates_of(
-        TuneGrid::from_text("detector: {method: [evidence], evidence: {false_per_minute: [0.5, 2]}}", "here"), {});
+        TuneGrid::from_text("detector: {method: [evidence], evidence: {false_per_minute: [0.5, 2]}}", "here"),
+        one_band());
     ASSERT_EQ(candidates.settings.size(), 2U);
     EXPECT_EQ(candidates.settings[1].method, DetectionMethod::evidence);
     EXPECT_EQ(candidates.settings[1].evidence.false_per_minute, 2.0);
@@ -109,12 +118,22 @@ TEST(TuneGrid, TakesTheMethodAndWhatEvidenceIsAskedForButNoLists) {
 TEST(TuneGrid, TakesInAnotherOneButNoKeyTwice) {
     auto grid = TuneGrid::from_text("detector: {filter: {order: [1, 2]}}", "here");
     grid.add(TuneGrid::from_text("detector: {filter: {low_hz: [120, 130]}, threshold: {deviations: [4]}}", "there"));
-    const auto candidates = candidates_of(grid, {});
+    const auto candidates = candidates_of(grid, one_band());
     ASSERT_EQ(candidates.settings.size(), 4U);
     EXPECT_EQ(candidates.axes.front().key, "filter.low_hz");
     EXPECT_EQ(candidates.settings[3].filter.low_hz, 130.0);
     EXPECT_EQ(candidates.settings[3].filter.order, 2);
     EXPECT_THROW(grid.add(TuneGrid::from_text("detector: {filter: {order: [3]}}", "there")), Refusal);
+}
+
+TEST(TuneGrid, RefusesKeysThatTheMethodDoesNotLookAt) {
+    DetectorSettings evidence;
+    EXPECT_THROW(
+        static_cast<void>(candidates_of(TuneGrid::from_text("detector: {filter: {order: [1, 2]}}", "here"), evidence)),
+        Refusal);
+    EXPECT_THROW(static_cast<void>(candidates_of(
+                     TuneGrid::from_text("detector: {evidence: {false_per_minute: [1, 2]}}", "here"), one_band())),
+                 Refusal);
 }
 
 } // namespace
