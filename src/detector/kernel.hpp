@@ -26,6 +26,7 @@ struct KernelHum {
     double* calm = nullptr; // [lanes]: the usual envelope; far above it nothing is learned
     double gain = 0.0;      // what a frame adds to what is learned
     double calm_weight = 0.0;
+    double level_follow = 0.0;                      // share of a frame's distance that the level goes after the signal
     std::uint64_t calm_frames = 0, calm_needed = 0; // seen; before so many, all is taken for usual
 };
 

@@ -179,14 +179,20 @@ template <bool mixed> inline Tally compare_to_floor(KernelState& state, double w
 // An envelope of twice its usual size is an event, not hum.
 constexpr double far_above_calm = 2.0, most_of_calm = 4.0;
 
-// `signal` without the hum that its lane has learned; learns from what is left.
-inline Doubles without_hum(KernelState& state, std::size_t lane, Doubles signal, double calm_weight) {
-    auto& hum = state.hum;
-    Doubles left = signal;
+// The hum that the lane has learned, as it is now.
+inline Doubles hum_now(const KernelState& state, std::size_t lane) {
+    const auto& hum = state.hum;
+    Doubles sum = {};
     for (std::size_t h = 0; h < hum.harmonics; ++h) {
-        left -= hum.cosine[h] * at(hum.in_phase + h * state.lanes, lane) +
-                hum.sine[h] * at(hum.quadrature + h * state.lanes, lane);
+        sum += hum.cosine[h] * at(hum.in_phase + h * state.lanes, lane) +
+               hum.sine[h] * at(hum.quadrature + h * state.lanes, lane);
     }
+    return sum;
+}
+
+// Learns hum from what was left without it.
+inline void learn_hum(KernelState& state, std::size_t lane, Doubles left, double calm_weight) {
+    auto& hum = state.hum;
     const Doubles envelope = at(state.envelope, lane);
     Doubles& calm = at(hum.calm, lane);
     const bool warming = hum.calm_frames < hum.calm_needed;
@@ -200,7 +206,6 @@ inline Doubles without_hum(KernelState& state, std::size_t lane, Doubles signal,
         at(hum.in_phase + h * state.lanes, lane) += step * hum.cosine[h];
         at(hum.quadrature + h * state.lanes, lane) += step * hum.sine[h];
     }
-    return left;
 }
 
 // Beyond ten times the usual a distance enters the usual as that much, and a little more, so that a channel which was
@@ -252,13 +257,17 @@ inline void envelopes_of_frame(KernelState& state, const float* frame, bool whol
         }
         Doubles& level = at(state.level, lane);
         Doubles& last = at(state.last, lane);
+        if constexpr (hum) {
+            raw -=
+                hum_now(state, lane); // before the splice: hum goes on through it, and must not be held with the rest
+        }
         if (resume) {
             level = raw - last;
         }
-        last = raw - level;
-        Doubles signal = last;
+        const Doubles signal = last = raw - level;
         if constexpr (hum) {
-            signal = without_hum(state, lane, last, calm_weight);
+            level += state.hum.level_follow * signal; // or splices would add up to an offset that is learned as hum
+            learn_hum(state, lane, signal, calm_weight);
         }
         if constexpr (mixed) {
             watch_for_jumps(state, lane, signal, jump_weight);

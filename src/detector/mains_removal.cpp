@@ -10,6 +10,7 @@ namespace millpond {
 namespace {
 
 constexpr double step_ms = 250.0;
+constexpr double level_ms = 100.0; // time in which an offset that a splice left behind is forgotten
 constexpr double most_off_hz = 1.0;
 constexpr double share_of_step = 0.2; // of the frequency's error that one step takes away
 
@@ -51,6 +52,7 @@ void MainsRemoval::prepare(const MainsRemovalSettings& settings, Hertz rate, Ker
     hum.turn_sine = turn_sine_.data();
     hum.calm = calm_.data();
     hum.gain = std::min(2.0 / frames, 0.1);
+    hum.level_follow = 1000.0 / (level_ms * rate.value);
     hum.calm_weight = 1.0 / (1.0 + frames);
     hum.calm_needed = frames_in_ms(1000.0, rate);
 }
