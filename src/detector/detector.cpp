@@ -261,13 +261,13 @@ std::size_t Detector::floor_count() const noexcept {
     return state_->lanes.signal_lanes + state_->sum_lanes() - state_->first_floor();
 }
 
-FloorDetail Detector::floor(std::size_t number) const noexcept {
+FloorDetail Detector::floor(std::size_t i) const noexcept {
     const auto& s = *state_;
-    const std::size_t i = s.first_floor() + number;
-    return {s.mean[i],
-            s.spread[i] * deviation_per_spread,
-            static_cast<float>(s.mean[i] + s.above[i] * s.spread[i]),
-            s.channel_at(i),
+    const std::size_t lane = s.first_floor() + i;
+    return {s.mean[lane],
+            s.spread[lane] * deviation_per_spread,
+            static_cast<float>(s.mean[lane] + s.above[lane] * s.spread[lane]),
+            s.channel_at(lane),
             static_cast<std::uint16_t>(settled() ? 1 : 0),
             s.floor_frames,
             s.gates_open ? 0U : 1U};

@@ -178,7 +178,7 @@ void Detector::State::allocate_floor() {
     lanes.sum_weight = sum_lanes() > 0 ? sum_weight.data() : nullptr;
 }
 
-void Detector::State::vote_of(std::size_t lane) {
+void Detector::State::vote_of(std::size_t lane) const {
     above[lane] = settings.threshold.deviations * deviation_per_spread;
     rearm[lane] = settings.threshold.rearm_deviations * deviation_per_spread;
     above_adds[lane] = Tally::vote;

@@ -46,7 +46,7 @@ struct Detector::State {
     void allocate_own_filters(const std::string& where);
     void allocate_envelope();
     void allocate_floor();
-    void vote_of(std::size_t lane);
+    void vote_of(std::size_t lane) const;
     void allocate_sites_floor();
     void allocate_jumps();
     void allocate_evidence_floor(const std::string& where);

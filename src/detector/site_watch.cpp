@@ -11,7 +11,7 @@ constexpr std::uint32_t seconds_of_memory = 30;
 
 } // namespace
 
-SiteWatch SiteWatch::make(const SiteWatchSettings& settings, std::vector<ChannelRole> inputs, Hertz rate) {
+SiteWatch SiteWatch::make(const SiteWatchSettings& settings, const std::vector<ChannelRole>& inputs, Hertz rate) {
     SiteWatch watch;
     watch.settings_ = settings;
     watch.stride_ = std::max<std::uint64_t>(static_cast<std::uint64_t>(rate.value / looks_per_second), 1);

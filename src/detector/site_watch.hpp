@@ -13,7 +13,7 @@ namespace millpond {
 
 class SiteWatch {
   public:
-    static SiteWatch make(const SiteWatchSettings& settings, std::vector<ChannelRole> inputs, Hertz rate);
+    static SiteWatch make(const SiteWatchSettings& settings, const std::vector<ChannelRole>& inputs, Hertz rate);
 
     /// Frames from `position` to the next verdict's place: blocks lie on multiples of their length, whatever the
     /// packets.
