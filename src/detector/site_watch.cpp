@@ -108,16 +108,16 @@ SiteState SiteWatch::state_now(const Input& input, double others_rose) noexcept 
 }
 
 double SiteWatch::median_moved() noexcept {
-    std::transform(inputs_.begin(), inputs_.end(), sorted_.begin(), [](const Input& input) { return input.moved; });
-    const auto middle = sorted_.begin() + static_cast<std::ptrdiff_t>((sorted_.size() - 1) / 2);
-    std::nth_element(sorted_.begin(), middle, sorted_.end());
-    return *middle;
+    return median_of([](const Input& input) { return input.moved; });
 }
 
 /// How many times its usual movement the median channel made: what moves all of them is no fault of a site.
 double SiteWatch::median_rise() noexcept {
-    std::transform(inputs_.begin(), inputs_.end(), sorted_.begin(),
-                   [](const Input& input) { return input.typical > 0.0 ? input.moved / input.typical : 0.0; });
+    return median_of([](const Input& input) { return input.typical > 0.0 ? input.moved / input.typical : 0.0; });
+}
+
+template <class Figure> double SiteWatch::median_of(Figure figure) noexcept {
+    std::transform(inputs_.begin(), inputs_.end(), sorted_.begin(), figure);
     const auto middle = sorted_.begin() + static_cast<std::ptrdiff_t>((sorted_.size() - 1) / 2);
     std::nth_element(sorted_.begin(), middle, sorted_.end());
     return *middle;

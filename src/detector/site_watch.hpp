@@ -47,6 +47,7 @@ class SiteWatch {
     void look(const float* frame, const std::uint32_t* channel_of) noexcept;
     bool judge() noexcept;
     [[nodiscard]] SiteState state_now(const Input& input, double others_rose) noexcept;
+    template <class Figure> double median_of(Figure figure) noexcept;
     [[nodiscard]] double median_moved() noexcept;
     [[nodiscard]] double median_rise() noexcept;
     [[nodiscard]] bool last_ripple_site(const Input& input) const noexcept;

@@ -75,28 +75,8 @@ StateGate::Band StateGate::band_of(double low_hz, double high_hz, Hertz rate, co
     filter.high_hz = high_hz;
     filter.order = 2;
     Band band;
-    band.sections = design_bandpass(filter, rate, where).sections;
-    band.states.resize(band.sections.size());
+    band.filter = SectionCascade(design_bandpass(filter, rate, where).sections);
     return band;
-}
-
-double StateGate::Band::filter(double value) noexcept {
-    for (std::size_t i = 0; i < sections.size(); ++i) {
-        const auto& section = sections[i];
-        auto& state = states[i];
-        const double out = section.b0 * value + state[0];
-        state[0] = (section.b1 * value + state[1]) - section.a1 * out;
-        state[1] = section.b2 * value - section.a2 * out;
-        value = out;
-    }
-    return value;
-}
-
-void StateGate::Band::clear() noexcept {
-    for (auto& state : states) {
-        state = {0.0, 0.0};
-    }
-    power = 0.0;
 }
 
 bool StateGate::take(std::uint64_t position, const float* frames, std::size_t count, std::size_t channels) noexcept {
@@ -145,7 +125,7 @@ void StateGate::step(double value) noexcept {
     ++blocks_;
     const double weight = std::max(smoothing_, 1.0 / static_cast<double>(blocks_));
     for (auto* band : {&theta_, &delta_}) {
-        const double out = band->filter(last_);
+        const double out = band->filter.next(last_);
         band->power += weight * (out * out - band->power);
     }
 }
@@ -173,8 +153,10 @@ void StateGate::use_alive(const std::vector<bool>& alive) noexcept {
 }
 
 void StateGate::reset() noexcept {
-    theta_.clear();
-    delta_.clear();
+    for (auto* band : {&theta_, &delta_}) {
+        band->filter.clear();
+        band->power = 0.0;
+    }
     level_ = last_ = 0.0;
     blocks_ = next_block_ = 0;
     resume_ = true;

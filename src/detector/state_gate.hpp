@@ -3,7 +3,7 @@
 #pragma once
 
 #include "base/channels.hpp"
-#include "detector/bandpass_design.hpp"
+#include "detector/section_cascade.hpp"
 #include "detector/state_gate_settings.hpp"
 
 #include <cstdint>
@@ -39,12 +39,8 @@ class StateGate {
 
   private:
     struct Band {
-        std::vector<Section> sections;
-        std::vector<std::array<double, 2>> states;
+        SectionCascade filter;
         double power = 0.0;
-
-        double filter(double value) noexcept;
-        void clear() noexcept;
     };
     struct Source {
         std::uint32_t channel;

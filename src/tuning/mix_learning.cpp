@@ -1,7 +1,7 @@
 #include "tuning/mix_learning.hpp"
 
 #include "base/refusal.hpp"
-#include "detector/bandpass_design.hpp"
+#include "detector/section_cascade.hpp"
 
 #include <Eigen/Eigenvalues>
 #include <algorithm>
@@ -15,23 +15,6 @@ using Vector = Eigen::VectorXd;
 
 constexpr double near_ripple_ms = 50.0; // neither ripple nor background
 constexpr double most_energy = 50.0;    // times the median's: what an artefact weighs at most
-
-struct Filter {
-    explicit Filter(const BandpassDesign& of) : design(of), held(2 * of.sections.size(), 0.0) {}
-
-    double next(double value) {
-        for (std::size_t i = 0; i < design.sections.size(); ++i) {
-            const auto& s = design.sections[i];
-            const double out = s.b0 * value + held[2 * i];
-            held[2 * i] = s.b1 * value + held[2 * i + 1] - s.a1 * out;
-            held[2 * i + 1] = s.b2 * value - s.a2 * out;
-            value = out;
-        }
-        return value;
-    }
-    const BandpassDesign& design;
-    std::vector<double> held;
-};
 
 std::vector<std::size_t> looked_at(const Channels& channels) {
     std::vector<std::size_t> places;
@@ -55,22 +38,19 @@ std::vector<Side> sides_of(const TuningRecording& recording, const Intervals& tr
         std::fill(sides.begin() + static_cast<std::ptrdiff_t>(interval.from.value),
                   sides.begin() + static_cast<std::ptrdiff_t>(interval.to.value), Side::background);
     }
+    const auto in_training = sides;
     const auto margin = frames_in_ms(near_ripple_ms, rate);
-    const auto mark = [&](std::uint64_t from, std::uint64_t to, Side side) {
-        for (auto at = from; at < std::min<std::uint64_t>(to, sides.size()); ++at) {
-            sides[at] = sides[at] == Side::neither ? Side::neither : side;
-        }
+    const auto at = [&](std::uint64_t frame) {
+        return sides.begin() + static_cast<std::ptrdiff_t>(std::min<std::uint64_t>(frame, sides.size()));
     };
     for (const auto& ripple : recording.truth) {
         const auto onset = ripple.onset.value;
-        mark(onset - std::min(onset, margin), ripple.end.value + margin + 1, Side::neither);
+        std::fill(at(onset - std::min(onset, margin)), at(ripple.end.value + margin + 1), Side::neither);
     }
     for (const auto& ripple : recording.truth) {
-        for (auto at = ripple.onset.value; at <= std::min<std::uint64_t>(ripple.end.value, sides.size() - 1); ++at) {
-            const bool inside = std::any_of(training.begin(), training.end(), [&](const Interval& interval) {
-                return interval.from.value <= at && at < interval.to.value;
-            });
-            sides[at] = inside ? Side::ripple : sides[at];
+        for (auto frame = ripple.onset.value; frame <= std::min<std::uint64_t>(ripple.end.value, sides.size() - 1);
+             ++frame) {
+            sides[frame] = in_training[frame] == Side::background ? Side::ripple : sides[frame];
         }
     }
     return sides;
@@ -105,12 +85,12 @@ Matrix band_of(const TuningRecording& recording, const std::vector<std::size_t>&
     Matrix band(static_cast<Eigen::Index>(places.size()), static_cast<Eigen::Index>(recording.frames()));
     const std::size_t settle = design.settle_samples();
     for (std::size_t c = 0; c < places.size(); ++c) {
-        Filter filter(design);
+        SectionCascade filter(design.sections);
         std::size_t unsettled = settle;
         for (std::size_t i = 0; i < recording.frames(); ++i) {
             const double value = static_cast<double>(recording.data[i * recording.channels.size() + places[c]]);
             if (!std::isfinite(value)) {
-                std::fill(filter.held.begin(), filter.held.end(), 0.0);
+                filter.clear();
                 unsettled = settle;
             }
             band(static_cast<Eigen::Index>(c), static_cast<Eigen::Index>(i)) =

@@ -140,8 +140,9 @@ class Learner {
         std::optional<std::size_t> best;
         double most = -INFINITY;
         for (auto i = from; i < std::min<std::uint64_t>(to, frames_of(track)); ++i) {
-            if (known(track, i) && evidence({t, i}) > most) {
-                most = evidence({t, i});
+            const double here = known(track, i) ? evidence({t, i}) : -INFINITY;
+            if (here > most) {
+                most = here;
                 best = i;
             }
         }

@@ -2,12 +2,12 @@
 // and its rules written anew.
 #include "support/files.hpp"
 #include "support/python.hpp"
+#include "support/textbook_json.hpp"
 #include "synth/named_scenes.hpp"
 #include "synth/scene.hpp"
 #include "tuning/offline_engine.hpp"
 
 #include <gtest/gtest.h>
-#include <nlohmann/json.hpp>
 
 namespace millpond {
 namespace {
@@ -28,35 +28,14 @@ Recording hard_scene(double seconds) {
     return recording;
 }
 
-std::string json_of(const DetectorSettings& settings, const Recording& recording) {
-    nlohmann::json json{{"rate_hz", recording.rate.value},
-                        {"low_hz", settings.filter.low_hz},
-                        {"high_hz", settings.filter.high_hz},
-                        {"order", settings.filter.order},
-                        {"method", word_for<EnvelopeMethod>(envelope_methods, settings.envelope.method)},
-                        {"smoothing_ms", settings.envelope.smoothing_ms},
-                        {"time_constant_s", settings.floor.time_constant_s},
-                        {"clip_deviations", settings.floor.clip_deviations},
-                        {"settle_s", settings.floor.settle_s},
-                        {"freeze_ms", settings.floor.freeze_ms},
-                        {"deviations", settings.threshold.deviations},
-                        {"rearm_deviations", settings.threshold.rearm_deviations},
-                        {"rule", word_for<VoteRule>(vote_rules, settings.vote.rule)},
-                        {"sites_needed", settings.vote.sites_needed},
-                        {"veto_deviations", settings.veto.deviations},
-                        {"veto_window_ms", settings.veto.window_ms}};
-    for (const auto& channel : recording.channels) {
-        json["roles"].push_back(word_for<ChannelRole>(channel_roles, channel.role));
-    }
-    return json.dump();
-}
-
 std::vector<std::uint64_t> by_scipy(const DetectorSettings& settings, const Recording& recording) {
     const test::TemporaryFolder folder;
     const auto frames = folder.file(
         "frames.f32", {reinterpret_cast<const char*>(recording.data.data()), recording.data.size() * sizeof(float)});
-    const auto ran = test::run("/usr/bin/python3 " MILLPOND_SOURCE_DIR "/bench/scipy_textbook.py " + frames.string() +
-                               " " + folder.file("settings.json", json_of(settings, recording)).string());
+    const auto ran =
+        test::run("/usr/bin/python3 " MILLPOND_SOURCE_DIR "/bench/scipy_textbook.py " + frames.string() + " " +
+                  folder.file("settings.json", test::textbook_json(settings, recording.channels, recording.rate).dump())
+                      .string());
     EXPECT_EQ(ran.status, 0) << ran.err;
     std::istringstream lines(ran.out);
     std::vector<std::uint64_t> found;
