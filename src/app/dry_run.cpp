@@ -74,7 +74,7 @@ DryRun dry_run(const DryRunPlan& plan) {
     run.channels = channels_for(settings, reader->info().channels, plan.settings.string());
     run.settings_hash = settings_hash(settings, run.channels);
     run.armed = plan.armed;
-    run.pulse_width_ms = settings.output.width_ms;
+    run.pulse_width_ms = pulse_output(settings).width_ms;
     notice_rate(settings, run.rate);
 
     // The engine first: where a band does not fit the rate, the detector's is the one to name.

@@ -153,6 +153,21 @@ std::string decisions_text(const AuditResult& r) {
     return text;
 }
 
+std::string outputs_text(const AuditResult& r) {
+    std::string text = "\nOutputs, us by this computer's clock\n";
+    for (const auto& output : r.figures.outputs) {
+        text += fmt::format("  {} ({}): {} {} ended, device lost {} times", output.name, output.output, output.ends,
+                            output.marker ? "markers" : "pulses", output.lost);
+        if (output.width && output.late) {
+            text += fmt::format("; width median {}, most {}; fall late by median {}, p99 {}, most {}",
+                                micros(output.width->p50), micros(output.width->max), micros(output.late->p50),
+                                micros(output.late->p99), micros(output.late->max));
+        }
+        text += "\n";
+    }
+    return r.figures.outputs.empty() ? text + "  none\n" : text;
+}
+
 std::string stream_text(const AuditResult& r) {
     const auto rate = r.provenance.about.rate;
     const auto& f = r.figures;
@@ -212,8 +227,8 @@ std::string verdict_text(const AuditResult& r) {
 } // namespace
 
 std::string audit_text(const AuditResult& r) {
-    return head(r) + rerun_text(r) + decisions_text(r) + score_text(r) + latency_text(r) + stream_text(r) +
-           floor_text(r) + verdict_text(r);
+    return head(r) + rerun_text(r) + decisions_text(r) + score_text(r) + latency_text(r) + outputs_text(r) +
+           stream_text(r) + floor_text(r) + verdict_text(r);
 }
 
 } // namespace millpond

@@ -27,9 +27,6 @@ void count(SessionFigures& figures, const Event& event) {
     case EventKind::pulse:
         ++figures.pulses;
         break;
-    case EventKind::pulse_end:
-        ++figures.pulse_ends;
-        break;
     case EventKind::packet_count:
         add(figures.packets, event.code, event.as<CountDetail>().count);
         break;
@@ -105,6 +102,10 @@ SessionFigures session_figures(std::span<const Event> events) {
         figures.floors.push_back(figure_of(of_site));
     }
     figures.notes = notes_in(events);
+    figures.outputs = output_figures(events);
+    const auto& outputs = figures.outputs;
+    const auto first = std::find_if(outputs.begin(), outputs.end(), [](const auto& output) { return !output.marker; });
+    figures.pulse_ends = first != outputs.end() ? first->ends : 0;
     return figures;
 }
 

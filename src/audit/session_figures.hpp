@@ -1,6 +1,7 @@
 // What a session's events add up to. Thread: cold.
 #pragma once
 
+#include "audit/output_figures.hpp"
 #include "base/event.hpp"
 #include "journal/session_reader.hpp"
 
@@ -50,7 +51,8 @@ struct SiteFigure {
 };
 
 struct SessionFigures {
-    std::uint64_t detections = 0, triggers = 0, scheduled_triggers = 0, pulses = 0, pulse_ends = 0;
+    std::uint64_t detections = 0, triggers = 0, scheduled_triggers = 0, pulses = 0;
+    std::uint64_t pulse_ends = 0;                            ///< of the first output that follows pulses
     std::array<std::uint64_t, rule_count> withheld{};        ///< by Rule
     std::array<std::uint64_t, packet_cause_count> packets{}; ///< by PacketCause
     std::array<std::uint64_t, 3> dropped{};                  ///< by Dropped
@@ -58,6 +60,7 @@ struct SessionFigures {
     std::vector<StateFigure> states;
     std::vector<GateFigure> gates;
     std::vector<SiteFigure> sites; ///< left out of the evidence, and back
+    std::vector<OutputFigure> outputs;
     std::vector<Note> notes;
     std::vector<FloorFigure> floors;
 

@@ -11,10 +11,10 @@ std::string_view pick(const std::array<std::string_view, N>& names, std::uint8_t
 } // namespace
 
 std::string_view name_of(EventKind kind) noexcept {
-    static constexpr std::array<std::string_view, 17> names{
-        "unknown", "session start", "session end",  "detection", "trigger",      "withheld",
-        "pulse",   "pulse end",     "gap",          "floor",     "latency bins", "note",
-        "state",   "gate",          "packet count", "dropped",   "site"};
+    static constexpr std::array<std::string_view, 22> names{
+        "unknown", "session start", "session end",  "detection", "trigger", "withheld", "pulse",        "pulse end",
+        "gap",     "floor",         "latency bins", "note",      "state",   "gate",     "packet count", "dropped",
+        "site",    "unknown",       "unknown",      "unknown",   "unknown", "device"};
     return pick(names, static_cast<std::uint8_t>(kind));
 }
 
@@ -41,9 +41,15 @@ std::string_view name_of(SiteState state) noexcept {
 }
 
 std::string_view name_of(StateCause cause) noexcept {
-    static constexpr std::array<std::string_view, 6> names{"start",         "command",        "stale stream",
-                                                           "output failed", "journal failed", "session end"};
+    static constexpr std::array<std::string_view, 12> names{
+        "start",   "command", "stale stream", "output failed", "journal failed", "session end",
+        "unknown", "unknown", "unknown",      "unknown",       "line held",      "watchdog lost"};
     return pick(names, static_cast<std::uint8_t>(cause));
+}
+
+std::string_view name_of(DeviceState state) noexcept {
+    static constexpr std::array<std::string_view, 3> names{"ready", "lost", "back"};
+    return pick(names, static_cast<std::uint8_t>(state));
 }
 
 std::string_view name_of(LatencyPart part) noexcept {

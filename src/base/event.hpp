@@ -29,6 +29,7 @@ enum class EventKind : std::uint8_t {
     packet_count = 14, ///< packets counted by cause since the last such event; `code` is the PacketCause
     dropped = 15,      ///< events or frames that the journal had to drop because its ring was full
     site = 16,         ///< a channel was left out of the evidence's mixes, or taken in again; `code` is the SiteState
+    device = 21,       ///< an output stands ready, was lost or is back; `code` is the DeviceState
 };
 
 /// Why a detection was refused: exactly one rule each, the first that applies in this order. The detector's own reasons
@@ -76,6 +77,15 @@ enum class StateCause : std::uint8_t {
     output_failed = 3,  ///< the output refused an order
     journal_failed = 4, ///< disk full, or the journal could not keep up
     session_end = 5,    ///< the session is ending
+    line_held = 10,     ///< a line was high for longer than its longest_high_ms, and was lowered by the watchdog
+    watchdog_lost = 11, ///< the process that lowers the lines when this one cannot was gone or stood still
+};
+
+/// An output as the control thread sees it. Values are part of the session format.
+enum class DeviceState : std::uint8_t {
+    ready = 0, ///< at the start
+    lost = 1,  ///< it no longer answers: look at cable and power; it is tried again every second
+    back = 2,  ///< it takes orders again, and its line was ordered low; arming is the operator's
 };
 
 /// Parts of the closed loop, each with its own histogram. Values are part of the session format.
@@ -130,8 +140,10 @@ struct PulseDetail {
 };
 
 struct PulseEndDetail {
-    std::int64_t width_ns; ///< order to rise until order to fall, by this computer's clock
-    std::int64_t late_ns;  ///< order to fall after the time planned for it
+    std::int64_t width_ns;    ///< order to rise until order to fall, by this computer's clock
+    std::int64_t late_ns;     ///< order to fall after the time planned for it
+    std::uint16_t output = 0; ///< its place in settings, from 0
+    std::uint16_t marker = 0; ///< 1 where the output follows triggers, not pulses
 };
 
 struct GapDetail {
@@ -174,6 +186,12 @@ struct SiteDetail {
     std::uint16_t channel; ///< in the stream
 };
 
+struct DeviceDetail {
+    std::uint16_t output;      ///< its place in settings, from 0
+    std::uint16_t marker;      ///< 1 where the output follows triggers, not pulses
+    std::array<char, 32> name; ///< zero-terminated
+};
+
 struct CountDetail {
     std::uint64_t count;
 };
@@ -181,7 +199,7 @@ struct CountDetail {
 /// Trivially copyable, 64 bytes, no padding left unset by the factories below.
 struct Event {
     EventKind kind{};
-    std::uint8_t code = 0; ///< Rule, GapCause, ArmState, SiteState, LatencyPart or PacketCause, by kind
+    std::uint8_t code = 0; ///< Rule, GapCause, ArmState, SiteState, DeviceState, LatencyPart or PacketCause, by kind
     std::uint16_t reserved = 0;
     std::uint32_t sequence = 0; ///< set by the journal: counts the session's events from 0
     SampleIndex sample;         ///< where in the stream
@@ -225,6 +243,7 @@ class EventSink {
 [[nodiscard]] std::string_view name_of(ArmState state) noexcept;
 [[nodiscard]] std::string_view name_of(SiteState state) noexcept;
 [[nodiscard]] std::string_view name_of(StateCause cause) noexcept;
+[[nodiscard]] std::string_view name_of(DeviceState state) noexcept;
 [[nodiscard]] std::string_view name_of(LatencyPart part) noexcept;
 [[nodiscard]] std::string_view name_of(PacketCause cause) noexcept;
 

@@ -99,6 +99,7 @@ void Engine::on_crossing(const Crossing& crossing) noexcept {
     const Event trigger = trigger_event(candidate);
     if (rule == Rule::none) {
         port_.fire(trigger);
+        port_.mark(trigger);
         detector_.blank(crossing.at + 1);
     }
     sink_.take(Event::make(EventKind::detection, 0, crossing.at, crossing.detail));
@@ -112,6 +113,7 @@ void Engine::play_schedule() noexcept {
     const Event trigger = trigger_event(candidate);
     if (rule == Rule::none) {
         port_.fire(trigger);
+        port_.mark(trigger);
         detector_.blank(candidate.at);
     }
     sink_.take(rule == Rule::none ? trigger : withheld_event(candidate, rule));

@@ -18,6 +18,8 @@ class PulsePort {
   public:
     virtual ~PulsePort() = default;
     virtual void fire(const Event& trigger) noexcept = 0;
+    /// At every trigger, in every condition, whether or not a pulse is given.
+    virtual void mark(const Event& /*trigger*/) noexcept {}
 };
 
 /// For runs without a line: every order is forgotten.

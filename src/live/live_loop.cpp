@@ -29,7 +29,7 @@ void LiveLoop::run() noexcept {
     }
     engine_.finish();
     engine_.set_state(ArmState::not_armed, StateCause::session_end);
-    line_.fall_now();
+    lines_.fall_now();
     journal_counts();
     auto running = LoopEnd::running;
     end_.compare_exchange_strong(running, LoopEnd::stopped, std::memory_order_release);
@@ -65,12 +65,13 @@ void LiveLoop::on_frames(const Arrival& arrival, Nanos began) noexcept {
     if (output_failed_) {
         output_failed_ = false;
         engine_.set_state(ArmState::faulted, StateCause::output_failed);
+        lines_.fall_now();
     }
 }
 
 void LiveLoop::fire(const Event& trigger) noexcept {
     const Nanos decided = monotonic_now();
-    if (!line_.rise(trigger.sample)) {
+    if (!lines_.rise(Follows::pulse, trigger.sample)) {
         output_failed_ = true;
     }
     const Nanos written = monotonic_now();
@@ -85,6 +86,12 @@ void LiveLoop::fire(const Event& trigger) noexcept {
     journal_.take(Event::make(EventKind::pulse, 0, trigger.sample, detail));
 }
 
+void LiveLoop::mark(const Event& trigger) noexcept {
+    if (!lines_.rise(Follows::trigger, trigger.sample)) {
+        output_failed_ = true;
+    }
+}
+
 void LiveLoop::take_commands() noexcept {
     for (Command command; commands_.pop(command);) {
         obey(command);
@@ -94,12 +101,12 @@ void LiveLoop::take_commands() noexcept {
 void LiveLoop::obey(const Command& command) noexcept {
     switch (command.kind) {
     case CommandKind::arm:
-        line_.mended();
+        lines_.mended();
         engine_.set_state(ArmState::armed, StateCause::command);
         break;
     case CommandKind::disarm:
         engine_.set_state(ArmState::not_armed, StateCause::command);
-        line_.fall_now();
+        lines_.fall_now();
         break;
     case CommandKind::mark:
         engine_.note(command.words());
@@ -117,10 +124,10 @@ void LiveLoop::look_for_trouble() noexcept {
     }
     if (journal_.failed()) {
         engine_.set_state(ArmState::faulted, StateCause::journal_failed);
-        line_.fall_now();
-    } else if (line_.failed()) {
-        engine_.set_state(ArmState::faulted, StateCause::output_failed);
-        line_.fall_now();
+        lines_.fall_now();
+    } else if (const auto trouble = lines_.trouble()) {
+        engine_.set_state(ArmState::faulted, *trouble);
+        lines_.fall_now();
     }
 }
 
@@ -132,7 +139,7 @@ void LiveLoop::on_silence() noexcept {
     // Also where somebody arms while nothing comes in.
     if (engine_.arbiter().state() == ArmState::armed) {
         engine_.set_state(ArmState::not_armed, StateCause::stale_stream);
-        line_.fall_now();
+        lines_.fall_now();
     }
     if (!stale_) {
         stale_ = true;

@@ -6,7 +6,7 @@
 #include "control/command.hpp"
 #include "engine/engine.hpp"
 #include "intake/sample_source.hpp"
-#include "outputs/pulse_line.hpp"
+#include "outputs/pulse_lines.hpp"
 
 #include <array>
 #include <atomic>
@@ -42,12 +42,12 @@ class LiveLoop : private PulsePort {
   public:
     /// Everything outlives the loop. The engine is made by `make_engine(sink, port)`, since it reports to the loop.
     template <class MakeEngine>
-    LiveLoop(LiveLoopSettings settings, SampleSource& source, PulseLine& line, LoopJournal& journal,
+    LiveLoop(LiveLoopSettings settings, SampleSource& source, PulseLines& lines, LoopJournal& journal,
              SpscRing<Command>& commands, MakeEngine&& make_engine)
-        : settings_(settings), source_(source), line_(line), journal_(journal), commands_(commands),
+        : settings_(settings), source_(source), lines_(lines), journal_(journal), commands_(commands),
           engine_(make_engine(static_cast<EventSink&>(journal), static_cast<PulsePort&>(*this))) {}
 
-    /// Runs until stopped or the source ends, then disarms and lets the line fall. Thread: loop.
+    /// Runs until stopped or the source ends, then disarms and lets the lines fall. Thread: loop.
     void run() noexcept;
 
     /// Thread: any, and signal handlers.
@@ -59,6 +59,7 @@ class LiveLoop : private PulsePort {
 
   private:
     void fire(const Event& trigger) noexcept override;
+    void mark(const Event& trigger) noexcept override;
     void take_commands() noexcept;
     void obey(const Command& command) noexcept;
     void look_for_trouble() noexcept;
@@ -69,7 +70,7 @@ class LiveLoop : private PulsePort {
 
     LiveLoopSettings settings_;
     SampleSource& source_;
-    PulseLine& line_;
+    PulseLines& lines_;
     LoopJournal& journal_;
     SpscRing<Command>& commands_;
     Engine engine_;

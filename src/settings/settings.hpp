@@ -13,6 +13,7 @@
 
 #include <filesystem>
 #include <string>
+#include <vector>
 
 namespace millpond {
 
@@ -21,7 +22,7 @@ struct Settings {
     Channels channels; ///< empty: as many ripple sites as the stream or recording has
     DetectorSettings detector;
     ArbiterSettings arbiter;
-    OutputSettings output;
+    std::vector<OutputSettings> outputs{OutputSettings{}}; ///< never empty
     ControlSettings control;
     SessionSettings session;
     RealtimeSettings realtime;
@@ -33,7 +34,7 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
                "what each channel of the stream or recording is, in its order; none: all are ripple sites");
     visit.group("detector", settings.detector, "when there is a ripple");
     visit.group("arbiter", settings.arbiter, "when a detection becomes a pulse");
-    visit.group("output", settings.output, "where pulses go");
+    visit.list("outputs", settings.outputs, "where pulses go: up to 8 lines");
     visit.group("control", settings.control, "where commands come from");
     visit.group("session", settings.session, "what is kept of a session");
     visit.group("realtime", settings.realtime, "how the loop runs on this computer");
@@ -42,6 +43,9 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
 /// Reads and checks a settings file; relative paths in it are taken from the file's own folder and made absolute.
 /// Refuses unknown keys, values out of range, and rooms that contradict each other, naming file, line and key.
 [[nodiscard]] Settings load_settings(const std::filesystem::path& file);
+
+/// Of the outputs that follow pulses, the one whose pulses last longest; there is always one.
+[[nodiscard]] const OutputSettings& pulse_output(const Settings& settings);
 
 /// All settings as YAML that load_settings reads back to the same values.
 [[nodiscard]] std::string settings_to_yaml(const Settings& settings);
