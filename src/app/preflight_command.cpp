@@ -37,7 +37,7 @@ std::string try_engine(const Settings& settings, const StreamSettings& stream, c
     const auto channels = channels_for(settings, ripple_channels(stream.channels), file);
     const Hertz rate{stream.rate_hz};
     const auto detector = make_detector(settings, channels, rate);
-    (void)make_arbiter(settings, rate);
+    (void)schedule_for(settings.arbiter, rate);
     for (const auto& output : settings.outputs) {
         (void)pulse_shape(output);
     }

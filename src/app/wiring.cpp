@@ -109,10 +109,6 @@ Detector make_detector(const Settings& settings, const Channels& channels, Hertz
     return detector;
 }
 
-Arbiter make_arbiter(const Settings& settings, Hertz rate) {
-    return Arbiter::make(settings.arbiter, rate, schedule_for(settings.arbiter, rate));
-}
-
 LineKeeper make_keeper(const Settings& settings, const std::vector<std::unique_ptr<Output>>& outputs,
                        LineBoard& board) {
     std::vector<WatchedLine> lines;
@@ -145,14 +141,14 @@ LiveSession::LiveSession(const Settings& settings, const std::filesystem::path& 
       output_settings_(settings.outputs), outputs_(make_outputs(settings.outputs)),
       keeper_(make_keeper(settings, outputs_, board_)), rate_{stream_.rate_hz},
       channels_(channels_for(settings, ripple_channels(stream_.channels), settings_file.string())),
-      detector_(make_detector(settings, channels_, rate_)), arbiter_(make_arbiter(settings, rate_)),
+      detector_(make_detector(settings, channels_, rate_)), schedule_(schedule_for(settings.arbiter, rate_)),
       listener_(listen(settings, control_, commands_, std::move(refused_command))), source_(open_source(stream_)),
       writer_(SessionWriter::open(settings.session, about(settings, stream_, channels_, detector_))),
       journal_(std::make_unique<Journal>(*writer_)),
       lines_(line_plans(output_settings_, outputs_), board_, writer_->pulse_sink(), settings.realtime.priority),
       loop_(loop_settings(settings, stream_), *source_, lines_, *journal_, commands_,
-            [this](EventSink& sink, PulsePort& port) {
-                return Engine(std::move(detector_), std::move(arbiter_), rate_, sink, port);
+            [&](EventSink& sink, PulsePort& port) {
+                return Engine(std::move(detector_), settings.arbiter, std::move(schedule_), rate_, sink, port);
             }) {
     std::vector<Output*> guarded;
     for (std::size_t i = 0; i < outputs_.size(); ++i) {

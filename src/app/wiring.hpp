@@ -12,6 +12,7 @@
 #include "outputs/output.hpp"
 #include "outputs/pulse_lines.hpp"
 #include "settings/settings.hpp"
+#include "sham/schedule.hpp"
 
 #include <functional>
 #include <latch>
@@ -24,7 +25,6 @@ namespace millpond {
 [[nodiscard]] std::string program_name();
 
 [[nodiscard]] Detector make_detector(const Settings& settings, const Channels& channels, Hertz rate);
-[[nodiscard]] Arbiter make_arbiter(const Settings& settings, Hertz rate);
 /// Starts a watchdog process over these outputs.
 [[nodiscard]] LineKeeper make_keeper(const Settings& settings, const std::vector<std::unique_ptr<Output>>& outputs,
                                      LineBoard& board);
@@ -71,7 +71,7 @@ class LiveSession {
     Hertz rate_;
     Channels channels_;
     Detector detector_; // until the loop's engine takes it
-    Arbiter arbiter_;   // likewise
+    Schedule schedule_; // likewise
     boost::asio::io_context control_;
     SpscRing<Command> commands_{1024};
     std::unique_ptr<CommandListener> listener_;

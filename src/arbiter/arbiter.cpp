@@ -4,30 +4,38 @@
 
 namespace millpond {
 
-Arbiter Arbiter::make(const ArbiterSettings& settings, Hertz rate, std::vector<SampleIndex> schedule) {
+Arbiter Arbiter::make(const ArbiterSettings& settings, Hertz rate) {
     Arbiter arbiter;
-    arbiter.condition_ = settings.condition;
     for (const auto& gate : settings.gates) {
         arbiter.gates_.push_back({gate.name, gate.starts_open});
     }
-    arbiter.schedule_ = std::move(schedule);
     arbiter.lockout_frames_ = frames_in_ms(settings.lockout_ms, rate);
     arbiter.second_frames_ = frames_in_ms(1000.0, rate);
     arbiter.session_limit_ = settings.max_pulses_per_session;
-    arbiter.recent_.resize(settings.max_pulses_per_second);
+    for (auto& counted : arbiter.counted_) {
+        counted.recent.resize(settings.max_pulses_per_second);
+    }
     return arbiter;
 }
 
-Rule Arbiter::judge(const Candidate& candidate) noexcept {
-    const Rule rule = refusal(candidate);
+Rule Arbiter::judge(const Candidate& detection) noexcept {
+    return judge(detection, of(PulseOrigin::trigger));
+}
+
+Rule Arbiter::judge_slot(const Candidate& moment, PulseOrigin origin) noexcept {
+    return judge(moment, of(origin));
+}
+
+Rule Arbiter::judge(const Candidate& candidate, Counted& counted) noexcept {
+    const Rule rule = refusal(candidate, counted);
     if (rule == Rule::none) {
-        recent_[triggers_ % recent_.size()] = candidate.at;
-        ++triggers_;
+        counted.recent[counted.count % counted.recent.size()] = candidate.at;
+        ++counted.count;
     }
     return rule;
 }
 
-Rule Arbiter::refusal(const Candidate& candidate) const noexcept {
+Rule Arbiter::refusal(const Candidate& candidate, const Counted& counted) const noexcept {
     if (candidate.settling) {
         return Rule::gap;
     }
@@ -43,36 +51,19 @@ Rule Arbiter::refusal(const Candidate& candidate) const noexcept {
     if (state_ == ArmState::not_armed) {
         return Rule::not_armed;
     }
-    if (!gates_open()) {
-        return Rule::gate;
-    }
-    if ((condition_ == Condition::schedule) != candidate.scheduled || condition_ == Condition::none) {
-        return Rule::condition;
-    }
-    return limit(candidate.at);
+    return gates_open() ? limit(candidate.at, counted) : Rule::gate;
 }
 
-Rule Arbiter::limit(SampleIndex at) const noexcept {
-    if (triggers_ > 0 && at - newest() < lockout_frames_) {
+Rule Arbiter::limit(SampleIndex at, const Counted& counted) const noexcept {
+    const auto& recent = counted.recent;
+    if (counted.count > 0 && at - recent[(counted.count - 1) % recent.size()] < lockout_frames_) {
         return Rule::lock_out;
     }
-    // The oldest of the last N triggers stands where the next one would be kept.
-    if (triggers_ >= recent_.size() && at - recent_[triggers_ % recent_.size()] < second_frames_) {
+    // The oldest of the last N stands where the next one would be kept.
+    if (counted.count >= recent.size() && at - recent[counted.count % recent.size()] < second_frames_) {
         return Rule::second_limit;
     }
-    return triggers_ >= session_limit_ ? Rule::session_limit : Rule::none;
-}
-
-SampleIndex Arbiter::newest() const noexcept {
-    return recent_[(triggers_ - 1) % recent_.size()];
-}
-
-SampleIndex Arbiter::next_scheduled() const noexcept {
-    return next_in_schedule_ < schedule_.size() ? schedule_[next_in_schedule_] : SampleIndex{UINT64_MAX};
-}
-
-void Arbiter::schedule_played() noexcept {
-    ++next_in_schedule_;
+    return counted.count >= session_limit_ ? Rule::session_limit : Rule::none;
 }
 
 bool Arbiter::set_gate(std::string_view name, bool open) noexcept {

@@ -12,9 +12,8 @@ OfflineEngine OfflineEngine::make(const EngineSettings& settings, const Channels
     if (!floors.empty()) {
         detector.warm_start(floors);
     }
-    offline.engine_ =
-        std::make_unique<Engine>(std::move(detector), Arbiter::make(settings.arbiter, rate, std::move(schedule)), rate,
-                                 *offline.kept_, *offline.kept_);
+    offline.engine_ = std::make_unique<Engine>(std::move(detector), settings.arbiter, std::move(schedule), rate,
+                                               *offline.kept_, *offline.kept_);
     return offline;
 }
 
