@@ -22,7 +22,7 @@ struct Settings {
     Channels channels; ///< empty: as many ripple sites as the stream or recording has
     DetectorSettings detector;
     ArbiterSettings arbiter;
-    std::vector<OutputSettings> outputs{OutputSettings{}}; ///< never empty
+    std::vector<OutputSettings> outputs = std::vector<OutputSettings>(1); ///< never empty
     ControlSettings control;
     SessionSettings session;
     RealtimeSettings realtime;
