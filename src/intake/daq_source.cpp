@@ -24,6 +24,12 @@ std::string why() {
     return comedi_strerror(comedi_errno());
 }
 
+// A board times each frame, or each sample of a frame with the frames one after another.
+double frame_period_ns(const comedi_cmd& command) {
+    return command.scan_begin_src == TRIG_TIMER ? command.scan_begin_arg
+                                                : static_cast<double>(command.convert_arg) * command.chanlist_len;
+}
+
 /// An open board; closing it stops its clock.
 class Board {
   public:
@@ -82,10 +88,10 @@ class Board {
         for (int i = 0; i < 3; ++i) {
             comedi_command_test(device_, &command); // each call mends one more of what the board cannot do
         }
-        if (std::abs(command.scan_begin_arg - period_ns) > most_drift * period_ns) {
+        const double kept_ns = frame_period_ns(command);
+        if (!(std::abs(kept_ns - period_ns) <= most_drift * period_ns)) {
             throw Refusal("stream.rate_hz", std::to_string(settings_.rate_hz),
-                          std::to_string(1e9 / command.scan_begin_arg) +
-                              ", the nearest that the board's clock can keep");
+                          std::to_string(1e9 / kept_ns) + ", the nearest that the board's clock can keep");
         }
         if (::fcntl(descriptor(), F_SETFL, O_NONBLOCK) != 0 || comedi_command(device_, &command) < 0) {
             throw Refusal("stream.device", settings_.device + " (" + why() + ")", "a board that is free and streams");
