@@ -8,11 +8,12 @@
 namespace millpond {
 
 enum class CommandKind : std::uint8_t {
-    arm,       ///< pulses are allowed
-    disarm,    ///< pulses are not allowed
-    mark,      ///< a text note into the journal
-    open_gate, ///< by name
-    close_gate ///< by name
+    arm,        ///< pulses are allowed
+    disarm,     ///< pulses are not allowed
+    mark,       ///< a text note into the journal
+    open_gate,  ///< by name
+    close_gate, ///< by name
+    trial       ///< the next trial of the assignment begins
 };
 
 struct Command {

@@ -33,9 +33,9 @@ void check_control(const ControlSettings& settings, const std::string& where) {
 }
 
 CommandListener::CommandListener(boost::asio::io_context& context, const ControlSettings& settings,
-                                 std::vector<std::string> gates, CommandRing& commands,
+                                 std::vector<std::string> gates, bool trials, CommandRing& commands,
                                  std::function<void(const std::string&)> refused)
-    : osc_(settings.secret, std::move(gates)), commands_(commands), refused_(std::move(refused)),
+    : osc_(settings.secret, std::move(gates), trials), commands_(commands), refused_(std::move(refused)),
       socket_(context, udp::v4()) {
     check_control(settings, "");
     boost::system::error_code trouble;

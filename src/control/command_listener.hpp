@@ -24,7 +24,7 @@ class CommandListener {
     /// Binds the socket. Refuses a port that is taken, an address that others can reach without allow_other_hosts and a
     /// secret, and a secret that is too short. `refused` takes the line that says why a packet was not taken.
     CommandListener(boost::asio::io_context& context, const ControlSettings& settings, std::vector<std::string> gates,
-                    CommandRing& commands, std::function<void(const std::string&)> refused);
+                    bool trials, CommandRing& commands, std::function<void(const std::string&)> refused);
 
   private:
     void listen();

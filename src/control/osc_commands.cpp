@@ -71,8 +71,11 @@ OscVerdict OscCommands::read(std::span<const std::uint8_t> packet) const {
         return form ? OscVerdict{Command::make(CommandKind::mark, values[0].text), {}}
                     : refused(message, "other arguments", "one text");
     }
-    if (message.address != "/arm" && message.address != "/disarm") {
-        return refused(message, "an unknown address", "/arm, /disarm, /mark, /gate");
+    if (message.address == "/trial" && !trials_) {
+        return refused(message, "a session without trials", "/trial where assignment.file names a list of trials");
+    }
+    if (message.address != "/arm" && message.address != "/disarm" && message.address != "/trial") {
+        return refused(message, "an unknown address", "/arm, /disarm, /mark, /gate, /trial");
     }
     // A switch that sends 1 when pressed and 0 when let go is common on control surfaces: 0 does nothing.
     if (values.size() > 1 || (values.size() == 1 && !switch_of(values[0]))) {
@@ -81,7 +84,10 @@ OscVerdict OscCommands::read(std::span<const std::uint8_t> packet) const {
     if (values.size() == 1 && !*switch_of(values[0])) {
         return {{}, {}};
     }
-    return {Command::make(message.address == "/arm" ? CommandKind::arm : CommandKind::disarm), {}};
+    const auto kind = message.address == "/arm"     ? CommandKind::arm
+                      : message.address == "/trial" ? CommandKind::trial
+                                                    : CommandKind::disarm;
+    return {Command::make(kind), {}};
 }
 
 } // namespace millpond

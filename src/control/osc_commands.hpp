@@ -1,5 +1,5 @@
-// Turns OSC messages into commands: /arm, /disarm, /mark TEXT, /gate NAME 1 or 0, each with the secret first where one
-// is set. Thread: control.
+// Turns OSC messages into commands: /arm, /disarm, /mark TEXT, /gate NAME 1 or 0, /trial, each with the secret first
+// where one is set. Thread: control.
 #pragma once
 
 #include "control/command.hpp"
@@ -20,14 +20,16 @@ struct OscVerdict {
 
 class OscCommands {
   public:
-    OscCommands(std::string secret, std::vector<std::string> gates)
-        : secret_(std::move(secret)), gates_(std::move(gates)) {}
+    /// `trials`: whether the session has trials that somebody marks.
+    OscCommands(std::string secret, std::vector<std::string> gates, bool trials = false)
+        : secret_(std::move(secret)), gates_(std::move(gates)), trials_(trials) {}
 
     [[nodiscard]] OscVerdict read(std::span<const std::uint8_t> packet) const;
 
   private:
     std::string secret_;
     std::vector<std::string> gates_;
+    bool trials_;
 };
 
 } // namespace millpond

@@ -3,6 +3,7 @@
 #pragma once
 
 #include "arbiter/arbiter_settings.hpp"
+#include "assignment/assignment_settings.hpp"
 #include "base/channels.hpp"
 #include "control/control_settings.hpp"
 #include "detector/detector_settings.hpp"
@@ -21,6 +22,7 @@ struct Settings {
     Channels channels; ///< empty: as many ripple sites as the stream or recording has
     DetectorSettings detector;
     ArbiterSettings arbiter;
+    AssignmentSettings assignment;
     OutputSettings output;
     ControlSettings control;
     SessionSettings session;
@@ -33,6 +35,7 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
                "what each channel of the stream or recording is, in its order; none: all are ripple sites");
     visit.group("detector", settings.detector, "when there is a ripple");
     visit.group("arbiter", settings.arbiter, "when a detection becomes a pulse");
+    visit.group("assignment", settings.assignment, "which condition the session has, where a list says so");
     visit.group("output", settings.output, "where pulses go");
     visit.group("control", settings.control, "where commands come from");
     visit.group("session", settings.session, "what is kept of a session");
@@ -42,6 +45,9 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
 /// Reads and checks a settings file; relative paths in it are taken from the file's own folder and made absolute.
 /// Refuses unknown keys, values out of range, and rooms that contradict each other, naming file, line and key.
 [[nodiscard]] Settings load_settings(const std::filesystem::path& file);
+
+/// What load_settings checks beyond single keys, for settings that were changed since. `file` names them.
+void check_settings(const Settings& settings, const std::string& file);
 
 /// All settings as YAML that load_settings reads back to the same values.
 [[nodiscard]] std::string settings_to_yaml(const Settings& settings);
