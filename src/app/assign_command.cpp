@@ -71,18 +71,17 @@ std::vector<std::vector<Condition>> runs_of(const Assignment& assignment) {
     return runs;
 }
 
-// How far any two conditions' counts were apart at any moment, within one run.
-std::size_t largest_imbalance(const std::vector<Condition>& run) {
-    std::size_t largest = 0;
+// How far any condition's count was from its share of the run at any moment.
+double largest_imbalance(const std::vector<Condition>& run) {
+    double largest = 0.0;
     const auto whole = counts(run, run.size());
     for (std::size_t upto = 1; upto <= run.size(); ++upto) {
         auto counted = counts(run, upto);
-        std::size_t least = SIZE_MAX, most = 0;
-        for (const auto& [condition, unused] : whole) {
-            least = std::min(least, counted[condition]);
-            most = std::max(most, counted[condition]);
+        for (const auto& [condition, total] : whole) {
+            const double share = static_cast<double>(total) / static_cast<double>(run.size());
+            largest = std::max(largest,
+                               std::abs(static_cast<double>(counted[condition]) - share * static_cast<double>(upto)));
         }
-        largest = std::max(largest, most - least);
     }
     return largest;
 }
@@ -91,7 +90,8 @@ void print_balance(const Assignment& assignment) {
     const auto unit = word_for<AssignmentUnit>(assignment_units, assignment.unit);
     const auto runs = runs_of(assignment);
     std::map<Condition, std::size_t> total;
-    std::size_t units = 0, apart = 0;
+    std::size_t units = 0;
+    double apart = 0.0;
     for (const auto& run : runs) {
         for (const auto condition : run) {
             ++total[condition];
@@ -99,12 +99,12 @@ void print_balance(const Assignment& assignment) {
         units += run.size();
         apart = std::max(apart, largest_imbalance(run));
     }
-    fmt::print("{:<14} {:>6}  share\n", "condition", unit + std::string("s"));
+    fmt::print("{:<14} {:>6}  share\n", "condition", std::string(unit) + "s");
     for (const auto& [condition, count] : total) {
         fmt::print("{:<14} {:>6}  {:.1f} %\n", word_for<Condition>(conditions, condition), count,
                    100.0 * static_cast<double>(count) / static_cast<double>(units));
     }
-    fmt::print("balance        counts of two conditions were never more than {} apart\n", apart);
+    fmt::print("balance        no condition was ever more than {:.1f} from its share\n", apart);
 }
 
 void print_codes(const Assignment& assignment) {

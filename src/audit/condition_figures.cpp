@@ -12,7 +12,7 @@ struct Unit {
     SampleIndex from, to;
 };
 
-std::vector<Unit> units_of(std::span<const Event> events, std::span<const Condition> conditions, SampleIndex end) {
+std::vector<Unit> units_of(std::span<const Event> events, std::span<const Condition> list, SampleIndex end) {
     std::vector<Unit> units;
     for (const auto& event : events) {
         if (event.kind != EventKind::trial) {
@@ -22,14 +22,14 @@ std::vector<Unit> units_of(std::span<const Event> events, std::span<const Condit
         if (!units.empty()) {
             units.back().to = event.sample;
         }
-        if (trial.listed != 0 && trial.number >= 1 && trial.number <= conditions.size()) {
-            units.push_back({conditions[trial.number - 1], event.sample, end});
+        if (trial.listed != 0 && trial.number >= 1 && trial.number <= list.size()) {
+            units.push_back({list[trial.number - 1], event.sample, end});
         } else {
             break; // beyond the list: no condition
         }
     }
-    if (units.empty() && conditions.size() == 1) {
-        units.push_back({conditions.front(), SampleIndex{}, end});
+    if (units.empty() && list.size() == 1) {
+        units.push_back({list.front(), SampleIndex{}, end});
     }
     return units;
 }
@@ -89,10 +89,10 @@ double ConditionFigures::triggers_per_minute() const noexcept {
     return per_minute(triggers, eligible_minutes);
 }
 
-std::vector<ConditionFigures> condition_figures(std::span<const Event> events, std::span<const Condition> conditions,
+std::vector<ConditionFigures> condition_figures(std::span<const Event> events, std::span<const Condition> list,
                                                 const Intervals& eligible, Hertz rate, SampleIndex end) {
     std::vector<ConditionFigures> all;
-    for (const auto& unit : units_of(events, conditions, end)) {
+    for (const auto& unit : units_of(events, list, end)) {
         auto& figures = figures_for(all, unit.condition);
         ++figures.units;
         figures.minutes += seconds_at(SampleIndex{unit.to - unit.from}, rate) / 60.0;

@@ -28,7 +28,7 @@ struct ConditionFigures {
 /// The conditions of consecutive units; one for the whole of a session without an assignment. `eligible`: the session's
 /// reading (referee/eligible_time.hpp). Units beyond the list have none.
 [[nodiscard]] std::vector<ConditionFigures> condition_figures(std::span<const Event> events,
-                                                              std::span<const Condition> conditions,
+                                                              std::span<const Condition> list,
                                                               const Intervals& eligible, Hertz rate, SampleIndex end);
 
 struct RateComparison {
