@@ -33,13 +33,15 @@ Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
     Schedule schedule;
     if (arbiter.condition == Condition::schedule) {
         schedule = read_schedule(arbiter.schedule_file, rate);
-        check_schedule(schedule, {arbiter.lockout_ms, arbiter.max_pulses_per_second}, rate, arbiter.schedule_file);
+        check_schedule(schedule, {arbiter.lockout_ms, arbiter.limits.max_pulses_per_second}, rate,
+                       arbiter.schedule_file);
     }
     return schedule;
 }
 
 std::string settings_hash(const Settings& settings, const Channels& channels) {
-    auto text = to_yaml(settings.detector) + to_yaml(settings.arbiter);
+    auto text = to_yaml(settings.detector) + to_yaml(settings.arbiter) + to_yaml(settings.arbiter.limits) +
+                to_yaml(settings.arbiter.plan) + to_yaml(settings.arbiter.speed_gate);
     for (const auto& channel : channels) {
         text += to_yaml(channel);
     }

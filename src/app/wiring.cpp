@@ -22,7 +22,7 @@ std::string word_of(KernelWidth width) {
 
 LiveLoopSettings loop_settings(const Settings& settings, const StreamSettings& stream) {
     return {Nanos{static_cast<std::int64_t>(stream.stale_after_ms * 1e6)}, settings.realtime.spin,
-            settings.arbiter.start_armed};
+            settings.arbiter.start_armed, settings.arbiter.speed_gate};
 }
 
 // What a session keeps of its settings: all but the secret, which is nobody's evidence.
@@ -75,13 +75,24 @@ RealtimeSettings granted(const RealtimeSettings& settings) {
     return settings;
 }
 
+} // namespace
+
+OscCommands commands_for(const Settings& settings) {
+    return {settings.control.secret,
+            gate_names(settings.arbiter),
+            {!settings.arbiter.plan.epochs.empty(), settings.arbiter.speed_gate.on}};
+}
+
+namespace {
+
 std::unique_ptr<CommandListener> listen(const Settings& settings, boost::asio::io_context& context,
-                                        CommandRing& commands, std::function<void(const std::string&)> refused) {
+                                        CommandRing& commands, StopDoor door,
+                                        std::function<void(const std::string&)> refused) {
     if (!settings.control.listen) {
         return nullptr;
     }
-    return std::make_unique<CommandListener>(context, settings.control, gate_names(settings.arbiter), commands,
-                                             std::move(refused));
+    return std::make_unique<CommandListener>(context, settings.control, commands_for(settings), commands,
+                                             std::move(door), std::move(refused));
 }
 
 } // namespace
@@ -129,8 +140,8 @@ LiveSession::LiveSession(const Settings& settings, const std::filesystem::path& 
     : stream_(resolved(settings.stream, settings_file)), realtime_(granted(settings.realtime)), rate_{stream_.rate_hz},
       channels_(channels_for(settings, ripple_channels(stream_.channels), settings_file.string())),
       detector_(make_detector(settings, channels_, rate_)), arbiter_(make_arbiter(settings, rate_)),
-      listener_(listen(settings, control_, commands_, std::move(refused_command))), source_(open_source(stream_)),
-      output_(make_output(settings.output)),
+      listener_(listen(settings, control_, commands_, stop_door(), std::move(refused_command))),
+      source_(open_source(stream_)), output_(make_output(settings.output)),
       writer_(SessionWriter::open(settings.session, about(settings, stream_, channels_, detector_))),
       journal_(std::make_unique<Journal>(*writer_)),
       line_(*output_, pulse_shape(settings.output), writer_->pulse_sink(), settings.realtime.priority),
@@ -139,6 +150,12 @@ LiveSession::LiveSession(const Settings& settings, const std::filesystem::path& 
                 return Engine(std::move(detector_), std::move(arbiter_), rate_, sink, port);
             }) {
     guard_line_against_crashes(output_.get());
+}
+
+// The loop is made after the listener; nothing is heard before both are.
+StopDoor LiveSession::stop_door() {
+    return {[this](const ChangedBy& by) { loop_.emergency_stop(by); }, [this] { return loop_.emergency_stopped(); },
+            [this] { loop_.clear_emergency_stop(); }};
 }
 
 LiveSession::~LiveSession() {

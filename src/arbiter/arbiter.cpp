@@ -10,19 +10,23 @@ Arbiter Arbiter::make(const ArbiterSettings& settings, Hertz rate, std::vector<S
     for (const auto& gate : settings.gates) {
         arbiter.gates_.push_back({gate.name, gate.starts_open});
     }
+    if (settings.speed_gate.on) {
+        arbiter.add_gate(speed_gate_name, false); // no speed has come yet
+    }
     arbiter.schedule_ = std::move(schedule);
-    arbiter.lockout_frames_ = frames_in_ms(settings.lockout_ms, rate);
-    arbiter.second_frames_ = frames_in_ms(1000.0, rate);
-    arbiter.session_limit_ = settings.max_pulses_per_session;
-    arbiter.recent_.resize(settings.max_pulses_per_second);
+    arbiter.limits_ = PulseLimits::make(settings.limits, settings.lockout_ms, rate);
+    arbiter.watch_ = FaultWatch::make(settings.limits, rate);
+    arbiter.plan_ = SessionPlan::make(settings.plan, rate);
     return arbiter;
 }
 
 Rule Arbiter::judge(const Candidate& candidate) noexcept {
     const Rule rule = refusal(candidate);
     if (rule == Rule::none) {
-        recent_[triggers_ % recent_.size()] = candidate.at;
-        ++triggers_;
+        limits_.count(candidate.at);
+    }
+    if (!candidate.scheduled) { // a schedule cannot run away
+        watch_.judged(candidate.at, rule);
     }
     return rule;
 }
@@ -43,28 +47,13 @@ Rule Arbiter::refusal(const Candidate& candidate) const noexcept {
     if (state_ == ArmState::not_armed) {
         return Rule::not_armed;
     }
-    if (!gates_open()) {
+    if (!gates_open() || !plan_.pulses()) {
         return Rule::gate;
     }
     if ((condition_ == Condition::schedule) != candidate.scheduled || condition_ == Condition::none) {
         return Rule::condition;
     }
-    return limit(candidate.at);
-}
-
-Rule Arbiter::limit(SampleIndex at) const noexcept {
-    if (triggers_ > 0 && at - newest() < lockout_frames_) {
-        return Rule::lock_out;
-    }
-    // The oldest of the last N triggers stands where the next one would be kept.
-    if (triggers_ >= recent_.size() && at - recent_[triggers_ % recent_.size()] < second_frames_) {
-        return Rule::second_limit;
-    }
-    return triggers_ >= session_limit_ ? Rule::session_limit : Rule::none;
-}
-
-SampleIndex Arbiter::newest() const noexcept {
-    return recent_[(triggers_ - 1) % recent_.size()];
+    return limits_.refusal(candidate.at);
 }
 
 SampleIndex Arbiter::next_scheduled() const noexcept {

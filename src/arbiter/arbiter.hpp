@@ -3,6 +3,9 @@
 #pragma once
 
 #include "arbiter/arbiter_settings.hpp"
+#include "arbiter/fault_watch.hpp"
+#include "arbiter/pulse_limits.hpp"
+#include "arbiter/session_plan.hpp"
 #include "base/event.hpp"
 #include "base/units.hpp"
 
@@ -37,14 +40,30 @@ class Arbiter {
 
     [[nodiscard]] ArmState state() const noexcept { return state_; }
     /// Arming while faulted is allowed: whoever arms says that the fault is mended.
-    void set_state(ArmState state) noexcept { state_ = state; }
+    void set_state(ArmState state) noexcept {
+        state_ = state;
+        if (state == ArmState::armed) {
+            watch_.armed();
+        }
+    }
+
+    /// Told of gaps and floors; with what `judge` saw it knows when the session must be faulted.
+    [[nodiscard]] FaultWatch& watch() noexcept { return watch_; }
+
+    [[nodiscard]] const SessionPlan& plan() const noexcept { return plan_; }
+    /// The session's first sample.
+    void start_plan(SampleIndex at) noexcept { plan_.start(at); }
+    void next_epoch(SampleIndex at) noexcept {
+        plan_.next(at);
+        limits_.begin_epoch();
+    }
 
     /// False where no gate has that name.
     bool set_gate(std::string_view name, bool open) noexcept;
     [[nodiscard]] bool has_gate(std::string_view name) const noexcept;
     [[nodiscard]] bool gates_open() const noexcept;
 
-    [[nodiscard]] std::uint32_t triggers() const noexcept { return triggers_; }
+    [[nodiscard]] std::uint32_t triggers() const noexcept { return limits_.triggers(); }
     [[nodiscard]] Condition condition() const noexcept { return condition_; }
 
     [[nodiscard]] std::size_t gate_count() const noexcept { return gates_.size(); }
@@ -53,8 +72,6 @@ class Arbiter {
 
   private:
     [[nodiscard]] Rule refusal(const Candidate& candidate) const noexcept;
-    [[nodiscard]] Rule limit(SampleIndex at) const noexcept;
-    [[nodiscard]] SampleIndex newest() const noexcept;
 
     struct Gate {
         std::string name;
@@ -66,11 +83,9 @@ class Arbiter {
     std::vector<Gate> gates_;
     std::vector<SampleIndex> schedule_;
     std::size_t next_in_schedule_ = 0;
-    std::uint64_t lockout_frames_ = 0;
-    std::uint64_t second_frames_ = 0;
-    std::uint32_t session_limit_ = 0;
-    std::uint32_t triggers_ = 0;
-    std::vector<SampleIndex> recent_; // ring of the last max_pulses_per_second triggers
+    PulseLimits limits_;
+    FaultWatch watch_;
+    SessionPlan plan_;
 };
 
 } // namespace millpond

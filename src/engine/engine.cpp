@@ -10,6 +10,7 @@ Engine::Engine(Detector detector, Arbiter arbiter, Hertz rate, EventSink& sink, 
     if (detector_.has_state_gate()) {
         arbiter_.add_gate(std::string(state_gate_name), detector_.state_gate_open());
     }
+    arbiter_.watch().expect_floors(detector_.floor_count());
 }
 
 void Engine::start(SampleIndex at, bool armed) noexcept {
@@ -18,7 +19,11 @@ void Engine::start(SampleIndex at, bool armed) noexcept {
     detector_.gap(at);
     detector_.use_memory(arbiter_.gates_open());
     for (std::size_t i = 0; i < arbiter_.gate_count(); ++i) {
-        journal_gate(arbiter_.gate_name(i), arbiter_.gate_open(i));
+        journal_gate(arbiter_.gate_name(i), arbiter_.gate_open(i), {ChangeSource::settings});
+    }
+    if (arbiter_.plan().present()) {
+        arbiter_.start_plan(at);
+        sink_.take(Event::make(EventKind::epoch, 0, at, arbiter_.plan().detail({ChangeSource::plan})));
     }
     set_state(armed ? ArmState::armed : ArmState::not_armed, StateCause::start);
 }
@@ -51,14 +56,18 @@ std::size_t Engine::broken_frames(const FrameBlock& block, std::size_t from) con
     return broken;
 }
 
-// Stops at every place where something is due by the clock of samples: a scheduled pulse, the floor's journal entry.
+// Stops at every place where something is due by the clock of samples: an epoch, a scheduled pulse, the floor's journal
+// entry.
 void Engine::run_finite(FrameBlock block) noexcept {
     if (block.frames() > 0) {
         close_gap();
+        follow_watch();
     }
     while (block.frames() > 0) {
         const SampleIndex end = block.first + block.frames();
-        const SampleIndex stop = std::min({end, std::max(next_ + 1, arbiter_.next_scheduled()), next_floor_});
+        follow_plan(next_);
+        const SampleIndex stop =
+            std::min({end, std::max(next_ + 1, arbiter_.next_scheduled()), next_floor_, arbiter_.plan().next_start()});
         if (arbiter_.next_scheduled() <= next_) {
             play_schedule();
         }
@@ -67,6 +76,33 @@ void Engine::run_finite(FrameBlock block) noexcept {
         if (next_ >= next_floor_) {
             journal_floors();
         }
+        follow_watch();
+    }
+}
+
+// Epochs that are due up to `upto`, each at its own place.
+void Engine::follow_plan(SampleIndex upto) noexcept {
+    while (arbiter_.plan().next_start() <= upto) {
+        begin_epoch(arbiter_.plan().next_start(), {ChangeSource::plan});
+    }
+}
+
+void Engine::begin_epoch(SampleIndex at, const ChangedBy& by) noexcept {
+    arbiter_.next_epoch(at);
+    sink_.take(Event::make(EventKind::epoch, 0, at, arbiter_.plan().detail(by)));
+}
+
+void Engine::next_epoch(const ChangedBy& by) noexcept {
+    if (arbiter_.plan().present() && !arbiter_.plan().over()) {
+        begin_epoch(next_, by);
+    }
+}
+
+// A session that is not armed has nothing to give up.
+void Engine::follow_watch() noexcept {
+    const auto cause = arbiter_.watch().take();
+    if (cause && arbiter_.state() == ArmState::armed) {
+        set_state(ArmState::faulted, *cause);
     }
 }
 
@@ -87,7 +123,7 @@ std::size_t Engine::run_detector(const FrameBlock& block) noexcept {
 
 void Engine::follow_state() noexcept {
     if (const auto open = detector_.state_gate_change()) {
-        move_gate(state_gate_name, *open);
+        move_gate(state_gate_name, *open, {ChangeSource::lfp_state});
     }
 }
 
@@ -138,6 +174,7 @@ void Engine::skip(std::uint64_t frames, GapCause cause) noexcept {
     gap_frames_ += frames;
     next_ = next_ + frames;
     detector_.gap(next_);
+    follow_plan(next_);
     // A place of the schedule that fell into the gap is refused there, so that the plan's count stays whole.
     while (arbiter_.next_scheduled() < next_) {
         const Candidate missed{arbiter_.next_scheduled(), true, false, false, true};
@@ -154,41 +191,50 @@ void Engine::close_gap() noexcept {
     if (gap_frames_ > 0) {
         sink_.take(
             Event::make(EventKind::gap, static_cast<std::uint8_t>(gap_cause_), gap_from_, GapDetail{gap_frames_}));
+        arbiter_.watch().gap(gap_from_, gap_frames_);
         gap_frames_ = 0;
     }
 }
 
 void Engine::journal_floors() noexcept {
     for (std::size_t i = 0; i < detector_.floor_count(); ++i) {
-        sink_.take(Event::make(EventKind::floor, 0, next_, detector_.floor(i)));
+        const auto floor = detector_.floor(i);
+        sink_.take(Event::make(EventKind::floor, 0, next_, floor));
+        arbiter_.watch().floor(i, floor);
     }
     next_floor_ = next_ + second_frames_;
 }
 
-void Engine::set_state(ArmState state, StateCause cause) noexcept {
-    const StateDetail detail{static_cast<std::uint8_t>(arbiter_.state()), static_cast<std::uint8_t>(cause)};
+void Engine::set_state(ArmState state, StateCause cause, const ChangedBy& by) noexcept {
+    StateDetail detail{static_cast<std::uint8_t>(arbiter_.state()), static_cast<std::uint8_t>(cause)};
+    const bool told = by.source != ChangeSource::unknown;
+    const auto source = cause == StateCause::start     ? ChangeSource::settings
+                        : cause == StateCause::command ? ChangeSource::command
+                                                       : ChangeSource::program;
+    set_by(detail, told ? by : ChangedBy{source});
     arbiter_.set_state(state);
     sink_.take(Event::make(EventKind::state, static_cast<std::uint8_t>(state), next_, detail));
 }
 
-bool Engine::set_gate(std::string_view name, bool open) noexcept {
+bool Engine::set_gate(std::string_view name, bool open, const ChangedBy& by) noexcept {
     const bool own = detector_.has_state_gate() && name == state_gate_name;
     const bool known = !own && arbiter_.has_gate(name);
     if (known) {
-        move_gate(name, open);
+        move_gate(name, open, by);
     }
     return known;
 }
 
-void Engine::move_gate(std::string_view name, bool open) noexcept {
+void Engine::move_gate(std::string_view name, bool open, const ChangedBy& by) noexcept {
     arbiter_.set_gate(name, open);
     detector_.use_memory(arbiter_.gates_open());
-    journal_gate(name, open);
+    journal_gate(name, open, by);
 }
 
-void Engine::journal_gate(std::string_view name, bool open) noexcept {
+void Engine::journal_gate(std::string_view name, bool open, const ChangedBy& by) noexcept {
     GateDetail detail{};
     detail.open = open ? 1 : 0;
+    set_by(detail, by);
     std::copy_n(name.begin(), std::min(name.size(), detail.name.size() - 1), detail.name.begin());
     sink_.take(Event::make(EventKind::gate, 0, next_, detail));
 }
