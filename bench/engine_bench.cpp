@@ -36,8 +36,8 @@ double engine_seconds(const Case& each, const std::vector<float>& data) {
     detector.threshold.deviations = 6.0;
     const Hertz rate{each.rate_hz};
     Counted counted;
-    Engine engine(Detector::make(detector, ripple_channels(each.channels), rate), Arbiter::make({}, rate), rate,
-                  counted, counted);
+    Engine engine(Detector::make(detector, ripple_channels(each.channels), rate), ArbiterSettings{}, {}, rate, counted,
+                  counted);
     engine.start(SampleIndex{0}, true);
     // Two passes: the second is the one that counts, settled as a session is after its first seconds.
     const std::size_t frames = data.size() / each.channels, block = 4096;

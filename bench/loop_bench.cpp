@@ -196,7 +196,7 @@ std::vector<double> ours_us(const Rig& rig, const std::vector<float>& data) {
     LiveLoopSettings settings;
     settings.start_armed = true;
     LiveLoop loop(settings, *source, line, journal, commands, [&](EventSink& sink, PulsePort& port) {
-        return Engine(Detector::make(quick_detector(), channels, rate), Arbiter::make(arbiter, rate), rate, sink, port);
+        return Engine(Detector::make(quick_detector(), channels, rate), arbiter, {}, rate, sink, port);
     });
     std::thread thread([&] { loop.run(); });
     const auto sent = send_stream(rig, data, stream.port);

@@ -26,10 +26,8 @@ constexpr Ladder evidence_ladder{2.0, 1.05, 48}; // up to 20
 constexpr Ladder training_ladder{2.5, 1.13, 16}; // up to 16; one batch of the sweep
 
 OfflineEngine ran(const DetectorSettings& settings, const ProofRecording& recording) {
-    EngineSettings whole{settings, {}};
-    whole.arbiter.condition = Condition::none;
-    auto engine = OfflineEngine::make(whole, recording.channels, recording.rate);
-    engine.start(true);
+    auto engine = OfflineEngine::make({settings, {}}, recording.channels, recording.rate);
+    engine.start(false); // not armed: no triggers, so nothing is blanked
     engine.process({SampleIndex{0}, recording.channels.size(), recording.data});
     engine.finish();
     return engine;
@@ -167,7 +165,7 @@ Learned learn_ours_in_blocks(const std::vector<ProofRecording>& training, const 
                              double block_s) {
     LearningPlan plan;
     plan.sweep.rate = training.front().rate;
-    plan.sweep.arbiter.condition = Condition::none;
+    plan.sweep.armed = false;
     plan.sweep.block_s = block_s;
     plan.sweep.threads = processors();
     plan.features = features;

@@ -124,8 +124,8 @@ void write_dry_run_events(const DryRun& run, const std::filesystem::path& table)
         rows.push_back(ripple_row(run.findings.ripples[i], run.score.ripples[i], run.rate));
     }
     write_events_table(table, std::move(rows),
-                       {"rule", "cause", "number", "scheduled", "site", "votes", "envelope_uv", "floor_uv",
-                        "deviation_uv", "threshold_uv", "outcome"});
+                       {"rule", "cause", "number", "origin", "from", "catch", "site", "votes", "envelope_uv",
+                        "floor_uv", "deviation_uv", "threshold_uv", "outcome"});
 }
 
 std::string dry_run_json(const DryRun& run) {

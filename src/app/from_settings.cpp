@@ -31,7 +31,7 @@ std::vector<FloorState> warm_start_floors(const DetectorSettings& detector) {
 
 Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
     Schedule schedule;
-    if (arbiter.condition == Condition::schedule) {
+    if (!arbiter.schedule_file.empty()) {
         schedule = read_schedule(arbiter.schedule_file, rate);
         check_schedule(schedule, {arbiter.lockout_ms, arbiter.limits.max_pulses_per_second}, rate,
                        arbiter.schedule_file);

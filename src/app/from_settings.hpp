@@ -18,7 +18,7 @@ namespace millpond {
 /// Floors that the settings want to start from; empty where they name no session.
 [[nodiscard]] std::vector<FloorState> warm_start_floors(const DetectorSettings& detector);
 
-/// The control schedule to play, checked against the arbiter's limits; empty in every other condition.
+/// The control schedule that the settings name, checked against the arbiter's limits; empty where they name none.
 [[nodiscard]] Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate);
 
 /// 16 hexadecimal digits: FNV-1a, 64 bits, of what decides: detector, arbiter and channels as YAML. Places of files

@@ -14,6 +14,7 @@
 
 #include <csignal>
 #include <cstdio>
+#include <map>
 #include <memory>
 #include <optional>
 #include <unistd.h>
@@ -23,6 +24,7 @@ namespace {
 
 struct LiveOptions {
     std::string settings_file;
+    std::optional<Condition> condition;
     std::string schedule_file;
     bool start_armed = false;
     double stop_after_s = 0.0;
@@ -184,8 +186,8 @@ void run_live(const LiveOptions& options) {
     std::signal(SIGXFSZ, SIG_IGN); // a file too large is a full disk to the journal, not the end of the program
     auto settings = load_settings(options.settings_file);
     settings.arbiter.start_armed = settings.arbiter.start_armed || options.start_armed;
+    settings.arbiter.condition = options.condition.value_or(settings.arbiter.condition);
     if (!options.schedule_file.empty()) {
-        settings.arbiter.condition = Condition::schedule;
         settings.arbiter.schedule_file = std::filesystem::absolute(options.schedule_file).string();
     }
     std::shared_ptr<spdlog::logger> log;
@@ -222,9 +224,16 @@ void add_live_command(CLI::App& program) {
     command->add_option("SETTINGS", options->settings_file, "settings file")->required();
     command->add_flag("--start-armed", options->start_armed,
                       "allow pulses from the start, as arbiter.start_armed does");
+    std::map<std::string, Condition> words;
+    for (const auto& choice : conditions) {
+        words.emplace(choice.word, choice.value);
+    }
+    command->add_option("--condition", options->condition, "what becomes of triggers, in place of arbiter.condition")
+        ->transform(CLI::CheckedTransformer(words).description("{disrupt,delayed,yoked,rate_matched,none}"));
     command->add_option(
         "--schedule", options->schedule_file,
-        "control schedule to play: pulses at its places, none at detections, whatever arbiter.condition says");
+        "control schedule, in place of arbiter.schedule_file: pulses at its places where the condition\n"
+        "is yoked or rate_matched, else blanking alone");
     command->add_option("--stop-after-s", options->stop_after_s, "end by itself after this many seconds; 0: never")
         ->check(CLI::Range(0.0, 1e7));
     command

@@ -36,7 +36,7 @@ std::string try_engine(const Settings& settings, const StreamSettings& stream, c
     const auto channels = channels_for(settings, ripple_channels(stream.channels), file);
     const Hertz rate{stream.rate_hz};
     const auto detector = make_detector(settings, channels, rate);
-    (void)make_arbiter(settings, rate);
+    (void)schedule_for(settings.arbiter, rate);
     (void)pulse_shape(settings.output);
     return fmt::format("{} channels at {} Hz; band-pass delays {:.1f} ms at its centre, with smoothing {:.1f} ms",
                        channels.size(), stream.rate_hz, detector.filter_delay_samples() / rate.value * 1e3,

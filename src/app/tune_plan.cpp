@@ -163,7 +163,6 @@ TunePlan make_tune_plan(const TuneOptions& options) {
     load(plan, options);
     plan.sweep.rate = plan.files.front().info.rate;
     plan.sweep.arbiter = plan.base.arbiter;
-    plan.sweep.arbiter.condition = Condition::disrupt;
     plan.sweep.arbiter.limits = for_sweeps(plan.base.arbiter.limits);
     plan.sweep.arbiter.plan = {};
     plan.sweep.early_ms = options.labels.empty() ? referee_early_ms : 0.0;

@@ -109,10 +109,6 @@ Detector make_detector(const Settings& settings, const Channels& channels, Hertz
     return detector;
 }
 
-Arbiter make_arbiter(const Settings& settings, Hertz rate) {
-    return Arbiter::make(settings.arbiter, rate, schedule_for(settings.arbiter, rate));
-}
-
 std::unique_ptr<Output> make_output(const OutputSettings& settings) {
     if (settings.kind == OutputKind::osc) {
         return std::make_unique<OscOutput>(settings);
@@ -139,15 +135,15 @@ LiveSession::LiveSession(const Settings& settings, const std::filesystem::path& 
                          std::function<void(const std::string&)> refused_command)
     : stream_(resolved(settings.stream, settings_file)), realtime_(granted(settings.realtime)), rate_{stream_.rate_hz},
       channels_(channels_for(settings, ripple_channels(stream_.channels), settings_file.string())),
-      detector_(make_detector(settings, channels_, rate_)), arbiter_(make_arbiter(settings, rate_)),
+      detector_(make_detector(settings, channels_, rate_)), schedule_(schedule_for(settings.arbiter, rate_)),
       listener_(listen(settings, control_, commands_, stop_door(), std::move(refused_command))),
       source_(open_source(stream_)), output_(make_output(settings.output)),
       writer_(SessionWriter::open(settings.session, about(settings, stream_, channels_, detector_))),
       journal_(std::make_unique<Journal>(*writer_)),
       line_(*output_, pulse_shape(settings.output), writer_->pulse_sink(), settings.realtime.priority),
       loop_(loop_settings(settings, stream_), *source_, line_, *journal_, commands_,
-            [this](EventSink& sink, PulsePort& port) {
-                return Engine(std::move(detector_), std::move(arbiter_), rate_, sink, port);
+            [&](EventSink& sink, PulsePort& port) {
+                return Engine(std::move(detector_), settings.arbiter, std::move(schedule_), rate_, sink, port);
             }) {
     guard_line_against_crashes(output_.get());
 }

@@ -10,6 +10,7 @@
 #include "outputs/output.hpp"
 #include "outputs/pulse_line.hpp"
 #include "settings/settings.hpp"
+#include "sham/schedule.hpp"
 
 #include <functional>
 #include <latch>
@@ -22,7 +23,6 @@ namespace millpond {
 [[nodiscard]] std::string program_name();
 
 [[nodiscard]] Detector make_detector(const Settings& settings, const Channels& channels, Hertz rate);
-[[nodiscard]] Arbiter make_arbiter(const Settings& settings, Hertz rate);
 /// What a session with these settings listens to.
 [[nodiscard]] OscCommands commands_for(const Settings& settings);
 [[nodiscard]] std::unique_ptr<Output> make_output(const OutputSettings& settings);
@@ -64,7 +64,7 @@ class LiveSession {
     Hertz rate_;
     Channels channels_;
     Detector detector_; // until the loop's engine takes it
-    Arbiter arbiter_;   // likewise
+    Schedule schedule_; // likewise
     boost::asio::io_context control_;
     SpscRing<Command> commands_{1024};
     std::unique_ptr<CommandListener> listener_;

@@ -4,34 +4,39 @@
 
 namespace millpond {
 
-Arbiter Arbiter::make(const ArbiterSettings& settings, Hertz rate, std::vector<SampleIndex> schedule) {
+Arbiter Arbiter::make(const ArbiterSettings& settings, Hertz rate) {
     Arbiter arbiter;
-    arbiter.condition_ = settings.condition;
     for (const auto& gate : settings.gates) {
         arbiter.gates_.push_back({gate.name, gate.starts_open});
     }
     if (settings.speed_gate.on) {
         arbiter.add_gate(speed_gate_name, false); // no speed has come yet
     }
-    arbiter.schedule_ = std::move(schedule);
-    arbiter.limits_ = PulseLimits::make(settings.limits, settings.lockout_ms, rate);
+    arbiter.limits_.fill(PulseLimits::make(settings.limits, settings.lockout_ms, rate));
     arbiter.watch_ = FaultWatch::make(settings.limits, rate);
     arbiter.plan_ = SessionPlan::make(settings.plan, rate);
     return arbiter;
 }
 
-Rule Arbiter::judge(const Candidate& candidate) noexcept {
-    const Rule rule = refusal(candidate);
+Rule Arbiter::judge(const Candidate& detection) noexcept {
+    const Rule rule = judge(detection, of(PulseOrigin::trigger));
+    watch_.judged(detection.at, rule);
+    return rule;
+}
+
+Rule Arbiter::judge_slot(const Candidate& moment, PulseOrigin origin) noexcept {
+    return judge(moment, of(origin));
+}
+
+Rule Arbiter::judge(const Candidate& candidate, PulseLimits& limits) noexcept {
+    const Rule rule = refusal(candidate, limits);
     if (rule == Rule::none) {
-        limits_.count(candidate.at);
-    }
-    if (!candidate.scheduled) { // a schedule cannot run away
-        watch_.judged(candidate.at, rule);
+        limits.count(candidate.at);
     }
     return rule;
 }
 
-Rule Arbiter::refusal(const Candidate& candidate) const noexcept {
+Rule Arbiter::refusal(const Candidate& candidate, const PulseLimits& limits) const noexcept {
     if (candidate.settling) {
         return Rule::gap;
     }
@@ -47,21 +52,7 @@ Rule Arbiter::refusal(const Candidate& candidate) const noexcept {
     if (state_ == ArmState::not_armed) {
         return Rule::not_armed;
     }
-    if (!gates_open() || !plan_.pulses()) {
-        return Rule::gate;
-    }
-    if ((condition_ == Condition::schedule) != candidate.scheduled || condition_ == Condition::none) {
-        return Rule::condition;
-    }
-    return limits_.refusal(candidate.at);
-}
-
-SampleIndex Arbiter::next_scheduled() const noexcept {
-    return next_in_schedule_ < schedule_.size() ? schedule_[next_in_schedule_] : SampleIndex{UINT64_MAX};
-}
-
-void Arbiter::schedule_played() noexcept {
-    ++next_in_schedule_;
+    return gates_open() && plan_.pulses() ? limits.refusal(candidate.at) : Rule::gate;
 }
 
 bool Arbiter::set_gate(std::string_view name, bool open) noexcept {

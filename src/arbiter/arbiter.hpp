@@ -1,5 +1,6 @@
-// The arbiter: decides which detection becomes a trigger, and names the one rule that refused each of the others.
-// Works in sample time alone, so that a session can be run again from its samples and its journal.
+// The arbiter: decides which detection becomes a trigger and which moment may have a pulse, and names the one rule that
+// refused each of the others. Works in sample time alone, so that a session can be run again from its samples and its
+// journal. The same in every condition: what becomes of a trigger is the business of pulse_plan.hpp.
 #pragma once
 
 #include "arbiter/arbiter_settings.hpp"
@@ -9,34 +10,34 @@
 #include "base/event.hpp"
 #include "base/units.hpp"
 
+#include <array>
+#include <string>
 #include <vector>
 
 namespace millpond {
 
-/// What the detector knew about one crossing.
+/// What the detector knew about one crossing, or about the moment of a slot.
 struct Candidate {
     SampleIndex at;
     bool settling = false;
     bool unsettled = false;
     bool vetoed = false;
-    bool scheduled = false; ///< asked for by the control schedule, not by the detector
 };
 
-/// Thread: loop for everything but make. Allocates after make: never.
+/// Thread: loop for everything but make and add_gate. Allocates after make: never.
 class Arbiter {
   public:
-    /// `schedule`: places of a control schedule in ascending order, empty without one.
-    static Arbiter make(const ArbiterSettings& settings, Hertz rate, std::vector<SampleIndex> schedule = {});
+    static Arbiter make(const ArbiterSettings& settings, Hertz rate);
 
     /// One more gate, beside those of the settings. Thread: control.
     void add_gate(std::string name, bool open) { gates_.push_back({std::move(name), open}); }
 
-    /// Rule::none where the candidate is a trigger, which then counts for lock-out and limits.
-    [[nodiscard]] Rule judge(const Candidate& candidate) noexcept;
+    /// Rule::none where the detection is a trigger, which then counts for lock-out and limits.
+    [[nodiscard]] Rule judge(const Candidate& detection) noexcept;
 
-    /// Next place of the schedule at or after what was already played; UINT64_MAX where there is none.
-    [[nodiscard]] SampleIndex next_scheduled() const noexcept;
-    void schedule_played() noexcept;
+    /// Rule::none where a pulse may be given at this moment for a delayed or scheduled slot, which then counts for the
+    /// limits of slots of its origin. Detections play no part in it, nor does it in judging them.
+    [[nodiscard]] Rule judge_slot(const Candidate& moment, PulseOrigin origin) noexcept;
 
     [[nodiscard]] ArmState state() const noexcept { return state_; }
     /// Arming while faulted is allowed: whoever arms says that the fault is mended.
@@ -55,7 +56,9 @@ class Arbiter {
     void start_plan(SampleIndex at) noexcept { plan_.start(at); }
     void next_epoch(SampleIndex at) noexcept {
         plan_.next(at);
-        limits_.begin_epoch();
+        for (auto& limits : limits_) {
+            limits.begin_epoch();
+        }
     }
 
     /// False where no gate has that name.
@@ -63,27 +66,28 @@ class Arbiter {
     [[nodiscard]] bool has_gate(std::string_view name) const noexcept;
     [[nodiscard]] bool gates_open() const noexcept;
 
-    [[nodiscard]] std::uint32_t triggers() const noexcept { return limits_.triggers(); }
-    [[nodiscard]] Condition condition() const noexcept { return condition_; }
+    [[nodiscard]] std::uint32_t triggers() const noexcept { return of(PulseOrigin::trigger).triggers(); }
 
     [[nodiscard]] std::size_t gate_count() const noexcept { return gates_.size(); }
     [[nodiscard]] std::string_view gate_name(std::size_t i) const noexcept { return gates_[i].name; }
     [[nodiscard]] bool gate_open(std::size_t i) const noexcept { return gates_[i].open; }
 
   private:
-    [[nodiscard]] Rule refusal(const Candidate& candidate) const noexcept;
+    [[nodiscard]] PulseLimits& of(PulseOrigin origin) noexcept { return limits_[static_cast<std::size_t>(origin)]; }
+    [[nodiscard]] const PulseLimits& of(PulseOrigin origin) const noexcept {
+        return limits_[static_cast<std::size_t>(origin)];
+    }
+    [[nodiscard]] Rule judge(const Candidate& candidate, PulseLimits& limits) noexcept;
+    [[nodiscard]] Rule refusal(const Candidate& candidate, const PulseLimits& limits) const noexcept;
 
     struct Gate {
         std::string name;
         bool open;
     };
 
-    Condition condition_ = Condition::disrupt;
     ArmState state_ = ArmState::not_armed;
     std::vector<Gate> gates_;
-    std::vector<SampleIndex> schedule_;
-    std::size_t next_in_schedule_ = 0;
-    PulseLimits limits_;
+    std::array<PulseLimits, 3> limits_; // by origin
     FaultWatch watch_;
     SessionPlan plan_;
 };

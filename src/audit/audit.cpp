@@ -62,7 +62,7 @@ void add_score(const AuditInput& input, const SessionReader& session, AuditResul
     known.ripples = input.labels ? *input.labels : known.referee->ripples;
     known.detections = detections_to_score(session.events());
     known.pulses_given = result.figures.pulses > 0;
-    known.pulses_scheduled = result.figures.scheduled_triggers > 0;
+    known.pulses_scheduled = result.figures.orders[static_cast<std::size_t>(PulseOrigin::trigger)] == 0;
     const auto upto = input.labels ? result.end : std::min(result.end, SampleIndex{samples->frames()});
     known.detector = score_as(input, session, known, false, upto);
     known.session = score_as(input, session, known, true, upto);

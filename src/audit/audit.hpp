@@ -37,7 +37,7 @@ struct AuditScore {
     Score detector;                ///< over all time in which the detector was fit to detect
     Score session;                 ///< over the time in which a trigger was possible
     bool pulses_given = false;     ///< pulses change the very signal that the truth is taken from
-    bool pulses_scheduled = false; ///< a control schedule's: they did not follow detections
+    bool pulses_scheduled = false; ///< by delay or by a control schedule: they did not follow detections at once
 };
 
 struct AuditResult {

@@ -126,9 +126,9 @@ std::string score_text(const AuditResult& r) {
     if (r.score->pulses_given) {
         text +=
             r.score->pulses_scheduled
-                ? "  Pulses of a control schedule were given: they change the signal where they fell, ripple or not.\n"
+                ? "  Delayed or scheduled pulses were given: they change the signal where they fell, ripple or not.\n"
                 : "  Pulses were given: they change the signal that the truth is taken from. Estimate hit and false\n"
-                  "  rates from sessions without pulses or with a control schedule.\n";
+                  "  rates from control sessions.\n";
     }
     return text;
 }
@@ -145,10 +145,14 @@ template <std::size_t N, class Code> std::string counted(const std::array<std::u
 
 std::string decisions_text(const AuditResult& r) {
     const auto& f = r.figures;
-    auto text = fmt::format("\nDecisions\n  {} detections, {} triggers ({} by a control schedule), {} pulses, {} pulse "
-                            "ends\n",
-                            f.detections, f.triggers, f.scheduled_triggers, f.pulses, f.pulse_ends);
+    auto text = fmt::format("\nDecisions\n  {} detections, {} triggers ({} catch trials), {} pulses, {} pulse ends\n",
+                            f.detections, f.triggers, f.catch_trials, f.pulses, f.pulse_ends);
+    text += fmt::format("  orders at triggers {}, delayed {}, scheduled {}\n", f.orders[0], f.orders[2], f.orders[1]);
+    if (f.slots[1] + f.slots[2] > 0) {
+        text += fmt::format("  moments for delayed pulses {}, for scheduled ones {}\n", f.slots[2], f.slots[1]);
+    }
     text += "\nWithheld by rule\n" + counted<rule_count, Rule>(f.withheld);
+    text += "\nMoments omitted by rule\n" + counted<rule_count, Rule>(f.omitted);
     text += "\nPackets by cause\n" + counted<packet_cause_count, PacketCause>(f.packets);
     return text;
 }

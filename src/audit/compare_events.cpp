@@ -23,7 +23,8 @@ template <class Fits> std::optional<Event> take_first(std::vector<Event>& events
 }
 
 bool verdict(const Event& event) {
-    return event.kind == EventKind::trigger || event.kind == EventKind::withheld;
+    return event.kind == EventKind::trigger || event.kind == EventKind::withheld || event.kind == EventKind::slot ||
+           event.kind == EventKind::omitted;
 }
 
 Difference difference(const std::optional<Event>& journaled, const std::optional<Event>& again) {
@@ -63,6 +64,7 @@ std::string told(const Event& event) {
     const auto at = event.sample.value;
     switch (event.kind) {
     case EventKind::withheld:
+    case EventKind::omitted:
         return fmt::format("{} at {} ({})", name, at, name_of(static_cast<Rule>(event.code)));
     case EventKind::gap:
         return fmt::format("{} at {} ({}, {} frames)", name, at, name_of(static_cast<GapCause>(event.code)),

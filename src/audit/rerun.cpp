@@ -12,6 +12,9 @@ bool decided_by_the_engine(const Event& event) {
     case EventKind::detection:
     case EventKind::trigger:
     case EventKind::withheld:
+    case EventKind::slot:
+    case EventKind::omitted:
+    case EventKind::order:
     case EventKind::gap:
     case EventKind::state:
     case EventKind::gate:
@@ -22,6 +25,11 @@ bool decided_by_the_engine(const Event& event) {
     default:
         return false;
     }
+}
+
+bool is_decision(EventKind kind) {
+    return kind == EventKind::detection || kind == EventKind::trigger || kind == EventKind::withheld ||
+           kind == EventKind::slot || kind == EventKind::omitted || kind == EventKind::order;
 }
 
 class Collector final : public EventSink {
@@ -45,13 +53,13 @@ bool is_start(const Event& event) {
            event.as<StateDetail>().cause == static_cast<std::uint8_t>(StateCause::start);
 }
 
-// Places at which a control schedule was due, as journaled.
+// Places of the control schedule that the session came to, as journaled.
 std::vector<SampleIndex> schedule_of(const SessionReader& session) {
     std::vector<SampleIndex> places;
     for (const auto& event : session.events()) {
-        const bool verdict = event.kind == EventKind::trigger || event.kind == EventKind::withheld;
-        if (verdict && event.as<TriggerDetail>().from_schedule != 0) {
-            places.push_back(event.sample);
+        const bool moment = event.kind == EventKind::slot || event.kind == EventKind::omitted;
+        if (moment && event.as<TriggerDetail>().origin == PulseOrigin::schedule) {
+            places.push_back(SampleIndex{event.as<TriggerDetail>().from});
         }
     }
     std::sort(places.begin(), places.end());
@@ -181,8 +189,8 @@ class Feed {
 void run(const SessionReader& session, SampleFileReader& samples, const EngineSettings& settings,
          const std::string& where, Rerun& rerun, Collector& sink, const ShareDone& progress) {
     NoPulsePort port;
-    Engine engine(make_detector(session, settings, where),
-                  Arbiter::make(settings.arbiter, session.rate(), schedule_of(session)), session.rate(), sink, port);
+    Engine engine(make_detector(session, settings, where), settings.arbiter, schedule_of(session), session.rate(), sink,
+                  port);
     engine.start(rerun.from, settings.arbiter.start_armed);
     Feed feed(samples, engine, rerun, progress);
     const auto& events = session.events();
@@ -230,11 +238,8 @@ Rerun rerun_session(const SessionReader& session, const EngineSettings& settings
     const auto journaled = compared_part(session.events(), rerun);
     rerun.differences = compare_events(journaled, compared_part(sink.events, rerun));
     rerun.compared = journaled.size();
-    rerun.decisions =
-        static_cast<std::uint64_t>(std::count_if(journaled.begin(), journaled.end(), [](const Event& event) {
-            return event.kind == EventKind::detection || event.kind == EventKind::trigger ||
-                   event.kind == EventKind::withheld;
-        }));
+    rerun.decisions = static_cast<std::uint64_t>(
+        std::count_if(journaled.begin(), journaled.end(), [](const Event& event) { return is_decision(event.kind); }));
     rerun.done = true;
     return rerun;
 }

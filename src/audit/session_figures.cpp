@@ -12,6 +12,10 @@ template <std::size_t N> void add(std::array<std::uint64_t, N>& counts, std::uin
     }
 }
 
+std::uint8_t origin_of(const Event& event) {
+    return static_cast<std::uint8_t>(event.as<TriggerDetail>().origin);
+}
+
 void count(SessionFigures& figures, const Event& event) {
     switch (event.kind) {
     case EventKind::detection:
@@ -19,10 +23,19 @@ void count(SessionFigures& figures, const Event& event) {
         break;
     case EventKind::trigger:
         ++figures.triggers;
-        figures.scheduled_triggers += event.as<TriggerDetail>().from_schedule != 0 ? 1 : 0;
+        figures.catch_trials += event.as<TriggerDetail>().caught;
         break;
     case EventKind::withheld:
         add(figures.withheld, event.code, 1);
+        break;
+    case EventKind::slot:
+        add(figures.slots, origin_of(event), 1);
+        break;
+    case EventKind::omitted:
+        add(figures.omitted, event.code, 1);
+        break;
+    case EventKind::order:
+        add(figures.orders, origin_of(event), 1);
         break;
     case EventKind::pulse:
         ++figures.pulses;

@@ -50,8 +50,10 @@ struct SiteFigure {
 };
 
 struct SessionFigures {
-    std::uint64_t detections = 0, triggers = 0, scheduled_triggers = 0, pulses = 0, pulse_ends = 0;
-    std::array<std::uint64_t, rule_count> withheld{};        ///< by Rule
+    std::uint64_t detections = 0, triggers = 0, catch_trials = 0, pulses = 0, pulse_ends = 0;
+    std::array<std::uint64_t, 3> slots{}, orders{};          ///< by PulseOrigin; slots have no triggers among them
+    std::array<std::uint64_t, rule_count> withheld{};        ///< detections, by Rule
+    std::array<std::uint64_t, rule_count> omitted{};         ///< slots, by Rule
     std::array<std::uint64_t, packet_cause_count> packets{}; ///< by PacketCause
     std::array<std::uint64_t, 3> dropped{};                  ///< by Dropped
     std::vector<GapFigure> gaps;

@@ -11,18 +11,23 @@ std::string_view pick(const std::array<std::string_view, N>& names, std::uint8_t
 } // namespace
 
 std::string_view name_of(EventKind kind) noexcept {
-    static constexpr std::array<std::string_view, 21> names{
-        "unknown",      "session start", "session end", "detection",    "trigger", "withheld", "pulse",
-        "pulse end",    "gap",           "floor",       "latency bins", "note",    "state",    "gate",
-        "packet count", "dropped",       "site",        "epoch",        "unknown", "unknown",  "speed"};
+    static constexpr std::array<std::string_view, 24> names{
+        "unknown", "session start", "session end",  "detection", "trigger", "withheld", "pulse",        "pulse end",
+        "gap",     "floor",         "latency bins", "note",      "state",   "gate",     "packet count", "dropped",
+        "site",    "epoch",         "unknown",      "order",     "speed",   "unknown",  "slot",         "omitted"};
     return pick(names, static_cast<std::uint8_t>(kind));
 }
 
 std::string_view name_of(Rule rule) noexcept {
     static constexpr std::array<std::string_view, rule_count> names{
-        "none",      "gap",      "unsettled",    "veto",          "faulted",      "not armed",   "gate",
-        "condition", "lock-out", "second limit", "session limit", "minute limit", "epoch limit", "interval"};
+        "none", "gap",      "unsettled",    "veto",          "faulted",      "not armed",   "gate",
+        "held", "lock-out", "second limit", "session limit", "minute limit", "epoch limit", "interval"};
     return pick(names, static_cast<std::uint8_t>(rule));
+}
+
+std::string_view name_of(PulseOrigin origin) noexcept {
+    static constexpr std::array<std::string_view, 3> names{"trigger", "schedule", "delay"};
+    return pick(names, static_cast<std::uint8_t>(origin));
 }
 
 std::string_view name_of(GapCause cause) noexcept {

@@ -16,7 +16,7 @@ enum class EventKind : std::uint8_t {
     session_start = 1, ///< first event of a session
     session_end = 2,   ///< last event of a session that was closed; where it is absent the session was cut
     detection = 3,     ///< the detector crossed; a trigger or a withheld follows at the same sample
-    trigger = 4,       ///< the arbiter let a detection, or a place in a control schedule, through
+    trigger = 4,       ///< the arbiter let a detection through; what becomes of it, the condition says
     withheld = 5,      ///< the arbiter refused it; `code` is the Rule
     pulse = 6,         ///< the order was written to the output
     pulse_end = 7,     ///< the line was ordered low again
@@ -30,7 +30,10 @@ enum class EventKind : std::uint8_t {
     dropped = 15,      ///< events or frames that the journal had to drop because its ring was full
     site = 16,         ///< a channel was left out of the evidence's mixes, or taken in again; `code` is the SiteState
     epoch = 17,        ///< an epoch of the session's plan begins
-    speed = 20,        ///< the speed that moved the speed gate, or that it had grown stale at
+    order = 19, ///< a pulse was ordered: at a trigger, or at a slot; the one kind here that tells of the condition
+    speed = 20, ///< the speed that moved the speed gate, or that it had grown stale at
+    slot = 22,  ///< a moment for a delayed or scheduled pulse; blanked in every condition, whether one is given or not
+    omitted = 23, ///< such a moment, at which no condition may give a pulse; `code` is the Rule
 };
 
 /// Why a detection was refused: exactly one rule each, the first that applies in this order. The detector's own reasons
@@ -43,7 +46,7 @@ enum class Rule : std::uint8_t {
     faulted = 4,        ///< an output, the journal or the stream failed: mend it, then arm again
     not_armed = 5,      ///< pulses are not allowed: arm when the protocol says so
     gate = 6,           ///< a gate is closed, or the plan's epoch allows no pulses
-    condition = 7,      ///< the session's condition gives this detection no pulse
+    held = 7,           ///< a moment for a pulse was held off by ripples for as long as it may be
     lock_out = 8,       ///< too soon after the trigger before it
     second_limit = 9,   ///< as many pulses as allowed in one second
     session_limit = 10, ///< as many pulses as allowed in one session: end it
@@ -146,10 +149,20 @@ struct DetectionDetail {
     std::uint16_t site;  ///< channel in the stream, 65535 for the mean over sites and for evidence
 };
 
+/// Why there is a moment for a pulse. Values are part of the session format.
+enum class PulseOrigin : std::uint32_t {
+    trigger = 0,  ///< at once after a detection
+    schedule = 1, ///< a place of a control schedule
+    delay = 2,    ///< a while after a trigger
+};
+
+/// Of triggers, withheld, slots, omitted and orders.
 struct TriggerDetail {
-    std::uint64_t detected_at;   ///< decision sample; equals the trigger's own sample where the pulse follows at once
-    std::uint32_t number;        ///< 1 for the session's first trigger
-    std::uint32_t from_schedule; ///< 1 where a control schedule asked for it, else 0
+    std::uint64_t from;   ///< decision sample of the trigger; the planned place of a schedule
+    std::uint32_t number; ///< of the session's trigger, from 1 (0: withheld); of the place in the schedule, from 1
+    PulseOrigin origin;
+    std::uint32_t caught;   ///< 1 where the trigger is a catch trial, drawn in every condition
+    std::uint32_t reserved; ///< 0
 };
 
 /// Parts in ns; a part that was not measured is `not_measured`, never 0.
@@ -284,6 +297,7 @@ class EventSink {
 // One word for one thing: what every table, report and log line calls them.
 [[nodiscard]] std::string_view name_of(EventKind kind) noexcept;
 [[nodiscard]] std::string_view name_of(Rule rule) noexcept;
+[[nodiscard]] std::string_view name_of(PulseOrigin origin) noexcept;
 [[nodiscard]] std::string_view name_of(GapCause cause) noexcept;
 [[nodiscard]] std::string_view name_of(ArmState state) noexcept;
 [[nodiscard]] std::string_view name_of(SiteState state) noexcept;

@@ -147,6 +147,7 @@ void Detector::State::start_floor() noexcept {
 bool Detector::State::decide(Tally tally) noexcept {
     if (spent) {
         spent = tally.rearm_votes() >= votes_needed;
+        quiet_since = position;
         return false;
     }
     above_run = tally.votes() >= votes_needed ? above_run + 1 : 0;
@@ -226,6 +227,7 @@ void Detector::reset() noexcept {
     s.blank_until = 0;
     s.newest_reference = UINT64_MAX;
     s.spent = false;
+    s.quiet_since = UINT64_MAX;
     if (s.evidence()) {
         s.site_watch.reset();
         std::fill(s.journaled.begin(), s.journaled.end(), SiteState::alive);
@@ -279,6 +281,11 @@ bool Detector::settled() const noexcept {
 
 std::uint64_t Detector::filter_settle_frames() const noexcept {
     return state_->filter_settle;
+}
+
+std::uint64_t Detector::quiet_frames() const noexcept {
+    const auto& s = *state_;
+    return s.spent ? 0 : s.quiet_since == UINT64_MAX ? UINT64_MAX : s.position - s.quiet_since;
 }
 
 bool Detector::settling() const noexcept {

@@ -77,6 +77,10 @@ class Detector {
     /// Holds all state from `from` for the blanking time: a pulse goes out there. Thread: loop.
     void blank(SampleIndex from) noexcept;
 
+    /// Frames since the detector last fell below its re-arm level after a crossing, as far as it looked; 0 while a
+    /// crossing goes on, UINT64_MAX before the first. Thread: loop.
+    [[nodiscard]] std::uint64_t quiet_frames() const noexcept;
+
     /// As new. Thread: loop.
     void reset() noexcept;
 

@@ -104,7 +104,8 @@ struct Detector::State {
     std::uint64_t newest_reference = UINT64_MAX; // place of the last reference crossing; UINT64_MAX: none yet
     std::uint64_t above_run = 0;                 // frames in a row that the vote was above
     bool spent = false;                          // crossed, and not below the re-arm level since
-    bool resume = false;                         // next frame follows a splice
+    std::uint64_t quiet_since = UINT64_MAX; // place after the last frame of the last crossing; UINT64_MAX: none yet
+    bool resume = false;                    // next frame follows a splice
 
     Detector::Watcher watcher = nullptr;
     void* watcher_context = nullptr;

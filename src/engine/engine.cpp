@@ -4,8 +4,10 @@
 
 namespace millpond {
 
-Engine::Engine(Detector detector, Arbiter arbiter, Hertz rate, EventSink& sink, PulsePort& port)
-    : detector_(std::move(detector)), arbiter_(std::move(arbiter)), sink_(sink), port_(port),
+Engine::Engine(Detector detector, const ArbiterSettings& arbiter, std::vector<SampleIndex> schedule, Hertz rate,
+               EventSink& sink, PulsePort& port)
+    : detector_(std::move(detector)), arbiter_(Arbiter::make(arbiter, rate)),
+      plan_(PulsePlan::make(arbiter, rate, std::move(schedule))), sink_(sink), port_(port),
       second_frames_(frames_in_ms(1000.0, rate)) {
     if (detector_.has_state_gate()) {
         arbiter_.add_gate(std::string(state_gate_name), detector_.state_gate_open());
@@ -56,8 +58,7 @@ std::size_t Engine::broken_frames(const FrameBlock& block, std::size_t from) con
     return broken;
 }
 
-// Stops at every place where something is due by the clock of samples: an epoch, a scheduled pulse, the floor's journal
-// entry.
+// Stops at every place where something is due by the clock of samples: an epoch, a slot, the floor's journal entry.
 void Engine::run_finite(FrameBlock block) noexcept {
     if (block.frames() > 0) {
         close_gap();
@@ -66,11 +67,10 @@ void Engine::run_finite(FrameBlock block) noexcept {
     while (block.frames() > 0) {
         const SampleIndex end = block.first + block.frames();
         follow_plan(next_);
-        const SampleIndex stop =
-            std::min({end, std::max(next_ + 1, arbiter_.next_scheduled()), next_floor_, arbiter_.plan().next_start()});
-        if (arbiter_.next_scheduled() <= next_) {
-            play_schedule();
+        while (plan_.next_due() <= next_) {
+            meet_slot();
         }
+        const SampleIndex stop = std::min({end, plan_.next_due(), next_floor_, arbiter_.plan().next_start()});
         const std::size_t frames = run_detector(block.part(0, static_cast<std::size_t>(stop - block.first)));
         block = block.part(frames, block.frames() - frames);
         if (next_ >= next_floor_) {
@@ -129,38 +129,65 @@ void Engine::follow_state() noexcept {
 
 void Engine::on_crossing(const Crossing& crossing) noexcept {
     ++detections_;
-    const Candidate candidate{crossing.at, crossing.settling, crossing.unsettled, crossing.vetoed, false};
     // The verdict comes first and the pulse with it: what is written down can wait.
-    const Rule rule = arbiter_.judge(candidate);
-    const Event trigger = trigger_event(candidate);
+    const Rule rule = arbiter_.judge({crossing.at, crossing.settling, crossing.unsettled, crossing.vetoed});
+    TriggerDetail detail{crossing.at.value, 0, PulseOrigin::trigger, 0, 0};
+    bool ordered = false;
     if (rule == Rule::none) {
-        port_.fire(trigger);
-        detector_.blank(crossing.at + 1);
+        detail.number = arbiter_.triggers();
+        detail.caught = plan_.take_trigger(crossing.at, detail.number) ? 1 : 0;
+        ordered = plan_.gives(PulseOrigin::trigger) && detail.caught == 0;
+        const Event trigger = Event::make(EventKind::trigger, 0, crossing.at, detail);
+        if (ordered) {
+            port_.fire(Event::make(EventKind::order, 0, crossing.at, detail));
+        }
+        port_.mark(trigger);
+        detector_.blank(crossing.at + 1); // in every condition
     }
     sink_.take(Event::make(EventKind::detection, 0, crossing.at, crossing.detail));
-    sink_.take(rule == Rule::none ? trigger : withheld_event(candidate, rule));
-}
-
-void Engine::play_schedule() noexcept {
-    const Candidate candidate{next_, detector_.settling(), !detector_.settled(), false, true};
-    arbiter_.schedule_played();
-    const Rule rule = arbiter_.judge(candidate);
-    const Event trigger = trigger_event(candidate);
-    if (rule == Rule::none) {
-        port_.fire(trigger);
-        detector_.blank(candidate.at);
+    const auto verdict = rule == Rule::none ? EventKind::trigger : EventKind::withheld;
+    sink_.take(Event::make(verdict, static_cast<std::uint8_t>(rule), crossing.at, detail));
+    if (ordered) {
+        sink_.take(Event::make(EventKind::order, 0, crossing.at, detail));
     }
-    sink_.take(rule == Rule::none ? trigger : withheld_event(candidate, rule));
 }
 
-Event Engine::trigger_event(const Candidate& candidate) const noexcept {
-    return Event::make(EventKind::trigger, 0, candidate.at,
-                       TriggerDetail{candidate.at.value, arbiter_.triggers(), candidate.scheduled ? 1U : 0U});
+// The moment of a delayed or scheduled pulse. All but the order is the same in every condition.
+void Engine::meet_slot() noexcept {
+    const PulseSlot slot = plan_.next();
+    const TriggerDetail detail{slot.from.value, slot.number, slot.origin, slot.caught ? 1U : 0U, 0};
+    Rule rule = Rule::held;
+    if (!plan_.waits_for_quiet(slot.origin) || detector_.quiet_frames() >= plan_.quiet_frames()) {
+        rule = arbiter_.judge_slot({next_, detector_.settling(), !detector_.settled()}, slot.origin);
+    }
+    const bool may_pass =
+        rule == Rule::held || rule == Rule::lock_out || rule == Rule::second_limit || rule == Rule::interval;
+    if (may_pass && plan_.hold(next_)) {
+        return;
+    }
+    plan_.done();
+    const bool ordered = rule == Rule::none && plan_.gives(slot.origin) && !slot.caught;
+    const Event order = Event::make(EventKind::order, 0, next_, detail);
+    if (ordered) {
+        port_.fire(order);
+    }
+    if (rule == Rule::none) {
+        detector_.blank(next_);
+    }
+    const auto verdict = rule == Rule::none ? EventKind::slot : EventKind::omitted;
+    sink_.take(Event::make(verdict, static_cast<std::uint8_t>(rule), next_, detail));
+    if (ordered) {
+        sink_.take(order);
+    }
 }
 
-Event Engine::withheld_event(const Candidate& candidate, Rule rule) noexcept {
-    return Event::make(EventKind::withheld, static_cast<std::uint8_t>(rule), candidate.at,
-                       TriggerDetail{candidate.at.value, 0, candidate.scheduled ? 1U : 0U});
+// Slots that fell into a gap are left out there, so that the plan's count stays whole.
+void Engine::miss_slots(SampleIndex before) noexcept {
+    for (; plan_.next_due() < before; plan_.done()) {
+        const PulseSlot slot = plan_.next();
+        const TriggerDetail detail{slot.from.value, slot.number, slot.origin, slot.caught ? 1U : 0U, 0};
+        sink_.take(Event::make(EventKind::omitted, static_cast<std::uint8_t>(Rule::gap), slot.due, detail));
+    }
 }
 
 void Engine::skip(std::uint64_t frames, GapCause cause) noexcept {
@@ -175,12 +202,7 @@ void Engine::skip(std::uint64_t frames, GapCause cause) noexcept {
     next_ = next_ + frames;
     detector_.gap(next_);
     follow_plan(next_);
-    // A place of the schedule that fell into the gap is refused there, so that the plan's count stays whole.
-    while (arbiter_.next_scheduled() < next_) {
-        const Candidate missed{arbiter_.next_scheduled(), true, false, false, true};
-        arbiter_.schedule_played();
-        sink_.take(withheld_event(missed, Rule::gap));
-    }
+    miss_slots(next_);
     // Floors stand still in a gap: those due in it are left out.
     if (next_ >= next_floor_) {
         next_floor_ = next_floor_ + ((next_ - next_floor_) / second_frames_ + 1) * second_frames_;

@@ -1,8 +1,9 @@
-// The one engine of every command: detector and arbiter, samples and commands in, events and pulse orders out.
-// Live, dry run, tuning and audit differ only in where samples come from and where orders go.
+// The one engine of every command: detector, arbiter and pulse plan; samples and commands in, events and pulse orders
+// out. Live, dry run, tuning and audit differ only in where samples come from and where orders go.
 #pragma once
 
 #include "arbiter/arbiter.hpp"
+#include "arbiter/pulse_plan.hpp"
 #include "base/channels.hpp"
 #include "base/event.hpp"
 #include "base/frames.hpp"
@@ -17,13 +18,16 @@ namespace millpond {
 class PulsePort {
   public:
     virtual ~PulsePort() = default;
-    virtual void fire(const Event& trigger) noexcept = 0;
+    /// `order`: of kind order, at the sample that decided.
+    virtual void fire(const Event& order) noexcept = 0;
+    /// A trigger, in every condition, after its pulse where it has one at once: for lines that mark triggers.
+    virtual void mark(const Event& /*trigger*/) noexcept {}
 };
 
 /// For runs without a line: every order is forgotten.
 class NoPulsePort : public PulsePort {
   public:
-    void fire(const Event& /*trigger*/) noexcept override {}
+    void fire(const Event& /*order*/) noexcept override {}
 };
 
 struct EngineSettings {
@@ -38,7 +42,9 @@ class Engine {
   public:
     /// Emits nothing yet. Allocates: where the detector has a gate of its own, the arbiter hears of it here. The engine
     /// keeps references to `sink` and `port`; they must outlive it.
-    Engine(Detector detector, Arbiter arbiter, Hertz rate, EventSink& sink, PulsePort& port);
+    /// `schedule`: places of a control schedule in ascending order, empty without one.
+    Engine(Detector detector, const ArbiterSettings& arbiter, std::vector<SampleIndex> schedule, Hertz rate,
+           EventSink& sink, PulsePort& port);
 
     /// First call of a session or run: emits the starting state and the gates. `armed`: start armed.
     void start(SampleIndex at, bool armed) noexcept;
@@ -63,6 +69,7 @@ class Engine {
     [[nodiscard]] SampleIndex next_sample() const noexcept { return next_; }
     [[nodiscard]] Detector& detector() noexcept { return detector_; }
     [[nodiscard]] const Arbiter& arbiter() const noexcept { return arbiter_; }
+    [[nodiscard]] const PulsePlan& plan() const noexcept { return plan_; }
     [[nodiscard]] std::uint64_t detections() const noexcept { return detections_; }
 
   private:
@@ -70,7 +77,8 @@ class Engine {
     std::size_t run_detector(const FrameBlock& block) noexcept;
     [[nodiscard]] std::size_t broken_frames(const FrameBlock& block, std::size_t from) const noexcept;
     void on_crossing(const Crossing& crossing) noexcept;
-    void play_schedule() noexcept;
+    void meet_slot() noexcept;
+    void miss_slots(SampleIndex before) noexcept;
     void skip(std::uint64_t frames, GapCause cause) noexcept;
     void close_gap() noexcept;
     void journal_floors() noexcept;
@@ -80,11 +88,10 @@ class Engine {
     void begin_epoch(SampleIndex at, const ChangedBy& by) noexcept;
     void move_gate(std::string_view name, bool open, const ChangedBy& by) noexcept;
     void journal_gate(std::string_view name, bool open, const ChangedBy& by) noexcept;
-    [[nodiscard]] Event trigger_event(const Candidate& candidate) const noexcept;
-    [[nodiscard]] static Event withheld_event(const Candidate& candidate, Rule rule) noexcept;
 
     Detector detector_;
     Arbiter arbiter_;
+    PulsePlan plan_;
     EventSink& sink_;
     PulsePort& port_;
     std::uint64_t second_frames_;

@@ -34,6 +34,13 @@ void fill_pulse(TableEvent& row, const PulseDetail& detail) {
     add_nanos(row, "output_us", detail.output_ns);
 }
 
+void fill_moment(TableEvent& row, const TriggerDetail& detail) {
+    row.extra["number"] = fmt::format("{}", detail.number);
+    row.extra["origin"] = name_of(detail.origin);
+    row.extra["from"] = fmt::format("{}", detail.from);
+    row.extra["catch"] = fmt::format("{}", detail.caught);
+}
+
 // Empty trial_type where the event has no row.
 TableEvent row_of(const Event& event, Hertz rate) {
     TableEvent row;
@@ -44,8 +51,13 @@ TableEvent row_of(const Event& event, Hertz rate) {
         fill_detection(row, event.as<DetectionDetail>());
         break;
     case EventKind::trigger:
-        row.extra["number"] = fmt::format("{}", event.as<TriggerDetail>().number);
-        row.extra["scheduled"] = event.as<TriggerDetail>().from_schedule != 0 ? "1" : "0";
+    case EventKind::slot:
+    case EventKind::order:
+        fill_moment(row, event.as<TriggerDetail>());
+        break;
+    case EventKind::omitted:
+        fill_moment(row, event.as<TriggerDetail>());
+        row.extra["rule"] = name_of(static_cast<Rule>(event.code));
         break;
     case EventKind::withheld:
         row.extra["rule"] = name_of(static_cast<Rule>(event.code));
@@ -93,10 +105,12 @@ nlohmann::json dictionary() {
         {"onset", column("Place in the stream, from the session's first sample", "s")},
         {"duration", column("Pulse: order to rise until order to fall; gap: frames missing; else 0", "s")},
         {"sample", column("Place in the stream, counted in frames from 0; missing frames are counted too")},
-        {"rule", column("The one rule that refused a withheld detection")},
+        {"rule", column("The one rule that refused a withheld detection or an omitted moment")},
         {"cause", column("Why frames are missing; site: flat or huge where it is left out, alive where it is back")},
-        {"number", column("Count of the session's triggers, from 1")},
-        {"scheduled", column("1 where a control schedule asked for the trigger, else 0")},
+        {"number", column("Count of the session's triggers, from 1; of origin schedule: place in the schedule")},
+        {"origin", column("Why there is a moment for a pulse: trigger (at once), delay (a while later), schedule")},
+        {"from", column("Decision sample of the trigger; of origin schedule: the planned place")},
+        {"catch", column("1 where the trigger is a catch trial, drawn alike in every condition: no pulse; else 0")},
         {"site", column("Channel in the stream that decided, or `mean` for the mean over sites and for evidence")},
         {"votes", column("Ripple sites above their thresholds")},
         {"envelope_uv", column("Envelope at the decision sample", "uV")},
@@ -110,7 +124,10 @@ nlohmann::json dictionary() {
         {"text", column("The operator's mark")}};
     json["trial_type"] = column("What happened");
     json["trial_type"]["Levels"] = {{"detection", "The detector crossed"},
-                                    {"trigger", "A detection, or a place in a control schedule, that was let through"},
+                                    {"trigger", "A detection that was let through, in every condition"},
+                                    {"slot", "A moment for a delayed or scheduled pulse, blanked in every condition"},
+                                    {"omitted", "Such a moment, at which no condition may give a pulse"},
+                                    {"order", "A pulse was ordered"},
                                     {"withheld", "A detection that was refused"},
                                     {"pulse", "The order was written to the output"},
                                     {"gap", "Frames are missing from here"},
@@ -123,8 +140,9 @@ nlohmann::json dictionary() {
 
 const std::vector<std::string>& session_table_columns() {
     static const std::vector<std::string> columns{
-        "rule",         "cause",      "number",       "scheduled", "site",       "votes",     "envelope_uv", "floor_uv",
-        "threshold_uv", "packing_us", "transport_us", "wake_us",   "compute_us", "output_us", "text"};
+        "rule",         "cause",   "number",      "origin",    "from",         "catch",
+        "site",         "votes",   "envelope_uv", "floor_uv",  "threshold_uv", "packing_us",
+        "transport_us", "wake_us", "compute_us",  "output_us", "text"};
     return columns;
 }
 

@@ -80,7 +80,10 @@ class Walk {
             take_floor(event.as<FloorDetail>(), event.sample);
             break;
         case EventKind::trigger:
-            take_trigger(event.sample, event.as<TriggerDetail>().from_schedule != 0);
+            take_trigger(event.sample);
+            break;
+        case EventKind::slot:
+            blank(event.sample);
             break;
         case EventKind::state:
             armed_.set(!rules_.session || event.code == static_cast<std::uint8_t>(ArmState::armed), event.sample,
@@ -109,9 +112,10 @@ class Walk {
         settled_.set(all, at, obstacles_);
     }
 
-    void take_trigger(SampleIndex at, bool scheduled) {
-        const SampleIndex blanked = scheduled ? at : at + 1;
-        obstacles_.add(blanked, blanked + frames_in_ms(rules_.blanking_ms, rate_));
+    void blank(SampleIndex from) { obstacles_.add(from, from + frames_in_ms(rules_.blanking_ms, rate_)); }
+
+    void take_trigger(SampleIndex at) {
+        blank(at + 1);
         if (rules_.session) {
             obstacles_.add(at + 1, at + std::max<std::uint64_t>(1, frames_in_ms(rules_.lockout_ms, rate_)));
         }

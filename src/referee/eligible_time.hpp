@@ -35,8 +35,8 @@ struct EligibleRules {
 };
 
 /// Within [from, to). `events` in journal order. Where they hold no floor event nothing is eligible.
-/// The frame of a trigger is itself eligible; blanking and lock-out begin with the next one. Blanking after a place of
-/// a control schedule begins with that place.
+/// The frame of a trigger is itself eligible; blanking and lock-out begin with the next one. Blanking at a slot begins
+/// with its own frame, whether a pulse was given there or not.
 [[nodiscard]] Intervals eligible_time(std::span<const Event> events, const EligibleRules& rules, Hertz rate,
                                       SampleIndex from, SampleIndex to);
 

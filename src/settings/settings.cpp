@@ -68,6 +68,24 @@ void check_floor_limits(const FloorLimitSettings& floor, const std::string& file
     }
 }
 
+void check_conditions(const ArbiterSettings& arbiter, const std::string& file) {
+    if (plays_schedule(arbiter.condition) && arbiter.schedule_file.empty()) {
+        throw Refusal(
+            file + ": arbiter.schedule_file", "none",
+            "a control schedule (condition: " + std::string(word_for<Condition>(conditions, arbiter.condition)) + ")");
+    }
+    if (arbiter.delay.least_ms > arbiter.delay.most_ms) {
+        throw Refusal(file + ": arbiter.delay.least_ms", shortest(arbiter.delay.least_ms),
+                      "at most arbiter.delay.most_ms, " + shortest(arbiter.delay.most_ms));
+    }
+    const double waiting_ms = arbiter.delay.most_ms + arbiter.hold.longest_ms;
+    if (waiting_ms > static_cast<double>(most_delayed_slots) * arbiter.lockout_ms) {
+        throw Refusal(file + ": arbiter.delay.most_ms", shortest(arbiter.delay.most_ms),
+                      "with hold.longest_ms at most " + std::to_string(most_delayed_slots) + " lock-outs of " +
+                          shortest(arbiter.lockout_ms) + " ms");
+    }
+}
+
 void check_together(const Settings& settings, const std::string& file) {
     if (settings.detector.threshold.rearm_deviations > settings.detector.threshold.deviations) {
         throw Refusal(file + ": detector.threshold.rearm_deviations",
@@ -85,9 +103,7 @@ void check_together(const Settings& settings, const std::string& file) {
         throw Refusal(file + ": arbiter.lockout_ms", shortest(settings.arbiter.lockout_ms),
                       "more than a whole pulse or train lasts, " + shortest(train_ms));
     }
-    if (settings.arbiter.condition == Condition::schedule && settings.arbiter.schedule_file.empty()) {
-        throw Refusal(file + ": arbiter.schedule_file", "none", "a control schedule (condition: schedule)");
-    }
+    check_conditions(settings.arbiter, file);
     check_gates(settings.arbiter.gates, file);
     const auto& gates = settings.arbiter.gates;
     const auto names_a_gate = [&gates](std::string_view name) {

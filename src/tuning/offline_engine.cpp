@@ -14,8 +14,8 @@ OfflineEngine OfflineEngine::make(const EngineSettings& settings, const Channels
     }
     auto arbiter = settings.arbiter;
     arbiter.speed_gate.on = false; // a recording has no speed: the gate would stay closed
-    offline.engine_ = std::make_unique<Engine>(std::move(detector), Arbiter::make(arbiter, rate, std::move(schedule)),
-                                               rate, *offline.kept_, *offline.kept_);
+    offline.engine_ = std::make_unique<Engine>(std::move(detector), arbiter, std::move(schedule), rate, *offline.kept_,
+                                               *offline.kept_);
     return offline;
 }
 

@@ -99,7 +99,7 @@ SweepResult run_engine(std::span<const TuningRecording> recordings, const Detect
     double delay_ms = 0.0;
     for (const auto& recording : recordings) {
         auto engine = OfflineEngine::make({detector, plan.arbiter}, recording.channels, plan.rate);
-        engine.start(true);
+        engine.start(plan.armed);
         engine.process({SampleIndex{0}, recording.channels.size(), recording.data});
         engine.finish();
         joined.add(recording, detections_to_score(engine.events()), engine.eligible(), block_frames(plan));

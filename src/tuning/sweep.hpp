@@ -29,7 +29,8 @@ namespace millpond {
 
 struct SweepPlan {
     Hertz rate;              ///< of all recordings
-    ArbiterSettings arbiter; ///< of `confirm`: triggers blank the detector, as in a session; runs armed
+    ArbiterSettings arbiter; ///< of `confirm`: triggers blank the detector, as in a session
+    bool armed = true;       ///< `confirm` runs armed; not armed there are no triggers, and nothing is blanked
     double block_s = 30.0;
     double early_ms = 0.0;
     unsigned threads = 2;

@@ -46,12 +46,12 @@ TEST_F(ControlSchedule, FromTheTriggersOfASessionFolderPlaysWithoutEditingTheSet
     auto places = samples_of(rig_ / "control.tsv", "scheduled");
     EXPECT_EQ(places.size(), samples_of(disrupted / "events.tsv", "trigger").size());
 
-    const auto control = play({"--schedule", rig_.path("control.tsv")});
+    const auto control = play({"--condition", "yoked", "--schedule", rig_.path("control.tsv")});
     std::erase_if(places, [](const std::string& sample) { return std::stoul(sample) >= frames; });
     ASSERT_GT(places.size(), 2U);
-    EXPECT_EQ(samples_of(control / "events.tsv", "trigger"), places);
-    EXPECT_EQ(rig_.audit(control)["decisions"]["scheduled_triggers"], places.size());
-    EXPECT_EQ(load_settings(control / "settings.yaml").arbiter.condition, Condition::schedule);
+    EXPECT_EQ(samples_of(control / "events.tsv", "order"), places);
+    EXPECT_EQ(rig_.audit(control)["decisions"]["orders"]["schedule"], places.size());
+    EXPECT_EQ(load_settings(control / "settings.yaml").arbiter.condition, Condition::yoked);
 }
 
 TEST_F(ControlSchedule, OfATableNeedsItsRate) {

@@ -84,10 +84,12 @@ TEST(Arbiter, ClosedGateRefusesAndItsNameMustBeKnown) {
 TEST(Arbiter, NamesTheFirstRuleThatAppliesInItsStatedOrder) {
     ArbiterSettings settings = settings_with(1e4, 1, 1);
     settings.gates = {{"g", false}};
-    settings.condition = Condition::none;
-    auto arbiter = Arbiter::make(settings, rate);
+    auto arbiter = armed(settings);
+    arbiter.set_gate("g", true);
+    ASSERT_EQ(arbiter.judge(at(1)), Rule::none);
+    arbiter.set_gate("g", false);
     arbiter.set_state(ArmState::faulted);
-    Candidate all{SampleIndex{1000}, true, true, true, false};
+    Candidate all{SampleIndex{1000}, true, true, true};
     EXPECT_EQ(arbiter.judge(all), Rule::gap);
     all.settling = false;
     EXPECT_EQ(arbiter.judge(all), Rule::unsettled);
@@ -100,23 +102,31 @@ TEST(Arbiter, NamesTheFirstRuleThatAppliesInItsStatedOrder) {
     arbiter.set_state(ArmState::armed);
     EXPECT_EQ(arbiter.judge(all), Rule::gate);
     arbiter.set_gate("g", true);
-    EXPECT_EQ(arbiter.judge(all), Rule::condition);
+    EXPECT_EQ(arbiter.judge(all), Rule::lock_out);
+    all.at = SampleIndex{20000};
+    EXPECT_EQ(arbiter.judge(all), Rule::session_limit);
 }
 
-TEST(Arbiter, ConditionScheduleLetsThePlanThroughAndNoDetection) {
+TEST(Arbiter, MomentsOfEachOriginHaveLimitsOfTheirOwn) {
+    auto arbiter = armed(settings_with(150.0, 100, 2));
+    ASSERT_EQ(arbiter.judge(at(1000)), Rule::none);
+    EXPECT_EQ(arbiter.judge_slot(at(1010), PulseOrigin::schedule), Rule::none) << "a trigger locks no schedule out";
+    EXPECT_EQ(arbiter.judge_slot(at(1020), PulseOrigin::delay), Rule::none);
+    EXPECT_EQ(arbiter.judge_slot(at(1030), PulseOrigin::schedule), Rule::lock_out);
+    EXPECT_EQ(arbiter.judge(at(1150)), Rule::none) << "nor do moments lock detections out";
+    EXPECT_EQ(arbiter.triggers(), 2U);
+    EXPECT_EQ(arbiter.judge_slot(at(2000), PulseOrigin::schedule), Rule::none);
+    EXPECT_EQ(arbiter.judge_slot(at(3000), PulseOrigin::schedule), Rule::session_limit);
+}
+
+TEST(Arbiter, GivesNoMomentToAnyoneWhileNotArmedOrAGateIsClosed) {
     ArbiterSettings settings;
-    settings.condition = Condition::schedule;
-    auto arbiter = Arbiter::make(settings, rate, {SampleIndex{500}, SampleIndex{900}});
-    arbiter.set_state(ArmState::armed);
-    EXPECT_EQ(arbiter.next_scheduled(), SampleIndex{500});
-    Candidate planned = at(500);
-    planned.scheduled = true;
-    EXPECT_EQ(arbiter.judge(planned), Rule::none);
-    arbiter.schedule_played();
-    EXPECT_EQ(arbiter.next_scheduled(), SampleIndex{900});
-    EXPECT_EQ(arbiter.judge(at(700)), Rule::condition);
-    arbiter.schedule_played();
-    EXPECT_EQ(arbiter.next_scheduled(), SampleIndex{UINT64_MAX});
+    settings.gates = {{"immobile", false}};
+    auto arbiter = armed(settings);
+    EXPECT_EQ(arbiter.judge_slot(at(1000), PulseOrigin::delay), Rule::gate);
+    arbiter.set_gate("immobile", true);
+    arbiter.set_state(ArmState::not_armed);
+    EXPECT_EQ(arbiter.judge_slot(at(1000), PulseOrigin::delay), Rule::not_armed);
 }
 
 } // namespace

@@ -146,7 +146,7 @@ TEST_F(ToldSession, LabelsGiveHitsMissesFalseAndRepeats) {
     floor(1250, 10.0, true);
     const auto detect = [this](std::uint64_t at) {
         tell(EventKind::detection, 0, at, DetectionDetail{});
-        tell(EventKind::withheld, static_cast<int>(Rule::condition), at, TriggerDetail{at, 0, 0});
+        tell(EventKind::withheld, static_cast<int>(Rule::gate), at, TriggerDetail{at, 0, {}, 0, 0});
     };
     detect(5'025); // first of the first ripple: 20 ms after its onset
     detect(5'050); // a repeat
@@ -168,18 +168,18 @@ TEST_F(ToldSession, LabelsGiveHitsMissesFalseAndRepeats) {
     EXPECT_NE(audit_text(result).find("hits 1, misses 1, false 1, repeats 1"), std::string::npos);
 }
 
-TEST_F(ToldSession, AdvisesAControlScheduleWherePulsesFollowedDetectionsOnly) {
-    tell(EventKind::trigger, 0, 5'000, TriggerDetail{5'000, 0, 0});
+TEST_F(ToldSession, AdvisesControlsWherePulsesFollowedDetectionsAtOnce) {
+    tell(EventKind::order, 0, 5'000, TriggerDetail{5'000, 1, PulseOrigin::trigger, 0, 0});
     tell(EventKind::pulse, 0, 5'000, PulseDetail{0, 0, 0, 0, 0});
-    EXPECT_NE(audit_text(audit(Ripples{})).find("or with a control schedule"), std::string::npos);
+    EXPECT_NE(audit_text(audit(Ripples{})).find("from control sessions"), std::string::npos);
 }
 
 TEST_F(ToldSession, OfAControlScheduleIsNotAdvisedToUseOne) {
-    tell(EventKind::trigger, 0, 5'000, TriggerDetail{5'000, 0, 1});
+    tell(EventKind::order, 0, 5'000, TriggerDetail{5'000, 1, PulseOrigin::schedule, 0, 0});
     tell(EventKind::pulse, 0, 5'000, PulseDetail{0, 0, 0, 0, 0});
     const auto result = audit(Ripples{});
-    EXPECT_EQ(audit_text(result).find("or with a control schedule"), std::string::npos);
-    EXPECT_NE(audit_text(result).find("Pulses of a control schedule were given"), std::string::npos);
+    EXPECT_EQ(audit_text(result).find("from control sessions"), std::string::npos);
+    EXPECT_NE(audit_text(result).find("Delayed or scheduled pulses were given"), std::string::npos);
     EXPECT_EQ(audit_json(result)["score"]["pulses_scheduled"], true);
 }
 

@@ -52,8 +52,8 @@ class HandMadeLoop {
                  StoreSamples samples = StoreSamples::rf64, std::vector<FloorDetail> warm_start = {})
         : settings_(std::move(settings)),
           writer_(SessionWriter::open(session_in(temp, samples), about(settings_, warm_start))),
-          engine_(detector(warm_start), Arbiter::make(settings_.arbiter, test_rate, std::move(schedule)), test_rate,
-                  writer_->loop_sink(), port_) {
+          engine_(detector(warm_start), settings_.arbiter, std::move(schedule), test_rate, writer_->loop_sink(),
+                  port_) {
         engine_.start(SampleIndex{}, settings_.arbiter.start_armed);
     }
 

@@ -57,14 +57,14 @@ TEST(Rerun, ReproducesAControlScheduleFromThePlacesTheJournalNames) {
     const TemporaryFolder temp;
     auto settings = test_engine_settings();
     settings.arbiter.start_armed = true;
-    settings.arbiter.condition = Condition::schedule;
+    settings.arbiter.condition = Condition::yoked;
     const std::vector<SampleIndex> schedule{{4'001}, {8'000}, {14'100}, {20'000}}; // the third lies in the gap
     HandMadeLoop loop(temp, settings, schedule);
     run_eventful(loop);
     const SessionReader session(loop.close());
     const auto rerun = rerun_session(session, settings, "test");
     EXPECT_TRUE(rerun.reproduced()) << all(rerun);
-    EXPECT_EQ(session_figures(session.events()).scheduled_triggers, 2U) << "one in the gap, one after the fault";
+    EXPECT_EQ(session_figures(session.events()).orders[1], 2U) << "one in the gap, one after the fault";
 }
 
 // Theta from the 20th to the 40th second, and a command to another gate in between.

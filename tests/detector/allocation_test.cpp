@@ -33,8 +33,8 @@ TEST(Allocation, EvidenceADyingSiteTheStateGateAndMainsRemovalAllocateNothingInT
     settings.state_gate.on = true;
     settings.mains.method = MainsMethod::adaptive;
     Counted counted;
-    Engine engine(Detector::make(settings, scene.channels(), scene.rate()), Arbiter::make({}, scene.rate()),
-                  scene.rate(), counted, counted);
+    Engine engine(Detector::make(settings, scene.channels(), scene.rate()), ArbiterSettings{}, Schedule{}, scene.rate(),
+                  counted, counted);
     const test::AllocationGuard guard;
     engine.start(SampleIndex{0}, true);
     const FrameBlock whole{SampleIndex{0}, 5, data};

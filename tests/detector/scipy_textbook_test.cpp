@@ -46,10 +46,8 @@ std::vector<std::uint64_t> by_scipy(const DetectorSettings& settings, const Reco
 }
 
 std::vector<std::uint64_t> by_engine(const DetectorSettings& settings, const Recording& recording) {
-    EngineSettings whole{settings, {}};
-    whole.arbiter.condition = Condition::none;
-    auto engine = OfflineEngine::make(whole, recording.channels, recording.rate);
-    engine.start(true);
+    auto engine = OfflineEngine::make({settings, {}}, recording.channels, recording.rate);
+    engine.start(false); // not armed: no triggers, so nothing is blanked
     engine.process({SampleIndex{0}, recording.channels.size(), recording.data});
     engine.finish();
     std::vector<std::uint64_t> found;

@@ -62,15 +62,16 @@ const Recording& hard_scene() {
 EngineSettings gated() {
     EngineSettings settings;
     settings.detector.state_gate.on = true;
+    settings.arbiter.start_armed = true;
     return settings;
 }
 
 Kept run(const Recording& recording, const EngineSettings& settings, std::size_t block,
          KernelWidth width = KernelWidth::automatic) {
     Kept kept;
-    Engine engine(Detector::make(settings.detector, recording.channels, recording.rate, width),
-                  Arbiter::make(settings.arbiter, recording.rate), recording.rate, kept, kept);
-    engine.start(SampleIndex{0}, true);
+    Engine engine(Detector::make(settings.detector, recording.channels, recording.rate, width), settings.arbiter, {},
+                  recording.rate, kept, kept);
+    engine.start(SampleIndex{0}, settings.arbiter.start_armed);
     for (std::size_t at = 0; at < recording.frames(); at += block) {
         engine.process(recording.part(at, std::min(at + block, recording.frames())));
     }
@@ -187,8 +188,8 @@ TEST(StateGate, IsJournaledFromTheStartAndNoCommandMovesIt) {
     Kept kept;
     auto settings = gated();
     settings.arbiter.gates = {{"speed", true}};
-    Engine engine(Detector::make(settings.detector, ripple_channels(2), Hertz{1250.0}),
-                  Arbiter::make(settings.arbiter, Hertz{1250.0}), Hertz{1250.0}, kept, kept);
+    Engine engine(Detector::make(settings.detector, ripple_channels(2), Hertz{1250.0}), settings.arbiter, {},
+                  Hertz{1250.0}, kept, kept);
     engine.start(SampleIndex{0}, true);
     ASSERT_EQ(kept.of(EventKind::gate).size(), 2U);
     EXPECT_STREQ(kept.of(EventKind::gate)[1].as<GateDetail>().name.data(), "state");
@@ -201,8 +202,8 @@ TEST(StateGate, WithoutItACommandMayCallAGateState) {
     Kept kept;
     EngineSettings settings;
     settings.arbiter.gates = {{"state", true}};
-    Engine engine(Detector::make(settings.detector, ripple_channels(2), Hertz{1250.0}),
-                  Arbiter::make(settings.arbiter, Hertz{1250.0}), Hertz{1250.0}, kept, kept);
+    Engine engine(Detector::make(settings.detector, ripple_channels(2), Hertz{1250.0}), settings.arbiter, {},
+                  Hertz{1250.0}, kept, kept);
     EXPECT_TRUE(engine.set_gate("state", false));
 }
 
@@ -214,7 +215,7 @@ TEST(StateGate, PulsesHardlyMoveIt) {
     pulsing.arbiter.lockout_ms = 30.0;
     pulsing.arbiter.limits = for_sweeps({});
     pulsing.arbiter.limits.max_pulses_per_second = 1000;
-    quiet.arbiter.condition = Condition::none;
+    quiet.arbiter.start_armed = false; // no triggers, so nothing is blanked
     const auto with = run(hard_scene(), pulsing, 1000), without = run(hard_scene(), quiet, 1000);
     ASSERT_GT(with.of(EventKind::trigger).size(), 500U);
     EXPECT_GT(agreement(hard_scene(), with, 15.0).share, agreement(hard_scene(), without, 15.0).share - 0.01);
@@ -260,8 +261,8 @@ TEST(StateGate, RunningDoesNotSpoilTheFloorOfRest) {
         settings.detector.method = DetectionMethod::envelope;
         settings.detector.floor.time_constant_s = 5.0;
         settings.detector.floor.clip_deviations = 100.0;
-        Engine engine(Detector::make(settings.detector, ripple_channels(1), Hertz{1250.0}),
-                      Arbiter::make(settings.arbiter, Hertz{1250.0}), Hertz{1250.0}, kept, kept);
+        Engine engine(Detector::make(settings.detector, ripple_channels(1), Hertz{1250.0}), settings.arbiter, {},
+                      Hertz{1250.0}, kept, kept);
         engine.start(SampleIndex{0}, true);
         Random random(3, 0);
         std::vector<float> frame(1);

@@ -73,7 +73,7 @@ TEST(Config, NoFileForARigStartsArmed) {
 TEST(Config, ShamDiffersFromLiveInItsConditionAlone) {
     const auto live = load_settings(config / "live.yaml");
     auto sham = load_settings(config / "sham.yaml");
-    EXPECT_EQ(sham.arbiter.condition, Condition::schedule);
+    EXPECT_EQ(sham.arbiter.condition, Condition::yoked);
     sham.arbiter.condition = live.arbiter.condition;
     sham.arbiter.schedule_file = live.arbiter.schedule_file;
     sham.session.name = live.session.name;

@@ -16,8 +16,8 @@ class ClosedLoop : public EventSink, public PulsePort {
     ClosedLoop(const SceneSettings& scene, const AnswerSettings& answer, const EngineSettings& settings,
                std::vector<SampleIndex> schedule, double latency_ms)
         : animal_(AnsweringAnimal::make(scene, answer)), latency_(frames_in_ms(latency_ms, animal_.rate())),
-          engine_(Detector::make(settings.detector, animal_.channels(), animal_.rate()),
-                  Arbiter::make(settings.arbiter, animal_.rate(), std::move(schedule)), animal_.rate(), *this, *this) {}
+          engine_(Detector::make(settings.detector, animal_.channels(), animal_.rate()), settings.arbiter,
+                  std::move(schedule), animal_.rate(), *this, *this) {}
 
     void run(double seconds) {
         engine_.start(SampleIndex{0}, true);
@@ -34,9 +34,9 @@ class ClosedLoop : public EventSink, public PulsePort {
             detections.push_back(event.sample.value);
         }
     }
-    void fire(const Event& trigger) noexcept override {
-        pulses.push_back(trigger.sample.value);
-        animal_.pulse(trigger.sample + 1 + latency_);
+    void fire(const Event& order) noexcept override {
+        pulses.push_back(order.sample.value);
+        animal_.pulse(order.sample + 1 + latency_);
     }
 
     /// Detections within `ms` after any pulse, the one that caused it not counted.
@@ -74,7 +74,7 @@ SceneSettings quiet_animal(double rate_hz) {
 ClosedLoop scheduled_pulses(const SceneSettings& scene, double blanking_ms, double artefact_uv) {
     EngineSettings settings;
     settings.detector.blanking_ms = blanking_ms;
-    settings.arbiter.condition = Condition::schedule;
+    settings.arbiter.condition = Condition::yoked;
     std::vector<SampleIndex> schedule;
     for (double at_s = 20.0; at_s < 118.0; at_s += 2.0) {
         schedule.push_back(SampleIndex{static_cast<std::uint64_t>(at_s * scene.rate_hz)});

@@ -15,7 +15,7 @@ struct Kept : EventSink, PulsePort {
     std::vector<Event> events;
     std::vector<std::uint64_t> pulses;
     void take(const Event& event) noexcept override { events.push_back(event); }
-    void fire(const Event& trigger) noexcept override { pulses.push_back(trigger.sample.value); }
+    void fire(const Event& order) noexcept override { pulses.push_back(order.sample.value); }
     [[nodiscard]] std::vector<Event> of(EventKind kind) const {
         std::vector<Event> found;
         std::copy_if(events.begin(), events.end(), std::back_inserter(found),
@@ -36,7 +36,11 @@ EngineSettings quick_settings() {
 Engine engine_of(const EngineSettings& settings, std::size_t channels, Kept& kept,
                  std::vector<SampleIndex> schedule = {}) {
     return {Detector::make(settings.detector, ripple_channels(channels), rate),
-            Arbiter::make(settings.arbiter, rate, std::move(schedule)), rate, kept, kept};
+            settings.arbiter,
+            std::move(schedule),
+            rate,
+            kept,
+            kept};
 }
 
 /// A burst a second from 5 s on, on two channels.
@@ -142,30 +146,6 @@ TEST(Engine, NonFiniteFramesCountAsOneGap) {
     ASSERT_EQ(gaps.size(), 1U);
     EXPECT_EQ(gaps[0].code, static_cast<std::uint8_t>(GapCause::non_finite));
     EXPECT_EQ(gaps[0].as<GapDetail>().frames, 10U);
-}
-
-TEST(Engine, PlaysAControlScheduleAtItsPlacesAndKeepsTheRules) {
-    auto settings = quick_settings();
-    settings.arbiter.condition = Condition::schedule;
-    Kept kept;
-    // The first falls before the floor is settled, the third into the lock-out of the second, the fourth into a gap.
-    auto engine =
-        engine_of(settings, 2, kept,
-                  {SampleIndex{1000}, SampleIndex{7000}, SampleIndex{7100}, SampleIndex{8005}, SampleIndex{9000}});
-    engine.start(SampleIndex{0}, true);
-    const auto data = bursts();
-    feed(engine, data, 0, 8000, 64);
-    feed(engine, data, 8010, 12000, 64);
-    EXPECT_EQ(kept.pulses, (std::vector<std::uint64_t>{7000, 9000}));
-    std::vector<std::uint8_t> rules;
-    for (const auto& event : kept.of(EventKind::withheld)) {
-        if (event.as<TriggerDetail>().from_schedule == 1) {
-            rules.push_back(event.code);
-        }
-    }
-    EXPECT_EQ(rules, (std::vector<std::uint8_t>{static_cast<std::uint8_t>(Rule::unsettled),
-                                                static_cast<std::uint8_t>(Rule::lock_out),
-                                                static_cast<std::uint8_t>(Rule::gap)}));
 }
 
 TEST(Engine, FloorsAreJournaledOnceASecondOfTheStream) {

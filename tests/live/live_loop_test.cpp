@@ -85,8 +85,7 @@ struct Rig {
               detector.method = DetectionMethod::envelope;
               detector.floor.settle_s = 2.0;
               detector.threshold.deviations = 6.0;
-              return Engine(Detector::make(detector, ripple_channels(2), rate), Arbiter::make(arbiter, rate), rate,
-                            sink, port);
+              return Engine(Detector::make(detector, ripple_channels(2), rate), arbiter, {}, rate, sink, port);
           }) {}
 
     static std::vector<float> bursts() {

@@ -13,7 +13,7 @@ Event floor_at(std::uint64_t sample, bool settled, std::uint16_t site = 0) {
                        FloorDetail{1.0, 1.0, 4.0F, site, static_cast<std::uint16_t>(settled), 0});
 }
 Event trigger_at(std::uint64_t sample) {
-    return Event::make(EventKind::trigger, 0, SampleIndex{sample}, TriggerDetail{sample, 1, 0});
+    return Event::make(EventKind::trigger, 0, SampleIndex{sample}, TriggerDetail{sample, 1, {}, 0, 0});
 }
 Event gap_at(std::uint64_t sample, std::uint64_t frames) {
     return Event::make(EventKind::gap, 1, SampleIndex{sample}, GapDetail{frames});
@@ -99,6 +99,17 @@ TEST(EligibleTime, IsCutToTheStretchAskedFor) {
         (Intervals{from_to(500, 700)}));
 }
 
+TEST(EligibleTime, MomentsOfPulsesAreBlankedWhetherAPulseWasGivenOrNot) {
+    EligibleRules rules;
+    rules.blanking_ms = 40.0;
+    const auto slot =
+        Event::make(EventKind::slot, 0, SampleIndex{5000}, TriggerDetail{5000, 1, PulseOrigin::schedule, 0, 0});
+    const auto clear = eligible({floor_at(0, true), slot}, rules);
+    ASSERT_EQ(clear.size(), 2U);
+    EXPECT_EQ(clear[0].to, SampleIndex{5000});
+    EXPECT_EQ(clear[1].from - clear[0].to, frames_in_ms(40.0, rate));
+}
+
 TEST(Intervals, ContainTheirFirstFrameAndNotTheOneAfterTheLast) {
     const Intervals intervals{from_to(10, 20), from_to(30, 40)};
     EXPECT_FALSE(contains(intervals, SampleIndex{9}));
@@ -116,10 +127,9 @@ TEST(Intervals, IntersectionIsWhatLiesInBoth) {
 
 TEST(DetectionsToScore, LeaveOutWhatTheDetectorRefusedItselfAndKeepWhatTheArbiterRefused) {
     const std::vector<Event> events{
-        detection_at(1),          withheld_at(1, Rule::gap),       detection_at(2), withheld_at(2, Rule::unsettled),
-        detection_at(3),          withheld_at(3, Rule::veto),      detection_at(4), withheld_at(4, Rule::lock_out),
-        detection_at(5),          withheld_at(5, Rule::condition), detection_at(6), trigger_at(6),
-        withheld_at(7, Rule::gap)}; // a place in a control schedule, not a detection
+        detection_at(1), withheld_at(1, Rule::gap),  detection_at(2), withheld_at(2, Rule::unsettled),
+        detection_at(3), withheld_at(3, Rule::veto), detection_at(4), withheld_at(4, Rule::lock_out),
+        detection_at(5), withheld_at(5, Rule::gate), detection_at(6), trigger_at(6)};
     EXPECT_EQ(detections_to_score(events), (std::vector{SampleIndex{4}, SampleIndex{5}, SampleIndex{6}}));
 }
 

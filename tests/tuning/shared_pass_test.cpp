@@ -63,10 +63,8 @@ struct Expected {
 };
 
 Expected engine_without_pulses(const Trial& trial, const DetectorSettings& settings) {
-    ArbiterSettings arbiter;
-    arbiter.condition = Condition::none;
-    auto engine = OfflineEngine::make({settings, arbiter}, trial.channels, rate);
-    engine.start(true);
+    auto engine = OfflineEngine::make({settings, {}}, trial.channels, rate);
+    engine.start(false); // no triggers, so nothing is blanked
     engine.process({SampleIndex{0}, trial.channels.size(), trial.data});
     engine.finish();
     Expected expected;

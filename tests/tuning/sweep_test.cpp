@@ -76,11 +76,9 @@ TEST(Sweep, ScoresWhatTheEngineDetectsWithoutPulses) {
     const auto tuning = tuning_recording(recording);
     const auto candidates = some();
     const auto results = sweep(std::span(&tuning, 1), candidates, plan_of(5.0, 2));
-    ArbiterSettings none;
-    none.condition = Condition::none;
     for (std::size_t i = 0; i < candidates.size(); ++i) {
-        auto engine = OfflineEngine::make({candidates[i], none}, tuning.channels, rate);
-        engine.start(true);
+        auto engine = OfflineEngine::make({candidates[i], {}}, tuning.channels, rate);
+        engine.start(false); // no triggers, so nothing is blanked
         engine.process({SampleIndex{0}, tuning.channels.size(), tuning.data});
         engine.finish();
         const auto expected = score(tuning.truth, detections_to_score(engine.events()), engine.eligible(), 0.0, rate);

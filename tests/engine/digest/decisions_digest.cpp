@@ -37,8 +37,8 @@ void run(const DetectorSettings& detector, Hertz rate, KernelWidth width, const 
         data[i * channels + 1] = detector.method == DetectionMethod::evidence ? 5.0F : data[i * channels + 1];
     }
     Digest digest;
-    Engine engine(Detector::make(detector, ripple_channels(channels), rate, width), Arbiter::make({}, rate), rate,
-                  digest, digest);
+    Engine engine(Detector::make(detector, ripple_channels(channels), rate, width), ArbiterSettings{}, {}, rate, digest,
+                  digest);
     engine.start(SampleIndex{0}, true);
     engine.process(test::block_of(data, channels));
     std::printf("%s at %g Hz: %016" PRIx64 ", %" PRIu64 " detections\n", name, rate.value, digest.value,
