@@ -29,6 +29,23 @@ std::vector<FloorState> warm_start_floors(const DetectorSettings& detector) {
     return floors;
 }
 
+void check_floor_channels(const FloorLimitSettings& limits, const Detector& detector) {
+    for (std::size_t i = 0; i < limits.channels.size(); ++i) {
+        std::string there;
+        bool known = false;
+        for (std::size_t floor = 0; floor < detector.floor_count(); ++floor) {
+            const auto site = detector.floor(floor).site;
+            const std::uint32_t channel = site == 65535 ? 0U : site + 1U;
+            there += (there.empty() ? "" : ", ") + std::to_string(channel);
+            known = known || channel == limits.channels[i].channel;
+        }
+        if (!known) {
+            throw Refusal(fmt::format("limits.floor.channels[{}].channel", i),
+                          fmt::format("{}, which has no floor", limits.channels[i].channel), "one of " + there);
+        }
+    }
+}
+
 Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
     Schedule schedule;
     if (!arbiter.schedule_file.empty()) {

@@ -1,8 +1,10 @@
 // millpond live: a session on a rig, until the operator ends it.
 #include "app/commands.hpp"
+#include "app/limits_findings.hpp"
 #include "app/status_line.hpp"
 #include "app/wiring.hpp"
 #include "base/clock.hpp"
+#include "stimulus/stimulus.hpp"
 
 #include <CLI/CLI.hpp>
 #include <boost/asio/signal_set.hpp>
@@ -181,6 +183,18 @@ void print_summary(const LiveSession& session) {
     fmt::print("next: millpond audit {}\n", session.folder().string());
 }
 
+void tell_limits(const Settings& settings, spdlog::logger& log) {
+    if (const auto figures = stimulus_figures(settings.stimulus)) {
+        log.info("stimulus: {}", told(*figures));
+        for (const auto& warning : stimulus_warnings(*figures)) {
+            log.warn("stimulus: {}", warning);
+        }
+    }
+    if (const auto& gate = settings.arbiter.speed_gate; gate.on) {
+        log.info("gate speed: {}", told(gate));
+    }
+}
+
 void run_live(const LiveOptions& options) {
     std::signal(SIGPIPE, SIG_IGN);
     std::signal(SIGXFSZ, SIG_IGN); // a file too large is a full disk to the journal, not the end of the program
@@ -200,6 +214,7 @@ void run_live(const LiveOptions& options) {
         session.stream().channels, session.stream().rate_hz, session.delay_ms());
     log->info(
         "pulse only under the approved protocol and local rules; ask the licensed veterinarian. Ctrl-C ends, line low");
+    tell_limits(settings, *log);
     Operator watching(session, options, log);
     session.start();
     watching.watch();

@@ -54,6 +54,9 @@ std::string status_line(const LiveFigures& figures, Hertz rate) {
                             name_of(figures.state), closed_gates(figures), epoch_and_time_left(figures, rate),
                             rate.value, seconds_at(figures.upto, rate), lost, floor_and_threshold(figures),
                             figures.detections, figures.pulses, loop_latency(figures));
+    if (figures.speed) {
+        line += fmt::format(" | speed {:.3g}", *figures.speed);
+    }
     if (!figures.trouble.empty()) {
         line += " | TROUBLE: " + figures.trouble;
     }

@@ -5,6 +5,7 @@
 #include "outputs/osc_output.hpp"
 #include "outputs/silent_output.hpp"
 #include "realtime/realtime.hpp"
+#include "stimulus/stimulus.hpp"
 
 namespace millpond {
 namespace {
@@ -35,6 +36,21 @@ std::string settings_to_keep(Settings settings, const StreamSettings& stream, co
     return settings_to_yaml(settings);
 }
 
+// Figures and warnings, as they stood when the session began.
+void keep_stimulus(const StimulusSettings& stimulus, nlohmann::json& more) {
+    if (const auto figures = stimulus_figures(stimulus)) {
+        more["stimulus"] = {{"current_ua", stimulus.current_ua},
+                            {"phase_us", stimulus.phase_us},
+                            {"phases", stimulus.phases},
+                            {"area_um2", figures->area_um2},
+                            {"charge_per_phase_uc", figures->charge_uc},
+                            {"charge_density_uc_cm2", figures->density_uc_cm2},
+                            {"shannon_k", figures->shannon_k},
+                            {"text", told(*figures)},
+                            {"warnings", stimulus_warnings(*figures)}};
+    }
+}
+
 SessionAbout about(const Settings& settings, const StreamSettings& stream, const Channels& channels,
                    Detector& detector) {
     SessionAbout about;
@@ -50,6 +66,10 @@ SessionAbout about(const Settings& settings, const StreamSettings& stream, const
         about.warm_start = last_floors(SessionReader(settings.detector.floor.warm_start_session).events());
     }
     about.settings_text = settings_to_keep(settings, stream, channels);
+    keep_stimulus(settings.stimulus, about.more);
+    if (settings.arbiter.speed_gate.on) {
+        about.more["speed_gate_delay_ms"] = settings.arbiter.speed_gate.delay_ms;
+    }
     return about;
 }
 
@@ -106,6 +126,7 @@ Detector make_detector(const Settings& settings, const Channels& channels, Hertz
     if (const auto floors = warm_start_floors(settings.detector); !floors.empty()) {
         detector.warm_start(floors);
     }
+    check_floor_channels(settings.arbiter.limits.floor, detector);
     return detector;
 }
 

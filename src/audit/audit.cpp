@@ -29,8 +29,8 @@ RefereeFindings ask_referee(const AuditInput& input, const SessionReader& sessio
     return referee.finish();
 }
 
-Score score_as(const AuditInput& input, const SessionReader& session, const AuditScore& known, bool as_session,
-               SampleIndex upto) {
+Intervals eligible_as(const AuditInput& input, const SessionReader& session, const AuditScore& known, bool as_session,
+                      SampleIndex upto) {
     const auto detector = Detector::make(input.settings.detector, session.provenance().about.channels, session.rate());
     EligibleRules rules;
     rules.settle_frames = detector.filter_settle_frames();
@@ -38,10 +38,22 @@ Score score_as(const AuditInput& input, const SessionReader& session, const Audi
     rules.session = as_session;
     rules.lockout_ms = input.settings.arbiter.lockout_ms;
     auto eligible = eligible_time(session.events(), rules, session.rate(), SampleIndex{}, upto);
-    if (known.referee) {
-        eligible = without(eligible, known.referee->artefacts.excluded);
+    return known.referee ? without(eligible, known.referee->artefacts.excluded) : eligible;
+}
+
+void score_all(const AuditInput& input, const SessionReader& session, const SessionFigures& figures, SampleIndex upto,
+               AuditScore& known) {
+    const auto score_in = [&](const Intervals& eligible) {
+        return score(known.ripples, known.detections, eligible, input.labels ? 0.0 : referee_early_ms, session.rate());
+    };
+    const auto detector = eligible_as(input, session, known, false, upto);
+    const auto as_session = eligible_as(input, session, known, true, upto);
+    known.detector = score_in(detector);
+    known.session = score_in(as_session);
+    for (const auto& epoch : figures.epochs) {
+        const Intervals there{{epoch.from, epoch.to}};
+        known.epochs.push_back({score_in(intersection(detector, there)), score_in(intersection(as_session, there))});
     }
-    return score(known.ripples, known.detections, eligible, input.labels ? 0.0 : referee_early_ms, session.rate());
 }
 
 void add_score(const AuditInput& input, const SessionReader& session, AuditResult& result) {
@@ -64,8 +76,7 @@ void add_score(const AuditInput& input, const SessionReader& session, AuditResul
     known.pulses_given = result.figures.pulses > 0;
     known.pulses_scheduled = result.figures.orders[static_cast<std::size_t>(PulseOrigin::trigger)] == 0;
     const auto upto = input.labels ? result.end : std::min(result.end, SampleIndex{samples->frames()});
-    known.detector = score_as(input, session, known, false, upto);
-    known.session = score_as(input, session, known, true, upto);
+    score_all(input, session, result.figures, upto, known);
     result.score = std::move(known);
 }
 
@@ -85,6 +96,10 @@ AuditResult audit_session(const AuditInput& input) {
         result.frames_stored = samples->frames();
     }
     result.figures = session_figures(session.events());
+    if (!result.figures.epochs.empty()) {
+        auto& last = result.figures.epochs.back();
+        last.to = std::max(last.from, result.end);
+    }
     result.latency = latency_rows(session.events());
     result.rerun = rerun_session(session, input.settings, input.settings_name, progress_of(input, "re-run"));
     add_score(input, session, result);

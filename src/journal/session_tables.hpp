@@ -15,7 +15,7 @@ namespace millpond {
 /// Columns after the fixed ones.
 [[nodiscard]] const std::vector<std::string>& session_table_columns();
 
-/// One row for each detection, trigger, withheld, pulse, gap and note.
+/// One row for each detection, trigger, withheld, pulse, gap, epoch and note.
 [[nodiscard]] std::vector<TableEvent> session_table(std::span<const Event> events, Hertz rate);
 
 /// Writes events.tsv and events.json into `folder`.
