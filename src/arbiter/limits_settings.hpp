@@ -50,7 +50,7 @@ struct FloorRangeSettings {
 template <class Visitor> void describe(Visitor& visit, FloorRangeSettings& range) {
     visit.whole("channel", range.channel, {0, 256},
                 "number of the channel in the stream, from 1; 0: the mean over sites or the evidence");
-    visit.number("least_uv", range.least_uv, {0.0, 100000.0}, "its floor must not be lower");
+    visit.number("least_uv", range.least_uv, {0.0, 100000.0}, "the deviation of its floor must not be lower");
     visit.number("most_uv", range.most_uv, {0.001, 100000.0}, "nor higher");
 }
 
@@ -65,7 +65,7 @@ struct FloorLimitSettings {
 };
 
 template <class Visitor> void describe(Visitor& visit, FloorLimitSettings& floor) {
-    visit.number("least_uv", floor.least_uv, {0.0, 100000.0}, "no settled floor may be lower");
+    visit.number("least_uv", floor.least_uv, {0.0, 100000.0}, "no settled floor's deviation may be lower (evidence: weighted uV)");
     visit.number("most_uv", floor.most_uv, {0.001, 100000.0}, "nor higher");
     visit.number("least_times", floor.least_times, {0.0, 1.0},
                  "nor lower than so many times what it was when it had just settled");

@@ -62,7 +62,7 @@ bool FloorWatch::floor(std::size_t i, const FloorDetail& floor) noexcept {
     }
     auto& reference = settled_at_[i][floor.gates_closed != 0 ? 1 : 0];
     if (!(reference > 0.0)) {
-        reference = floor.mean;
+        reference = floor.deviation;
     }
     const std::uint32_t channel = floor.site == 65535 ? 0U : floor.site + 1U;
     double least = settings_.least_uv, most = settings_.most_uv;
@@ -74,7 +74,7 @@ bool FloorWatch::floor(std::size_t i, const FloorDetail& floor) noexcept {
     }
     least = std::max(least, settings_.least_times * reference);
     most = std::min(most, settings_.most_times * reference);
-    return !(floor.mean >= least && floor.mean <= most);
+    return !(floor.deviation >= least && floor.deviation <= most);
 }
 
 } // namespace millpond

@@ -52,8 +52,9 @@ TEST(GapWatch, WithoutLimitsNothingIsTooMuch) {
     }
 }
 
-FloorDetail settled(double mean, std::uint16_t site = 65535, bool gates_closed = false) {
-    return {mean, 1.0, 0.0F, site, 1, 1000, gates_closed ? 1U : 0U};
+/// The mean plays no part: that of the evidence may be anything.
+FloorDetail settled(double deviation, std::uint16_t site = 65535, bool gates_closed = false) {
+    return {-7.0, deviation, 0.0F, site, 1, 1000, gates_closed ? 1U : 0U};
 }
 
 FloorWatch watch_of(const FloorLimitSettings& settings, std::size_t floors = 1) {

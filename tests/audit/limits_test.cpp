@@ -30,9 +30,9 @@ EngineSettings limited() {
     limits.max_pulses_per_second = 1;
     limits.max_pulses_per_epoch = 5;
     limits.max_gaps_per_minute = 1;
-    limits.floor.most_times = 2.5;
-    limits.runaway.expected_per_s = 0.3;
-    limits.runaway.window_s = 6.0;
+    limits.floor.most_times = 1.3;
+    limits.runaway.expected_per_s = 0.1;
+    limits.runaway.window_s = 8.0;
     limits.runaway.false_alarms_per_hour = 0.1;
     settings.arbiter.plan.epochs = {
         {"rest 1", 8.0037 / 60.0, false}, {"track", 0.0, true}, {"rest 2", 20.0 / 60.0, true}};
@@ -58,7 +58,7 @@ void run_limited(HandMadeLoop& loop) {
             engine.set_gate("still", true, {ChangeSource::command, 4711, 0x7F000001});
         } else if (at == 26 * second) {
             engine.next_epoch({ChangeSource::command, 4711, 0x7F000001});
-        } else if (at == 28 * second || at == 36 * second || at == 42 * second) {
+        } else if (at == 30 * second || at == 44 * second) {
             engine.set_state(ArmState::armed, StateCause::command, {ChangeSource::command, 4711, 0x7F000001});
         } else if (at == 58 * second) {
             engine.set_state(ArmState::faulted, StateCause::emergency_stop, {ChangeSource::signal});
@@ -80,7 +80,7 @@ TEST(RerunOfLimits, FindsEveryFaultGateAndEpochAgain) {
         causes.emplace_back(name_of(state.cause));
     }
     for (const auto* cause : {"runaway", "too many gaps", "floor out of range", "emergency stop"}) {
-        EXPECT_EQ(std::count(causes.begin(), causes.end(), cause), 1) << cause << ": else nothing is shown";
+        EXPECT_GE(std::count(causes.begin(), causes.end(), cause), 1) << cause << ": else nothing is shown";
     }
     const auto rerun = rerun_session(session, loop.settings(), "test");
     EXPECT_TRUE(rerun.reproduced()) << all(rerun);

@@ -418,15 +418,39 @@ TEST(PlanInTheLoop, EndsTheSessionWhereItIsTo) {
     EXPECT_LE(rig.loop.engine().next_sample(), SampleIndex{10 * 1250 + 10});
 }
 
-TEST(LimitsInTheLoop, ARunawayFaultsAndOrdersTheLineLow) {
+TEST(LimitsInTheLoop, ARunawayFaultsTheSession) {
     ArbiterSettings arbiter;
     arbiter.limits.runaway.equal_below_ms = 2'000.0; // the bursts, one a second, are what looks like one here
+    arbiter.limits.runaway.equal_within_ms = 20.0;
     Rig rig(armed(), arbiter);
     rig.loop.run();
     EXPECT_EQ(rig.journal.of(EventKind::pulse).size(), 9U);
     const auto states = rig.journal.of(EventKind::state);
     ASSERT_GE(states.size(), 2U);
     EXPECT_EQ(states[1].as<StateDetail>().cause, static_cast<std::uint8_t>(StateCause::runaway));
+}
+
+TEST(LimitsInTheLoop, AFaultOrdersTheLineLowAtOnce) {
+    ArbiterSettings arbiter;
+    arbiter.limits.max_pulses_per_session = 1; // so that the one long pulse is not played into
+    arbiter.limits.runaway.expected_per_s = 0.01;
+    arbiter.limits.runaway.window_s = 10.0;
+    arbiter.limits.runaway.false_alarms_per_hour = 1.0;
+    Rig rig(armed());
+    LevelOutput output;
+    PulseLine line(output, {10s, 1, 20s}, rig.ends);
+    LiveLoop loop(armed(), rig.source, line, rig.journal, rig.commands, rig.make_engine(arbiter));
+    std::vector<bool> levels; // at the start of each second
+    rig.source.before = [&](std::size_t frame) {
+        if (frame % 1250 == 0) {
+            levels.push_back(output.high);
+        }
+        return Received::frames;
+    };
+    loop.run();
+    ASSERT_EQ(levels.size(), 20U);
+    EXPECT_TRUE(levels[6] && levels[7]) << "else nothing is shown";
+    EXPECT_FALSE(levels[8]) << "the third detection, in the seventh second, was one too many";
 }
 
 TEST(LiveLoop, AllocatesNothingFromStartToEnd) {
