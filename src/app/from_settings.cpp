@@ -56,6 +56,25 @@ Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
     return schedule;
 }
 
+std::optional<Assigned> assigned_for(Settings& settings, Hertz rate, const std::string& where) {
+    if (settings.assignment.file.empty()) {
+        return std::nullopt;
+    }
+    const auto list = read_assignment(settings.assignment.file);
+    const auto& session = session_of(list, settings.assignment.code, where + ": assignment.code");
+    if ((list.has(Condition::yoked) || list.has(Condition::rate_matched)) && settings.arbiter.schedule_file.empty()) {
+        throw Refusal(where + ": arbiter.schedule_file", "none",
+                      "a control schedule: some sessions of " + settings.assignment.file + " play one");
+    }
+    settings.arbiter.delay.in_every_condition =
+        settings.arbiter.delay.in_every_condition || list.has(Condition::delayed);
+    Assigned assigned{session_assignment(list, session), session.conditions, 0};
+    if (list.unit == AssignmentUnit::block) {
+        assigned.block_frames = frames_in_ms(list.block_minutes * 60000.0, rate);
+    }
+    return assigned;
+}
+
 std::string settings_hash(const Settings& settings, const Channels& channels) {
     auto text = to_yaml(settings.detector) + to_yaml(settings.arbiter) + to_yaml(settings.arbiter.limits) +
                 to_yaml(settings.arbiter.plan) + to_yaml(settings.arbiter.speed_gate);

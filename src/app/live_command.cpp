@@ -27,7 +27,7 @@ namespace {
 struct LiveOptions {
     std::string settings_file;
     std::optional<Condition> condition;
-    std::string schedule_file;
+    std::string schedule_file, assignment_file, code;
     bool start_armed = false;
     double stop_after_s = 0.0;
     double status_every_s = 0.0;
@@ -138,7 +138,7 @@ class Operator {
     }
 
     void show(const LiveFigures& figures) {
-        const auto line = status_line(figures, Hertz{session_.stream().rate_hz});
+        const auto line = status_line(figures, Hertz{session_.stream().rate_hz}, session_.blinded());
         // On a terminal the line is written over itself; the rest of an older, longer one is cleared.
         std::fprintf(stderr, terminal_ ? "\r%s\033[K" : "%s\n", line.c_str());
         std::fflush(stderr);
@@ -174,7 +174,8 @@ void print_summary(const LiveSession& session) {
     fmt::print("session: {}\n", session.folder().string());
     fmt::print("signal: {:.1f} s, {} gaps with {} frames missing\n",
                seconds_at(figures.upto, Hertz{session.stream().rate_hz}), figures.gaps, figures.frames_missing);
-    fmt::print("detections: {}, triggers: {}, pulses: {}\n", figures.detections, figures.triggers, figures.pulses);
+    fmt::print("detections: {}, triggers: {}", figures.detections, figures.triggers);
+    session.blinded() ? fmt::print("\n") : fmt::print(", pulses: {}\n", figures.pulses);
     for (std::size_t rule = 0; rule < figures.withheld.size(); ++rule) {
         if (figures.withheld[rule] > 0) {
             fmt::print("withheld, {}: {}\n", name_of(static_cast<Rule>(rule)), figures.withheld[rule]);
@@ -195,6 +196,14 @@ void tell_limits(const Settings& settings, spdlog::logger& log) {
     }
 }
 
+void tell_assignment(const LiveSession& session, spdlog::logger& log) {
+    if (const auto& assigned = session.assigned()) {
+        log.info("session {} of the list: {} {}(s){}", assigned->kept.code, assigned->kept.units,
+                 word_for<AssignmentUnit>(assignment_units, assigned->kept.unit),
+                 assigned->kept.sealed ? "; the condition is sealed" : "");
+    }
+}
+
 void run_live(const LiveOptions& options) {
     std::signal(SIGPIPE, SIG_IGN);
     std::signal(SIGXFSZ, SIG_IGN); // a file too large is a full disk to the journal, not the end of the program
@@ -204,6 +213,12 @@ void run_live(const LiveOptions& options) {
     if (!options.schedule_file.empty()) {
         settings.arbiter.schedule_file = std::filesystem::absolute(options.schedule_file).string();
     }
+    if (!options.assignment_file.empty()) {
+        settings.assignment.file = std::filesystem::absolute(options.assignment_file).string();
+        settings.arbiter.condition = options.condition.value_or(Condition::assigned);
+    }
+    settings.assignment.code = options.code.empty() ? settings.assignment.code : options.code;
+    check_settings(settings, "command line");
     std::shared_ptr<spdlog::logger> log;
     LiveSession session(settings, options.settings_file, [&log](const std::string& line) { log->warn("{}", line); });
     log = operators_log(session.folder());
@@ -212,6 +227,7 @@ void run_live(const LiveOptions& options) {
     log->info(
         "{} channels at {} Hz; the detector itself takes {:.1f} ms (group delay at the band's centre, and smoothing)",
         session.stream().channels, session.stream().rate_hz, session.delay_ms());
+    tell_assignment(session, *log);
     log->info(
         "pulse only under the approved protocol and local rules; ask the licensed veterinarian. Ctrl-C ends, line low");
     tell_limits(settings, *log);
@@ -244,11 +260,14 @@ void add_live_command(CLI::App& program) {
         words.emplace(choice.word, choice.value);
     }
     command->add_option("--condition", options->condition, "what becomes of triggers, in place of arbiter.condition")
-        ->transform(CLI::CheckedTransformer(words).description("{disrupt,delayed,yoked,rate_matched,none}"));
+        ->transform(CLI::CheckedTransformer(words).description("{disrupt,delayed,yoked,rate_matched,none,assigned}"));
     command->add_option(
         "--schedule", options->schedule_file,
         "control schedule, in place of arbiter.schedule_file: pulses at its places where the condition\n"
         "is yoked or rate_matched, else blanking alone");
+    command->add_option("--assignment", options->assignment_file,
+                        "list of conditions made by `assign`, in place of assignment.file");
+    command->add_option("--code", options->code, "which session of that list this one is");
     command->add_option("--stop-after-s", options->stop_after_s, "end by itself after this many seconds; 0: never")
         ->check(CLI::Range(0.0, 1e7));
     command

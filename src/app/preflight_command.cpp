@@ -58,7 +58,7 @@ std::string try_control(const Settings& settings) {
     }
     boost::asio::io_context context;
     CommandRing commands(4);
-    const CommandListener listener(context, settings.control, commands_for(settings), commands, {},
+    const CommandListener listener(context, settings.control, commands_for(settings, false), commands, {},
                                    [](const std::string&) {});
     return fmt::format("{}:{} is free", settings.control.listen_address, settings.control.port);
 }

@@ -48,12 +48,13 @@ std::string floor_and_threshold(const LiveFigures& figures) {
 
 } // namespace
 
-std::string status_line(const LiveFigures& figures, Hertz rate) {
+std::string status_line(const LiveFigures& figures, Hertz rate, bool blinded) {
     const auto lost = figures.packets[static_cast<std::size_t>(PacketCause::lost)];
-    auto line = fmt::format("{}{}{} | {:g} Hz, {:.0f} s | lost {} | {} | detections {}, pulses {} | loop p50/p99 {}",
+    auto line = fmt::format("{}{}{} | {:g} Hz, {:.0f} s | lost {} | {} | detections {}, {} {} | loop p50/p99 {}",
                             name_of(figures.state), closed_gates(figures), epoch_and_time_left(figures, rate),
                             rate.value, seconds_at(figures.upto, rate), lost, floor_and_threshold(figures),
-                            figures.detections, figures.pulses, loop_latency(figures));
+                            figures.detections, blinded ? "triggers" : "pulses",
+                            blinded ? figures.triggers : figures.pulses, loop_latency(figures));
     if (figures.speed) {
         line += fmt::format(" | speed {:.3g}", *figures.speed);
     }

@@ -51,8 +51,8 @@ void keep_stimulus(const StimulusSettings& stimulus, nlohmann::json& more) {
     }
 }
 
-SessionAbout about(const Settings& settings, const StreamSettings& stream, const Channels& channels,
-                   Detector& detector) {
+SessionAbout about(const Settings& settings, const std::optional<Assigned>& assigned, const StreamSettings& stream,
+                   const Channels& channels, Detector& detector) {
     SessionAbout about;
     about.program = program_name();
     about.rate = Hertz{stream.rate_hz};
@@ -64,6 +64,10 @@ SessionAbout about(const Settings& settings, const StreamSettings& stream, const
     if (!settings.detector.floor.warm_start_session.empty()) {
         // As they were given: the detector's own words about them may differ in the last bit.
         about.warm_start = last_floors(SessionReader(settings.detector.floor.warm_start_session).events());
+    }
+    if (assigned) {
+        about.blinded = assigned->kept.sealed;
+        about.more["assignment"] = nlohmann::json::parse(to_json_text(assigned->kept));
     }
     about.settings_text = settings_to_keep(settings, stream, channels);
     keep_stimulus(settings.stimulus, about.more);
@@ -95,23 +99,27 @@ RealtimeSettings granted(const RealtimeSettings& settings) {
     return settings;
 }
 
+bool has_trials(const std::optional<Assigned>& assigned) {
+    return assigned && assigned->kept.unit == AssignmentUnit::trial;
+}
+
 } // namespace
 
-OscCommands commands_for(const Settings& settings) {
+OscCommands commands_for(const Settings& settings, bool trials) {
     return {settings.control.secret,
             gate_names(settings.arbiter),
-            {!settings.arbiter.plan.epochs.empty(), settings.arbiter.speed_gate.on}};
+            {trials, !settings.arbiter.plan.epochs.empty(), settings.arbiter.speed_gate.on}};
 }
 
 namespace {
 
-std::unique_ptr<CommandListener> listen(const Settings& settings, boost::asio::io_context& context,
+std::unique_ptr<CommandListener> listen(const Settings& settings, bool trials, boost::asio::io_context& context,
                                         CommandRing& commands, StopDoor door,
                                         std::function<void(const std::string&)> refused) {
     if (!settings.control.listen) {
         return nullptr;
     }
-    return std::make_unique<CommandListener>(context, settings.control, commands_for(settings), commands,
+    return std::make_unique<CommandListener>(context, settings.control, commands_for(settings, trials), commands,
                                              std::move(door), std::move(refused));
 }
 
@@ -152,19 +160,24 @@ class LiveSession::Journal : public LoopJournal {
     SessionWriter& writer_;
 };
 
-LiveSession::LiveSession(const Settings& settings, const std::filesystem::path& settings_file,
+LiveSession::LiveSession(Settings settings, const std::filesystem::path& settings_file,
                          std::function<void(const std::string&)> refused_command)
     : stream_(resolved(settings.stream, settings_file)), realtime_(granted(settings.realtime)), rate_{stream_.rate_hz},
+      assigned_(assigned_for(settings, rate_, settings_file.string())),
       channels_(channels_for(settings, ripple_channels(stream_.channels), settings_file.string())),
       detector_(make_detector(settings, channels_, rate_)), schedule_(schedule_for(settings.arbiter, rate_)),
-      listener_(listen(settings, control_, commands_, stop_door(), std::move(refused_command))),
+      listener_(listen(settings, has_trials(assigned_), control_, commands_, stop_door(), std::move(refused_command))),
       source_(open_source(stream_)), output_(make_output(settings.output)),
-      writer_(SessionWriter::open(settings.session, about(settings, stream_, channels_, detector_))),
+      writer_(SessionWriter::open(settings.session, about(settings, assigned_, stream_, channels_, detector_))),
       journal_(std::make_unique<Journal>(*writer_)),
       line_(*output_, pulse_shape(settings.output), writer_->pulse_sink(), settings.realtime.priority),
       loop_(loop_settings(settings, stream_), *source_, line_, *journal_, commands_,
             [&](EventSink& sink, PulsePort& port) {
-                return Engine(std::move(detector_), settings.arbiter, std::move(schedule_), rate_, sink, port);
+                Engine engine(std::move(detector_), settings.arbiter, std::move(schedule_), rate_, sink, port);
+                if (assigned_) {
+                    engine.assign(assigned_->list, assigned_->block_frames);
+                }
+                return engine;
             }) {
     guard_line_against_crashes(output_.get());
 }

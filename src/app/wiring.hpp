@@ -2,6 +2,7 @@
 // rooms. Thread: control. Everything here may throw Refusal.
 #pragma once
 
+#include "app/from_settings.hpp"
 #include "control/command_listener.hpp"
 #include "engine/engine.hpp"
 #include "intake/open_source.hpp"
@@ -10,7 +11,6 @@
 #include "outputs/output.hpp"
 #include "outputs/pulse_line.hpp"
 #include "settings/settings.hpp"
-#include "sham/schedule.hpp"
 
 #include <functional>
 #include <latch>
@@ -23,15 +23,15 @@ namespace millpond {
 [[nodiscard]] std::string program_name();
 
 [[nodiscard]] Detector make_detector(const Settings& settings, const Channels& channels, Hertz rate);
-/// What a session with these settings listens to.
-[[nodiscard]] OscCommands commands_for(const Settings& settings);
+/// What a session with these settings listens to. `trials`: it has trials that somebody marks.
+[[nodiscard]] OscCommands commands_for(const Settings& settings, bool trials);
 [[nodiscard]] std::unique_ptr<Output> make_output(const OutputSettings& settings);
 
 /// A session from the first packet to the closed folder: samples -> engine -> pulses, with everything journaled.
 class LiveSession {
   public:
     /// Takes the ports, makes the folder, orders the line low; no sample is read yet.
-    LiveSession(const Settings& settings, const std::filesystem::path& settings_file,
+    LiveSession(Settings settings, const std::filesystem::path& settings_file,
                 std::function<void(const std::string&)> refused_command);
     ~LiveSession();
     LiveSession(const LiveSession&) = delete;
@@ -53,6 +53,9 @@ class LiveSession {
     [[nodiscard]] const std::filesystem::path& folder() const noexcept { return writer_->folder(); }
     [[nodiscard]] const StreamSettings& stream() const noexcept { return stream_; }
     [[nodiscard]] double delay_ms() noexcept;
+    /// Nobody who sees this session may learn its condition.
+    [[nodiscard]] bool blinded() const noexcept { return assigned_ && assigned_->kept.sealed; }
+    [[nodiscard]] const std::optional<Assigned>& assigned() const noexcept { return assigned_; }
 
   private:
     class Journal;
@@ -62,6 +65,7 @@ class LiveSession {
     StreamSettings stream_;
     RealtimeSettings realtime_;
     Hertz rate_;
+    std::optional<Assigned> assigned_;
     Channels channels_;
     Detector detector_; // until the loop's engine takes it
     Schedule schedule_; // likewise

@@ -18,13 +18,12 @@ enum class Condition : std::uint8_t {
     delayed,      ///< a pulse a while later, when no ripple is going on
     yoked,        ///< pulses at the places of another session's pulses, none at triggers
     rate_matched, ///< pulses at random places made beforehand, none at triggers
-    none          ///< never a pulse
+    none,         ///< never a pulse
+    assigned      ///< one of the above, by a list made beforehand
 };
-inline constexpr Choice<Condition> conditions[] = {{Condition::disrupt, "disrupt"},
-                                                   {Condition::delayed, "delayed"},
-                                                   {Condition::yoked, "yoked"},
-                                                   {Condition::rate_matched, "rate_matched"},
-                                                   {Condition::none, "none"}};
+inline constexpr Choice<Condition> conditions[] = {
+    {Condition::disrupt, "disrupt"},           {Condition::delayed, "delayed"}, {Condition::yoked, "yoked"},
+    {Condition::rate_matched, "rate_matched"}, {Condition::none, "none"},       {Condition::assigned, "assigned"}};
 /// Whether a condition plays a control schedule.
 [[nodiscard]] constexpr bool plays_schedule(Condition condition) noexcept {
     return condition == Condition::yoked || condition == Condition::rate_matched;

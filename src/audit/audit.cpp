@@ -29,14 +29,16 @@ RefereeFindings ask_referee(const AuditInput& input, const SessionReader& sessio
     return referee.finish();
 }
 
+EligibleRules session_rules(const AuditInput& input, const SessionReader& session) {
+    const auto detector = Detector::make(input.settings.detector, session.provenance().about.channels, session.rate());
+    return {detector.filter_settle_frames(), input.settings.detector.blanking_ms, true,
+            input.settings.arbiter.lockout_ms};
+}
+
 Intervals eligible_as(const AuditInput& input, const SessionReader& session, const AuditScore& known, bool as_session,
                       SampleIndex upto) {
-    const auto detector = Detector::make(input.settings.detector, session.provenance().about.channels, session.rate());
-    EligibleRules rules;
-    rules.settle_frames = detector.filter_settle_frames();
-    rules.blanking_ms = input.settings.detector.blanking_ms;
+    auto rules = session_rules(input, session);
     rules.session = as_session;
-    rules.lockout_ms = input.settings.arbiter.lockout_ms;
     auto eligible = eligible_time(session.events(), rules, session.rate(), SampleIndex{}, upto);
     return known.referee ? without(eligible, known.referee->artefacts.excluded) : eligible;
 }
@@ -54,6 +56,21 @@ void score_all(const AuditInput& input, const SessionReader& session, const Sess
         const Intervals there{{epoch.from, epoch.to}};
         known.epochs.push_back({score_in(intersection(detector, there)), score_in(intersection(as_session, there))});
     }
+}
+
+// Without what tells of the condition, where that is sealed.
+std::vector<Event> events_to_tell(const SessionReader& session, bool blinded) {
+    auto events = session.events();
+    std::erase_if(events, [blinded](const Event& event) { return blinded && tells_of_condition(event.kind); });
+    return events;
+}
+
+void add_conditions(const AuditInput& input, const SessionReader& session, AuditResult& result) {
+    auto list = input.assignment ? input.assignment->conditions : std::vector{input.settings.arbiter.condition};
+    const auto eligible =
+        eligible_time(session.events(), session_rules(input, session), session.rate(), SampleIndex{}, result.end);
+    result.conditions = condition_figures(session.events(), list, eligible, session.rate(), result.end);
+    result.comparisons = compare_rates(result.conditions);
 }
 
 void add_score(const AuditInput& input, const SessionReader& session, AuditResult& result) {
@@ -95,13 +112,20 @@ AuditResult audit_session(const AuditInput& input) {
     if (const auto samples = session.open_samples()) {
         result.frames_stored = samples->frames();
     }
-    result.figures = session_figures(session.events());
+    result.code = input.assignment ? input.assignment->code : std::string{};
+    result.blinded = input.assignment && input.assignment->conditions.empty();
+    const auto events = events_to_tell(session, result.blinded);
+    result.figures = session_figures(events);
     if (!result.figures.epochs.empty()) {
         auto& last = result.figures.epochs.back();
         last.to = std::max(last.from, result.end);
     }
-    result.latency = latency_rows(session.events());
-    result.rerun = rerun_session(session, input.settings, input.settings_name, progress_of(input, "re-run"));
+    result.latency = latency_rows(events);
+    result.rerun =
+        rerun_session(session, input.settings, input.settings_name, progress_of(input, "re-run"), input.assignment);
+    if (!result.blinded) {
+        add_conditions(input, session, result);
+    }
     add_score(input, session, result);
     return result;
 }

@@ -2,6 +2,7 @@
 // Thread: cold.
 #pragma once
 
+#include "audit/condition_figures.hpp"
 #include "audit/latency_figures.hpp"
 #include "audit/rerun.hpp"
 #include "audit/session_figures.hpp"
@@ -18,10 +19,11 @@ namespace millpond {
 
 struct AuditInput {
     std::filesystem::path session;
-    EngineSettings settings;       ///< as the session used them
-    std::string settings_name;     ///< for messages: the file they came from
-    std::optional<Ripples> labels; ///< empty: the referee over the stored samples is the truth
-    std::string labels_name;       ///< the table that they came from
+    EngineSettings settings;                     ///< as the session used them
+    std::string settings_name;                   ///< for messages: the file they came from
+    std::optional<SessionAssignment> assignment; ///< where a list said the condition; sealed: without conditions
+    std::optional<Ripples> labels;               ///< empty: the referee over the stored samples is the truth
+    std::string labels_name;                     ///< the table that they came from
     RefereeSettings referee;
     /// Told now and then what is being done and its share, 0 to 1.
     std::function<void(const char* doing, double share)> progress;
@@ -48,6 +50,11 @@ struct AuditScore {
 
 struct AuditResult {
     std::filesystem::path session;
+    /// Sealed, and not unblinded: what follows tells nothing of pulses.
+    bool blinded = false;
+    std::string code;                         ///< of the session in its list; empty without one
+    std::vector<ConditionFigures> conditions; ///< in order of first appearance; empty where blinded
+    std::vector<RateComparison> comparisons;  ///< of every two of them
     Provenance provenance;
     bool cut = false;
     std::uint64_t records = 0; ///< intact ones

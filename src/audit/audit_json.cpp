@@ -122,7 +122,7 @@ Json epochs_json(const AuditResult& r) {
                   {"begun_by", told(epoch.by)},
                   {"detections", epoch.detections},
                   {"triggers", epoch.triggers},
-                  {"pulses", epoch.pulses},
+                  {"pulses", r.blinded ? Json(nullptr) : Json(epoch.pulses)},
                   {"withheld", counts_json<Rule>(epoch.withheld, 1)}};
         json["score"] = r.score ? Json{{"detector", json_of(r.score->epochs.at(i).detector)},
                                        {"session", json_of(r.score->epochs.at(i).session)}}
@@ -166,6 +166,38 @@ Json score_json(const AuditResult& r) {
             {"definitions", score_definitions()}};
 }
 
+Json conditions_json(const AuditResult& r) {
+    auto all = Json::array();
+    for (const auto& c : r.conditions) {
+        const auto& intervals = c.trigger_intervals_s;
+        all.push_back({{"condition", word_for<Condition>(conditions, c.condition)},
+                       {"units", c.units},
+                       {"minutes", c.minutes},
+                       {"eligible_minutes", c.eligible_minutes},
+                       {"detections", c.detections},
+                       {"detections_per_minute", c.detections_per_minute()},
+                       {"triggers", c.triggers},
+                       {"catch_trials", c.catch_trials},
+                       {"orders", c.orders},
+                       {"pulses", c.pulses},
+                       {"trigger_interval_median_s",
+                        intervals.empty() ? Json(nullptr) : Json(intervals[(intervals.size() - 1) / 2])}});
+    }
+    return all;
+}
+
+Json comparisons_json(const AuditResult& r) {
+    auto all = Json::array();
+    for (const auto& pair : r.comparisons) {
+        all.push_back({{"one", word_for<Condition>(conditions, pair.one)},
+                       {"other", word_for<Condition>(conditions, pair.other)},
+                       {"detection_rate_ratio", pair.ratio},
+                       {"p", pair.p},
+                       {"test", "exact conditional test of two Poisson rates (Przyborowski & Wilenski 1940)"}});
+    }
+    return all;
+}
+
 Json records_json(const AuditResult& r) {
     auto damage = Json::array();
     for (const auto& place : r.damage) {
@@ -199,10 +231,14 @@ Json audit_json(const AuditResult& r) {
               {"catch_trials", r.figures.catch_trials},
               {"slots", counts_json<PulseOrigin>(r.figures.slots, 1)},
               {"omitted", counts_json<Rule>(r.figures.omitted, 1)},
-              {"orders", counts_json<PulseOrigin>(r.figures.orders, 0)},
-              {"pulses", r.figures.pulses},
-              {"pulse_ends", r.figures.pulse_ends},
+              {"orders", r.blinded ? Json(nullptr) : counts_json<PulseOrigin>(r.figures.orders, 0)},
+              {"pulses", r.blinded ? Json(nullptr) : Json(r.figures.pulses)},
+              {"pulse_ends", r.blinded ? Json(nullptr) : Json(r.figures.pulse_ends)},
               {"withheld", counts_json<Rule>(r.figures.withheld, 1)}}},
+            {"assignment_code", r.code.empty() ? Json(nullptr) : Json(r.code)},
+            {"blinded", r.blinded},
+            {"conditions", conditions_json(r)},
+            {"rate_comparisons", comparisons_json(r)},
             {"score", score_json(r)},
             {"epochs", epochs_json(r)},
             {"latency", latency_json(r)},

@@ -163,15 +163,39 @@ template <std::size_t N, class Code> std::string counted(const std::array<std::u
 
 std::string decisions_text(const AuditResult& r) {
     const auto& f = r.figures;
-    auto text = fmt::format("\nDecisions\n  {} detections, {} triggers ({} catch trials), {} pulses, {} pulse ends\n",
-                            f.detections, f.triggers, f.catch_trials, f.pulses, f.pulse_ends);
-    text += fmt::format("  orders at triggers {}, delayed {}, scheduled {}\n", f.orders[0], f.orders[2], f.orders[1]);
+    auto text = fmt::format("\nDecisions\n  {} detections, {} triggers ({} catch trials)\n", f.detections, f.triggers,
+                            f.catch_trials);
+    text += r.blinded ? std::string("  pulses are not told: the condition is sealed (millpond unblind)\n")
+                      : fmt::format("  {} pulses, {} pulse ends\n  orders at triggers {}, delayed {}, scheduled {}\n",
+                                    f.pulses, f.pulse_ends, f.orders[0], f.orders[2], f.orders[1]);
     if (f.slots[1] + f.slots[2] > 0) {
         text += fmt::format("  moments for delayed pulses {}, for scheduled ones {}\n", f.slots[2], f.slots[1]);
     }
     text += "\nWithheld by rule\n" + counted<rule_count, Rule>(f.withheld);
     text += "\nMoments omitted by rule\n" + counted<rule_count, Rule>(f.omitted);
     text += "\nPackets by cause\n" + counted<packet_cause_count, PacketCause>(f.packets);
+    return text;
+}
+
+std::string conditions_text(const AuditResult& r) {
+    auto text = fmt::format("\nConditions{}\n", r.code.empty() ? "" : ", session " + r.code + " of its list");
+    if (r.blinded) {
+        return text + "  sealed\n";
+    }
+    text += fmt::format("  {:<13} {:>6} {:>9} {:>9} {:>11} {:>11} {:>9} {:>7} {:>7}\n", "condition", "units", "minutes",
+                        "eligible", "detections", "per minute", "triggers", "catch", "pulses");
+    for (const auto& c : r.conditions) {
+        text += fmt::format("  {:<13} {:>6} {:>9.2f} {:>9.2f} {:>11} {:>11} {:>9} {:>7} {:>7}\n",
+                            word_for<Condition>(conditions, c.condition), c.units, c.minutes, c.eligible_minutes,
+                            c.detections, figure(c.detections_per_minute()), c.triggers, c.catch_trials, c.pulses);
+    }
+    for (const auto& pair : r.comparisons) {
+        text +=
+            fmt::format("  {} over {}: {} times as many detections an eligible minute, p = {:.3f} (exact conditional "
+                        "test of two Poisson rates)\n",
+                        word_for<Condition>(conditions, pair.one), word_for<Condition>(conditions, pair.other),
+                        figure(pair.ratio), pair.p);
+    }
     return text;
 }
 
@@ -222,8 +246,8 @@ std::string epochs_text(const AuditResult& r) {
         text += fmt::format("  {}: from {}, {:.2f} minutes, pulses {}, begun by {}\n", epoch.name,
                             at_text(epoch.from, rate), seconds_at(SampleIndex{epoch.to - epoch.from}, rate) / 60.0,
                             epoch.pulses_allowed ? "allowed" : "not allowed", told(epoch.by));
-        text +=
-            fmt::format("    {} detections, {} triggers, {} pulses\n", epoch.detections, epoch.triggers, epoch.pulses);
+        text += fmt::format("    {} detections, {} triggers{}\n", epoch.detections, epoch.triggers,
+                            r.blinded ? std::string{} : fmt::format(", {} pulses", epoch.pulses));
         if (r.score) {
             text += epoch_score_text("detector", r.score->epochs.at(i).detector);
             text += epoch_score_text("session", r.score->epochs.at(i).session);
@@ -271,8 +295,8 @@ std::string verdict_text(const AuditResult& r) {
 } // namespace
 
 std::string audit_text(const AuditResult& r) {
-    return head(r) + stated_text(r) + rerun_text(r) + decisions_text(r) + score_text(r) + epochs_text(r) +
-           latency_text(r) + stream_text(r) + speed_text(r) + floor_text(r) + verdict_text(r);
+    return head(r) + stated_text(r) + rerun_text(r) + decisions_text(r) + conditions_text(r) + score_text(r) +
+           epochs_text(r) + latency_text(r) + stream_text(r) + speed_text(r) + floor_text(r) + verdict_text(r);
 }
 
 } // namespace millpond

@@ -14,7 +14,7 @@ std::string_view name_of(EventKind kind) noexcept {
     static constexpr std::array<std::string_view, 24> names{
         "unknown", "session start", "session end",  "detection", "trigger", "withheld", "pulse",        "pulse end",
         "gap",     "floor",         "latency bins", "note",      "state",   "gate",     "packet count", "dropped",
-        "site",    "epoch",         "unknown",      "order",     "speed",   "unknown",  "slot",         "omitted"};
+        "site",    "epoch",         "trial",        "order",     "speed",   "unknown",  "slot",         "omitted"};
     return pick(names, static_cast<std::uint8_t>(kind));
 }
 

@@ -30,6 +30,7 @@ enum class EventKind : std::uint8_t {
     dropped = 15,      ///< events or frames that the journal had to drop because its ring was full
     site = 16,         ///< a channel was left out of the evidence's mixes, or taken in again; `code` is the SiteState
     epoch = 17,        ///< an epoch of the session's plan begins
+    trial = 18,        ///< a session, block or trial of the assignment begins
     order = 19, ///< a pulse was ordered: at a trigger, or at a slot; the one kind here that tells of the condition
     speed = 20, ///< the speed that moved the speed gate, or that it had grown stale at
     slot = 22,  ///< a moment for a delayed or scheduled pulse; blanked in every condition, whether one is given or not
@@ -246,6 +247,11 @@ struct SpeedDetail {
     std::uint64_t values; ///< received since the event before
 };
 
+struct TrialDetail {
+    std::uint32_t number; ///< from 1
+    std::uint32_t listed; ///< 1 where the assignment's list has it; 0 beyond its end: no pulses
+};
+
 struct SiteDetail {
     std::uint16_t channel; ///< in the stream
 };
@@ -293,6 +299,11 @@ class EventSink {
     virtual ~EventSink() = default;
     virtual void take(const Event& event) noexcept = 0;
 };
+
+/// Whether events of that kind tell what a trigger became of: the only ones that differ between conditions.
+[[nodiscard]] constexpr bool tells_of_condition(EventKind kind) noexcept {
+    return kind == EventKind::order || kind == EventKind::pulse || kind == EventKind::pulse_end;
+}
 
 // One word for one thing: what every table, report and log line calls them.
 [[nodiscard]] std::string_view name_of(EventKind kind) noexcept;

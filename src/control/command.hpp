@@ -19,7 +19,8 @@ enum class CommandKind : std::uint8_t {
     stop,       ///< emergency stop: takes the short way, never the ring
     clear,      ///< a fault or an emergency stop is over: not armed
     next_epoch, ///< the plan's next epoch begins
-    speed       ///< the animal's speed
+    speed,      ///< the animal's speed
+    trial       ///< the next trial of the assignment begins
 };
 
 struct Command {

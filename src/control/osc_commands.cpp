@@ -74,7 +74,8 @@ std::optional<CommandKind> pressed_command(std::string_view address) {
     static constexpr std::pair<std::string_view, CommandKind> buttons[] = {{"/arm", CommandKind::arm},
                                                                            {"/disarm", CommandKind::disarm},
                                                                            {"/clear", CommandKind::clear},
-                                                                           {"/epoch", CommandKind::next_epoch}};
+                                                                           {"/epoch", CommandKind::next_epoch},
+                                                                           {"/trial", CommandKind::trial}};
     const auto* const found =
         std::find_if(std::begin(buttons), std::end(buttons), [&](const auto& each) { return each.first == address; });
     return found == std::end(buttons) ? std::nullopt : std::optional(found->second);
@@ -111,10 +112,14 @@ OscVerdict OscCommands::read(std::span<const std::uint8_t> packet) const {
     }
     const auto kind = pressed_command(message.address);
     if (!kind) {
-        return refused(message, "an unknown address", "/arm, /disarm, /stop, /clear, /mark, /gate, /epoch, /speed");
+        return refused(message, "an unknown address",
+                       "/arm, /disarm, /stop, /clear, /mark, /gate, /epoch, /speed, /trial");
     }
     if (*kind == CommandKind::next_epoch && !more_.epoch) {
         return refused(message, "a session without a plan", "epochs in plan.epochs of the settings");
+    }
+    if (*kind == CommandKind::trial && !more_.trials) {
+        return refused(message, "a session without trials", "/trial where assignment.file names a list of trials");
     }
     // A switch that sends 1 when pressed and 0 when let go is common on control surfaces: 0 does nothing.
     if (values.size() > 1 || (values.size() == 1 && !switch_of(values[0]))) {

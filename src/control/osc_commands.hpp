@@ -1,5 +1,5 @@
 // Turns OSC messages into commands: /arm, /disarm, /stop, /clear, /mark TEXT, /gate NAME 1 or 0, /epoch, /speed NUMBER,
-// each with the secret first where one is set; /stop alone is taken with and without it. Thread: control.
+// /trial, each with the secret first where one is set; /stop alone is taken with and without it. Thread: control.
 #pragma once
 
 #include "control/command.hpp"
@@ -20,8 +20,9 @@ struct OscVerdict {
 
 /// Commands that a session takes because its settings ask for what they move.
 struct MoreCommands {
-    bool epoch = false; ///< there is a plan
-    bool speed = false; ///< there is a speed gate
+    bool trials = false; ///< there are trials that somebody marks
+    bool epoch = false;  ///< there is a plan
+    bool speed = false;  ///< there is a speed gate
 };
 
 class OscCommands {

@@ -27,6 +27,10 @@ void Engine::start(SampleIndex at, bool armed) noexcept {
         arbiter_.start_plan(at);
         sink_.take(Event::make(EventKind::epoch, 0, at, arbiter_.plan().detail({ChangeSource::plan})));
     }
+    if (plan_.is_assigned()) {
+        next_block_ = block_frames_ > 0 ? at : SampleIndex{UINT64_MAX};
+        block_frames_ > 0 ? begin_blocks() : begin_unit();
+    }
     set_state(armed ? ArmState::armed : ArmState::not_armed, StateCause::start);
 }
 
@@ -67,10 +71,12 @@ void Engine::run_finite(FrameBlock block) noexcept {
     while (block.frames() > 0) {
         const SampleIndex end = block.first + block.frames();
         follow_plan(next_);
+        begin_blocks();
         while (plan_.next_due() <= next_) {
             meet_slot();
         }
-        const SampleIndex stop = std::min({end, plan_.next_due(), next_floor_, arbiter_.plan().next_start()});
+        const SampleIndex stop =
+            std::min({end, plan_.next_due(), next_floor_, next_block_, arbiter_.plan().next_start()});
         const std::size_t frames = run_detector(block.part(0, static_cast<std::size_t>(stop - block.first)));
         block = block.part(frames, block.frames() - frames);
         if (next_ >= next_floor_) {
@@ -149,6 +155,17 @@ void Engine::on_crossing(const Crossing& crossing) noexcept {
     sink_.take(Event::make(verdict, static_cast<std::uint8_t>(rule), crossing.at, detail));
     if (ordered) {
         sink_.take(Event::make(EventKind::order, 0, crossing.at, detail));
+    }
+}
+
+void Engine::begin_unit() noexcept {
+    const auto [number, listed] = plan_.begin_unit();
+    sink_.take(Event::make(EventKind::trial, 0, next_, TrialDetail{number, listed ? 1U : 0U}));
+}
+
+void Engine::begin_blocks() noexcept {
+    for (; next_block_ <= next_; next_block_ = next_block_ + block_frames_) {
+        begin_unit();
     }
 }
 

@@ -73,6 +73,9 @@ TableEvent row_of(const Event& event, Hertz rate) {
     case EventKind::pulse:
         fill_pulse(row, event.as<PulseDetail>());
         break;
+    case EventKind::trial:
+        row.extra["number"] = fmt::format("{}", event.as<TrialDetail>().number);
+        break;
     case EventKind::site:
         row.extra["site"] = site_text(event.as<SiteDetail>().channel);
         row.extra["cause"] = name_of(static_cast<SiteState>(event.code));
@@ -118,7 +121,8 @@ nlohmann::json dictionary() {
         {"rule", column("The one rule that refused a withheld detection or an omitted moment")},
         {"cause", column("Why frames are missing; site: flat or huge where it is left out, alive where it is back; "
                          "epoch: what began it")},
-        {"number", column("Count of the session's triggers, from 1; of origin schedule: place in the schedule")},
+        {"number", column("Count of the session's triggers, from 1; of origin schedule: place in the schedule; trial: "
+                          "of the assignment")},
         {"origin", column("Why there is a moment for a pulse: trigger (at once), delay (a while later), schedule")},
         {"from", column("Decision sample of the trigger; of origin schedule: the planned place")},
         {"catch", column("1 where the trigger is a catch trial, drawn alike in every condition: no pulse; else 0")},
@@ -134,17 +138,19 @@ nlohmann::json dictionary() {
         {"output_us", column("Decision made to write returned; n/a: not measured", "us")},
         {"text", column("The operator's mark; an epoch's name")}};
     json["trial_type"] = column("What happened");
-    json["trial_type"]["Levels"] = {{"detection", "The detector crossed"},
-                                    {"trigger", "A detection that was let through, in every condition"},
-                                    {"slot", "A moment for a delayed or scheduled pulse, blanked in every condition"},
-                                    {"omitted", "Such a moment, at which no condition may give a pulse"},
-                                    {"order", "A pulse was ordered"},
-                                    {"withheld", "A detection that was refused"},
-                                    {"pulse", "The order was written to the output"},
-                                    {"gap", "Frames are missing from here"},
-                                    {"site", "A channel is left out of the evidence from here, or is back"},
-                                    {"epoch", "An epoch of the session's plan begins"},
-                                    {"note", "The operator's mark"}};
+    json["trial_type"]["Levels"] = {
+        {"detection", "The detector crossed"},
+        {"trigger", "A detection that was let through, in every condition"},
+        {"slot", "A moment for a pulse that does not follow a trigger at once; blanked in every condition"},
+        {"omitted", "Such a moment, at which no condition may give a pulse"},
+        {"order", "A pulse was ordered"},
+        {"trial", "A session, block or trial of the assignment begins"},
+        {"withheld", "A detection that was refused"},
+        {"pulse", "The order was written to the output"},
+        {"gap", "Frames are missing from here"},
+        {"site", "A channel is left out of the evidence from here, or is back"},
+        {"epoch", "An epoch of the session's plan begins"},
+        {"note", "The operator's mark"}};
     return json;
 }
 
@@ -158,11 +164,14 @@ const std::vector<std::string>& session_table_columns() {
     return columns;
 }
 
-std::vector<TableEvent> session_table(std::span<const Event> events, Hertz rate) {
+std::vector<TableEvent> session_table(std::span<const Event> events, Hertz rate, bool blinded) {
     std::vector<TableEvent> rows;
     constexpr auto none = static_cast<std::size_t>(-1);
     auto pulse = none; // the row that waits for its end
     for (const auto& event : events) {
+        if (blinded && tells_of_condition(event.kind)) {
+            continue;
+        }
         if (event.kind == EventKind::pulse_end && pulse != none) {
             rows[pulse].duration_s = static_cast<double>(event.as<PulseEndDetail>().width_ns) / 1e9;
             pulse = none;
@@ -182,8 +191,9 @@ std::vector<TableEvent> session_table(std::span<const Event> events, Hertz rate)
     return rows;
 }
 
-void write_session_tables(const SessionReader& session, const std::filesystem::path& folder) {
-    write_events_table(folder / "events.tsv", session_table(session.events(), session.rate()), session_table_columns());
+void write_session_tables(const SessionReader& session, const std::filesystem::path& folder, bool blinded) {
+    write_events_table(folder / "events.tsv", session_table(session.events(), session.rate(), blinded),
+                       session_table_columns());
     write_whole_file(folder / "events.json", dictionary().dump(2) + "\n");
 }
 

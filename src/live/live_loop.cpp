@@ -140,6 +140,9 @@ void LiveLoop::obey(const Command& command) noexcept {
     case CommandKind::mark:
         engine_.note(command.words());
         break;
+    case CommandKind::trial:
+        engine_.next_trial();
+        break;
     case CommandKind::open_gate:
     case CommandKind::close_gate:
         engine_.set_gate(command.words(), command.kind == CommandKind::open_gate, command.by);

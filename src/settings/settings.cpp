@@ -86,7 +86,21 @@ void check_conditions(const ArbiterSettings& arbiter, const std::string& file) {
     }
 }
 
-void check_together(const Settings& settings, const std::string& file) {
+void check_assignment(const Settings& settings, const std::string& file) {
+    const bool assigned = settings.arbiter.condition == Condition::assigned;
+    if (assigned && settings.assignment.file.empty()) {
+        throw Refusal(file + ": assignment.file", "none", "the list that assigns conditions (condition: assigned)");
+    }
+    if (!assigned && !settings.assignment.file.empty()) {
+        throw Refusal(file + ": arbiter.condition",
+                      std::string(word_for<Condition>(conditions, settings.arbiter.condition)),
+                      "assigned, since assignment.file names a list");
+    }
+}
+
+} // namespace
+
+void check_settings(const Settings& settings, const std::string& file) {
     if (settings.detector.threshold.rearm_deviations > settings.detector.threshold.deviations) {
         throw Refusal(file + ": detector.threshold.rearm_deviations",
                       shortest(settings.detector.threshold.rearm_deviations),
@@ -104,6 +118,7 @@ void check_together(const Settings& settings, const std::string& file) {
                       "more than a whole pulse or train lasts, " + shortest(train_ms));
     }
     check_conditions(settings.arbiter, file);
+    check_assignment(settings, file);
     check_gates(settings.arbiter.gates, file);
     const auto& gates = settings.arbiter.gates;
     const auto names_a_gate = [&gates](std::string_view name) {
@@ -122,16 +137,14 @@ void check_together(const Settings& settings, const std::string& file) {
     check_floor_limits(settings.arbiter.limits.floor, file);
 }
 
-} // namespace
-
 Settings load_settings(const std::filesystem::path& file) {
     auto settings = read_yaml_file<Settings>(file);
     const auto folder = std::filesystem::absolute(file).parent_path();
-    for (auto* path : {&settings.stream.sdp_file, &settings.arbiter.schedule_file,
+    for (auto* path : {&settings.stream.sdp_file, &settings.arbiter.schedule_file, &settings.assignment.file,
                        &settings.detector.floor.warm_start_session, &settings.session.folder}) {
         make_absolute(*path, folder);
     }
-    check_together(settings, file.string());
+    check_settings(settings, file.string());
     return settings;
 }
 

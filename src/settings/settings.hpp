@@ -3,6 +3,7 @@
 #pragma once
 
 #include "arbiter/arbiter_settings.hpp"
+#include "assignment/assignment_settings.hpp"
 #include "base/channels.hpp"
 #include "control/control_settings.hpp"
 #include "detector/detector_settings.hpp"
@@ -22,6 +23,7 @@ struct Settings {
     Channels channels; ///< empty: as many ripple sites as the stream or recording has
     DetectorSettings detector;
     ArbiterSettings arbiter;
+    AssignmentSettings assignment;
     OutputSettings output;
     StimulusSettings stimulus;
     ControlSettings control;
@@ -38,6 +40,7 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
     visit.group("limits", settings.arbiter.limits, "how many pulses are too many, and what ends a session's pulses");
     visit.group("plan", settings.arbiter.plan, "how a session is divided");
     visit.group("speed_gate", settings.arbiter.speed_gate, "a gate that follows the animal's speed");
+    visit.group("assignment", settings.assignment, "which condition the session has, where a list says so");
     visit.group("output", settings.output, "where pulses go");
     visit.group("stimulus", settings.stimulus,
                 "what the stimulator gives for one pulse: reckoned with, never permitted");
@@ -49,6 +52,9 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
 /// Reads and checks a settings file; relative paths in it are taken from the file's own folder and made absolute.
 /// Refuses unknown keys, values out of range, and rooms that contradict each other, naming file, line and key.
 [[nodiscard]] Settings load_settings(const std::filesystem::path& file);
+
+/// What load_settings checks beyond single keys, for settings that were changed since. `file` names them.
+void check_settings(const Settings& settings, const std::string& file);
 
 /// All settings as YAML that load_settings reads back to the same values.
 [[nodiscard]] std::string settings_to_yaml(const Settings& settings);

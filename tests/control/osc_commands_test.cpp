@@ -55,7 +55,7 @@ TEST(OscCommands, AnythingElseIsRefusedInOneLine) {
 }
 
 TEST(OscCommands, TakesEpochAndSpeedWhereTheSettingsAskForThem) {
-    const OscCommands osc("", {}, {true, true});
+    const OscCommands osc("", {}, {false, true, true});
     EXPECT_EQ(osc.read(message("/epoch")).command->kind, CommandKind::next_epoch);
     EXPECT_EQ(osc.read(message("/epoch", {std::int32_t{1}})).command->kind, CommandKind::next_epoch);
     const auto speed = osc.read(message("/speed", {3.5F}));
@@ -65,7 +65,7 @@ TEST(OscCommands, TakesEpochAndSpeedWhereTheSettingsAskForThem) {
 }
 
 TEST(OscCommands, ASpeedThatIsNoneIsRefusedInOneLine) {
-    const OscCommands osc("", {}, {true, true});
+    const OscCommands osc("", {}, {false, true, true});
     constexpr float infinity = std::numeric_limits<float>::infinity();
     for (const auto& packet :
          {message("/speed"), message("/speed", {std::string("fast")}), message("/speed", {1.0F, 2.0F}),
