@@ -34,6 +34,10 @@ TEST(RunawayBound, IsTheLeastCountThatChanceGivesRarelyEnough) {
     }
 }
 
+TEST(RunawayBound, ForTheDefaultsIsTheOneThatReadmeNames) {
+    EXPECT_EQ(guard_of().most_in_window(), 72U) << "SciPy's Poisson law gives the same";
+}
+
 TEST(RunawayGuard, TooManyTriggersInAWindowAreARunawayAndOneFewerIsNot) {
     auto guard = guard_of();
     const auto most = guard.most_in_window();
