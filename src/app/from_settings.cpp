@@ -29,11 +29,29 @@ std::vector<FloorState> warm_start_floors(const DetectorSettings& detector) {
     return floors;
 }
 
+void check_floor_channels(const FloorLimitSettings& limits, const Detector& detector) {
+    for (std::size_t i = 0; i < limits.channels.size(); ++i) {
+        std::string there;
+        bool known = false;
+        for (std::size_t floor = 0; floor < detector.floor_count(); ++floor) {
+            const auto site = detector.floor(floor).site;
+            const std::uint32_t channel = site == 65535 ? 0U : site + 1U;
+            there += (there.empty() ? "" : ", ") + std::to_string(channel);
+            known = known || channel == limits.channels[i].channel;
+        }
+        if (!known) {
+            throw Refusal(fmt::format("limits.floor.channels[{}].channel", i),
+                          fmt::format("{}, which has no floor", limits.channels[i].channel), "one of " + there);
+        }
+    }
+}
+
 Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
     Schedule schedule;
     if (!arbiter.schedule_file.empty()) {
         schedule = read_schedule(arbiter.schedule_file, rate);
-        check_schedule(schedule, {arbiter.lockout_ms, arbiter.max_pulses_per_second}, rate, arbiter.schedule_file);
+        check_schedule(schedule, {arbiter.lockout_ms, arbiter.limits.max_pulses_per_second}, rate,
+                       arbiter.schedule_file);
     }
     return schedule;
 }
@@ -58,7 +76,8 @@ std::optional<Assigned> assigned_for(Settings& settings, Hertz rate, const std::
 }
 
 std::string settings_hash(const Settings& settings, const Channels& channels) {
-    auto text = to_yaml(settings.detector) + to_yaml(settings.arbiter);
+    auto text = to_yaml(settings.detector) + to_yaml(settings.arbiter) + to_yaml(settings.arbiter.limits) +
+                to_yaml(settings.arbiter.plan) + to_yaml(settings.arbiter.speed_gate);
     for (const auto& channel : channels) {
         text += to_yaml(channel);
     }

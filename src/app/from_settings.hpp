@@ -20,6 +20,9 @@ namespace millpond {
 /// Floors that the settings want to start from; empty where they name no session.
 [[nodiscard]] std::vector<FloorState> warm_start_floors(const DetectorSettings& detector);
 
+/// Refuses a range in limits.floor.channels for a channel that has no floor.
+void check_floor_channels(const FloorLimitSettings& limits, const Detector& detector);
+
 /// The control schedule that the settings name, checked against the arbiter's limits; empty where they name none.
 [[nodiscard]] Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate);
 

@@ -1,8 +1,10 @@
 // millpond live: a session on a rig, until the operator ends it.
 #include "app/commands.hpp"
+#include "app/limits_findings.hpp"
 #include "app/status_line.hpp"
 #include "app/wiring.hpp"
 #include "base/clock.hpp"
+#include "stimulus/stimulus.hpp"
 
 #include <CLI/CLI.hpp>
 #include <boost/asio/signal_set.hpp>
@@ -47,10 +49,11 @@ class Operator {
   public:
     Operator(LiveSession& session, const LiveOptions& options, std::shared_ptr<spdlog::logger> log)
         : session_(session), options_(options), log_(std::move(log)),
-          signals_(session.control(), SIGINT, SIGTERM, SIGHUP), timer_(session.control()),
-          terminal_(isatty(STDERR_FILENO) != 0), status_every_(options.status_every_s > 0.0 ? options.status_every_s
-                                                               : terminal_                  ? 0.5
-                                                                                            : 10.0) {}
+          signals_(session.control(), SIGINT, SIGTERM, SIGHUP), stop_signal_(session.control(), SIGUSR1),
+          timer_(session.control()), terminal_(isatty(STDERR_FILENO) != 0),
+          status_every_(options.status_every_s > 0.0 ? options.status_every_s
+                        : terminal_                  ? 0.5
+                                                     : 10.0) {}
 
     /// Until the session is over.
     void watch() {
@@ -61,12 +64,24 @@ class Operator {
                 session_.stop();
             }
         });
+        wait_for_stop_signal();
         tick();
         session_.control().run();
         leave_status();
     }
 
   private:
+    void wait_for_stop_signal() {
+        stop_signal_.async_wait([this](const boost::system::error_code& trouble, int /*signal*/) {
+            if (!trouble) {
+                session_.emergency_stop({ChangeSource::signal});
+                leave_status();
+                log_->warn("emergency stop (SIGUSR1); /clear, then /arm, when all is safe");
+                wait_for_stop_signal();
+            }
+        });
+    }
+
     void tick() {
         const auto figures = session_.figures();
         tell_changes(figures);
@@ -95,6 +110,11 @@ class Operator {
             leave_status();
             log_->warn("{} ({})", name_of(figures.state), name_of(figures.state_cause));
             state_ = figures.state;
+        }
+        if (figures.epoch && (!epoch_ || figures.epoch->index != *epoch_)) {
+            leave_status();
+            log_->info("epoch: {}{}", figures.epoch->name, figures.epoch->pulses ? "" : " (no pulses)");
+            epoch_ = figures.epoch->index;
         }
         if (figures.sites_out != sites_out_) {
             leave_status();
@@ -136,6 +156,7 @@ class Operator {
     const LiveOptions& options_;
     std::shared_ptr<spdlog::logger> log_;
     boost::asio::signal_set signals_;
+    boost::asio::signal_set stop_signal_;
     boost::asio::steady_timer timer_;
     bool terminal_;
     double status_every_;
@@ -143,6 +164,7 @@ class Operator {
     double next_status_s_ = 0.0;
     bool status_shown_ = false;
     ArmState state_ = ArmState::not_armed;
+    std::optional<std::uint16_t> epoch_;
     std::vector<std::pair<std::uint16_t, SiteState>> sites_out_;
     std::string trouble_;
 };
@@ -160,6 +182,18 @@ void print_summary(const LiveSession& session) {
         }
     }
     fmt::print("next: millpond audit {}\n", session.folder().string());
+}
+
+void tell_limits(const Settings& settings, spdlog::logger& log) {
+    if (const auto figures = stimulus_figures(settings.stimulus)) {
+        log.info("stimulus: {}", told(*figures));
+        for (const auto& warning : stimulus_warnings(*figures)) {
+            log.warn("stimulus: {}", warning);
+        }
+    }
+    if (const auto& gate = settings.arbiter.speed_gate; gate.on) {
+        log.info("gate speed: {}", told(gate));
+    }
 }
 
 void tell_assignment(const LiveSession& session, spdlog::logger& log) {
@@ -196,12 +230,15 @@ void run_live(const LiveOptions& options) {
     tell_assignment(session, *log);
     log->info(
         "pulse only under the approved protocol and local rules; ask the licensed veterinarian. Ctrl-C ends, line low");
+    tell_limits(settings, *log);
     Operator watching(session, options, log);
     session.start();
     watching.watch();
     session.finish();
     if (session.end() == LoopEnd::failed) {
         log->error("the stream failed");
+    } else if (session.end() == LoopEnd::planned) {
+        log->info("the plan is over");
     }
     print_summary(session);
     if (session.end() == LoopEnd::failed || !session.figures().trouble.empty()) {

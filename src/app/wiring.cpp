@@ -5,6 +5,7 @@
 #include "outputs/osc_output.hpp"
 #include "outputs/silent_output.hpp"
 #include "realtime/realtime.hpp"
+#include "stimulus/stimulus.hpp"
 
 namespace millpond {
 namespace {
@@ -22,7 +23,7 @@ std::string word_of(KernelWidth width) {
 
 LiveLoopSettings loop_settings(const Settings& settings, const StreamSettings& stream) {
     return {Nanos{static_cast<std::int64_t>(stream.stale_after_ms * 1e6)}, settings.realtime.spin,
-            settings.arbiter.start_armed};
+            settings.arbiter.start_armed, settings.arbiter.speed_gate};
 }
 
 // What a session keeps of its settings: all but the secret, which is nobody's evidence.
@@ -33,6 +34,21 @@ std::string settings_to_keep(Settings settings, const StreamSettings& stream, co
         settings.control.secret = "(not kept in the session folder)";
     }
     return settings_to_yaml(settings);
+}
+
+// Figures and warnings, as they stood when the session began.
+void keep_stimulus(const StimulusSettings& stimulus, nlohmann::json& more) {
+    if (const auto figures = stimulus_figures(stimulus)) {
+        more["stimulus"] = {{"current_ua", stimulus.current_ua},
+                            {"phase_us", stimulus.phase_us},
+                            {"phases", stimulus.phases},
+                            {"area_um2", figures->area_um2},
+                            {"charge_per_phase_uc", figures->charge_uc},
+                            {"charge_density_uc_cm2", figures->density_uc_cm2},
+                            {"shannon_k", figures->shannon_k},
+                            {"text", told(*figures)},
+                            {"warnings", stimulus_warnings(*figures)}};
+    }
 }
 
 SessionAbout about(const Settings& settings, const std::optional<Assigned>& assigned, const StreamSettings& stream,
@@ -54,6 +70,10 @@ SessionAbout about(const Settings& settings, const std::optional<Assigned>& assi
         about.more["assignment"] = nlohmann::json::parse(to_json_text(assigned->kept));
     }
     about.settings_text = settings_to_keep(settings, stream, channels);
+    keep_stimulus(settings.stimulus, about.more);
+    if (settings.arbiter.speed_gate.on) {
+        about.more["speed_gate_delay_ms"] = settings.arbiter.speed_gate.delay_ms;
+    }
     return about;
 }
 
@@ -83,13 +103,24 @@ bool has_trials(const std::optional<Assigned>& assigned) {
     return assigned && assigned->kept.unit == AssignmentUnit::trial;
 }
 
+} // namespace
+
+OscCommands commands_for(const Settings& settings, bool trials) {
+    return {settings.control.secret,
+            gate_names(settings.arbiter),
+            {trials, !settings.arbiter.plan.epochs.empty(), settings.arbiter.speed_gate.on}};
+}
+
+namespace {
+
 std::unique_ptr<CommandListener> listen(const Settings& settings, bool trials, boost::asio::io_context& context,
-                                        CommandRing& commands, std::function<void(const std::string&)> refused) {
+                                        CommandRing& commands, StopDoor door,
+                                        std::function<void(const std::string&)> refused) {
     if (!settings.control.listen) {
         return nullptr;
     }
-    return std::make_unique<CommandListener>(context, settings.control, gate_names(settings.arbiter), trials, commands,
-                                             std::move(refused));
+    return std::make_unique<CommandListener>(context, settings.control, commands_for(settings, trials), commands,
+                                             std::move(door), std::move(refused));
 }
 
 } // namespace
@@ -103,6 +134,7 @@ Detector make_detector(const Settings& settings, const Channels& channels, Hertz
     if (const auto floors = warm_start_floors(settings.detector); !floors.empty()) {
         detector.warm_start(floors);
     }
+    check_floor_channels(settings.arbiter.limits.floor, detector);
     return detector;
 }
 
@@ -134,7 +166,7 @@ LiveSession::LiveSession(Settings settings, const std::filesystem::path& setting
       assigned_(assigned_for(settings, rate_, settings_file.string())),
       channels_(channels_for(settings, ripple_channels(stream_.channels), settings_file.string())),
       detector_(make_detector(settings, channels_, rate_)), schedule_(schedule_for(settings.arbiter, rate_)),
-      listener_(listen(settings, has_trials(assigned_), control_, commands_, std::move(refused_command))),
+      listener_(listen(settings, has_trials(assigned_), control_, commands_, stop_door(), std::move(refused_command))),
       source_(open_source(stream_)), output_(make_output(settings.output)),
       writer_(SessionWriter::open(settings.session, about(settings, assigned_, stream_, channels_, detector_))),
       journal_(std::make_unique<Journal>(*writer_)),
@@ -148,6 +180,12 @@ LiveSession::LiveSession(Settings settings, const std::filesystem::path& setting
                 return engine;
             }) {
     guard_line_against_crashes(output_.get());
+}
+
+// The loop is made after the listener; nothing is heard before both are.
+StopDoor LiveSession::stop_door() {
+    return {[this](const ChangedBy& by) { loop_.emergency_stop(by); }, [this] { return loop_.emergency_stopped(); },
+            [this] { loop_.clear_emergency_stop(); }};
 }
 
 LiveSession::~LiveSession() {

@@ -23,6 +23,8 @@ namespace millpond {
 [[nodiscard]] std::string program_name();
 
 [[nodiscard]] Detector make_detector(const Settings& settings, const Channels& channels, Hertz rate);
+/// What a session with these settings listens to. `trials`: it has trials that somebody marks.
+[[nodiscard]] OscCommands commands_for(const Settings& settings, bool trials);
 [[nodiscard]] std::unique_ptr<Output> make_output(const OutputSettings& settings);
 
 /// A session from the first packet to the closed folder: samples -> engine -> pulses, with everything journaled.
@@ -41,6 +43,8 @@ class LiveSession {
     void start();
     /// Thread: any.
     void stop() noexcept { loop_.stop(); }
+    /// Orders the line low by this thread and faults the session. Thread: control.
+    void emergency_stop(const ChangedBy& by) noexcept { loop_.emergency_stop(by); }
     [[nodiscard]] LoopEnd end() const noexcept { return loop_.end(); }
     /// Waits for the loop, lets the line fall and closes the folder.
     void finish();
@@ -55,6 +59,7 @@ class LiveSession {
 
   private:
     class Journal;
+    [[nodiscard]] StopDoor stop_door();
 
     // Made in this order: what may be refused comes before the session folder, so that a refusal leaves no trace.
     StreamSettings stream_;

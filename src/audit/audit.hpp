@@ -29,6 +29,11 @@ struct AuditInput {
     std::function<void(const char* doing, double share)> progress;
 };
 
+/// One epoch's share of the two readings below.
+struct EpochScore {
+    Score detector, session;
+};
+
 /// Detections against ripples, read in two ways (see referee/eligible_time.hpp).
 struct AuditScore {
     std::string truth; ///< the table's name, or "referee"
@@ -36,10 +41,11 @@ struct AuditScore {
     std::optional<RefereeFindings> referee; ///< its ripples are the ones above; empty: labels
     RefereeSettings referee_settings;
     std::vector<SampleIndex> detections;
-    Score detector;                ///< over all time in which the detector was fit to detect
-    Score session;                 ///< over the time in which a trigger was possible
-    bool pulses_given = false;     ///< pulses change the very signal that the truth is taken from
-    bool pulses_scheduled = false; ///< by delay or by a control schedule: they did not follow detections at once
+    Score detector;                 ///< over all time in which the detector was fit to detect
+    Score session;                  ///< over the time in which a trigger was possible
+    std::vector<EpochScore> epochs; ///< as figures.epochs: of ripples and detections in each
+    bool pulses_given = false;      ///< pulses change the very signal that the truth is taken from
+    bool pulses_scheduled = false;  ///< by delay or by a control schedule: they did not follow detections at once
 };
 
 struct AuditResult {

@@ -54,6 +54,17 @@ Json rerun_json(const AuditResult& r) {
             {"differences", differences}};
 }
 
+Json speed_json(const SpeedFigure& speed) {
+    if (speed.events == 0) {
+        return nullptr;
+    }
+    return {{"values", speed.values},
+            {"kept", speed.events},
+            {"least", speed.least},
+            {"median", speed.median},
+            {"most", speed.most}};
+}
+
 Json stream_json(const AuditResult& r) {
     const auto rate = r.provenance.about.rate;
     auto gaps = Json::array();
@@ -69,11 +80,12 @@ Json stream_json(const AuditResult& r) {
                           {"utc", utc_text(state.time_ns)},
                           {"before", name_of(state.before)},
                           {"after", name_of(state.after)},
-                          {"cause", name_of(state.cause)}});
+                          {"cause", name_of(state.cause)},
+                          {"by", told(state.by)}});
     }
     auto gates = Json::array();
     for (const auto& gate : r.figures.gates) {
-        gates.push_back({{"sample", gate.at.value}, {"name", gate.name}, {"open", gate.open}});
+        gates.push_back({{"sample", gate.at.value}, {"name", gate.name}, {"open", gate.open}, {"by", told(gate.by)}});
     }
     auto sites = Json::array();
     for (const auto& site : r.figures.sites) {
@@ -88,8 +100,36 @@ Json stream_json(const AuditResult& r) {
             {"packets", counts_json<PacketCause>(r.figures.packets)},
             {"states", states},
             {"gates", gates},
+            {"speed", speed_json(r.figures.speed)},
             {"sites", sites},
             {"notes", notes}};
+}
+
+Json epochs_json(const AuditResult& r) {
+    const auto rate = r.provenance.about.rate;
+    auto epochs = Json::array();
+    for (std::size_t i = 0; i < r.figures.epochs.size(); ++i) {
+        const auto& epoch = r.figures.epochs[i];
+        Json json{{"index", epoch.index},
+                  {"name", epoch.name},
+                  {"pulses_allowed", epoch.pulses_allowed},
+                  {"from_sample", epoch.from.value},
+                  {"to_sample", epoch.to.value},
+                  {"minutes", seconds_at(SampleIndex{epoch.to - epoch.from}, rate) / 60.0},
+                  {"planned_minutes", epoch.planned_frames == 0
+                                          ? Json(nullptr)
+                                          : Json(seconds_at(SampleIndex{epoch.planned_frames}, rate) / 60.0)},
+                  {"begun_by", told(epoch.by)},
+                  {"detections", epoch.detections},
+                  {"triggers", epoch.triggers},
+                  {"pulses", r.blinded ? Json(nullptr) : Json(epoch.pulses)},
+                  {"withheld", counts_json<Rule>(epoch.withheld, 1)}};
+        json["score"] = r.score ? Json{{"detector", json_of(r.score->epochs.at(i).detector)},
+                                       {"session", json_of(r.score->epochs.at(i).session)}}
+                                : Json(nullptr);
+        epochs.push_back(std::move(json));
+    }
+    return epochs;
 }
 
 Json floors_json(const AuditResult& r) {
@@ -200,6 +240,7 @@ Json audit_json(const AuditResult& r) {
             {"conditions", conditions_json(r)},
             {"rate_comparisons", comparisons_json(r)},
             {"score", score_json(r)},
+            {"epochs", epochs_json(r)},
             {"latency", latency_json(r)},
             {"stream", stream_json(r)},
             {"floors", floors_json(r)}};

@@ -73,6 +73,24 @@ std::string head(const AuditResult& r) {
     return text;
 }
 
+// What the settings said of the stimulus and of the speed's delay.
+std::string stated_text(const AuditResult& r) {
+    const auto& more = r.provenance.about.more;
+    std::string text;
+    if (more.contains("stimulus")) {
+        text += "\nStimulus, as stated in the settings\n  " + more.at("stimulus").value("text", "") + "\n";
+        for (const auto& warning : more.at("stimulus").value("warnings", std::vector<std::string>{})) {
+            text += "  caution: " + warning + "\n";
+        }
+    }
+    if (more.contains("speed_gate_delay_ms")) {
+        text += fmt::format("\nSpeed gate\n  its speeds were {:g} ms late, as stated in the settings; nothing was "
+                            "corrected for that\n",
+                            more.value("speed_gate_delay_ms", 0.0));
+    }
+    return text;
+}
+
 std::string rerun_text(const AuditResult& r) {
     if (!r.rerun.done) {
         return fmt::format("\nRe-run\n  not done: {}\n", r.rerun.why_not);
@@ -192,10 +210,12 @@ std::string stream_text(const AuditResult& r) {
     text += fmt::format("\nStates: {}, gates: {}\n", f.states.size(), f.gates.size());
     text += listed(f.states, [rate](const StateFigure& state) {
         return fmt::format("{}: {} to {} ({}), {}", at_text(state.at, rate), name_of(state.before),
-                           name_of(state.after), name_of(state.cause), utc_text(state.time_ns));
+                           name_of(state.after), name_of(state.cause), utc_text(state.time_ns)) +
+               (state.by.source == ChangeSource::unknown ? "" : ", by " + told(state.by));
     });
     text += listed(f.gates, [rate](const GateFigure& gate) {
-        return fmt::format("{}: gate {} {}", at_text(gate.at, rate), gate.name, gate.open ? "open" : "closed");
+        return fmt::format("{}: gate {} {}", at_text(gate.at, rate), gate.name, gate.open ? "open" : "closed") +
+               (gate.by.source == ChangeSource::unknown ? "" : ", by " + told(gate.by));
     });
     if (!f.sites.empty()) {
         text += fmt::format("\nSites left out of the evidence, and back: {}\n", f.sites.size());
@@ -207,6 +227,41 @@ std::string stream_text(const AuditResult& r) {
     text += listed(f.notes,
                    [rate](const Note& note) { return fmt::format("{}: {}", at_text(note.sample, rate), note.text); });
     return text;
+}
+
+std::string epoch_score_text(const char* reading, const Score& s) {
+    return fmt::format("    {}: {:.2f} eligible minutes, hits {}, misses {}, false {} ({} per minute), hit rate {}\n",
+                       reading, s.eligible_minutes, s.hits, s.misses, s.false_detections, figure(s.false_per_minute),
+                       share(s.hit_rate));
+}
+
+std::string epochs_text(const AuditResult& r) {
+    if (r.figures.epochs.empty()) {
+        return {};
+    }
+    const auto rate = r.provenance.about.rate;
+    std::string text = "\nEpochs\n";
+    for (std::size_t i = 0; i < r.figures.epochs.size(); ++i) {
+        const auto& epoch = r.figures.epochs[i];
+        text += fmt::format("  {}: from {}, {:.2f} minutes, pulses {}, begun by {}\n", epoch.name,
+                            at_text(epoch.from, rate), seconds_at(SampleIndex{epoch.to - epoch.from}, rate) / 60.0,
+                            epoch.pulses_allowed ? "allowed" : "not allowed", told(epoch.by));
+        text += fmt::format("    {} detections, {} triggers{}\n", epoch.detections, epoch.triggers,
+                            r.blinded ? std::string{} : fmt::format(", {} pulses", epoch.pulses));
+        if (r.score) {
+            text += epoch_score_text("detector", r.score->epochs.at(i).detector);
+            text += epoch_score_text("session", r.score->epochs.at(i).session);
+        }
+    }
+    return text;
+}
+
+std::string speed_text(const AuditResult& r) {
+    const auto& speed = r.figures.speed;
+    return speed.events == 0
+               ? std::string{}
+               : fmt::format("\nSpeed\n  {} values received; of {} kept: least {:.3g}, median {:.3g}, most {:.3g}\n",
+                             speed.values, speed.events, speed.least, speed.median, speed.most);
 }
 
 std::string floor_text(const AuditResult& r) {
@@ -240,8 +295,8 @@ std::string verdict_text(const AuditResult& r) {
 } // namespace
 
 std::string audit_text(const AuditResult& r) {
-    return head(r) + rerun_text(r) + decisions_text(r) + conditions_text(r) + score_text(r) + latency_text(r) +
-           stream_text(r) + floor_text(r) + verdict_text(r);
+    return head(r) + stated_text(r) + rerun_text(r) + decisions_text(r) + conditions_text(r) + score_text(r) +
+           epochs_text(r) + latency_text(r) + stream_text(r) + speed_text(r) + floor_text(r) + verdict_text(r);
 }
 
 } // namespace millpond

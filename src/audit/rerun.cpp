@@ -21,6 +21,7 @@ bool decided_by_the_engine(const Event& event) {
     case EventKind::gate:
     case EventKind::floor:
     case EventKind::site:
+    case EventKind::epoch:
         return true;
     default:
         return false;
@@ -41,6 +42,12 @@ class Collector final : public EventSink {
     }
     std::vector<Event> events;
 };
+
+// Faults that the engine finds by itself.
+bool found_again(StateCause cause) {
+    return cause == StateCause::runaway || cause == StateCause::too_many_gaps ||
+           cause == StateCause::floor_out_of_range;
+}
 
 bool is_start(const Event& event) {
     return event.kind == EventKind::state &&
@@ -121,15 +128,25 @@ class Feed {
 
     void event(const Event& event) {
         switch (event.kind) {
-        case EventKind::state:
+        case EventKind::state: {
             frames_upto(event.sample);
-            engine_.set_state(static_cast<ArmState>(event.code),
-                              static_cast<StateCause>(event.as<StateDetail>().cause));
+            const auto state = event.as<StateDetail>();
+            if (const auto cause = static_cast<StateCause>(state.cause); !found_again(cause)) {
+                engine_.set_state(static_cast<ArmState>(event.code), cause, by_of(state));
+            }
+            break;
+        }
+        case EventKind::epoch:
+            // One that had its length is found again, at its place.
+            if (const auto by = by_of(event.as<EpochDetail>()); by.source != ChangeSource::plan) {
+                frames_upto(event.sample);
+                engine_.next_epoch(by);
+            }
             break;
         case EventKind::gate: {
             frames_upto(event.sample);
             const auto gate = event.as<GateDetail>();
-            engine_.set_gate(gate_name(gate), gate.open != 0);
+            engine_.set_gate(gate_name(gate), gate.open != 0, by_of(gate));
             break;
         }
         case EventKind::trial:

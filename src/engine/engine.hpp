@@ -64,9 +64,12 @@ class Engine {
     void finish() noexcept { close_gap(); }
 
     /// Commands take effect before the next frame, `next_sample()`, and are journaled there.
-    void set_state(ArmState state, StateCause cause) noexcept;
+    /// `by` says who; where it does not, the cause does.
+    void set_state(ArmState state, StateCause cause, const ChangedBy& by = {}) noexcept;
     /// False, and nothing happens, where no gate has that name that commands may move: the detector's own is not one.
-    bool set_gate(std::string_view name, bool open) noexcept;
+    bool set_gate(std::string_view name, bool open, const ChangedBy& by = {ChangeSource::command}) noexcept;
+    /// The plan's next epoch begins, whether or not the present one has a length. Nothing happens after the last one.
+    void next_epoch(const ChangedBy& by) noexcept;
     /// The next trial of the assignment begins with the next frame.
     void next_trial() noexcept { begin_unit(); }
     /// The operator's text into the journal, cut into as many note events as it needs.
@@ -92,8 +95,11 @@ class Engine {
     void close_gap() noexcept;
     void journal_floors() noexcept;
     void follow_state() noexcept;
-    void move_gate(std::string_view name, bool open) noexcept;
-    void journal_gate(std::string_view name, bool open) noexcept;
+    void follow_plan(SampleIndex upto) noexcept;
+    void follow_watch() noexcept;
+    void begin_epoch(SampleIndex at, const ChangedBy& by) noexcept;
+    void move_gate(std::string_view name, bool open, const ChangedBy& by) noexcept;
+    void journal_gate(std::string_view name, bool open, const ChangedBy& by) noexcept;
 
     Detector detector_;
     Arbiter arbiter_;

@@ -41,6 +41,14 @@ void fill_moment(TableEvent& row, const TriggerDetail& detail) {
     row.extra["catch"] = fmt::format("{}", detail.caught);
 }
 
+// A tab would make a column.
+std::string one_line(std::string text) {
+    for (auto& c : text) {
+        c = static_cast<unsigned char>(c) < 0x20 ? ' ' : c;
+    }
+    return text;
+}
+
 // Empty trial_type where the event has no row.
 TableEvent row_of(const Event& event, Hertz rate) {
     TableEvent row;
@@ -72,6 +80,12 @@ TableEvent row_of(const Event& event, Hertz rate) {
         row.extra["site"] = site_text(event.as<SiteDetail>().channel);
         row.extra["cause"] = name_of(static_cast<SiteState>(event.code));
         break;
+    case EventKind::epoch: {
+        const auto epoch = event.as<EpochDetail>();
+        row.extra["text"] = one_line(epoch_name(epoch));
+        row.extra["cause"] = name_of(by_of(epoch).source);
+        break;
+    }
     case EventKind::gap:
         row.duration_s = static_cast<double>(event.as<GapDetail>().frames) / rate.value;
         row.extra["cause"] = name_of(static_cast<GapCause>(event.code));
@@ -88,11 +102,7 @@ TableEvent row_of(const Note& note, Hertz rate) {
     row.onset_s = seconds_at(note.sample, rate);
     row.sample = static_cast<std::int64_t>(note.sample.value);
     row.trial_type = name_of(EventKind::note);
-    auto text = note.text;
-    for (auto& c : text) {
-        c = static_cast<unsigned char>(c) < 0x20 ? ' ' : c; // a tab would make a column
-    }
-    row.extra["text"] = text;
+    row.extra["text"] = one_line(note.text);
     return row;
 }
 
@@ -109,7 +119,8 @@ nlohmann::json dictionary() {
         {"duration", column("Pulse: order to rise until order to fall; gap: frames missing; else 0", "s")},
         {"sample", column("Place in the stream, counted in frames from 0; missing frames are counted too")},
         {"rule", column("The one rule that refused a withheld detection or an omitted moment")},
-        {"cause", column("Why frames are missing; site: flat or huge where it is left out, alive where it is back")},
+        {"cause", column("Why frames are missing; site: flat or huge where it is left out, alive where it is back; "
+                         "epoch: what began it")},
         {"number", column("Count of the session's triggers, from 1; of origin schedule: place in the schedule; trial: "
                           "of the assignment")},
         {"origin", column("Why there is a moment for a pulse: trigger (at once), delay (a while later), schedule")},
@@ -125,7 +136,7 @@ nlohmann::json dictionary() {
         {"wake_us", column("Packet arrived to loop begins on it; n/a: not measured", "us")},
         {"compute_us", column("Loop begins to decision made; n/a: not measured", "us")},
         {"output_us", column("Decision made to write returned; n/a: not measured", "us")},
-        {"text", column("The operator's mark")}};
+        {"text", column("The operator's mark; an epoch's name")}};
     json["trial_type"] = column("What happened");
     json["trial_type"]["Levels"] = {
         {"detection", "The detector crossed"},
@@ -138,6 +149,7 @@ nlohmann::json dictionary() {
         {"pulse", "The order was written to the output"},
         {"gap", "Frames are missing from here"},
         {"site", "A channel is left out of the evidence from here, or is back"},
+        {"epoch", "An epoch of the session's plan begins"},
         {"note", "The operator's mark"}};
     return json;
 }

@@ -11,6 +11,7 @@
 #include "journal/session_settings.hpp"
 #include "outputs/output_settings.hpp"
 #include "realtime/realtime_settings.hpp"
+#include "stimulus/stimulus_settings.hpp"
 
 #include <filesystem>
 #include <string>
@@ -24,6 +25,7 @@ struct Settings {
     ArbiterSettings arbiter;
     AssignmentSettings assignment;
     OutputSettings output;
+    StimulusSettings stimulus;
     ControlSettings control;
     SessionSettings session;
     RealtimeSettings realtime;
@@ -35,8 +37,13 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
                "what each channel of the stream or recording is, in its order; none: all are ripple sites");
     visit.group("detector", settings.detector, "when there is a ripple");
     visit.group("arbiter", settings.arbiter, "when a detection becomes a pulse");
+    visit.group("limits", settings.arbiter.limits, "how many pulses are too many, and what ends a session's pulses");
+    visit.group("plan", settings.arbiter.plan, "how a session is divided");
+    visit.group("speed_gate", settings.arbiter.speed_gate, "a gate that follows the animal's speed");
     visit.group("assignment", settings.assignment, "which condition the session has, where a list says so");
     visit.group("output", settings.output, "where pulses go");
+    visit.group("stimulus", settings.stimulus,
+                "what the stimulator gives for one pulse: reckoned with, never permitted");
     visit.group("control", settings.control, "where commands come from");
     visit.group("session", settings.session, "what is kept of a session");
     visit.group("realtime", settings.realtime, "how the loop runs on this computer");

@@ -120,8 +120,8 @@ TEST(ClosedLoop, PulsesDoNotBreedPulses) {
     // Disrupting, with as little in the way of a runaway as settings allow: lock-out just above the pulse.
     EngineSettings settings;
     settings.arbiter.lockout_ms = 2.0;
-    settings.arbiter.max_pulses_per_second = 1000;
-    settings.arbiter.max_pulses_per_session = 1000000;
+    settings.arbiter.limits = for_sweeps({});
+    settings.arbiter.limits.max_pulses_per_second = 1000;
     auto scene = quiet_animal(1250.0);
     scene.ripples.rate_per_s = 0.5;
     const auto run = [&](double artefact_uv) {
