@@ -29,11 +29,15 @@ std::vector<FloorState> warm_start_floors(const DetectorSettings& detector) {
     return floors;
 }
 
+ScheduleLimits limits_of(const ArbiterSettings& arbiter) {
+    return {arbiter.lockout_ms, arbiter.max_pulses_per_second, arbiter.max_pulses_per_session};
+}
+
 Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
     Schedule schedule;
     if (!arbiter.schedule_file.empty()) {
         schedule = read_schedule(arbiter.schedule_file, rate);
-        check_schedule(schedule, {arbiter.lockout_ms, arbiter.max_pulses_per_second}, rate, arbiter.schedule_file);
+        check_schedule(schedule, limits_of(arbiter), rate, arbiter.schedule_file);
     }
     return schedule;
 }

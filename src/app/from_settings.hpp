@@ -18,6 +18,9 @@ namespace millpond {
 /// Floors that the settings want to start from; empty where they name no session.
 [[nodiscard]] std::vector<FloorState> warm_start_floors(const DetectorSettings& detector);
 
+/// What the settings allow a control schedule.
+[[nodiscard]] ScheduleLimits limits_of(const ArbiterSettings& arbiter);
+
 /// The control schedule that the settings name, checked against the arbiter's limits; empty where they name none.
 [[nodiscard]] Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate);
 

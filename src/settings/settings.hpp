@@ -10,6 +10,7 @@
 #include "journal/session_settings.hpp"
 #include "outputs/output_settings.hpp"
 #include "realtime/realtime_settings.hpp"
+#include "sham/schedule_settings.hpp"
 
 #include <filesystem>
 #include <string>
@@ -21,6 +22,7 @@ struct Settings {
     Channels channels; ///< empty: as many ripple sites as the stream or recording has
     DetectorSettings detector;
     ArbiterSettings arbiter;
+    ScheduleSettings schedule;
     OutputSettings output;
     ControlSettings control;
     SessionSettings session;
@@ -33,6 +35,8 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
                "what each channel of the stream or recording is, in its order; none: all are ripple sites");
     visit.group("detector", settings.detector, "when there is a ripple");
     visit.group("arbiter", settings.arbiter, "when a detection becomes a pulse");
+    visit.group("schedule", settings.schedule,
+                "control schedule that `sham rate-matched --settings` makes; a session reads it from the file");
     visit.group("output", settings.output, "where pulses go");
     visit.group("control", settings.control, "where commands come from");
     visit.group("session", settings.session, "what is kept of a session");
