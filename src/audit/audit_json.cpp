@@ -163,6 +163,7 @@ Json audit_json(const AuditResult& r) {
               {"pulses", r.figures.pulses},
               {"pulse_ends", r.figures.pulse_ends},
               {"withheld", counts_json<Rule>(r.figures.withheld, 1)}}},
+            {"controls", control_json(r.controls)},
             {"score", score_json(r)},
             {"latency", latency_json(r)},
             {"stream", stream_json(r)},

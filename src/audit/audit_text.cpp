@@ -216,8 +216,8 @@ std::string verdict_text(const AuditResult& r) {
 } // namespace
 
 std::string audit_text(const AuditResult& r) {
-    return head(r) + rerun_text(r) + decisions_text(r) + score_text(r) + latency_text(r) + stream_text(r) +
-           floor_text(r) + verdict_text(r);
+    return head(r) + rerun_text(r) + decisions_text(r) + control_text(r.controls) + score_text(r) + latency_text(r) +
+           stream_text(r) + floor_text(r) + verdict_text(r);
 }
 
 } // namespace millpond
