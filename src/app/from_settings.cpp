@@ -46,12 +46,15 @@ void check_floor_channels(const FloorLimitSettings& limits, const Detector& dete
     }
 }
 
+ScheduleLimits limits_of(const ArbiterSettings& arbiter) {
+    return {arbiter.lockout_ms, arbiter.limits.max_pulses_per_second, arbiter.limits.max_pulses_per_session};
+}
+
 Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
     Schedule schedule;
     if (!arbiter.schedule_file.empty()) {
         schedule = read_schedule(arbiter.schedule_file, rate);
-        check_schedule(schedule, {arbiter.lockout_ms, arbiter.limits.max_pulses_per_second}, rate,
-                       arbiter.schedule_file);
+        check_schedule(schedule, limits_of(arbiter), rate, arbiter.schedule_file);
     }
     return schedule;
 }

@@ -22,6 +22,8 @@ namespace millpond {
 
 /// Refuses a range in limits.floor.channels for a channel that has no floor.
 void check_floor_channels(const FloorLimitSettings& limits, const Detector& detector);
+/// What the settings allow a control schedule.
+[[nodiscard]] ScheduleLimits limits_of(const ArbiterSettings& arbiter);
 
 /// The control schedule that the settings name, checked against the arbiter's limits; empty where they name none.
 [[nodiscard]] Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate);

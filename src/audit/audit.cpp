@@ -97,6 +97,20 @@ void add_score(const AuditInput& input, const SessionReader& session, AuditResul
     result.score = std::move(known);
 }
 
+// Delayed and scheduled pulses, against the ripples that the score knows.
+void add_controls(const AuditInput& input, const SessionReader& session, AuditResult& result) {
+    std::optional<KnownRipples> ripples;
+    if (const auto& score = result.score) {
+        ripples.emplace(KnownRipples{score->ripples, score->detector.early_ms,
+                                     score->referee ? score->referee->artefacts.excluded : Intervals{}});
+    }
+    result.controls = control_figures(session.events(), input.schedule ? &*input.schedule : nullptr,
+                                      ripples ? &*ripples : nullptr, session.rate());
+    if (!input.about_schedule.empty()) {
+        result.controls.about_schedule = input.about_schedule;
+    }
+}
+
 } // namespace
 
 AuditResult audit_session(const AuditInput& input) {
@@ -127,6 +141,7 @@ AuditResult audit_session(const AuditInput& input) {
         add_conditions(input, session, result);
     }
     add_score(input, session, result);
+    add_controls(input, session, result);
     return result;
 }
 

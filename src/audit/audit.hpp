@@ -3,6 +3,7 @@
 #pragma once
 
 #include "audit/condition_figures.hpp"
+#include "audit/control_figures.hpp"
 #include "audit/latency_figures.hpp"
 #include "audit/rerun.hpp"
 #include "audit/session_figures.hpp"
@@ -25,6 +26,8 @@ struct AuditInput {
     std::optional<Ripples> labels;               ///< empty: the referee over the stored samples is the truth
     std::string labels_name;                     ///< the table that they came from
     RefereeSettings referee;
+    std::optional<Schedule> schedule; ///< places of the schedule's file; empty: none, or it cannot be read
+    std::string about_schedule;       ///< why it cannot be read
     /// Told now and then what is being done and its share, 0 to 1.
     std::function<void(const char* doing, double share)> progress;
 };
@@ -63,6 +66,7 @@ struct AuditResult {
     SampleIndex end;
     std::optional<std::uint64_t> frames_stored; ///< empty: the session stored none
     SessionFigures figures;
+    ControlFigures controls;
     std::vector<LatencyRow> latency;
     Rerun rerun;
     std::optional<AuditScore> score;

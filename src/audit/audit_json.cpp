@@ -239,6 +239,7 @@ Json audit_json(const AuditResult& r) {
             {"blinded", r.blinded},
             {"conditions", conditions_json(r)},
             {"rate_comparisons", comparisons_json(r)},
+            {"controls", r.blinded ? Json(nullptr) : control_json(r.controls)},
             {"score", score_json(r)},
             {"epochs", epochs_json(r)},
             {"latency", latency_json(r)},

@@ -295,8 +295,9 @@ std::string verdict_text(const AuditResult& r) {
 } // namespace
 
 std::string audit_text(const AuditResult& r) {
-    return head(r) + stated_text(r) + rerun_text(r) + decisions_text(r) + conditions_text(r) + score_text(r) +
-           epochs_text(r) + latency_text(r) + stream_text(r) + speed_text(r) + floor_text(r) + verdict_text(r);
+    return head(r) + stated_text(r) + rerun_text(r) + decisions_text(r) + conditions_text(r) +
+           (r.blinded ? std::string{} : control_text(r.controls)) + score_text(r) + epochs_text(r) + latency_text(r) +
+           stream_text(r) + speed_text(r) + floor_text(r) + verdict_text(r);
 }
 
 } // namespace millpond

@@ -12,6 +12,7 @@
 #include "outputs/output_settings.hpp"
 #include "realtime/realtime_settings.hpp"
 #include "stimulus/stimulus_settings.hpp"
+#include "sham/schedule_settings.hpp"
 
 #include <filesystem>
 #include <string>
@@ -24,6 +25,7 @@ struct Settings {
     DetectorSettings detector;
     ArbiterSettings arbiter;
     AssignmentSettings assignment;
+    ScheduleSettings schedule;
     OutputSettings output;
     StimulusSettings stimulus;
     ControlSettings control;
@@ -41,6 +43,8 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
     visit.group("plan", settings.arbiter.plan, "how a session is divided");
     visit.group("speed_gate", settings.arbiter.speed_gate, "a gate that follows the animal's speed");
     visit.group("assignment", settings.assignment, "which condition the session has, where a list says so");
+    visit.group("schedule", settings.schedule,
+                "control schedule that `sham rate-matched --settings` makes; a session reads it from the file");
     visit.group("output", settings.output, "where pulses go");
     visit.group("stimulus", settings.stimulus,
                 "what the stimulator gives for one pulse: reckoned with, never permitted");
