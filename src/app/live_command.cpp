@@ -83,6 +83,10 @@ class Operator {
     }
 
     void tick() {
+        session_.tend([this](const std::string& news) {
+            leave_status();
+            log_->warn("{}", news);
+        });
         const auto figures = session_.figures();
         tell_changes(figures);
         const double running_s = static_cast<double>((monotonic_now() - began_).count()) / 1e9;

@@ -8,8 +8,10 @@
 #include "intake/open_source.hpp"
 #include "journal/session_writer.hpp"
 #include "live/live_loop.hpp"
+#include "outputs/line_board.hpp"
+#include "outputs/line_keeper.hpp"
 #include "outputs/output.hpp"
-#include "outputs/pulse_line.hpp"
+#include "outputs/pulse_lines.hpp"
 #include "settings/settings.hpp"
 
 #include <functional>
@@ -25,12 +27,14 @@ namespace millpond {
 [[nodiscard]] Detector make_detector(const Settings& settings, const Channels& channels, Hertz rate);
 /// What a session with these settings listens to. `trials`: it has trials that somebody marks.
 [[nodiscard]] OscCommands commands_for(const Settings& settings, bool trials);
-[[nodiscard]] std::unique_ptr<Output> make_output(const OutputSettings& settings);
+/// Starts a watchdog process over these outputs.
+[[nodiscard]] LineKeeper make_keeper(const Settings& settings, const std::vector<std::unique_ptr<Output>>& outputs,
+                                     LineBoard& board);
 
 /// A session from the first packet to the closed folder: samples -> engine -> pulses, with everything journaled.
 class LiveSession {
   public:
-    /// Takes the ports, makes the folder, orders the line low; no sample is read yet.
+    /// Orders the lines low, starts their watchdog, takes the ports, makes the folder; no sample is read yet.
     LiveSession(Settings settings, const std::filesystem::path& settings_file,
                 std::function<void(const std::string&)> refused_command);
     ~LiveSession();
@@ -46,7 +50,10 @@ class LiveSession {
     /// Orders the line low by this thread and faults the session. Thread: control.
     void emergency_stop(const ChangedBy& by) noexcept { loop_.emergency_stop(by); }
     [[nodiscard]] LoopEnd end() const noexcept { return loop_.end(); }
-    /// Waits for the loop, lets the line fall and closes the folder.
+    /// Looks after devices and watchdog, journals what it finds and tells it; call every few tens of ms, from `start`
+    /// on.
+    void tend(const std::function<void(const std::string&)>& tell);
+    /// Waits for the loop, lets the lines fall and closes the folder.
     void finish();
 
     [[nodiscard]] LiveFigures figures() const { return writer_->snapshot(); }
@@ -60,10 +67,15 @@ class LiveSession {
   private:
     class Journal;
     [[nodiscard]] StopDoor stop_door();
+    void journal_device(std::size_t output, DeviceState state);
 
     // Made in this order: what may be refused comes before the session folder, so that a refusal leaves no trace.
     StreamSettings stream_;
     RealtimeSettings realtime_;
+    std::vector<OutputSettings> output_settings_;
+    std::vector<std::unique_ptr<Output>> outputs_;
+    LineBoard board_;
+    LineKeeper keeper_; // its process is forked here, before there are other threads and much memory
     Hertz rate_;
     std::optional<Assigned> assigned_;
     Channels channels_;
@@ -73,10 +85,9 @@ class LiveSession {
     SpscRing<Command> commands_{1024};
     std::unique_ptr<CommandListener> listener_;
     std::unique_ptr<SampleSource> source_;
-    std::unique_ptr<Output> output_;
     std::unique_ptr<SessionWriter> writer_;
     std::unique_ptr<Journal> journal_;
-    PulseLine line_;
+    PulseLines lines_;
     LiveLoop loop_;
     std::latch may_run_{1};
     bool granted_ = false;

@@ -5,17 +5,38 @@
 namespace millpond {
 namespace {
 
+void add_summary(Json& json, const LatencySummary& figures) {
+    json["count"] = figures.count;
+    json["p50_ns"] = figures.p50;
+    json["p90_ns"] = figures.p90;
+    json["p99_ns"] = figures.p99;
+    json["p99.9_ns"] = figures.p999;
+    json["max_ns"] = figures.max;
+}
+
 Json latency_json(const AuditResult& r) {
     auto rows = Json::array();
     for (const auto& row : r.latency) {
         Json json{{"part", row.part}, {"over", row.over}, {"span", row.span}, {"measured", row.figures.has_value()}};
         if (row.figures) {
-            json["count"] = row.figures->count;
-            json["p50_ns"] = row.figures->p50;
-            json["p90_ns"] = row.figures->p90;
-            json["p99_ns"] = row.figures->p99;
-            json["p99.9_ns"] = row.figures->p999;
-            json["max_ns"] = row.figures->max;
+            add_summary(json, *row.figures);
+        }
+        rows.push_back(std::move(json));
+    }
+    return rows;
+}
+
+Json outputs_json(const AuditResult& r) {
+    auto rows = Json::array();
+    for (const auto& output : r.figures.outputs) {
+        Json json{{"output", output.output},
+                  {"name", output.name},
+                  {"marker", output.marker},
+                  {"lost", output.lost},
+                  {"ends", output.ends}};
+        if (output.width && output.late) {
+            add_summary(json["width"], *output.width);
+            add_summary(json["late"], *output.late);
         }
         rows.push_back(std::move(json));
     }
@@ -243,6 +264,7 @@ Json audit_json(const AuditResult& r) {
             {"score", score_json(r)},
             {"epochs", epochs_json(r)},
             {"latency", latency_json(r)},
+            {"outputs", outputs_json(r)},
             {"stream", stream_json(r)},
             {"floors", floors_json(r)}};
 }

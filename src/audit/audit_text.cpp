@@ -199,6 +199,21 @@ std::string conditions_text(const AuditResult& r) {
     return text;
 }
 
+std::string outputs_text(const AuditResult& r) {
+    std::string text = "\nOutputs, us by this computer's clock\n";
+    for (const auto& output : r.figures.outputs) {
+        text += fmt::format("  {} ({}): {} {} ended, device lost {} times", output.name, output.output, output.ends,
+                            output.marker ? "markers" : "pulses", output.lost);
+        if (output.width && output.late) {
+            text += fmt::format("; width median {}, most {}; fall late by median {}, p99 {}, most {}",
+                                micros(output.width->p50), micros(output.width->max), micros(output.late->p50),
+                                micros(output.late->p99), micros(output.late->max));
+        }
+        text += "\n";
+    }
+    return r.figures.outputs.empty() ? text + "  none\n" : text;
+}
+
 std::string stream_text(const AuditResult& r) {
     const auto rate = r.provenance.about.rate;
     const auto& f = r.figures;
@@ -297,7 +312,8 @@ std::string verdict_text(const AuditResult& r) {
 std::string audit_text(const AuditResult& r) {
     return head(r) + stated_text(r) + rerun_text(r) + decisions_text(r) + conditions_text(r) +
            (r.blinded ? std::string{} : control_text(r.controls)) + score_text(r) + epochs_text(r) + latency_text(r) +
-           stream_text(r) + speed_text(r) + floor_text(r) + verdict_text(r);
+           (r.blinded ? std::string{} : outputs_text(r)) + stream_text(r) + speed_text(r) + floor_text(r) +
+           verdict_text(r);
 }
 
 } // namespace millpond

@@ -40,9 +40,6 @@ void count(SessionFigures& figures, const Event& event) {
     case EventKind::pulse:
         ++figures.pulses;
         break;
-    case EventKind::pulse_end:
-        ++figures.pulse_ends;
-        break;
     case EventKind::packet_count:
         add(figures.packets, event.code, event.as<CountDetail>().count);
         break;
@@ -186,6 +183,10 @@ SessionFigures session_figures(std::span<const Event> events) {
     figures.epochs = epochs_in(events);
     count_by_epoch(figures.epochs, events);
     figures.speed = speed_in(events);
+    figures.outputs = output_figures(events);
+    const auto& outputs = figures.outputs;
+    const auto first = std::find_if(outputs.begin(), outputs.end(), [](const auto& output) { return !output.marker; });
+    figures.pulse_ends = first != outputs.end() ? first->ends : 0;
     return figures;
 }
 

@@ -1,6 +1,7 @@
 // What a session's events add up to. Thread: cold.
 #pragma once
 
+#include "audit/output_figures.hpp"
 #include "base/event.hpp"
 #include "journal/session_reader.hpp"
 
@@ -71,7 +72,8 @@ struct SiteFigure {
 };
 
 struct SessionFigures {
-    std::uint64_t detections = 0, triggers = 0, catch_trials = 0, pulses = 0, pulse_ends = 0;
+    std::uint64_t detections = 0, triggers = 0, catch_trials = 0, pulses = 0;
+    std::uint64_t pulse_ends = 0;                            ///< of the first output that follows pulses
     std::array<std::uint64_t, 3> slots{}, orders{};          ///< by PulseOrigin; slots have no triggers among them
     std::array<std::uint64_t, rule_count> withheld{};        ///< detections, by Rule
     std::array<std::uint64_t, rule_count> omitted{};         ///< slots, by Rule
@@ -83,6 +85,7 @@ struct SessionFigures {
     std::vector<EpochFigure> epochs; ///< none: no plan
     SpeedFigure speed;
     std::vector<SiteFigure> sites; ///< left out of the evidence, and back
+    std::vector<OutputFigure> outputs;
     std::vector<Note> notes;
     std::vector<FloorFigure> floors;
 

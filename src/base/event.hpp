@@ -33,6 +33,7 @@ enum class EventKind : std::uint8_t {
     trial = 18,        ///< a session, block or trial of the assignment begins
     order = 19, ///< a pulse was ordered: at a trigger, or at a slot; the one kind here that tells of the condition
     speed = 20, ///< the speed that moved the speed gate, or that it had grown stale at
+    device = 21, ///< an output stands ready, was lost or is back; `code` is the DeviceState
     slot = 22,  ///< a moment for a delayed or scheduled pulse; blanked in every condition, whether one is given or not
     omitted = 23, ///< such a moment, at which no condition may give a pulse; `code` is the Rule
 };
@@ -90,6 +91,8 @@ enum class StateCause : std::uint8_t {
                             ///< artefacts and threshold, then arm
     too_many_gaps = 8,      ///< too many gaps or lost frames within a minute: mend the stream, then arm
     floor_out_of_range = 9, ///< a floor left its range: look at electrodes and amplifier, then arm
+    line_held = 10,         ///< a line was high for longer than its longest_high_ms, and was lowered by the watchdog
+    watchdog_lost = 11,     ///< the process that lowers the lines when this one cannot was gone or stood still
 };
 
 /// Who moved a gate, the state or the plan. Values are part of the session format.
@@ -109,6 +112,13 @@ struct ChangedBy {
     ChangeSource source = ChangeSource::unknown;
     std::uint16_t port = 0;    ///< UDP port of the sender
     std::uint32_t address = 0; ///< IPv4 address of the sender, the first number highest
+};
+
+/// An output as the control thread sees it. Values are part of the session format.
+enum class DeviceState : std::uint8_t {
+    ready = 0, ///< at the start
+    lost = 1,  ///< it no longer answers: look at cable and power; it is tried again every second
+    back = 2,  ///< it takes orders again, and its line was ordered low; arming is the operator's
 };
 
 /// Parts of the closed loop, each with its own histogram. Values are part of the session format.
@@ -173,8 +183,10 @@ struct PulseDetail {
 };
 
 struct PulseEndDetail {
-    std::int64_t width_ns; ///< order to rise until order to fall, by this computer's clock
-    std::int64_t late_ns;  ///< order to fall after the time planned for it
+    std::int64_t width_ns;    ///< order to rise until order to fall, by this computer's clock
+    std::int64_t late_ns;     ///< order to fall after the time planned for it
+    std::uint16_t output = 0; ///< its place in settings, from 0
+    std::uint16_t marker = 0; ///< 1 where the output follows triggers, not pulses
 };
 
 struct GapDetail {
@@ -256,6 +268,12 @@ struct SiteDetail {
     std::uint16_t channel; ///< in the stream
 };
 
+struct DeviceDetail {
+    std::uint16_t output;      ///< its place in settings, from 0
+    std::uint16_t marker;      ///< 1 where the output follows triggers, not pulses
+    std::array<char, 32> name; ///< zero-terminated
+};
+
 struct CountDetail {
     std::uint64_t count;
 };
@@ -263,7 +281,7 @@ struct CountDetail {
 /// Trivially copyable, 64 bytes, no padding left unset by the factories below.
 struct Event {
     EventKind kind{};
-    std::uint8_t code = 0; ///< Rule, GapCause, ArmState, SiteState, LatencyPart or PacketCause, by kind
+    std::uint8_t code = 0; ///< Rule, GapCause, ArmState, SiteState, DeviceState, LatencyPart or PacketCause, by kind
     std::uint16_t reserved = 0;
     std::uint32_t sequence = 0; ///< set by the journal: counts the session's events from 0
     SampleIndex sample;         ///< where in the stream
@@ -314,6 +332,7 @@ class EventSink {
 [[nodiscard]] std::string_view name_of(SiteState state) noexcept;
 [[nodiscard]] std::string_view name_of(StateCause cause) noexcept;
 [[nodiscard]] std::string_view name_of(ChangeSource source) noexcept;
+[[nodiscard]] std::string_view name_of(DeviceState state) noexcept;
 [[nodiscard]] std::string_view name_of(LatencyPart part) noexcept;
 [[nodiscard]] std::string_view name_of(PacketCause cause) noexcept;
 

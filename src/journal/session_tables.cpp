@@ -5,6 +5,9 @@
 #include <fmt/format.h>
 #include <nlohmann/json.hpp>
 
+#include <algorithm>
+#include <cstring>
+
 namespace millpond {
 namespace {
 
@@ -86,6 +89,12 @@ TableEvent row_of(const Event& event, Hertz rate) {
         row.extra["cause"] = name_of(by_of(epoch).source);
         break;
     }
+    case EventKind::device: {
+        const auto device = event.as<DeviceDetail>();
+        row.extra["cause"] = name_of(static_cast<DeviceState>(event.code));
+        row.extra["text"] = std::string(device.name.data(), ::strnlen(device.name.data(), device.name.size()));
+        break;
+    }
     case EventKind::gap:
         row.duration_s = static_cast<double>(event.as<GapDetail>().frames) / rate.value;
         row.extra["cause"] = name_of(static_cast<GapCause>(event.code));
@@ -116,11 +125,13 @@ nlohmann::json dictionary() {
     };
     nlohmann::json json{
         {"onset", column("Place in the stream, from the session's first sample", "s")},
-        {"duration", column("Pulse: order to rise until order to fall; gap: frames missing; else 0", "s")},
+        {"duration", column("Pulse: order to rise until order to fall, by the first output that follows pulses; gap: "
+                            "frames missing; else 0",
+                            "s")},
         {"sample", column("Place in the stream, counted in frames from 0; missing frames are counted too")},
         {"rule", column("The one rule that refused a withheld detection or an omitted moment")},
         {"cause", column("Why frames are missing; site: flat or huge where it is left out, alive where it is back; "
-                         "epoch: what began it")},
+                         "epoch: what began it; device: ready, lost or back")},
         {"number", column("Count of the session's triggers, from 1; of origin schedule: place in the schedule; trial: "
                           "of the assignment")},
         {"origin", column("Why there is a moment for a pulse: trigger (at once), delay (a while later), schedule")},
@@ -136,7 +147,7 @@ nlohmann::json dictionary() {
         {"wake_us", column("Packet arrived to loop begins on it; n/a: not measured", "us")},
         {"compute_us", column("Loop begins to decision made; n/a: not measured", "us")},
         {"output_us", column("Decision made to write returned; n/a: not measured", "us")},
-        {"text", column("The operator's mark; an epoch's name")}};
+        {"text", column("The operator's mark; an epoch's name; device: the output's name")}};
     json["trial_type"] = column("What happened");
     json["trial_type"]["Levels"] = {
         {"detection", "The detector crossed"},
@@ -150,8 +161,20 @@ nlohmann::json dictionary() {
         {"gap", "Frames are missing from here"},
         {"site", "A channel is left out of the evidence from here, or is back"},
         {"epoch", "An epoch of the session's plan begins"},
+        {"device", "An output stands ready, was lost or is back"},
         {"note", "The operator's mark"}};
     return json;
+}
+
+/// Several outputs may end a pulse, each in its own time: the first in settings stands for all.
+std::uint16_t first_pulse_output(std::span<const Event> events) {
+    std::uint16_t first = UINT16_MAX;
+    for (const auto& event : events) {
+        if (event.kind == EventKind::pulse_end && event.as<PulseEndDetail>().marker == 0) {
+            first = std::min(first, event.as<PulseEndDetail>().output);
+        }
+    }
+    return first;
 }
 
 } // namespace
@@ -168,13 +191,17 @@ std::vector<TableEvent> session_table(std::span<const Event> events, Hertz rate,
     std::vector<TableEvent> rows;
     constexpr auto none = static_cast<std::size_t>(-1);
     auto pulse = none; // the row that waits for its end
+    const auto first_output = first_pulse_output(events);
     for (const auto& event : events) {
         if (blinded && tells_of_condition(event.kind)) {
             continue;
         }
         if (event.kind == EventKind::pulse_end && pulse != none) {
-            rows[pulse].duration_s = static_cast<double>(event.as<PulseEndDetail>().width_ns) / 1e9;
-            pulse = none;
+            const auto end = event.as<PulseEndDetail>();
+            if (end.marker == 0 && end.output == first_output) {
+                rows[pulse].duration_s = static_cast<double>(end.width_ns) / 1e9;
+                pulse = none;
+            }
             continue;
         }
         auto row = row_of(event, rate);

@@ -31,7 +31,7 @@ void LiveLoop::run() noexcept {
     }
     engine_.finish();
     engine_.set_state(ArmState::not_armed, StateCause::session_end);
-    line_.fall_now();
+    lines_.fall_now();
     journal_counts();
     auto running = LoopEnd::running;
     end_.compare_exchange_strong(running, LoopEnd::stopped, std::memory_order_release);
@@ -62,7 +62,7 @@ void LiveLoop::on_frames(const Arrival& arrival, Nanos began) noexcept {
     const auto before = engine_.arbiter().state();
     engine_.process(arrival.block, arrival.gap_cause);
     if (engine_.arbiter().state() == ArmState::faulted && before != ArmState::faulted) {
-        line_.fall_now(); // a limit was passed
+        lines_.fall_now(); // a limit was passed
     }
     const std::int64_t worked_ns = (monotonic_now() - began).count();
     // Stored after the pulse: copying the block must not make it late.
@@ -75,6 +75,7 @@ void LiveLoop::on_frames(const Arrival& arrival, Nanos began) noexcept {
     if (output_failed_) {
         output_failed_ = false;
         engine_.set_state(ArmState::faulted, StateCause::output_failed);
+        lines_.fall_now();
     }
 }
 
@@ -83,11 +84,11 @@ void LiveLoop::fire(const Event& trigger) noexcept {
         return; // between the stop and the place where it is journaled
     }
     const Nanos decided = monotonic_now();
-    if (!line_.rise(trigger.sample)) {
+    if (!lines_.rise(Follows::pulse, trigger.sample)) {
         output_failed_ = true;
     }
     if (stop_.stopped()) {
-        line_.fall_now(); // it came while the line was being raised
+        lines_.fall_now(); // it came while the line was being raised
     }
     const Nanos written = monotonic_now();
     const double frames_after =
@@ -101,6 +102,12 @@ void LiveLoop::fire(const Event& trigger) noexcept {
     journal_.take(Event::make(EventKind::pulse, 0, trigger.sample, detail));
 }
 
+void LiveLoop::mark(const Event& trigger) noexcept {
+    if (!lines_.rise(Follows::trigger, trigger.sample)) {
+        output_failed_ = true;
+    }
+}
+
 void LiveLoop::take_commands() noexcept {
     for (Command command; commands_.pop(command);) {
         obey(command);
@@ -111,7 +118,7 @@ void LiveLoop::obey(const Command& command) noexcept {
     switch (command.kind) {
     case CommandKind::arm:
         if (!stop_.stopped()) {
-            line_.mended();
+            lines_.mended();
             engine_.set_state(ArmState::armed, StateCause::command, command.by);
         }
         break;
@@ -120,11 +127,11 @@ void LiveLoop::obey(const Command& command) noexcept {
         if (engine_.arbiter().state() != ArmState::faulted) {
             engine_.set_state(ArmState::not_armed, StateCause::command, command.by);
         }
-        line_.fall_now();
+        lines_.fall_now();
         break;
     case CommandKind::clear:
         if (engine_.arbiter().state() == ArmState::faulted && !stop_.stopped()) {
-            line_.mended();
+            lines_.mended();
             engine_.set_state(ArmState::not_armed, StateCause::command, command.by);
         }
         break;
@@ -153,7 +160,7 @@ void LiveLoop::obey(const Command& command) noexcept {
 void LiveLoop::take_stop() noexcept {
     if (const auto by = stop_.take()) {
         engine_.set_state(ArmState::faulted, StateCause::emergency_stop, *by);
-        line_.fall_now();
+        lines_.fall_now();
     }
 }
 
@@ -185,10 +192,10 @@ void LiveLoop::look_for_trouble() noexcept {
     }
     if (journal_.failed()) {
         engine_.set_state(ArmState::faulted, StateCause::journal_failed);
-        line_.fall_now();
-    } else if (line_.failed()) {
-        engine_.set_state(ArmState::faulted, StateCause::output_failed);
-        line_.fall_now();
+        lines_.fall_now();
+    } else if (const auto trouble = lines_.trouble()) {
+        engine_.set_state(ArmState::faulted, *trouble);
+        lines_.fall_now();
     }
 }
 
@@ -200,7 +207,7 @@ void LiveLoop::on_silence() noexcept {
     // Also where somebody arms while nothing comes in.
     if (engine_.arbiter().state() == ArmState::armed) {
         engine_.set_state(ArmState::not_armed, StateCause::stale_stream);
-        line_.fall_now();
+        lines_.fall_now();
     }
     if (!stale_) {
         stale_ = true;

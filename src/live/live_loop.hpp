@@ -8,7 +8,7 @@
 #include "engine/engine.hpp"
 #include "intake/sample_source.hpp"
 #include "live/emergency_stop.hpp"
-#include "outputs/pulse_line.hpp"
+#include "outputs/pulse_lines.hpp"
 
 #include <array>
 #include <atomic>
@@ -46,13 +46,13 @@ class LiveLoop : private PulsePort {
   public:
     /// Everything outlives the loop. The engine is made by `make_engine(sink, port)`, since it reports to the loop.
     template <class MakeEngine>
-    LiveLoop(LiveLoopSettings settings, SampleSource& source, PulseLine& line, LoopJournal& journal,
+    LiveLoop(LiveLoopSettings settings, SampleSource& source, PulseLines& lines, LoopJournal& journal,
              SpscRing<Command>& commands, MakeEngine&& make_engine)
-        : settings_(settings), source_(source), line_(line), journal_(journal), commands_(commands),
+        : settings_(settings), source_(source), lines_(lines), journal_(journal), commands_(commands),
           speed_(settings.speed_gate),
           engine_(make_engine(static_cast<EventSink&>(journal), static_cast<PulsePort&>(*this))) {}
 
-    /// Runs until stopped or the source ends, then disarms and lets the line fall. Thread: loop.
+    /// Runs until stopped or the source ends, then disarms and lets the lines fall. Thread: loop.
     void run() noexcept;
 
     /// Thread: any, and signal handlers.
@@ -62,7 +62,7 @@ class LiveLoop : private PulsePort {
     /// Orders the line low at once, by the calling thread; the session is faulted. Thread: control.
     void emergency_stop(const ChangedBy& by) noexcept {
         stop_.stop(by);
-        line_.fall_now();
+        lines_.fall_now();
     }
     [[nodiscard]] bool emergency_stopped() const noexcept { return stop_.stopped(); }
     /// The emergency is over; a command `clear` to the loop follows. Thread: control.
@@ -73,6 +73,7 @@ class LiveLoop : private PulsePort {
 
   private:
     void fire(const Event& trigger) noexcept override;
+    void mark(const Event& trigger) noexcept override;
     void take_commands() noexcept;
     void obey(const Command& command) noexcept;
     void look_for_trouble() noexcept;
@@ -86,7 +87,7 @@ class LiveLoop : private PulsePort {
 
     LiveLoopSettings settings_;
     SampleSource& source_;
-    PulseLine& line_;
+    PulseLines& lines_;
     LoopJournal& journal_;
     SpscRing<Command>& commands_;
     EmergencyStop stop_;

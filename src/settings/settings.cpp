@@ -68,6 +68,47 @@ void check_floor_limits(const FloorLimitSettings& floor, const std::string& file
     }
 }
 
+void check_output(const OutputSettings& output, double lockout_ms, const std::string& file) {
+    const auto where = [&](std::string_view key) { return file + ": " + output.where(key); };
+    if (output.name.empty() || output.name.size() > 31) {
+        throw Refusal(where("name"), "'" + output.name + "'", "1 to 31 characters");
+    }
+    if (output.is_device() && output.device.empty()) {
+        throw Refusal(where("device"), "nothing",
+                      "the path of a device (kind: " + std::string(word_for<OutputKind>(output_kinds, output.kind)) +
+                          ")");
+    }
+    if (output.longest_high() <= output.width_ms) {
+        throw Refusal(where("longest_high_ms"), shortest(output.longest_high_ms),
+                      "more than width_ms, " + shortest(output.width_ms));
+    }
+    // A trigger while the line is still busy could not be played; the lock-out makes sure that there is none.
+    if (lockout_ms <= output.train_ms()) {
+        throw Refusal(file + ": arbiter.lockout_ms", shortest(lockout_ms),
+                      "more than a whole pulse or train of outputs." + output.name + " lasts, " +
+                          shortest(output.train_ms()));
+    }
+}
+
+void check_outputs(const Settings& settings, const std::string& file) {
+    const auto& outputs = settings.outputs;
+    if (outputs.size() > most_outputs) {
+        throw Refusal(file + ": outputs", std::to_string(outputs.size()), "at most " + std::to_string(most_outputs));
+    }
+    if (std::none_of(outputs.begin(), outputs.end(),
+                     [](const auto& output) { return output.follows == Follows::pulse; })) {
+        throw Refusal(file + ": outputs", "none with follows: pulse",
+                      "at least one; kind: silent where pulses shall go nowhere");
+    }
+    for (const auto& output : outputs) {
+        check_output(output, settings.arbiter.lockout_ms, file);
+        if (std::count_if(outputs.begin(), outputs.end(),
+                          [&](const auto& other) { return other.name == output.name; }) > 1) {
+            throw Refusal(file + ": " + output.where("name"), "twice", "each name once");
+        }
+    }
+}
+
 void check_conditions(const ArbiterSettings& arbiter, const std::string& file) {
     if (plays_schedule(arbiter.condition) && arbiter.schedule_file.empty()) {
         throw Refusal(
@@ -110,13 +151,7 @@ void check_settings(const Settings& settings, const std::string& file) {
         throw Refusal(file + ": detector.filter.low_hz", shortest(settings.detector.filter.low_hz),
                       "less than detector.filter.high_hz, " + shortest(settings.detector.filter.high_hz));
     }
-    const double train_ms =
-        (settings.output.train_pulses - 1) * settings.output.train_period_ms + settings.output.width_ms;
-    // A trigger while the line is still busy could not be played; the lock-out makes sure that there is none.
-    if (settings.arbiter.lockout_ms <= train_ms) {
-        throw Refusal(file + ": arbiter.lockout_ms", shortest(settings.arbiter.lockout_ms),
-                      "more than a whole pulse or train lasts, " + shortest(train_ms));
-    }
+    check_outputs(settings, file);
     check_conditions(settings.arbiter, file);
     check_assignment(settings, file);
     check_gates(settings.arbiter.gates, file);
@@ -146,6 +181,16 @@ Settings load_settings(const std::filesystem::path& file) {
     }
     check_settings(settings, file.string());
     return settings;
+}
+
+const OutputSettings& pulse_output(const Settings& settings) {
+    const OutputSettings* longest = nullptr;
+    for (const auto& output : settings.outputs) {
+        if (output.follows == Follows::pulse && (longest == nullptr || output.train_ms() > longest->train_ms())) {
+            longest = &output;
+        }
+    }
+    return *longest;
 }
 
 std::string settings_to_yaml(const Settings& settings) {

@@ -16,6 +16,7 @@
 
 #include <filesystem>
 #include <string>
+#include <vector>
 
 namespace millpond {
 
@@ -26,7 +27,7 @@ struct Settings {
     ArbiterSettings arbiter;
     AssignmentSettings assignment;
     ScheduleSettings schedule;
-    OutputSettings output;
+    std::vector<OutputSettings> outputs{OutputSettings{}}; ///< never empty
     StimulusSettings stimulus;
     ControlSettings control;
     SessionSettings session;
@@ -45,7 +46,7 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
     visit.group("assignment", settings.assignment, "which condition the session has, where a list says so");
     visit.group("schedule", settings.schedule,
                 "control schedule that `sham rate-matched --settings` makes; a session reads it from the file");
-    visit.group("output", settings.output, "where pulses go");
+    visit.list("outputs", settings.outputs, "where pulses go: up to 8 lines");
     visit.group("stimulus", settings.stimulus,
                 "what the stimulator gives for one pulse: reckoned with, never permitted");
     visit.group("control", settings.control, "where commands come from");
@@ -59,6 +60,9 @@ template <class Visitor> void describe(Visitor& visit, Settings& settings) {
 
 /// What load_settings checks beyond single keys, for settings that were changed since. `file` names them.
 void check_settings(const Settings& settings, const std::string& file);
+
+/// Of the outputs that follow pulses, the one whose pulses last longest; there is always one.
+[[nodiscard]] const OutputSettings& pulse_output(const Settings& settings);
 
 /// All settings as YAML that load_settings reads back to the same values.
 [[nodiscard]] std::string settings_to_yaml(const Settings& settings);

@@ -1,6 +1,5 @@
 #include "base/clock.hpp"
 #include "live/live_loop.hpp"
-#include "outputs/silent_output.hpp"
 #include "support/allocation_guard.hpp"
 #include "support/signals.hpp"
 
@@ -70,22 +69,30 @@ struct NoEnds : EventSink {
 };
 
 struct FailingOutput : Output {
-    std::atomic<bool> works{true};
-    bool set_line(bool /*high*/) noexcept override { return works; }
+    std::atomic<bool> works{true}, high{false};
+    std::atomic<int> rises{0};
+    bool set_line(bool to) noexcept override {
+        rises += to ? 1 : 0;
+        high = to && works;
+        return works;
+    }
 };
 
 /// A whole loop without a device: settle 2 s, a burst a second from 5 s on.
 struct Rig {
     ScriptedSource source{bursts(), 2};
-    FailingOutput output;
+    FailingOutput output, marker;
     NoEnds ends;
-    PulseLine line{output, {1ms, 1, 10ms}, ends};
+    LineBoard board;
+    PulseLines lines{std::vector<PulseLinePlan>{{&output, {1ms, 1, 10ms}, Follows::pulse},
+                                                {&marker, {1ms, 1, 10ms}, Follows::trigger}},
+                     board, ends};
     KeptJournal journal;
     SpscRing<Command> commands{64};
     LiveLoop loop;
 
     explicit Rig(LiveLoopSettings settings, ArbiterSettings arbiter = {})
-        : loop(settings, source, line, journal, commands, make_engine(std::move(arbiter))) {}
+        : loop(settings, source, lines, journal, commands, make_engine(std::move(arbiter))) {}
 
     static std::function<Engine(EventSink&, PulsePort&)> make_engine(ArbiterSettings arbiter = {}) {
         return [arbiter = std::move(arbiter)](EventSink& sink, PulsePort& port) {
@@ -127,6 +134,56 @@ TEST(LiveLoop, PulsesOnceForEachBurstAndStoresEveryFrame) {
         EXPECT_LE(detail.packing_ns, 9 * 800'000); // ten frames of 0.8 ms a packet
         EXPECT_GE(detail.compute_ns, 0);
     }
+}
+
+TEST(LiveLoop, MarkerLinesRiseAtEveryTriggerPulseLinesAtEveryPulse) {
+    Rig rig(armed());
+    rig.loop.run();
+    EXPECT_EQ(rig.output.rises, 15);
+    EXPECT_EQ(rig.marker.rises, 15);
+    EXPECT_FALSE(rig.output.high);
+    EXPECT_FALSE(rig.marker.high);
+}
+
+/// Runs with trouble made by `make` from the eighth second on and armed again in the twelfth; gives the state's causes
+/// and the seconds in which there were pulses.
+std::pair<std::vector<std::string>, std::vector<std::uint64_t>> with_trouble(const std::function<void(Rig&)>& make) {
+    Rig rig(armed());
+    rig.source.before = [&](std::size_t frame) {
+        if (frame == 8 * 1250) {
+            make(rig);
+        } else if (frame == 12 * 1250) {
+            rig.commands.push(Command::make(CommandKind::arm));
+        }
+        return Received::frames;
+    };
+    rig.loop.run();
+    std::pair<std::vector<std::string>, std::vector<std::uint64_t>> found;
+    for (const auto& state : rig.journal.of(EventKind::state)) {
+        found.first.emplace_back(name_of(static_cast<StateCause>(state.as<StateDetail>().cause)));
+    }
+    for (const auto& pulse : rig.journal.of(EventKind::pulse)) {
+        found.second.push_back(pulse.sample.value / 1250);
+    }
+    return found;
+}
+
+TEST(LiveLoop, ALineThatTheWatchdogLoweredFaultsUntilSomebodyArms) {
+    const auto [causes, pulses] = with_trouble([](Rig& rig) { rig.board.lowered(0, 1); });
+    EXPECT_EQ(causes, (std::vector<std::string>{"start", "line held", "command", "session end"}));
+    EXPECT_EQ(pulses, (std::vector<std::uint64_t>{5, 6, 7, 12, 13, 14, 15, 16, 17, 18, 19}));
+}
+
+TEST(LiveLoop, ALostWatchdogFaultsAndArmingWithoutAnotherFaultsAgain) {
+    const auto [causes, pulses] = with_trouble([](Rig& rig) { rig.lines.set_watched(false); });
+    EXPECT_EQ(causes, (std::vector<std::string>{"start", "watchdog lost", "command", "watchdog lost", "session end"}));
+    EXPECT_EQ(pulses, (std::vector<std::uint64_t>{5, 6, 7}));
+}
+
+TEST(LiveLoop, ALostDeviceFaultsBeforeAnyPulseIsOrdered) {
+    const auto [causes, pulses] = with_trouble([](Rig& rig) { rig.lines.set_lost(1, true); });
+    EXPECT_EQ(causes, (std::vector<std::string>{"start", "output failed", "command", "output failed", "session end"}));
+    EXPECT_EQ(pulses, (std::vector<std::uint64_t>{5, 6, 7}));
 }
 
 TEST(LiveLoop, StartsNotArmedUnlessToldAndArmsByCommand) {
