@@ -177,8 +177,9 @@ std::vector<double> ours_us(const Rig& rig, const std::vector<float>& data) {
     OscOutput output(to);
     ArbiterSettings arbiter;
     arbiter.lockout_ms = 5.0;
-    arbiter.max_pulses_per_second = 1000;
-    arbiter.max_pulses_per_session = 1000000;
+    arbiter.limits.max_pulses_per_second = 1000;
+    arbiter.limits.max_pulses_per_session = 1000000;
+    arbiter.limits = for_sweeps(arbiter.limits);
     const Hertz rate{rig.rate_hz};
     const auto channels = ripple_channels(rig.channels);
     SessionSettings session;

@@ -1,11 +1,14 @@
 // `millpond audit SESSION`: what happened in a session, and whether the engine decides the same again.
 #include "app/commands.hpp"
 #include "app/progress.hpp"
+#include "app/session_conditions.hpp"
 #include "app/truth.hpp"
 #include "audit/audit.hpp"
 #include "audit/audit_text.hpp"
+#include "base/refusal.hpp"
 #include "journal/session_reader.hpp"
 #include "settings/settings.hpp"
+#include "sham/schedule.hpp"
 
 #include <CLI/CLI.hpp>
 #include <fmt/format.h>
@@ -51,6 +54,20 @@ Ripples labels_for(const AuditOptions& options, const SessionReader& session) {
     return ripples;
 }
 
+// The places that the session did not come to stand in the schedule's file alone. It may be gone by now.
+void take_schedule(AuditInput& input, const SessionReader& session) {
+    const auto& file = input.settings.arbiter.schedule_file;
+    if (file.empty()) {
+        return;
+    }
+    try {
+        input.schedule = read_schedule(file, session.rate());
+    } catch (const Refusal& refusal) {
+        input.about_schedule =
+            std::string("its file cannot be read, so places not reached are not known: ") + refusal.what();
+    }
+}
+
 AuditResult audit_with(const AuditOptions& options) {
     const SessionReader session(options.session); // refuses what is no session before anything else
     const auto settings = load_settings(session.settings_file());
@@ -58,6 +75,8 @@ AuditResult audit_with(const AuditOptions& options) {
     input.session = options.session;
     input.settings = {settings.detector, settings.arbiter};
     input.settings_name = session.settings_file().string();
+    input.assignment = known_assignment(session);
+    take_schedule(input, session);
     if (!options.labels.empty()) {
         input.labels = labels_for(options, session);
         input.labels_name = options.labels;

@@ -1,6 +1,7 @@
 // millpond preflight: is this computer fit for a session with these settings? Nothing is armed and no pulse is ordered.
 #include "app/commands.hpp"
 #include "app/from_settings.hpp"
+#include "app/limits_findings.hpp"
 #include "app/wiring.hpp"
 #include "base/refusal.hpp"
 #include "journal/record_file.hpp"
@@ -63,7 +64,8 @@ std::string try_control(const Settings& settings) {
     }
     boost::asio::io_context context;
     CommandRing commands(4);
-    const CommandListener listener(context, settings.control, {}, commands, [](const std::string&) {});
+    const CommandListener listener(context, settings.control, commands_for(settings, false), commands, {},
+                                   [](const std::string&) {});
     return fmt::format("{}:{} is free", settings.control.listen_address, settings.control.port);
 }
 
@@ -141,6 +143,8 @@ std::vector<Finding> findings_for(const std::string& file) {
         tried(stream.source == SourceKind::daq ? "stream" : "stream port", [&] { return try_stream(stream); }));
     findings.push_back(tried("command port", [&] { return try_control(settings); }));
     add(check_outputs(settings));
+    add(check_limits(settings));
+    add(check_stimulus(settings.stimulus));
     add(check_rights(settings.realtime));
     findings.push_back(check_throttling(settings.realtime));
     findings.push_back(check_wake(settings.realtime, wake_seconds));

@@ -1,240 +1,232 @@
+// millpond sham: control schedules, made and checked.
 #include "app/commands.hpp"
+#include "app/sham_options.hpp"
 #include "app/truth.hpp"
 #include "base/refusal.hpp"
-#include "journal/session_reader.hpp"
-#include "recording/events_table.hpp"
-#include "referee/scoring.hpp"
-#include "sham/schedule.hpp"
+#include "sham/rate_matched.hpp"
+#include "sham/yoked.hpp"
 
 #include <CLI/CLI.hpp>
 #include <fmt/format.h>
 
-#include <algorithm>
 #include <cmath>
-#include <filesystem>
+#include <cstdio>
 #include <memory>
 
 namespace millpond {
 namespace {
 
-struct CommonOptions {
-    double sampling_hz = 0.0; ///< 0: not said
-    ScheduleLimits limits;
-    std::filesystem::path out;
-    bool overwrite = false;
+// A minimum interval below the lock-out would be refused place by place.
+double min_interval_ms(std::optional<double> asked, const ScheduleLimits& limits) {
+    if (asked && *asked < limits.lockout_ms) {
+        throw Refusal("--min-interval-ms", fmt::format("{}", *asked),
+                      fmt::format("at least the lock-out, {}: nearer places would have no pulse", limits.lockout_ms));
+    }
+    return asked.value_or(limits.lockout_ms);
+}
+
+struct MakingOptions : ShamOptions {
+    std::optional<double> start_s, duration_s, min_interval;
+    std::optional<std::uint64_t> seed;
 };
 
-void add_limits(CLI::App& command, CommonOptions& options, const std::string& known_without = {}) {
-    auto* sampling = command
-                         .add_option("--sampling-hz", options.sampling_hz,
-                                     "frames a second of the stream that will play the schedule" + known_without)
-                         ->check(CLI::Range(1.0, 1e6));
-    sampling->required(known_without.empty());
+void add_making(CLI::App& command, MakingOptions& options) {
     command
-        .add_option("--lockout-ms", options.limits.lockout_ms,
-                    "lock-out of the session that will play it; a schedule that breaks it is refused")
-        ->check(CLI::Range(0.0, 60000.0))
-        ->capture_default_str();
+        .add_option("--start-s", options.start_s,
+                    "where the schedule begins, from the first sample of the stream that plays it (else 0);\n"
+                    "places before the floor has settled or before you arm have no pulse")
+        ->check(CLI::Range(0.0, 1e6));
+    command.add_option("--seed", options.seed, "of the draws: the same seed, the same schedule (else 1)");
     command
-        .add_option("--max-pulses-per-second", options.limits.max_pulses_per_second,
-                    "likewise; places that would be too many within one second are put off")
-        ->check(CLI::Range(1U, 1000U))
-        ->capture_default_str();
+        .add_option("--min-interval-ms", options.min_interval,
+                    "shortest interval between two places, not below the lock-out (else the lock-out)")
+        ->check(CLI::Range(0.0, 60000.0));
+    options.add_limits(command);
+    options.add_out(command);
 }
 
-void add_making(CLI::App& command, CommonOptions& options, double& min_interval_ms, std::uint64_t& seed) {
-    add_limits(command, options, "; a session folder says it itself");
-    command
-        .add_option("--min-interval-ms", min_interval_ms,
-                    "shortest interval between two places; not below the lock-out")
-        ->check(CLI::Range(0.0, 60000.0))
-        ->capture_default_str();
-    command.add_option("--seed", seed, "seed of the random numbers (xoshiro256++): the same seed, the same schedule")
-        ->capture_default_str();
-    command.add_option("--out", options.out, "schedule to write: an events table with trial_type scheduled")
-        ->required();
-    command.add_flag("--overwrite", options.overwrite, "replace --out where it exists");
+std::string line(const char* name, const std::string& said) {
+    return fmt::format("{:<11} {}\n", name, said);
 }
 
-Hertz rate_of(const CommonOptions& options) {
-    if (options.sampling_hz == 0.0) {
-        throw Refusal("--sampling-hz", "nothing", "the rate of the stream that will play the schedule");
-    }
-    return Hertz{options.sampling_hz};
+void print(const std::string& text) {
+    std::fwrite(text.data(), 1, text.size(), stdout);
 }
 
-Schedule triggers_of_session(const std::filesystem::path& folder, CommonOptions& options) {
-    const SessionReader session(folder);
-    if (options.sampling_hz != 0.0 && options.sampling_hz != session.rate().value) {
-        throw Refusal("--sampling-hz", fmt::format("{}", options.sampling_hz),
-                      fmt::format("the rate of {}, {}, or nothing", folder.string(), session.rate().value));
-    }
-    options.sampling_hz = session.rate().value;
-    Schedule triggers;
-    for (const auto& event : session.events()) {
-        if (event.kind == EventKind::trigger) {
-            triggers.push_back(event.sample);
-        }
-    }
-    return triggers;
+struct YokedOptions : MakingOptions {
+    std::filesystem::path session;
+    std::string align = "first";
+    double least_delay_ms = 0.0, most_delay_ms = 0.0;
+};
+
+void make_yoked(YokedOptions& options) {
+    options.take_source(options.session);
+    const auto& source = *options.source();
+    const auto rate = options.rate();
+    YokedPlan plan;
+    plan.moment = moment_of(source, options.align);
+    plan.start_s = options.start_s.value_or(0.0);
+    plan.duration_s = options.duration_s.value_or(0.0);
+    plan.least_delay_ms = options.least_delay_ms;
+    plan.most_delay_ms = options.most_delay_ms;
+    plan.seed = options.seed.value_or(1);
+    plan.min_interval_ms = min_interval_ms(options.min_interval, options.limits());
+    plan.max_pulses_per_second = options.limits().max_pulses_per_second;
+    const auto made = yoked_schedule(source.places, plan, rate);
+    const SampleIndex start{static_cast<std::uint64_t>(std::llround(plan.start_s * rate.value))};
+    const auto written = options.write(made);
+    print(line("source", source.told()) +
+          line("aligned",
+               fmt::format("{} ({:.3f} s of it) at {:.3f} s; left out: {} places before it, {} after the "
+                           "duration",
+                           options.align, seconds_at(plan.moment, rate), plan.start_s, made.before, made.after)) +
+          options.report(made.places, plan.moment, start) + written);
 }
 
-Schedule triggers_of_table(const std::filesystem::path& table, Hertz rate) {
-    Schedule triggers;
-    for (const auto& event : read_events_table(table, rate.value)) {
-        if (event.trial_type != "trigger") {
-            continue;
-        }
-        if (event.sample < 0 || std::abs(static_cast<double>(event.sample) - event.onset_s * rate.value) > 1.0) {
-            throw Refusal(table.string() + ": sample", fmt::format("{} for {} s", event.sample, event.onset_s),
-                          fmt::format("the events of a stream of {} Hz (--sampling-hz)", rate.value));
-        }
-        triggers.push_back(SampleIndex{static_cast<std::uint64_t>(event.sample)});
-    }
-    return triggers;
-}
-
-/// A session folder sets the sampling rate too.
-Schedule triggers_of(const std::filesystem::path& events, CommonOptions& options) {
-    auto triggers = std::filesystem::is_directory(events) ? triggers_of_session(events, options)
-                                                          : triggers_of_table(events, rate_of(options));
-    std::sort(triggers.begin(), triggers.end());
-    if (triggers.empty()) {
-        throw Refusal(events.string(), "no trigger", "the events of a session or dry run with triggers");
-    }
-    return triggers;
-}
-
-void print_intervals(const Schedule& schedule, Hertz rate) {
-    std::vector<double> intervals;
-    for (std::size_t i = 1; i < schedule.size(); ++i) {
-        intervals.push_back(static_cast<double>(schedule[i] - schedule[i - 1]) / rate.value);
-    }
-    fmt::print("places      {}\n", schedule.size());
-    if (intervals.empty()) {
-        return;
-    }
-    const auto told = distribution(std::move(intervals));
-    fmt::print("rate        {:.4f} /s from first to last\n", trigger_rate_per_s(schedule, rate, "schedule"));
-    fmt::print("intervals   median {:.3f} s, least {:.3f} s, most {:.3f} s\n", told.median, told.least, told.most);
-}
-
-void check_min_interval(double min_interval_ms, const CommonOptions& options) {
-    if (min_interval_ms < options.limits.lockout_ms) {
-        throw Refusal(
-            "--min-interval-ms", fmt::format("{}", min_interval_ms),
-            fmt::format("at least --lockout-ms, {}: nearer places would be withheld", options.limits.lockout_ms));
-    }
-}
-
-void finish(const MadeSchedule& made, const CommonOptions& options) {
-    const Hertz rate{options.sampling_hz};
-    if (made.places.empty()) {
-        throw Refusal(options.out.string(), "a schedule without a single place", "a longer duration or a higher rate");
-    }
-    check_schedule(made.places, options.limits, rate, options.out.string());
-    if (!options.overwrite && std::filesystem::exists(options.out)) {
-        throw Refusal(options.out.string(), "a file that exists", "a new name, or --overwrite");
-    }
-    write_schedule(options.out, made.places, rate);
-    print_intervals(made.places, rate);
-    fmt::print("put off     {} places, by {:.1f} ms at most\n", made.put_off, made.longest_put_off_ms);
-    fmt::print("schedule    {}\n", options.out.string());
-}
-
-void add_delayed(CLI::App& sham) {
-    struct Options : CommonOptions {
-        std::filesystem::path events;
-        DelayedPlan plan;
-    };
-    auto options = std::make_shared<Options>();
+void add_yoked(CLI::App& sham) {
+    auto options = std::make_shared<YokedOptions>();
     auto& command = *sham.add_subcommand(
-        "delayed",
-        "put each trigger of a session or dry run later by a fixed or random delay\n"
-        "Places that come too near to those before are put off, never dropped: the number of pulses stays matched");
-    command.add_option("EVENTS", options->events, "session folder, or events.tsv of a session or dry run")->required();
+        "yoked", "take the places from another session: the pulses that it gave (its orders), else its triggers\n"
+                 "To the sample, unless a delay is asked for: then places that come too near to each other are put\n"
+                 "off, never dropped");
+    command.add_option("SOURCE", options->session, "session folder, or events.tsv of a session or dry run")->required();
     command
-        .add_option("--delay-least-ms", options->plan.least_ms, "shortest delay; equal to the longest: a fixed delay")
+        .add_option("--align", options->align,
+                    "moment of the source that --start-s stands for: first (its first sample), armed (when it was\n"
+                    "first armed), or the name of an epoch of its plan")
+        ->capture_default_str();
+    command
+        .add_option("--duration-s", options->duration_s,
+                    "cut the schedule so long after that moment (else as long as the source)")
+        ->check(CLI::Range(1e-3, 1e6));
+    command.add_option("--delay-least-ms", options->least_delay_ms, "shortest delay of each place")
         ->check(CLI::Range(0.0, 60000.0))
         ->capture_default_str();
-    command.add_option("--delay-most-ms", options->plan.most_ms, "longest delay; between them all are equally likely")
+    command
+        .add_option("--delay-most-ms", options->most_delay_ms,
+                    "longest; between the two all are equally likely, equal: a fixed delay")
         ->check(CLI::Range(0.0, 60000.0))
         ->capture_default_str();
-    add_making(command, *options, options->plan.min_interval_ms, options->plan.seed);
-    add_example(command, "build/millpond sham delayed dry/events.tsv --sampling-hz 1250 --delay-least-ms 150 "
-                         "--delay-most-ms 250 --out delayed.tsv");
-    command.callback([options] {
-        check_min_interval(options->plan.min_interval_ms, *options);
-        options->plan.max_pulses_per_second = options->limits.max_pulses_per_second;
-        const auto triggers = triggers_of(options->events, *options);
-        fmt::print("triggers    {}\n", triggers.size());
-        finish(delayed_schedule(triggers, options->plan, rate_of(*options)), *options);
-    });
+    add_making(command, *options);
+    options->add_ripples(command, "of the source");
+    add_example(command,
+                "build/millpond sham yoked dry/events.tsv --sampling-hz 1250 --duration-s 600 --out yoked.tsv");
+    command.callback([options] { make_yoked(*options); });
+}
+
+struct RateMatchedOptions : MakingOptions {
+    std::filesystem::path like, keep_away_from;
+    std::optional<double> rate_per_s;
+    double keep_away_ms = 0.0;
+};
+
+// What is not given, the settings say, where there are some.
+RateMatchedPlan plan_of(const RateMatchedOptions& options) {
+    RateMatchedPlan plan;
+    const auto* said = options.settings() ? &options.settings()->schedule : nullptr;
+    const auto from_settings = [&](double ScheduleSettings::*key) {
+        return said != nullptr ? std::optional(said->*key) : std::nullopt;
+    };
+    const auto& source = options.source();
+    const auto rate_per_s = options.rate_per_s ? options.rate_per_s
+                            : source ? std::optional(rate_per_s_of(source->places, source->rate, source->name))
+                                     : from_settings(&ScheduleSettings::rate_per_s);
+    const auto duration_s = options.duration_s ? options.duration_s : from_settings(&ScheduleSettings::duration_s);
+    if (!rate_per_s) {
+        throw Refusal("command line", "neither --rate-per-s nor --like nor --settings", "one of them");
+    }
+    if (!duration_s) {
+        throw Refusal("--duration-s", "nothing", "the length of the schedule, or --settings");
+    }
+    auto asked = options.min_interval;
+    if (!asked && said != nullptr && said->min_interval_ms > 0.0) {
+        asked = said->min_interval_ms;
+    }
+    plan.rate_per_s = *rate_per_s;
+    plan.duration_s = *duration_s;
+    plan.start_s = options.start_s.value_or(said != nullptr ? said->start_s : 0.0);
+    plan.seed = options.seed.value_or(said != nullptr ? said->seed : 1);
+    plan.min_interval_ms = min_interval_ms(asked, options.limits());
+    plan.max_pulses_per_second = options.limits().max_pulses_per_second;
+    plan.keep_away_ms = options.keep_away_ms;
+    return plan;
+}
+
+void make_rate_matched(RateMatchedOptions& options) {
+    if (!options.like.empty()) {
+        options.take_source(options.like);
+    }
+    auto plan = plan_of(options);
+    const auto rate = options.rate();
+    if (!options.keep_away_from.empty()) {
+        plan.keep_away_from = ripples_from_table(options.keep_away_from, rate, UINT64_MAX);
+        if (!options.has_ripples()) {
+            options.take_ripples(options.keep_away_from);
+        }
+    }
+    const auto made = rate_matched_schedule(plan, rate);
+    const auto written = options.write(made);
+    const auto& source = options.source();
+    print((source ? line("source", source->told()) : "") +
+          line("asked", fmt::format("{:.4f} /s for {} s from {} s on: {:.0f} places expected, no two nearer than {} ms",
+                                    plan.rate_per_s, plan.duration_s, plan.start_s, plan.rate_per_s * plan.duration_s,
+                                    plan.min_interval_ms)) +
+          options.report(made.places) + written);
 }
 
 void add_rate_matched(CLI::App& sham) {
-    struct Options : CommonOptions {
-        std::filesystem::path like, keep_away_from;
-        RateMatchedPlan plan;
-    };
-    auto options = std::make_shared<Options>();
+    auto options = std::make_shared<RateMatchedOptions>();
     auto& command = *sham.add_subcommand(
-        "rate-matched",
-        "put places at random with a minimum interval (shifted exponential law), at a rate given or taken from\n"
-        "the triggers of a session, from the first to the last of them");
-    auto* rate_option = command.add_option("--rate-per-s", options->plan.rate_per_s, "places a second, on average")
-                            ->check(CLI::Range(1e-6, 1000.0));
-    auto* like_option =
-        command.add_option("--like", options->like, "session folder or events.tsv whose triggers give the rate");
-    rate_option->excludes(like_option);
+        "rate-matched", "put places at random with a minimum interval (shifted exponential law), at a rate that is\n"
+                        "given, or that of another session from its first pulse to its last, or that of a settings "
+                        "file");
+    auto* rate = command
+                     .add_option("--rate-per-s", options->rate_per_s,
+                                 "places a second, on average (else schedule.rate_per_s of --settings)")
+                     ->check(CLI::Range(1e-6, 1000.0));
     command
-        .add_option("--duration-s", options->plan.duration_s, "length of the schedule from the stream's first frame")
-        ->required()
+        .add_option("--like", options->like,
+                    "session folder or events.tsv whose pulses (orders, else triggers) give the rate")
+        ->excludes(rate);
+    command
+        .add_option("--duration-s", options->duration_s,
+                    "length of the schedule, from --start-s on (else schedule.duration_s of --settings)")
         ->check(CLI::Range(1.0, 1e6));
     auto* away = command.add_option("--keep-away-from", options->keep_away_from,
                                     "events table: no place in its rows of trial_type ripple; only where the same\n"
-                                    "recording is played again");
-    command.add_option("--keep-away-ms", options->plan.keep_away_ms, "nor this long before and after them")
+                                    "recording is played again. Live, places wait (arbiter.hold)");
+    command.add_option("--keep-away-ms", options->keep_away_ms, "nor this long before and after them")
         ->check(CLI::Range(0.0, 60000.0))
         ->needs(away)
         ->capture_default_str();
-    add_making(command, *options, options->plan.min_interval_ms, options->plan.seed);
+    add_making(command, *options);
+    options->add_ripples(command, "of the stream that plays it, or of one like it");
     add_example(command, "build/millpond sham rate-matched --rate-per-s 0.6 --duration-s 3600 --sampling-hz 1250 "
                          "--out rate_matched.tsv");
-    command.callback([options, rate_option, like_option] {
-        check_min_interval(options->plan.min_interval_ms, *options);
-        if (rate_option->count() + like_option->count() == 0) {
-            throw Refusal("command line", "neither --rate-per-s nor --like", "one of the two");
-        }
-        if (like_option->count() > 0) {
-            const auto triggers = triggers_of(options->like, *options);
-            options->plan.rate_per_s = trigger_rate_per_s(triggers, rate_of(*options), options->like.string());
-            fmt::print("rate of     {}: {:.4f} /s\n", options->like.string(), options->plan.rate_per_s);
-        }
-        const Hertz rate = rate_of(*options);
-        if (!options->keep_away_from.empty()) {
-            options->plan.keep_away_from = ripples_from_table(options->keep_away_from, rate, UINT64_MAX);
-        }
-        options->plan.max_pulses_per_second = options->limits.max_pulses_per_second;
-        finish(rate_matched_schedule(options->plan, rate), *options);
-    });
+    command.callback([options] { make_rate_matched(*options); });
 }
 
 void add_check(CLI::App& sham) {
-    struct Options : CommonOptions {
-        std::filesystem::path schedule;
+    struct Options : ShamOptions {
+        std::filesystem::path schedule, session;
     };
     auto options = std::make_shared<Options>();
-    auto& command =
-        *sham.add_subcommand("check", "read a schedule as a session would and refuse one that breaks the limits");
+    auto& command = *sham.add_subcommand(
+        "check", "read a schedule as a session would, say what it amounts to, and refuse one that breaks the limits");
     command.add_option("SCHEDULE", options->schedule, "schedule to check")->required();
-    add_limits(command, *options);
+    command.add_option("--source", options->session,
+                       "session folder or events.tsv to compare its intervals with: the pulses, else the triggers");
+    options->add_limits(command);
+    options->add_ripples(command, "of the stream that plays it, or of one like it");
     add_example(command, "build/millpond sham check rate_matched.tsv --sampling-hz 1250");
     command.callback([options] {
-        const Hertz rate{options->sampling_hz};
+        if (!options->session.empty()) {
+            options->take_source(options->session);
+        }
+        const auto rate = options->rate();
         const auto schedule = read_schedule(options->schedule, rate);
-        check_schedule(schedule, options->limits, rate, options->schedule.string());
-        print_intervals(schedule, rate);
+        check_schedule(schedule, options->limits(), rate, options->schedule.string());
+        print((options->source() ? line("source", options->source()->told()) : "") + options->report(schedule));
     });
 }
 
@@ -245,7 +237,7 @@ void add_sham_command(CLI::App& program) {
     sham.require_subcommand(1);
     add_example(sham, "build/millpond sham rate-matched --rate-per-s 0.6 --duration-s 3600 --sampling-hz 1250 "
                       "--out rate_matched.tsv");
-    add_delayed(sham);
+    add_yoked(sham);
     add_rate_matched(sham);
     add_check(sham);
 }

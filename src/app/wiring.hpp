@@ -2,6 +2,7 @@
 // rooms. Thread: control. Everything here may throw Refusal.
 #pragma once
 
+#include "app/from_settings.hpp"
 #include "control/command_listener.hpp"
 #include "engine/engine.hpp"
 #include "intake/open_source.hpp"
@@ -12,7 +13,6 @@
 #include "outputs/output.hpp"
 #include "outputs/pulse_lines.hpp"
 #include "settings/settings.hpp"
-#include "sham/schedule.hpp"
 
 #include <functional>
 #include <latch>
@@ -25,6 +25,8 @@ namespace millpond {
 [[nodiscard]] std::string program_name();
 
 [[nodiscard]] Detector make_detector(const Settings& settings, const Channels& channels, Hertz rate);
+/// What a session with these settings listens to. `trials`: it has trials that somebody marks.
+[[nodiscard]] OscCommands commands_for(const Settings& settings, bool trials);
 /// Starts a watchdog process over these outputs.
 [[nodiscard]] LineKeeper make_keeper(const Settings& settings, const std::vector<std::unique_ptr<Output>>& outputs,
                                      LineBoard& board);
@@ -33,7 +35,7 @@ namespace millpond {
 class LiveSession {
   public:
     /// Orders the lines low, starts their watchdog, takes the ports, makes the folder; no sample is read yet.
-    LiveSession(const Settings& settings, const std::filesystem::path& settings_file,
+    LiveSession(Settings settings, const std::filesystem::path& settings_file,
                 std::function<void(const std::string&)> refused_command);
     ~LiveSession();
     LiveSession(const LiveSession&) = delete;
@@ -45,6 +47,8 @@ class LiveSession {
     void start();
     /// Thread: any.
     void stop() noexcept { loop_.stop(); }
+    /// Orders the line low by this thread and faults the session. Thread: control.
+    void emergency_stop(const ChangedBy& by) noexcept { loop_.emergency_stop(by); }
     [[nodiscard]] LoopEnd end() const noexcept { return loop_.end(); }
     /// Looks after devices and watchdog, journals what it finds and tells it; call every few tens of ms, from `start`
     /// on.
@@ -56,9 +60,13 @@ class LiveSession {
     [[nodiscard]] const std::filesystem::path& folder() const noexcept { return writer_->folder(); }
     [[nodiscard]] const StreamSettings& stream() const noexcept { return stream_; }
     [[nodiscard]] double delay_ms() noexcept;
+    /// Nobody who sees this session may learn its condition.
+    [[nodiscard]] bool blinded() const noexcept { return assigned_ && assigned_->kept.sealed; }
+    [[nodiscard]] const std::optional<Assigned>& assigned() const noexcept { return assigned_; }
 
   private:
     class Journal;
+    [[nodiscard]] StopDoor stop_door();
     void journal_device(std::size_t output, DeviceState state);
 
     // Made in this order: what may be refused comes before the session folder, so that a refusal leaves no trace.
@@ -69,6 +77,7 @@ class LiveSession {
     LineBoard board_;
     LineKeeper keeper_; // its process is forked here, before there are other threads and much memory
     Hertz rate_;
+    std::optional<Assigned> assigned_;
     Channels channels_;
     Detector detector_; // until the loop's engine takes it
     Schedule schedule_; // likewise

@@ -75,6 +75,17 @@ Json rerun_json(const AuditResult& r) {
             {"differences", differences}};
 }
 
+Json speed_json(const SpeedFigure& speed) {
+    if (speed.events == 0) {
+        return nullptr;
+    }
+    return {{"values", speed.values},
+            {"kept", speed.events},
+            {"least", speed.least},
+            {"median", speed.median},
+            {"most", speed.most}};
+}
+
 Json stream_json(const AuditResult& r) {
     const auto rate = r.provenance.about.rate;
     auto gaps = Json::array();
@@ -90,11 +101,12 @@ Json stream_json(const AuditResult& r) {
                           {"utc", utc_text(state.time_ns)},
                           {"before", name_of(state.before)},
                           {"after", name_of(state.after)},
-                          {"cause", name_of(state.cause)}});
+                          {"cause", name_of(state.cause)},
+                          {"by", told(state.by)}});
     }
     auto gates = Json::array();
     for (const auto& gate : r.figures.gates) {
-        gates.push_back({{"sample", gate.at.value}, {"name", gate.name}, {"open", gate.open}});
+        gates.push_back({{"sample", gate.at.value}, {"name", gate.name}, {"open", gate.open}, {"by", told(gate.by)}});
     }
     auto sites = Json::array();
     for (const auto& site : r.figures.sites) {
@@ -109,8 +121,36 @@ Json stream_json(const AuditResult& r) {
             {"packets", counts_json<PacketCause>(r.figures.packets)},
             {"states", states},
             {"gates", gates},
+            {"speed", speed_json(r.figures.speed)},
             {"sites", sites},
             {"notes", notes}};
+}
+
+Json epochs_json(const AuditResult& r) {
+    const auto rate = r.provenance.about.rate;
+    auto epochs = Json::array();
+    for (std::size_t i = 0; i < r.figures.epochs.size(); ++i) {
+        const auto& epoch = r.figures.epochs[i];
+        Json json{{"index", epoch.index},
+                  {"name", epoch.name},
+                  {"pulses_allowed", epoch.pulses_allowed},
+                  {"from_sample", epoch.from.value},
+                  {"to_sample", epoch.to.value},
+                  {"minutes", seconds_at(SampleIndex{epoch.to - epoch.from}, rate) / 60.0},
+                  {"planned_minutes", epoch.planned_frames == 0
+                                          ? Json(nullptr)
+                                          : Json(seconds_at(SampleIndex{epoch.planned_frames}, rate) / 60.0)},
+                  {"begun_by", told(epoch.by)},
+                  {"detections", epoch.detections},
+                  {"triggers", epoch.triggers},
+                  {"pulses", r.blinded ? Json(nullptr) : Json(epoch.pulses)},
+                  {"withheld", counts_json<Rule>(epoch.withheld, 1)}};
+        json["score"] = r.score ? Json{{"detector", json_of(r.score->epochs.at(i).detector)},
+                                       {"session", json_of(r.score->epochs.at(i).session)}}
+                                : Json(nullptr);
+        epochs.push_back(std::move(json));
+    }
+    return epochs;
 }
 
 Json floors_json(const AuditResult& r) {
@@ -147,6 +187,38 @@ Json score_json(const AuditResult& r) {
             {"definitions", score_definitions()}};
 }
 
+Json conditions_json(const AuditResult& r) {
+    auto all = Json::array();
+    for (const auto& c : r.conditions) {
+        const auto& intervals = c.trigger_intervals_s;
+        all.push_back({{"condition", word_for<Condition>(conditions, c.condition)},
+                       {"units", c.units},
+                       {"minutes", c.minutes},
+                       {"eligible_minutes", c.eligible_minutes},
+                       {"detections", c.detections},
+                       {"detections_per_minute", c.detections_per_minute()},
+                       {"triggers", c.triggers},
+                       {"catch_trials", c.catch_trials},
+                       {"orders", c.orders},
+                       {"pulses", c.pulses},
+                       {"trigger_interval_median_s",
+                        intervals.empty() ? Json(nullptr) : Json(intervals[(intervals.size() - 1) / 2])}});
+    }
+    return all;
+}
+
+Json comparisons_json(const AuditResult& r) {
+    auto all = Json::array();
+    for (const auto& pair : r.comparisons) {
+        all.push_back({{"one", word_for<Condition>(conditions, pair.one)},
+                       {"other", word_for<Condition>(conditions, pair.other)},
+                       {"detection_rate_ratio", pair.ratio},
+                       {"p", pair.p},
+                       {"test", "exact conditional test of two Poisson rates (Przyborowski & Wilenski 1940)"}});
+    }
+    return all;
+}
+
 Json records_json(const AuditResult& r) {
     auto damage = Json::array();
     for (const auto& place : r.damage) {
@@ -180,11 +252,17 @@ Json audit_json(const AuditResult& r) {
               {"catch_trials", r.figures.catch_trials},
               {"slots", counts_json<PulseOrigin>(r.figures.slots, 1)},
               {"omitted", counts_json<Rule>(r.figures.omitted, 1)},
-              {"orders", counts_json<PulseOrigin>(r.figures.orders, 0)},
-              {"pulses", r.figures.pulses},
-              {"pulse_ends", r.figures.pulse_ends},
+              {"orders", r.blinded ? Json(nullptr) : counts_json<PulseOrigin>(r.figures.orders, 0)},
+              {"pulses", r.blinded ? Json(nullptr) : Json(r.figures.pulses)},
+              {"pulse_ends", r.blinded ? Json(nullptr) : Json(r.figures.pulse_ends)},
               {"withheld", counts_json<Rule>(r.figures.withheld, 1)}}},
+            {"assignment_code", r.code.empty() ? Json(nullptr) : Json(r.code)},
+            {"blinded", r.blinded},
+            {"conditions", conditions_json(r)},
+            {"rate_comparisons", comparisons_json(r)},
+            {"controls", r.blinded ? Json(nullptr) : control_json(r.controls)},
             {"score", score_json(r)},
+            {"epochs", epochs_json(r)},
             {"latency", latency_json(r)},
             {"outputs", outputs_json(r)},
             {"stream", stream_json(r)},

@@ -10,7 +10,7 @@
 namespace millpond {
 namespace {
 
-constexpr std::array outputs{"audit.json",  "events.tsv", "events.json", "ripples.tsv",
+constexpr std::array outputs{"audit.json",  "events.tsv", "events.json", "ripples.tsv",    "schedule.tsv",
                              "latency.tsv", "floors.tsv", "gaps.tsv",    "differences.tsv"};
 
 std::string latency_table(const AuditResult& r) {
@@ -89,13 +89,14 @@ void write_audit(const AuditResult& r, const std::filesystem::path& folder, bool
         throw Refusal(folder.string(), trouble.message(), "a folder that can be made and written");
     }
     const SessionReader session(r.session);
-    write_session_tables(session, folder);
+    write_session_tables(session, folder, r.blinded);
     if (r.score) {
         write_ripples(r, folder / "ripples.tsv");
     }
     write_whole_file(folder / "latency.tsv", latency_table(r));
     write_whole_file(folder / "floors.tsv", floors_table(session));
     write_whole_file(folder / "gaps.tsv", gaps_table(r));
+    write_whole_file(folder / "schedule.tsv", control_table(r.controls, r.provenance.about.rate));
     write_whole_file(folder / "differences.tsv", differences_table(r));
     write_whole_file(folder / "audit.json", audit_json(r).dump(2) + "\n"); // last: where it is, the rest is whole
 }

@@ -14,8 +14,8 @@ namespace millpond {
 /// Every figure of `audit_text`, and the lists that it shortens. Null: not measured or not known.
 [[nodiscard]] Json audit_json(const AuditResult& result);
 
-/// Writes audit.json, events.tsv, events.json, ripples.tsv, latency.tsv, floors.tsv, gaps.tsv and differences.tsv into
-/// `folder`. Refuses where one of them exists, unless `overwrite`.
+/// Writes audit.json, events.tsv, events.json, ripples.tsv, schedule.tsv, latency.tsv, floors.tsv, gaps.tsv and
+/// differences.tsv into `folder`. Refuses where one of them exists, unless `overwrite`.
 void write_audit(const AuditResult& result, const std::filesystem::path& folder, bool overwrite);
 
 } // namespace millpond

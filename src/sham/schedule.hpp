@@ -1,10 +1,10 @@
 // Control schedules: places in the stream where pulses are due whatever the detector finds. Thread: cold.
 //
+// How they are made: yoked.hpp, rate_matched.hpp. What they amount to: schedule_report.hpp.
 // In a file a schedule is an events table: onset (s), duration 0, trial_type `scheduled`, sample.
 #pragma once
 
 #include "base/units.hpp"
-#include "referee/ripple.hpp"
 
 #include <cstdint>
 #include <filesystem>
@@ -15,10 +15,13 @@ namespace millpond {
 
 using Schedule = std::vector<SampleIndex>;
 
-/// What a session allows; a schedule that asks for more would be withheld there.
+/// What a session allows; of a schedule that asks for more some places would have no pulse there.
 struct ScheduleLimits {
     double lockout_ms = 150.0;
     std::uint32_t max_pulses_per_second = 4;
+    std::uint32_t max_pulses_per_session = 10000;
+
+    bool operator==(const ScheduleLimits&) const = default;
 };
 
 /// What was made, and what had to give way to the limits.
@@ -28,40 +31,24 @@ struct MadeSchedule {
     double longest_put_off_ms = 0.0;
 };
 
-/// Each trigger later by a delay drawn uniformly from `least_ms` to `most_ms` (equal: a fixed delay, nothing drawn).
-struct DelayedPlan {
-    double least_ms = 150.0; ///< random 150 to 250 ms, as in Deceuninck & Kloosterman 2024 (eLife 13:e84004)
-    double most_ms = 250.0;
-    double min_interval_ms = 150.0;
-    std::uint32_t max_pulses_per_second = 4;
-    std::uint64_t seed = 1;
+/// How near places come to the limits.
+struct Crowding {
+    std::uint64_t within_lockout = 0;   ///< places that come within the lock-out of the one before
+    std::uint64_t beyond_second = 0;    ///< places that are one too many within one second
+    std::uint64_t most_in_a_second = 0; ///< places in the fullest second
+    std::size_t first_within_lockout = 0, first_beyond_second = 0; ///< indices, where there are any
 };
+[[nodiscard]] Crowding crowding(const Schedule& schedule, const ScheduleLimits& limits, Hertz rate);
 
-/// As many places as `triggers` (ascending). A place too near to those before it is put off, never dropped, so that the
-/// number of pulses stays matched.
-[[nodiscard]] MadeSchedule delayed_schedule(const Schedule& triggers, const DelayedPlan& plan, Hertz rate);
-
-/// Intervals of min_interval_ms plus an exponential rest: a Poisson process with a dead time, `rate_per_s` on average.
-struct RateMatchedPlan {
-    double rate_per_s = 0.5;
-    double duration_s = 3600.0;
-    double min_interval_ms = 150.0;
-    std::uint32_t max_pulses_per_second = 4;
-    std::uint64_t seed = 1;
-    Ripples keep_away_from; ///< no place in these, nor `keep_away_ms` before or after; empty: anywhere
-    double keep_away_ms = 0.0;
-};
-
-/// With ripples to keep away from, the law runs in the time that is left, faster, so that the rate over the whole
-/// duration holds. Refuses a rate that the minimum interval cannot give.
-[[nodiscard]] MadeSchedule rate_matched_schedule(const RateMatchedPlan& plan, Hertz rate);
-
-/// Triggers a second between the first and the last of them. Refuses fewer than two; `where` names them for the
-/// message.
-[[nodiscard]] double trigger_rate_per_s(const Schedule& triggers, Hertz rate, const std::string& where);
-
-/// Refuses the first place that comes within the lock-out of the one before, or is one too many within one second.
+/// Refuses a schedule with places that come within the lock-out of the one before, with more within one second or in
+/// all than a session allows; names the first such place and says how many there are.
 void check_schedule(const Schedule& schedule, const ScheduleLimits& limits, Hertz rate, const std::string& where);
+
+/// Places a second between the first and the last of them. Refuses fewer than two; `where` names them for the message.
+[[nodiscard]] double rate_per_s_of(const Schedule& places, Hertz rate, const std::string& where);
+
+/// Seconds from each place to the next.
+[[nodiscard]] std::vector<double> intervals_s_of(const Schedule& places, Hertz rate);
 
 /// Reads a schedule for a stream of this rate. Refuses rows of another trial_type, times that do not ascend or lie
 /// before the first sample, and a `sample` column made for another rate.

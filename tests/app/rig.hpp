@@ -31,6 +31,7 @@ struct RigSettings {
     double stale_after_ms = 5000.0; ///< a busy machine must not look like a silent sender
     double min_free_mb = 1.0;
     std::string folder = "sessions";
+    std::string more; ///< further sections, as they stand in the file
 };
 
 class Rig {
@@ -80,7 +81,8 @@ class Rig {
         text += "control: {listen: " + std::string(want.control ? "true" : "false") +
                 ", port: " + std::to_string(control_port_) + ", secret: '" + want.secret + "'}\n";
         text += "session: {folder: " + want.folder +
-                ", name: rig, store_samples: rf64, min_free_mb: " + std::to_string(want.min_free_mb) + "}\n";
+                ", name: rig, store_samples: rf64, min_free_mb: " + std::to_string(want.min_free_mb) + "}\n" +
+                want.more;
         return scratch_.file(name, text).string();
     }
 

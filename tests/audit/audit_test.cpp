@@ -22,7 +22,7 @@ class ToldSession : public ::testing::Test {
     }
     void withheld(std::uint64_t at, Rule rule) {
         tell(EventKind::detection, 0, at, DetectionDetail{});
-        tell(EventKind::withheld, static_cast<int>(rule), at, TriggerDetail{at, 0, 0});
+        tell(EventKind::withheld, static_cast<int>(rule), at, TriggerDetail{at, 0, {}, 0, 0});
     }
     void floor(std::uint64_t at, double mean, bool settled) {
         tell(EventKind::floor, 0, at,

@@ -8,6 +8,7 @@
 #include <gtest/gtest.h>
 
 #include <algorithm>
+#include <map>
 
 namespace millpond::test {
 namespace {
@@ -16,7 +17,7 @@ const std::filesystem::path config = source_folder / "config";
 
 std::vector<std::filesystem::path> settings_files() {
     std::vector<std::filesystem::path> files;
-    for (const auto& entry : std::filesystem::directory_iterator(config)) {
+    for (const auto& entry : std::filesystem::recursive_directory_iterator(config)) {
         if (entry.path().extension() == ".yaml" && entry.path().filename() != "referee.yaml") {
             files.push_back(entry.path());
         }
@@ -30,7 +31,7 @@ bool is_for_a_stream(const std::filesystem::path& file) {
 }
 
 TEST(Config, HasAFileForEachUse) {
-    for (const auto* name : {"live.yaml", "dryrun.yaml", "tune.yaml", "sham.yaml", "referee.yaml"}) {
+    for (const auto* name : {"live.yaml", "dryrun.yaml", "tune.yaml", "referee.yaml"}) {
         EXPECT_TRUE(std::filesystem::exists(config / name)) << name;
     }
 }
@@ -69,15 +70,52 @@ TEST(Config, NoFileForARigStartsArmed) {
     }
 }
 
+Settings of_condition(const std::string& name) {
+    return load_settings(config / "conditions" / (name + ".yaml"));
+}
+
+/// What is left of a condition's settings without that which makes it comparable with the others.
+Settings without_controls(Settings settings) {
+    settings.arbiter.condition = {};
+    settings.arbiter.schedule_file.clear();
+    settings.arbiter.delay = {};
+    settings.schedule = {};
+    return settings;
+}
+
+const std::map<std::string, Condition> condition_files{
+    {"disrupt", Condition::disrupt},           {"delayed", Condition::delayed}, {"yoked", Condition::yoked},
+    {"rate_matched", Condition::rate_matched}, {"none", Condition::none},       {"catch_trials", Condition::disrupt}};
+
 // A control session that differs in anything but its condition is no control.
-TEST(Config, ShamDiffersFromLiveInItsConditionAlone) {
-    const auto live = load_settings(config / "live.yaml");
-    auto sham = load_settings(config / "sham.yaml");
-    EXPECT_EQ(sham.arbiter.condition, Condition::yoked);
-    sham.arbiter.condition = live.arbiter.condition;
-    sham.arbiter.schedule_file = live.arbiter.schedule_file;
-    sham.session.name = live.session.name;
-    EXPECT_EQ(settings_to_yaml(sham), settings_to_yaml(live));
+TEST(Config, ConditionsDifferFromLiveWhereTheyMustAlone) {
+    const auto live = settings_to_yaml(without_controls(load_settings(config / "live.yaml")));
+    for (const auto& [name, condition] : condition_files) {
+        SCOPED_TRACE(name);
+        auto settings = of_condition(name);
+        EXPECT_EQ(settings.arbiter.condition, condition);
+        EXPECT_EQ(settings.arbiter.hold.schedule, name != "yoked");
+        settings.arbiter.hold.schedule = true;
+        EXPECT_EQ(settings.arbiter.catch_share > 0.0, name == "catch_trials");
+        settings.arbiter.catch_share = 0.0;
+        EXPECT_EQ(settings_to_yaml(without_controls(settings)), live);
+    }
+}
+
+// The moments at which any condition may give a pulse are blanked in all of them.
+TEST(Config, ConditionsAreComparableWithOneAnother) {
+    const auto disrupt = of_condition("disrupt");
+    EXPECT_TRUE(disrupt.arbiter.delay.in_every_condition);
+    EXPECT_FALSE(disrupt.arbiter.schedule_file.empty());
+    for (const auto& [name, condition] : condition_files) {
+        SCOPED_TRACE(name);
+        const auto settings = of_condition(name);
+        EXPECT_EQ(settings.arbiter.delay, disrupt.arbiter.delay);
+        EXPECT_EQ(settings.arbiter.schedule_file, disrupt.arbiter.schedule_file);
+        EXPECT_EQ(settings.schedule, disrupt.schedule);
+    }
+    EXPECT_EQ(std::distance(std::filesystem::directory_iterator(config / "conditions"), {}),
+              static_cast<std::ptrdiff_t>(condition_files.size()));
 }
 
 TEST(Config, TuneStartsFromTheStreamOfLive) {

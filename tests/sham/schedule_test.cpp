@@ -1,5 +1,6 @@
 #include "base/refusal.hpp"
-#include "sham/schedule.hpp"
+#include "sham/rate_matched.hpp"
+#include "sham/yoked.hpp"
 #include "support/python.hpp"
 
 #include <gtest/gtest.h>
@@ -22,30 +23,53 @@ Schedule at(std::initializer_list<std::uint64_t> frames) {
     return places;
 }
 
-std::vector<double> intervals_s(const Schedule& places, Hertz sampling = rate) {
-    std::vector<double> intervals;
-    for (std::size_t i = 1; i < places.size(); ++i) {
-        intervals.push_back(static_cast<double>(places[i] - places[i - 1]) / sampling.value);
-    }
-    return intervals;
+YokedPlan delayed_by(double least_ms, double most_ms, std::uint32_t per_second = 100) {
+    YokedPlan plan;
+    plan.least_delay_ms = least_ms;
+    plan.most_delay_ms = most_ms;
+    plan.max_pulses_per_second = per_second;
+    return plan;
 }
 
-TEST(DelayedSchedule, PutsEachTriggerLaterByAFixedDelay) {
-    DelayedPlan plan;
-    plan.least_ms = plan.most_ms = 200.0;
-    const auto made = delayed_schedule(at({1000, 2000, 5000}), plan, rate);
+TEST(YokedSchedule, KeepsEachPlaceToTheSample) {
+    const auto made = yoked_schedule(at({1000, 1040, 5000}), {}, rate);
+    EXPECT_EQ(made.places, at({1000, 1040, 5000})) << "nothing is put off: check_schedule refuses it";
+    EXPECT_EQ(made.put_off, 0U);
+}
+
+TEST(YokedSchedule, CountsFromAMomentOfTheSourceAndBeginsWhereItIsAsked) {
+    YokedPlan plan;
+    plan.moment = SampleIndex{2000};
+    plan.start_s = 60.0;
+    const auto made = yoked_schedule(at({1000, 2000, 5000}), plan, rate);
+    EXPECT_EQ(made.places, at({60000, 63000}));
+    EXPECT_EQ(made.before, 1U);
+}
+
+TEST(YokedSchedule, IsCutAtItsDurationAfterTheMoment) {
+    YokedPlan plan;
+    plan.moment = SampleIndex{1000};
+    plan.start_s = 10.0;
+    plan.duration_s = 2.0;
+    const auto made = yoked_schedule(at({1000, 2999, 3000, 9000}), plan, rate);
+    EXPECT_EQ(made.places, at({10000, 11999}));
+    EXPECT_EQ(made.after, 2U);
+}
+
+TEST(YokedSchedule, PutsEachPlaceLaterByAFixedDelay) {
+    const auto made = yoked_schedule(at({1000, 2000, 5000}), delayed_by(200.0, 200.0), rate);
     EXPECT_EQ(made.places, at({1200, 2200, 5200}));
     EXPECT_EQ(made.put_off, 0U);
 }
 
-TEST(DelayedSchedule, DrawsDelaysUniformlyBetweenItsEnds) {
+TEST(YokedSchedule, DrawsDelaysUniformlyBetweenTheirEnds) {
     MILLPOND_NEEDS_SCIPY();
     Schedule triggers;
     for (std::uint64_t i = 1; i <= 3000; ++i) {
         triggers.push_back(SampleIndex{i * 60000});
     }
     const Hertz fine{30000.0};
-    const auto made = delayed_schedule(triggers, {}, fine);
+    const auto made = yoked_schedule(triggers, delayed_by(150.0, 250.0), fine);
     std::vector<double> delays;
     for (std::size_t i = 0; i < triggers.size(); ++i) {
         delays.push_back(static_cast<double>(made.places[i] - triggers[i]) / fine.value);
@@ -55,22 +79,19 @@ TEST(DelayedSchedule, DrawsDelaysUniformlyBetweenItsEnds) {
     EXPECT_GT(p[0], 0.01);
 }
 
-TEST(DelayedSchedule, KeepsTheMinimumIntervalByPuttingOffSoThatTheCountStaysMatched) {
-    DelayedPlan plan;
-    plan.least_ms = 0.0;
-    plan.most_ms = 0.0;
-    plan.max_pulses_per_second = 100;
-    const auto made = delayed_schedule(at({1000, 1100, 3000}), plan, rate);
-    EXPECT_EQ(made.places, at({1000, 1150, 3000}));
+TEST(YokedSchedule, WithDelaysKeepsTheMinimumIntervalByPuttingOffSoThatTheCountStaysMatched) {
+    const auto made = yoked_schedule(at({1000, 1100, 3000}), delayed_by(10.0, 10.0), rate);
+    EXPECT_EQ(made.places, at({1010, 1160, 3010}));
     EXPECT_EQ(made.put_off, 1U);
     EXPECT_DOUBLE_EQ(made.longest_put_off_ms, 50.0);
 }
 
-TEST(DelayedSchedule, KeepsTheMostPulsesASecondByPuttingOff) {
-    DelayedPlan plan;
-    plan.least_ms = plan.most_ms = 0.0;
-    plan.max_pulses_per_second = 2;
-    EXPECT_EQ(delayed_schedule(at({1000, 1200, 1400}), plan, rate).places, at({1000, 1200, 2000}));
+TEST(YokedSchedule, WithDelaysKeepsTheMostPulsesASecondByPuttingOff) {
+    EXPECT_EQ(yoked_schedule(at({1000, 1200, 1400}), delayed_by(10.0, 10.0, 2), rate).places, at({1010, 1210, 2010}));
+}
+
+TEST(YokedSchedule, RefusesDelaysThatContradictEachOther) {
+    EXPECT_THROW(static_cast<void>(yoked_schedule(at({1}), delayed_by(20.0, 10.0), rate)), Refusal);
 }
 
 TEST(RateMatchedSchedule, IntervalsFollowTheShiftedExponentialLaw) {
@@ -84,7 +105,7 @@ TEST(RateMatchedSchedule, IntervalsFollowTheShiftedExponentialLaw) {
     EXPECT_EQ(made.put_off, 0U);
     // Mean interval 1/0.6 s, of which 0.150 s is dead time.
     const auto p = ask_scipy("tell(stats.kstest(x, stats.expon(0.150, 1/0.6 - 0.150).cdf).pvalue)",
-                             intervals_s(made.places, fine));
+                             intervals_s_of(made.places, fine));
     ASSERT_EQ(p.size(), 1U);
     EXPECT_GT(p[0], 0.01);
     EXPECT_NEAR(static_cast<double>(made.places.size()) / 7200.0, 0.6, 0.03);
@@ -98,6 +119,17 @@ TEST(RateMatchedSchedule, NeverBreaksTheLimitsItWasGiven) {
     EXPECT_GT(made.put_off, 0U);
     EXPECT_NO_THROW(check_schedule(made.places, {}, rate, "made"));
     EXPECT_LT(made.places.back().value, 600000U + 1000U);
+}
+
+TEST(RateMatchedSchedule, BeginsWhereItIsAskedAndLastsFromThereOn) {
+    RateMatchedPlan plan;
+    const auto from_the_start = rate_matched_schedule(plan, rate).places;
+    plan.start_s = 60.0;
+    const auto later = rate_matched_schedule(plan, rate).places;
+    ASSERT_EQ(later.size(), from_the_start.size());
+    for (std::size_t i = 0; i < later.size(); ++i) {
+        EXPECT_NEAR(static_cast<double>(later[i] - from_the_start[i]), 60000.0, 1.0); // rounded to a sample anew
+    }
 }
 
 TEST(RateMatchedSchedule, KeepsAwayFromRipplesAndKeepsItsRate) {
@@ -133,15 +165,37 @@ TEST(RateMatchedSchedule, RefusesARateThatTheMinimumIntervalCannotGive) {
     EXPECT_THROW(static_cast<void>(rate_matched_schedule(plan, rate)), Refusal);
 }
 
-TEST(TriggerRate, IsTakenBetweenTheFirstAndTheLast) {
-    EXPECT_DOUBLE_EQ(trigger_rate_per_s(at({1000, 2000, 5000}), rate, "x"), 0.5);
-    EXPECT_THROW(static_cast<void>(trigger_rate_per_s(at({1000}), rate, "x")), Refusal);
+TEST(RateOfPlaces, IsTakenBetweenTheFirstAndTheLast) {
+    EXPECT_DOUBLE_EQ(rate_per_s_of(at({1000, 2000, 5000}), rate, "x"), 0.5);
+    EXPECT_THROW(static_cast<void>(rate_per_s_of(at({1000}), rate, "x")), Refusal);
 }
 
-TEST(ScheduleCheck, RefusesAPlaceWithinTheLockOutOrTooManyWithinASecond) {
-    EXPECT_NO_THROW(check_schedule(at({0, 150, 300, 450, 1000}), {}, rate, "x"));
-    EXPECT_THROW(check_schedule(at({0, 149}), {}, rate, "x"), Refusal);
-    EXPECT_THROW(check_schedule(at({0, 150, 300, 450, 999}), {}, rate, "x"), Refusal);
+void expect_check(const Schedule& schedule, const ScheduleLimits& limits, const std::string& said) {
+    try {
+        check_schedule(schedule, limits, rate, "x");
+        EXPECT_EQ(said, "") << "taken";
+    } catch (const Refusal& refusal) {
+        EXPECT_NE(said, "") << refusal.what();
+        EXPECT_NE(std::string(refusal.what()).find(said), std::string::npos) << refusal.what();
+    }
+}
+
+TEST(ScheduleCheck, RefusesAPlaceWithinTheLockOutOrTooManyWithinASecondOrASession) {
+    expect_check(at({0, 150, 300, 450, 1000}), {}, "");
+    expect_check(at({0, 149}), {}, "the only such place");
+    expect_check(at({0, 200, 349, 498}), {}, "place 3 at 0.3490 s: found 149.0 ms after the one before, 2 such places");
+    expect_check(at({0, 150, 300, 450, 999}), {}, "one too many within one second");
+    expect_check(at({0, 1000, 2000}), {150.0, 4, 3}, "");
+    expect_check(at({0, 1000, 2000}), {150.0, 4, 2}, "as many pulses as one session may have, 2");
+}
+
+TEST(ScheduleCheck, CountsHowNearPlacesComeToTheLimits) {
+    const auto found = crowding(at({0, 100, 200, 999, 1000, 5000}), {150.0, 3, 100}, rate);
+    EXPECT_EQ(found.within_lockout, 3U);
+    EXPECT_EQ(found.first_within_lockout, 1U);
+    EXPECT_EQ(found.most_in_a_second, 4U); // 0 to 999, and 100 to 1000
+    EXPECT_EQ(found.beyond_second, 2U);
+    EXPECT_EQ(found.first_beyond_second, 3U);
 }
 
 TEST(ScheduleFile, ReadsBackWhatWasWritten) {
