@@ -177,8 +177,9 @@ std::vector<double> ours_us(const Rig& rig, const std::vector<float>& data) {
     OscOutput output(to);
     ArbiterSettings arbiter;
     arbiter.lockout_ms = 5.0;
-    arbiter.max_pulses_per_second = 1000;
-    arbiter.max_pulses_per_session = 1000000;
+    arbiter.limits.max_pulses_per_second = 1000;
+    arbiter.limits.max_pulses_per_session = 1000000;
+    arbiter.limits = for_sweeps(arbiter.limits);
     const Hertz rate{rig.rate_hz};
     const auto channels = ripple_channels(rig.channels);
     SessionSettings session;
@@ -190,11 +191,13 @@ std::vector<double> ours_us(const Rig& rig, const std::vector<float>& data) {
     about.channels = channels;
     const auto writer = SessionWriter::open(session, about);
     NotedJournal journal(*writer);
-    PulseLine line(output, {Nanos{100'000}, 1, Nanos{1'000'000}}, writer->pulse_sink());
+    LineBoard board;
+    PulseLines lines(std::vector<PulseLinePlan>{{&output, {Nanos{100'000}, 1, Nanos{1'000'000}}, Follows::pulse}},
+                     board, writer->pulse_sink());
     SpscRing<Command> commands(16);
     LiveLoopSettings settings;
     settings.start_armed = true;
-    LiveLoop loop(settings, *source, line, journal, commands, [&](EventSink& sink, PulsePort& port) {
+    LiveLoop loop(settings, *source, lines, journal, commands, [&](EventSink& sink, PulsePort& port) {
         return Engine(Detector::make(quick_detector(), channels, rate), arbiter, {}, rate, sink, port);
     });
     std::thread thread([&] { loop.run(); });

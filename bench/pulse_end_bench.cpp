@@ -2,7 +2,7 @@
 // same deadline, turn by turn in one run: on the computer as it is, and with a busy thread on every core. Usage:
 // pulse_end_bench [PULSES]
 #include "base/clock.hpp"
-#include "outputs/pulse_line.hpp"
+#include "outputs/pulse_lines.hpp"
 #include "outputs/silent_output.hpp"
 
 #include <algorithm>
@@ -101,9 +101,10 @@ void measure(const char* computer, std::size_t pulses) {
     Falls falls(pulses);
     BareSleeper bare(pulses);
     {
-        PulseLine line(output, {width, 1, {}}, falls);
+        LineBoard board;
+        PulseLines lines(std::vector<PulseLinePlan>{{&output, {width, 1, {}}, Follows::pulse}}, board, falls);
         for (std::size_t i = 0; i < pulses; ++i) {
-            line.rise(SampleIndex{i});
+            lines.rise(Follows::pulse, SampleIndex{i});
             std::this_thread::sleep_for(pause);
             while (falls.seen.load(std::memory_order_acquire) <= i) { // a train must end before the next begins
                 std::this_thread::sleep_for(pause);
@@ -112,7 +113,7 @@ void measure(const char* computer, std::size_t pulses) {
             std::this_thread::sleep_for(pause);
         }
     }
-    print(computer, "pulse line", falls.late_ns);
+    print(computer, "pulse lines", falls.late_ns);
     print(computer, "clock_nanosleep", bare.ended());
 }
 

@@ -1,6 +1,7 @@
 // `millpond audit SESSION`: what happened in a session, and whether the engine decides the same again.
 #include "app/commands.hpp"
 #include "app/progress.hpp"
+#include "app/session_conditions.hpp"
 #include "app/truth.hpp"
 #include "audit/audit.hpp"
 #include "audit/audit_text.hpp"
@@ -74,6 +75,7 @@ AuditResult audit_with(const AuditOptions& options) {
     input.session = options.session;
     input.settings = {settings.detector, settings.arbiter};
     input.settings_name = session.settings_file().string();
+    input.assignment = known_assignment(session);
     take_schedule(input, session);
     if (!options.labels.empty()) {
         input.labels = labels_for(options, session);

@@ -8,7 +8,9 @@ void add_commands(CLI::App& program) {
     add_dryrun_command(program);
     add_tune_command(program);
     add_sham_command(program);
+    add_assign_command(program);
     add_live_command(program);
+    add_unblind_command(program);
     add_audit_command(program);
     add_synth_command(program);
     add_feed_command(program);

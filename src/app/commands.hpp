@@ -13,6 +13,8 @@ void add_live_command(CLI::App& program);
 void add_dryrun_command(CLI::App& program);
 void add_tune_command(CLI::App& program);
 void add_sham_command(CLI::App& program);
+void add_assign_command(CLI::App& program);
+void add_unblind_command(CLI::App& program);
 void add_audit_command(CLI::App& program);
 void add_synth_command(CLI::App& program);
 void add_feed_command(CLI::App& program);

@@ -74,8 +74,11 @@ DryRun dry_run(const DryRunPlan& plan) {
     run.channels = channels_for(settings, reader->info().channels, plan.settings.string());
     run.settings_hash = settings_hash(settings, run.channels);
     run.armed = plan.armed;
-    run.pulse_width_ms = settings.output.width_ms;
+    run.pulse_width_ms = pulse_output(settings).width_ms;
     notice_rate(settings, run.rate);
+    if (settings.arbiter.speed_gate.on) {
+        fmt::print(stderr, "note: a recording tells no speed; the speed gate is left out\n");
+    }
 
     // The engine first: where a band does not fit the rate, the detector's is the one to name.
     auto engine = OfflineEngine::make({settings.detector, settings.arbiter}, run.channels, run.rate,

@@ -29,8 +29,25 @@ std::vector<FloorState> warm_start_floors(const DetectorSettings& detector) {
     return floors;
 }
 
+void check_floor_channels(const FloorLimitSettings& limits, const Detector& detector) {
+    for (std::size_t i = 0; i < limits.channels.size(); ++i) {
+        std::string there;
+        bool known = false;
+        for (std::size_t floor = 0; floor < detector.floor_count(); ++floor) {
+            const auto site = detector.floor(floor).site;
+            const std::uint32_t channel = site == 65535 ? 0U : site + 1U;
+            there += (there.empty() ? "" : ", ") + std::to_string(channel);
+            known = known || channel == limits.channels[i].channel;
+        }
+        if (!known) {
+            throw Refusal(fmt::format("limits.floor.channels[{}].channel", i),
+                          fmt::format("{}, which has no floor", limits.channels[i].channel), "one of " + there);
+        }
+    }
+}
+
 ScheduleLimits limits_of(const ArbiterSettings& arbiter) {
-    return {arbiter.lockout_ms, arbiter.max_pulses_per_second, arbiter.max_pulses_per_session};
+    return {arbiter.lockout_ms, arbiter.limits.max_pulses_per_second, arbiter.limits.max_pulses_per_session};
 }
 
 Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
@@ -42,8 +59,28 @@ Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {
     return schedule;
 }
 
+std::optional<Assigned> assigned_for(Settings& settings, Hertz rate, const std::string& where) {
+    if (settings.assignment.file.empty()) {
+        return std::nullopt;
+    }
+    const auto list = read_assignment(settings.assignment.file);
+    const auto& session = session_of(list, settings.assignment.code, where + ": assignment.code");
+    if ((list.has(Condition::yoked) || list.has(Condition::rate_matched)) && settings.arbiter.schedule_file.empty()) {
+        throw Refusal(where + ": arbiter.schedule_file", "none",
+                      "a control schedule: some sessions of " + settings.assignment.file + " play one");
+    }
+    settings.arbiter.delay.in_every_condition =
+        settings.arbiter.delay.in_every_condition || list.has(Condition::delayed);
+    Assigned assigned{session_assignment(list, session), session.conditions, 0};
+    if (list.unit == AssignmentUnit::block) {
+        assigned.block_frames = frames_in_ms(list.block_minutes * 60000.0, rate);
+    }
+    return assigned;
+}
+
 std::string settings_hash(const Settings& settings, const Channels& channels) {
-    auto text = to_yaml(settings.detector) + to_yaml(settings.arbiter);
+    auto text = to_yaml(settings.detector) + to_yaml(settings.arbiter) + to_yaml(settings.arbiter.limits) +
+                to_yaml(settings.arbiter.plan) + to_yaml(settings.arbiter.speed_gate);
     for (const auto& channel : channels) {
         text += to_yaml(channel);
     }

@@ -1,8 +1,10 @@
 // millpond live: a session on a rig, until the operator ends it.
 #include "app/commands.hpp"
+#include "app/limits_findings.hpp"
 #include "app/status_line.hpp"
 #include "app/wiring.hpp"
 #include "base/clock.hpp"
+#include "stimulus/stimulus.hpp"
 
 #include <CLI/CLI.hpp>
 #include <boost/asio/signal_set.hpp>
@@ -25,7 +27,7 @@ namespace {
 struct LiveOptions {
     std::string settings_file;
     std::optional<Condition> condition;
-    std::string schedule_file;
+    std::string schedule_file, assignment_file, code;
     bool start_armed = false;
     double stop_after_s = 0.0;
     double status_every_s = 0.0;
@@ -47,10 +49,11 @@ class Operator {
   public:
     Operator(LiveSession& session, const LiveOptions& options, std::shared_ptr<spdlog::logger> log)
         : session_(session), options_(options), log_(std::move(log)),
-          signals_(session.control(), SIGINT, SIGTERM, SIGHUP), timer_(session.control()),
-          terminal_(isatty(STDERR_FILENO) != 0), status_every_(options.status_every_s > 0.0 ? options.status_every_s
-                                                               : terminal_                  ? 0.5
-                                                                                            : 10.0) {}
+          signals_(session.control(), SIGINT, SIGTERM, SIGHUP), stop_signal_(session.control(), SIGUSR1),
+          timer_(session.control()), terminal_(isatty(STDERR_FILENO) != 0),
+          status_every_(options.status_every_s > 0.0 ? options.status_every_s
+                        : terminal_                  ? 0.5
+                                                     : 10.0) {}
 
     /// Until the session is over.
     void watch() {
@@ -61,13 +64,29 @@ class Operator {
                 session_.stop();
             }
         });
+        wait_for_stop_signal();
         tick();
         session_.control().run();
         leave_status();
     }
 
   private:
+    void wait_for_stop_signal() {
+        stop_signal_.async_wait([this](const boost::system::error_code& trouble, int /*signal*/) {
+            if (!trouble) {
+                session_.emergency_stop({ChangeSource::signal});
+                leave_status();
+                log_->warn("emergency stop (SIGUSR1); /clear, then /arm, when all is safe");
+                wait_for_stop_signal();
+            }
+        });
+    }
+
     void tick() {
+        session_.tend([this](const std::string& news) {
+            leave_status();
+            log_->warn("{}", news);
+        });
         const auto figures = session_.figures();
         tell_changes(figures);
         const double running_s = static_cast<double>((monotonic_now() - began_).count()) / 1e9;
@@ -96,6 +115,11 @@ class Operator {
             log_->warn("{} ({})", name_of(figures.state), name_of(figures.state_cause));
             state_ = figures.state;
         }
+        if (figures.epoch && (!epoch_ || figures.epoch->index != *epoch_)) {
+            leave_status();
+            log_->info("epoch: {}{}", figures.epoch->name, figures.epoch->pulses ? "" : " (no pulses)");
+            epoch_ = figures.epoch->index;
+        }
         if (figures.sites_out != sites_out_) {
             leave_status();
             tell_sites(figures.sites_out);
@@ -118,7 +142,7 @@ class Operator {
     }
 
     void show(const LiveFigures& figures) {
-        const auto line = status_line(figures, Hertz{session_.stream().rate_hz});
+        const auto line = status_line(figures, Hertz{session_.stream().rate_hz}, session_.blinded());
         // On a terminal the line is written over itself; the rest of an older, longer one is cleared.
         std::fprintf(stderr, terminal_ ? "\r%s\033[K" : "%s\n", line.c_str());
         std::fflush(stderr);
@@ -136,6 +160,7 @@ class Operator {
     const LiveOptions& options_;
     std::shared_ptr<spdlog::logger> log_;
     boost::asio::signal_set signals_;
+    boost::asio::signal_set stop_signal_;
     boost::asio::steady_timer timer_;
     bool terminal_;
     double status_every_;
@@ -143,6 +168,7 @@ class Operator {
     double next_status_s_ = 0.0;
     bool status_shown_ = false;
     ArmState state_ = ArmState::not_armed;
+    std::optional<std::uint16_t> epoch_;
     std::vector<std::pair<std::uint16_t, SiteState>> sites_out_;
     std::string trouble_;
 };
@@ -152,13 +178,34 @@ void print_summary(const LiveSession& session) {
     fmt::print("session: {}\n", session.folder().string());
     fmt::print("signal: {:.1f} s, {} gaps with {} frames missing\n",
                seconds_at(figures.upto, Hertz{session.stream().rate_hz}), figures.gaps, figures.frames_missing);
-    fmt::print("detections: {}, triggers: {}, pulses: {}\n", figures.detections, figures.triggers, figures.pulses);
+    fmt::print("detections: {}, triggers: {}", figures.detections, figures.triggers);
+    session.blinded() ? fmt::print("\n") : fmt::print(", pulses: {}\n", figures.pulses);
     for (std::size_t rule = 0; rule < figures.withheld.size(); ++rule) {
         if (figures.withheld[rule] > 0) {
             fmt::print("withheld, {}: {}\n", name_of(static_cast<Rule>(rule)), figures.withheld[rule]);
         }
     }
     fmt::print("next: millpond audit {}\n", session.folder().string());
+}
+
+void tell_limits(const Settings& settings, spdlog::logger& log) {
+    if (const auto figures = stimulus_figures(settings.stimulus)) {
+        log.info("stimulus: {}", told(*figures));
+        for (const auto& warning : stimulus_warnings(*figures)) {
+            log.warn("stimulus: {}", warning);
+        }
+    }
+    if (const auto& gate = settings.arbiter.speed_gate; gate.on) {
+        log.info("gate speed: {}", told(gate));
+    }
+}
+
+void tell_assignment(const LiveSession& session, spdlog::logger& log) {
+    if (const auto& assigned = session.assigned()) {
+        log.info("session {} of the list: {} {}(s){}", assigned->kept.code, assigned->kept.units,
+                 word_for<AssignmentUnit>(assignment_units, assigned->kept.unit),
+                 assigned->kept.sealed ? "; the condition is sealed" : "");
+    }
 }
 
 void run_live(const LiveOptions& options) {
@@ -170,6 +217,12 @@ void run_live(const LiveOptions& options) {
     if (!options.schedule_file.empty()) {
         settings.arbiter.schedule_file = std::filesystem::absolute(options.schedule_file).string();
     }
+    if (!options.assignment_file.empty()) {
+        settings.assignment.file = std::filesystem::absolute(options.assignment_file).string();
+        settings.arbiter.condition = options.condition.value_or(Condition::assigned);
+    }
+    settings.assignment.code = options.code.empty() ? settings.assignment.code : options.code;
+    check_settings(settings, "command line");
     std::shared_ptr<spdlog::logger> log;
     LiveSession session(settings, options.settings_file, [&log](const std::string& line) { log->warn("{}", line); });
     log = operators_log(session.folder());
@@ -178,14 +231,18 @@ void run_live(const LiveOptions& options) {
     log->info(
         "{} channels at {} Hz; the detector itself takes {:.1f} ms (group delay at the band's centre, and smoothing)",
         session.stream().channels, session.stream().rate_hz, session.delay_ms());
+    tell_assignment(session, *log);
     log->info(
         "pulse only under the approved protocol and local rules; ask the licensed veterinarian. Ctrl-C ends, line low");
+    tell_limits(settings, *log);
     Operator watching(session, options, log);
     session.start();
     watching.watch();
     session.finish();
     if (session.end() == LoopEnd::failed) {
         log->error("the stream failed");
+    } else if (session.end() == LoopEnd::planned) {
+        log->info("the plan is over");
     }
     print_summary(session);
     if (session.end() == LoopEnd::failed || !session.figures().trouble.empty()) {
@@ -207,11 +264,14 @@ void add_live_command(CLI::App& program) {
         words.emplace(choice.word, choice.value);
     }
     command->add_option("--condition", options->condition, "what becomes of triggers, in place of arbiter.condition")
-        ->transform(CLI::CheckedTransformer(words).description("{disrupt,delayed,yoked,rate_matched,none}"));
+        ->transform(CLI::CheckedTransformer(words).description("{disrupt,delayed,yoked,rate_matched,none,assigned}"));
     command->add_option(
         "--schedule", options->schedule_file,
         "control schedule, in place of arbiter.schedule_file: pulses at its places where the condition\n"
         "is yoked or rate_matched, else blanking alone");
+    command->add_option("--assignment", options->assignment_file,
+                        "list of conditions made by `assign`, in place of assignment.file");
+    command->add_option("--code", options->code, "which session of that list this one is");
     command->add_option("--stop-after-s", options->stop_after_s, "end by itself after this many seconds; 0: never")
         ->check(CLI::Range(0.0, 1e7));
     command

@@ -1,9 +1,11 @@
 // millpond preflight: is this computer fit for a session with these settings? Nothing is armed and no pulse is ordered.
 #include "app/commands.hpp"
 #include "app/from_settings.hpp"
+#include "app/limits_findings.hpp"
 #include "app/wiring.hpp"
 #include "base/refusal.hpp"
 #include "journal/record_file.hpp"
+#include "outputs/make_output.hpp"
 #include "realtime/fitness.hpp"
 
 #include <CLI/CLI.hpp>
@@ -37,7 +39,9 @@ std::string try_engine(const Settings& settings, const StreamSettings& stream, c
     const Hertz rate{stream.rate_hz};
     const auto detector = make_detector(settings, channels, rate);
     (void)schedule_for(settings.arbiter, rate);
-    (void)pulse_shape(settings.output);
+    for (const auto& output : settings.outputs) {
+        (void)pulse_shape(output);
+    }
     return fmt::format("{} channels at {} Hz; band-pass delays {:.1f} ms at its centre, with smoothing {:.1f} ms",
                        channels.size(), stream.rate_hz, detector.filter_delay_samples() / rate.value * 1e3,
                        detector.delay_samples() / rate.value * 1e3);
@@ -57,16 +61,67 @@ std::string try_control(const Settings& settings) {
     }
     boost::asio::io_context context;
     CommandRing commands(4);
-    const CommandListener listener(context, settings.control, {}, commands, [](const std::string&) {});
+    const CommandListener listener(context, settings.control, commands_for(settings, false), commands, {},
+                                   [](const std::string&) {});
     return fmt::format("{}:{} is free", settings.control.listen_address, settings.control.port);
 }
 
-std::string try_output(const OutputSettings& output) {
-    (void)make_output(output);
-    return output.kind == OutputKind::silent
-               ? "silent: orders are journaled and go nowhere"
-               : fmt::format("OSC to {}:{} {}; whether anybody listens there cannot be asked", output.host, output.port,
-                             output.address);
+std::string words_for(const OutputSettings& output) {
+    const auto kind = std::string(word_for<OutputKind>(output_kinds, output.kind));
+    const auto on = kind + " on " + output.device;
+    switch (output.kind) {
+    case OutputKind::silent:
+        return "silent: orders are journaled and go nowhere";
+    case OutputKind::osc:
+        return fmt::format("OSC to {}:{} {}; whether anybody listens there cannot be asked", output.host, output.port,
+                           output.address);
+    case OutputKind::serial_lines:
+        return on + ", line " + std::string(word_for<ModemLine>(modem_lines, output.modem_line)) +
+               ": took the order low. The kernel raises RTS and DTR for a moment when a port is opened: connect after "
+               "the start";
+    case OutputKind::serial_bytes:
+        return on + ": answered, and took the order low";
+    case OutputKind::parallel_port:
+        return fmt::format("{}, data bits {}: took the order low", on, output.data_bits);
+    default:
+        return fmt::format("{}, channel {}: took the order low", on, output.channel);
+    }
+}
+
+Finding check_output(const OutputSettings& settings, Output& output) {
+    const auto about = "output " + settings.name;
+    if (!output.set_line(false) || !output.answers()) {
+        return {Fitness::bad, about, "does not take the order low, or does not answer"};
+    }
+    return {settings.kind == OutputKind::serial_lines ? Fitness::caution : Fitness::good, about, words_for(settings)};
+}
+
+Finding check_watchdog(const Settings& settings, const std::vector<std::unique_ptr<Output>>& outputs) {
+    LineBoard board;
+    const auto keeper = make_keeper(settings, outputs, board);
+    std::string lines;
+    for (const auto& output : settings.outputs) {
+        lines += fmt::format("{}{} after {:g} ms high", lines.empty() ? "" : ", ", output.name, output.longest_high());
+    }
+    const auto found = fmt::format("a process of its own lowers {}, and all when the program dies; a power cut, a "
+                                   "stopped kernel or a cable out of its socket is beyond it",
+                                   lines);
+    return {Fitness::good, "watchdog", found};
+}
+
+/// All outputs at once: some share a device.
+std::vector<Finding> check_outputs(const Settings& settings) {
+    std::vector<Finding> findings;
+    try {
+        const auto outputs = make_outputs(settings.outputs);
+        for (std::size_t i = 0; i < outputs.size(); ++i) {
+            findings.push_back(check_output(settings.outputs[i], *outputs[i]));
+        }
+        findings.push_back(check_watchdog(settings, outputs));
+    } catch (const Refusal& refusal) {
+        findings.push_back(refused("outputs", refusal));
+    }
+    return findings;
 }
 
 double bytes_per_second(const Settings& settings, const StreamSettings& stream) {
@@ -83,7 +138,9 @@ std::vector<Finding> findings_for(const std::string& file) {
     findings.push_back(tried("engine", [&] { return try_engine(settings, stream, file); }));
     findings.push_back(tried("stream port", [&] { return try_stream(stream); }));
     findings.push_back(tried("command port", [&] { return try_control(settings); }));
-    findings.push_back(tried("output", [&] { return try_output(settings.output); }));
+    add(check_outputs(settings));
+    add(check_limits(settings));
+    add(check_stimulus(settings.stimulus));
     add(check_rights(settings.realtime));
     findings.push_back(check_throttling(settings.realtime));
     findings.push_back(check_wake(settings.realtime, wake_seconds));

@@ -8,8 +8,8 @@
 
 namespace millpond {
 
-/// State, rate, packets lost, floor, threshold, detections, pulses, loop latency p50/p99; and trouble where there is
-/// any.
-[[nodiscard]] std::string status_line(const LiveFigures& figures, Hertz rate);
+/// State, closed gates, epoch and time left in it, rate, packets lost, floor, threshold, detections, pulses (`blinded`:
+/// triggers), loop latency p50/p99; the newest speed and trouble where there are any.
+[[nodiscard]] std::string status_line(const LiveFigures& figures, Hertz rate, bool blinded = false);
 
 } // namespace millpond

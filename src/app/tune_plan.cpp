@@ -134,7 +134,7 @@ WorkIdentity identity_of(const TunePlan& plan) {
     for (const auto& candidate : plan.candidates.settings) {
         settings.add(to_yaml(candidate));
     }
-    settings.add(to_yaml(plan.sweep.arbiter));
+    settings.add(to_yaml(plan.sweep.arbiter) + to_yaml(plan.sweep.arbiter.limits));
     settings.add(shortest(plan.sweep.block_s) + " " + shortest(plan.sweep.early_ms));
     return {program_name(), samples.text(), truth.text(), settings.text(), plan.candidates.settings.size()};
 }
@@ -163,6 +163,8 @@ TunePlan make_tune_plan(const TuneOptions& options) {
     load(plan, options);
     plan.sweep.rate = plan.files.front().info.rate;
     plan.sweep.arbiter = plan.base.arbiter;
+    plan.sweep.arbiter.limits = for_sweeps(plan.base.arbiter.limits);
+    plan.sweep.arbiter.plan = {};
     plan.sweep.early_ms = options.labels.empty() ? referee_early_ms : 0.0;
     plan.sweep.block_s = options.block_s;
     plan.sweep.threads = options.threads;

@@ -2,9 +2,12 @@
 
 #include "app/from_settings.hpp"
 #include "journal/session_reader.hpp"
-#include "outputs/osc_output.hpp"
-#include "outputs/silent_output.hpp"
+#include "outputs/crash_guard.hpp"
+#include "outputs/make_output.hpp"
 #include "realtime/realtime.hpp"
+#include "stimulus/stimulus.hpp"
+
+#include <algorithm>
 
 namespace millpond {
 namespace {
@@ -22,7 +25,7 @@ std::string word_of(KernelWidth width) {
 
 LiveLoopSettings loop_settings(const Settings& settings, const StreamSettings& stream) {
     return {Nanos{static_cast<std::int64_t>(stream.stale_after_ms * 1e6)}, settings.realtime.spin,
-            settings.arbiter.start_armed};
+            settings.arbiter.start_armed, settings.arbiter.speed_gate};
 }
 
 // What a session keeps of its settings: all but the secret, which is nobody's evidence.
@@ -35,8 +38,23 @@ std::string settings_to_keep(Settings settings, const StreamSettings& stream, co
     return settings_to_yaml(settings);
 }
 
-SessionAbout about(const Settings& settings, const StreamSettings& stream, const Channels& channels,
-                   Detector& detector) {
+// Figures and warnings, as they stood when the session began.
+void keep_stimulus(const StimulusSettings& stimulus, nlohmann::json& more) {
+    if (const auto figures = stimulus_figures(stimulus)) {
+        more["stimulus"] = {{"current_ua", stimulus.current_ua},
+                            {"phase_us", stimulus.phase_us},
+                            {"phases", stimulus.phases},
+                            {"area_um2", figures->area_um2},
+                            {"charge_per_phase_uc", figures->charge_uc},
+                            {"charge_density_uc_cm2", figures->density_uc_cm2},
+                            {"shannon_k", figures->shannon_k},
+                            {"text", told(*figures)},
+                            {"warnings", stimulus_warnings(*figures)}};
+    }
+}
+
+SessionAbout about(const Settings& settings, const std::optional<Assigned>& assigned, const StreamSettings& stream,
+                   const Channels& channels, Detector& detector) {
     SessionAbout about;
     about.program = program_name();
     about.rate = Hertz{stream.rate_hz};
@@ -49,7 +67,15 @@ SessionAbout about(const Settings& settings, const StreamSettings& stream, const
         // As they were given: the detector's own words about them may differ in the last bit.
         about.warm_start = last_floors(SessionReader(settings.detector.floor.warm_start_session).events());
     }
+    if (assigned) {
+        about.blinded = assigned->kept.sealed;
+        about.more["assignment"] = nlohmann::json::parse(to_json_text(assigned->kept));
+    }
     about.settings_text = settings_to_keep(settings, stream, channels);
+    keep_stimulus(settings.stimulus, about.more);
+    if (settings.arbiter.speed_gate.on) {
+        about.more["speed_gate_delay_ms"] = settings.arbiter.speed_gate.delay_ms;
+    }
     return about;
 }
 
@@ -59,6 +85,15 @@ std::vector<std::string> gate_names(const ArbiterSettings& arbiter) {
         names.push_back(gate.name);
     }
     return names;
+}
+
+std::vector<PulseLinePlan> line_plans(const std::vector<OutputSettings>& settings,
+                                      const std::vector<std::unique_ptr<Output>>& outputs) {
+    std::vector<PulseLinePlan> plans;
+    for (std::size_t i = 0; i < outputs.size(); ++i) {
+        plans.push_back({outputs[i].get(), pulse_shape(settings[i]), settings[i].follows});
+    }
+    return plans;
 }
 
 // Locks memory and makes sure that the loop's rights will be had when the session starts.
@@ -75,13 +110,28 @@ RealtimeSettings granted(const RealtimeSettings& settings) {
     return settings;
 }
 
-std::unique_ptr<CommandListener> listen(const Settings& settings, boost::asio::io_context& context,
-                                        CommandRing& commands, std::function<void(const std::string&)> refused) {
+bool has_trials(const std::optional<Assigned>& assigned) {
+    return assigned && assigned->kept.unit == AssignmentUnit::trial;
+}
+
+} // namespace
+
+OscCommands commands_for(const Settings& settings, bool trials) {
+    return {settings.control.secret,
+            gate_names(settings.arbiter),
+            {trials, !settings.arbiter.plan.epochs.empty(), settings.arbiter.speed_gate.on}};
+}
+
+namespace {
+
+std::unique_ptr<CommandListener> listen(const Settings& settings, bool trials, boost::asio::io_context& context,
+                                        CommandRing& commands, StopDoor door,
+                                        std::function<void(const std::string&)> refused) {
     if (!settings.control.listen) {
         return nullptr;
     }
-    return std::make_unique<CommandListener>(context, settings.control, gate_names(settings.arbiter), commands,
-                                             std::move(refused));
+    return std::make_unique<CommandListener>(context, settings.control, commands_for(settings, trials), commands,
+                                             std::move(door), std::move(refused));
 }
 
 } // namespace
@@ -95,14 +145,19 @@ Detector make_detector(const Settings& settings, const Channels& channels, Hertz
     if (const auto floors = warm_start_floors(settings.detector); !floors.empty()) {
         detector.warm_start(floors);
     }
+    check_floor_channels(settings.arbiter.limits.floor, detector);
     return detector;
 }
 
-std::unique_ptr<Output> make_output(const OutputSettings& settings) {
-    if (settings.kind == OutputKind::osc) {
-        return std::make_unique<OscOutput>(settings);
+LineKeeper make_keeper(const Settings& settings, const std::vector<std::unique_ptr<Output>>& outputs,
+                       LineBoard& board) {
+    std::vector<WatchedLine> lines;
+    for (std::size_t i = 0; i < outputs.size(); ++i) {
+        lines.push_back({outputs[i].get(), longest_high(settings.outputs[i])});
     }
-    return std::make_unique<SilentOutput>();
+    // Above the loop, which may be what stands still.
+    const int priority = settings.realtime.priority > 0 ? std::min(settings.realtime.priority + 1, 99) : 0;
+    return {std::move(lines), board, {priority, settings.realtime.lock_memory}};
 }
 
 /// The session writer as the loop knows it.
@@ -120,21 +175,39 @@ class LiveSession::Journal : public LoopJournal {
     SessionWriter& writer_;
 };
 
-LiveSession::LiveSession(const Settings& settings, const std::filesystem::path& settings_file,
+LiveSession::LiveSession(Settings settings, const std::filesystem::path& settings_file,
                          std::function<void(const std::string&)> refused_command)
-    : stream_(resolved(settings.stream, settings_file)), realtime_(granted(settings.realtime)), rate_{stream_.rate_hz},
+    : stream_(resolved(settings.stream, settings_file)), realtime_(granted(settings.realtime)),
+      output_settings_(settings.outputs), outputs_(make_outputs(settings.outputs)),
+      keeper_(make_keeper(settings, outputs_, board_)), rate_{stream_.rate_hz},
+      assigned_(assigned_for(settings, rate_, settings_file.string())),
       channels_(channels_for(settings, ripple_channels(stream_.channels), settings_file.string())),
       detector_(make_detector(settings, channels_, rate_)), schedule_(schedule_for(settings.arbiter, rate_)),
-      listener_(listen(settings, control_, commands_, std::move(refused_command))), source_(open_source(stream_)),
-      output_(make_output(settings.output)),
-      writer_(SessionWriter::open(settings.session, about(settings, stream_, channels_, detector_))),
+      listener_(listen(settings, has_trials(assigned_), control_, commands_, stop_door(), std::move(refused_command))),
+      source_(open_source(stream_)),
+      writer_(SessionWriter::open(settings.session, about(settings, assigned_, stream_, channels_, detector_))),
       journal_(std::make_unique<Journal>(*writer_)),
-      line_(*output_, pulse_shape(settings.output), writer_->pulse_sink(), settings.realtime.priority),
-      loop_(loop_settings(settings, stream_), *source_, line_, *journal_, commands_,
+      lines_(line_plans(output_settings_, outputs_), board_, writer_->pulse_sink(), settings.realtime.priority),
+      loop_(loop_settings(settings, stream_), *source_, lines_, *journal_, commands_,
             [&](EventSink& sink, PulsePort& port) {
-                return Engine(std::move(detector_), settings.arbiter, std::move(schedule_), rate_, sink, port);
+                Engine engine(std::move(detector_), settings.arbiter, std::move(schedule_), rate_, sink, port);
+                if (assigned_) {
+                    engine.assign(assigned_->list, assigned_->block_frames);
+                }
+                return engine;
             }) {
-    guard_line_against_crashes(output_.get());
+    std::vector<Output*> guarded;
+    for (std::size_t i = 0; i < outputs_.size(); ++i) {
+        guarded.push_back(outputs_[i].get());
+        journal_device(i, DeviceState::ready);
+    }
+    guard_lines_against_crashes(guarded);
+}
+
+// The loop is made after the listener; nothing is heard before both are.
+StopDoor LiveSession::stop_door() {
+    return {[this](const ChangedBy& by) { loop_.emergency_stop(by); }, [this] { return loop_.emergency_stopped(); },
+            [this] { loop_.clear_emergency_stop(); }};
 }
 
 LiveSession::~LiveSession() {
@@ -142,7 +215,7 @@ LiveSession::~LiveSession() {
         loop_.stop();
         thread_.join();
     }
-    guard_line_against_crashes(nullptr);
+    guard_lines_against_crashes({});
 }
 
 void LiveSession::start() {
@@ -163,12 +236,37 @@ void LiveSession::start() {
     may_run_.count_down();
 }
 
+void LiveSession::tend(const std::function<void(const std::string&)>& tell) {
+    keeper_.look(lines_,
+                 {[&](std::size_t output, DeviceState state) {
+                      journal_device(output, state);
+                      tell(state == DeviceState::lost
+                               ? "output " + output_settings_[output].name + " is lost; it is tried every second"
+                               : "output " + output_settings_[output].name +
+                                     " is back, its line ordered low; arm again when you are ready");
+                  },
+                  [&](bool watched) {
+                      tell(watched ? "another watchdog has taken over; arm again when you are ready"
+                                   : "the watchdog of the lines was lost");
+                  }});
+}
+
+void LiveSession::journal_device(std::size_t output, DeviceState state) {
+    const auto& settings = output_settings_[output];
+    DeviceDetail detail{static_cast<std::uint16_t>(output),
+                        static_cast<std::uint16_t>(settings.follows == Follows::trigger ? 1 : 0),
+                        {}};
+    settings.name.copy(detail.name.data(), detail.name.size() - 1);
+    writer_->control_sink().take(
+        Event::make(EventKind::device, static_cast<std::uint8_t>(state), writer_->snapshot().upto, detail));
+}
+
 void LiveSession::finish() {
     loop_.stop();
     if (thread_.joinable()) {
         thread_.join();
     }
-    line_.fall_now();
+    lines_.fall_now();
     writer_->close(loop_.engine().next_sample());
 }
 

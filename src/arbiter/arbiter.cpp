@@ -9,33 +9,34 @@ Arbiter Arbiter::make(const ArbiterSettings& settings, Hertz rate) {
     for (const auto& gate : settings.gates) {
         arbiter.gates_.push_back({gate.name, gate.starts_open});
     }
-    arbiter.lockout_frames_ = frames_in_ms(settings.lockout_ms, rate);
-    arbiter.second_frames_ = frames_in_ms(1000.0, rate);
-    arbiter.session_limit_ = settings.max_pulses_per_session;
-    for (auto& counted : arbiter.counted_) {
-        counted.recent.resize(settings.max_pulses_per_second);
+    if (settings.speed_gate.on) {
+        arbiter.add_gate(speed_gate_name, false); // no speed has come yet
     }
+    arbiter.limits_.fill(PulseLimits::make(settings.limits, settings.lockout_ms, rate));
+    arbiter.watch_ = FaultWatch::make(settings.limits, rate);
+    arbiter.plan_ = SessionPlan::make(settings.plan, rate);
     return arbiter;
 }
 
 Rule Arbiter::judge(const Candidate& detection) noexcept {
-    return judge(detection, of(PulseOrigin::trigger));
+    const Rule rule = judge(detection, of(PulseOrigin::trigger));
+    watch_.judged(detection.at, rule);
+    return rule;
 }
 
 Rule Arbiter::judge_slot(const Candidate& moment, PulseOrigin origin) noexcept {
     return judge(moment, of(origin));
 }
 
-Rule Arbiter::judge(const Candidate& candidate, Counted& counted) noexcept {
-    const Rule rule = refusal(candidate, counted);
+Rule Arbiter::judge(const Candidate& candidate, PulseLimits& limits) noexcept {
+    const Rule rule = refusal(candidate, limits);
     if (rule == Rule::none) {
-        counted.recent[counted.count % counted.recent.size()] = candidate.at;
-        ++counted.count;
+        limits.count(candidate.at);
     }
     return rule;
 }
 
-Rule Arbiter::refusal(const Candidate& candidate, const Counted& counted) const noexcept {
+Rule Arbiter::refusal(const Candidate& candidate, const PulseLimits& limits) const noexcept {
     if (candidate.settling) {
         return Rule::gap;
     }
@@ -51,19 +52,7 @@ Rule Arbiter::refusal(const Candidate& candidate, const Counted& counted) const 
     if (state_ == ArmState::not_armed) {
         return Rule::not_armed;
     }
-    return gates_open() ? limit(candidate.at, counted) : Rule::gate;
-}
-
-Rule Arbiter::limit(SampleIndex at, const Counted& counted) const noexcept {
-    const auto& recent = counted.recent;
-    if (counted.count > 0 && at - recent[(counted.count - 1) % recent.size()] < lockout_frames_) {
-        return Rule::lock_out;
-    }
-    // The oldest of the last N stands where the next one would be kept.
-    if (counted.count >= recent.size() && at - recent[counted.count % recent.size()] < second_frames_) {
-        return Rule::second_limit;
-    }
-    return counted.count >= session_limit_ ? Rule::session_limit : Rule::none;
+    return gates_open() && plan_.pulses() ? limits.refusal(candidate.at) : Rule::gate;
 }
 
 bool Arbiter::set_gate(std::string_view name, bool open) noexcept {

@@ -4,6 +4,9 @@
 #pragma once
 
 #include "arbiter/arbiter_settings.hpp"
+#include "arbiter/fault_watch.hpp"
+#include "arbiter/pulse_limits.hpp"
+#include "arbiter/session_plan.hpp"
 #include "base/event.hpp"
 #include "base/units.hpp"
 
@@ -38,32 +41,44 @@ class Arbiter {
 
     [[nodiscard]] ArmState state() const noexcept { return state_; }
     /// Arming while faulted is allowed: whoever arms says that the fault is mended.
-    void set_state(ArmState state) noexcept { state_ = state; }
+    void set_state(ArmState state) noexcept {
+        state_ = state;
+        if (state == ArmState::armed) {
+            watch_.armed();
+        }
+    }
+
+    /// Told of gaps and floors; with what `judge` saw it knows when the session must be faulted.
+    [[nodiscard]] FaultWatch& watch() noexcept { return watch_; }
+
+    [[nodiscard]] const SessionPlan& plan() const noexcept { return plan_; }
+    /// The session's first sample.
+    void start_plan(SampleIndex at) noexcept { plan_.start(at); }
+    void next_epoch(SampleIndex at) noexcept {
+        plan_.next(at);
+        for (auto& limits : limits_) {
+            limits.begin_epoch();
+        }
+    }
 
     /// False where no gate has that name.
     bool set_gate(std::string_view name, bool open) noexcept;
     [[nodiscard]] bool has_gate(std::string_view name) const noexcept;
     [[nodiscard]] bool gates_open() const noexcept;
 
-    [[nodiscard]] std::uint32_t triggers() const noexcept { return of(PulseOrigin::trigger).count; }
+    [[nodiscard]] std::uint32_t triggers() const noexcept { return of(PulseOrigin::trigger).triggers(); }
 
     [[nodiscard]] std::size_t gate_count() const noexcept { return gates_.size(); }
     [[nodiscard]] std::string_view gate_name(std::size_t i) const noexcept { return gates_[i].name; }
     [[nodiscard]] bool gate_open(std::size_t i) const noexcept { return gates_[i].open; }
 
   private:
-    /// Moments that were let through, of one origin.
-    struct Counted {
-        std::uint32_t count = 0;
-        std::vector<SampleIndex> recent; // ring of the last max_pulses_per_second ones
-    };
-    [[nodiscard]] Counted& of(PulseOrigin origin) noexcept { return counted_[static_cast<std::size_t>(origin)]; }
-    [[nodiscard]] const Counted& of(PulseOrigin origin) const noexcept {
-        return counted_[static_cast<std::size_t>(origin)];
+    [[nodiscard]] PulseLimits& of(PulseOrigin origin) noexcept { return limits_[static_cast<std::size_t>(origin)]; }
+    [[nodiscard]] const PulseLimits& of(PulseOrigin origin) const noexcept {
+        return limits_[static_cast<std::size_t>(origin)];
     }
-    [[nodiscard]] Rule judge(const Candidate& candidate, Counted& counted) noexcept;
-    [[nodiscard]] Rule refusal(const Candidate& candidate, const Counted& counted) const noexcept;
-    [[nodiscard]] Rule limit(SampleIndex at, const Counted& counted) const noexcept;
+    [[nodiscard]] Rule judge(const Candidate& candidate, PulseLimits& limits) noexcept;
+    [[nodiscard]] Rule refusal(const Candidate& candidate, const PulseLimits& limits) const noexcept;
 
     struct Gate {
         std::string name;
@@ -72,10 +87,9 @@ class Arbiter {
 
     ArmState state_ = ArmState::not_armed;
     std::vector<Gate> gates_;
-    std::uint64_t lockout_frames_ = 0;
-    std::uint64_t second_frames_ = 0;
-    std::uint32_t session_limit_ = 0;
-    std::array<Counted, 3> counted_; // by origin
+    std::array<PulseLimits, 3> limits_; // by origin
+    FaultWatch watch_;
+    SessionPlan plan_;
 };
 
 } // namespace millpond

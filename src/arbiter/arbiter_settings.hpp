@@ -1,6 +1,9 @@
 // What a user may say about when a detection becomes a pulse. Thread: control.
 #pragma once
 
+#include "arbiter/limits_settings.hpp"
+#include "arbiter/plan_settings.hpp"
+#include "arbiter/speed_gate_settings.hpp"
 #include "base/describe.hpp"
 
 #include <cstdint>
@@ -15,13 +18,12 @@ enum class Condition : std::uint8_t {
     delayed,      ///< a pulse a while later, when no ripple is going on
     yoked,        ///< pulses at the places of another session's pulses, none at triggers
     rate_matched, ///< pulses at random places made beforehand, none at triggers
-    none          ///< never a pulse
+    none,         ///< never a pulse
+    assigned      ///< one of the above, by a list made beforehand
 };
-inline constexpr Choice<Condition> conditions[] = {{Condition::disrupt, "disrupt"},
-                                                   {Condition::delayed, "delayed"},
-                                                   {Condition::yoked, "yoked"},
-                                                   {Condition::rate_matched, "rate_matched"},
-                                                   {Condition::none, "none"}};
+inline constexpr Choice<Condition> conditions[] = {
+    {Condition::disrupt, "disrupt"},           {Condition::delayed, "delayed"}, {Condition::yoked, "yoked"},
+    {Condition::rate_matched, "rate_matched"}, {Condition::none, "none"},       {Condition::assigned, "assigned"}};
 /// Whether a condition plays a control schedule.
 [[nodiscard]] constexpr bool plays_schedule(Condition condition) noexcept {
     return condition == Condition::yoked || condition == Condition::rate_matched;
@@ -85,9 +87,11 @@ struct ArbiterSettings {
     std::uint64_t seed = 1;
     bool start_armed = false;
     double lockout_ms = 150.0;
-    std::uint32_t max_pulses_per_second = 4;
-    std::uint32_t max_pulses_per_session = 10000;
     std::vector<GateSettings> gates;
+    // Sections of their own in a settings file.
+    LimitsSettings limits;
+    PlanSettings plan;
+    SpeedGateSettings speed_gate;
 
     bool operator==(const ArbiterSettings&) const = default;
 };
@@ -105,9 +109,6 @@ template <class Visitor> void describe(Visitor& visit, ArbiterSettings& arbiter)
     visit.flag("start_armed", arbiter.start_armed, "whether pulses are allowed from the start; else arm by command");
     visit.number("lockout_ms", arbiter.lockout_ms, {0.0, 60000.0},
                  "time after a trigger in which no other may follow, the same in every condition");
-    visit.whole("max_pulses_per_second", arbiter.max_pulses_per_second, {1, 1000},
-                "pulses within any one second of the stream");
-    visit.whole("max_pulses_per_session", arbiter.max_pulses_per_session, {1, 10000000}, "pulses within one session");
     visit.list("gates", arbiter.gates, "named gates; while one is closed no trigger is let through");
 }
 

@@ -91,6 +91,12 @@ void PulsePlan::done() noexcept {
     }
 }
 
+std::pair<std::uint32_t, bool> PulsePlan::begin_unit() noexcept {
+    const bool listed = units_begun_ < assigned_.size();
+    condition_ = listed ? assigned_[units_begun_] : Condition::none;
+    return {++units_begun_, listed};
+}
+
 bool PulsePlan::gives(PulseOrigin origin) const noexcept {
     switch (condition_) {
     case Condition::disrupt:
@@ -101,6 +107,7 @@ bool PulsePlan::gives(PulseOrigin origin) const noexcept {
     case Condition::rate_matched:
         return origin == PulseOrigin::schedule;
     case Condition::none:
+    case Condition::assigned: // and none has begun
         return false;
     }
     return false;

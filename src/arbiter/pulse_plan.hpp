@@ -9,6 +9,7 @@
 #include "base/random.hpp"
 #include "base/units.hpp"
 
+#include <utility>
 #include <vector>
 
 namespace millpond {
@@ -51,14 +52,21 @@ class PulsePlan {
 
     /// Whether this condition gives pulses at slots of that origin.
     [[nodiscard]] bool gives(PulseOrigin origin) const noexcept;
-    [[nodiscard]] Condition condition() const noexcept { return condition_; }
-    void set_condition(Condition condition) noexcept { condition_ = condition; }
+
+    /// Conditions by an assignment, one for each session, block or trial in order; the first begins with
+    /// `begin_unit`. After the last there are no pulses. Thread: control, before the session.
+    void assign(std::vector<Condition> list) { assigned_ = std::move(list); }
+    [[nodiscard]] bool is_assigned() const noexcept { return !assigned_.empty(); }
+    /// The next one begins. Its number, from 1; false where the list was at its end.
+    std::pair<std::uint32_t, bool> begin_unit() noexcept;
 
   private:
     [[nodiscard]] PulseSlot next_of_schedule() const noexcept;
     [[nodiscard]] bool schedule_first() const noexcept;
 
     Condition condition_ = Condition::disrupt;
+    std::vector<Condition> assigned_;
+    std::uint32_t units_begun_ = 0;
     Random draws_{0, 0};
     double catch_share_ = 0.0;
     bool has_delays_ = false, schedule_waits_ = true;

@@ -29,19 +29,48 @@ RefereeFindings ask_referee(const AuditInput& input, const SessionReader& sessio
     return referee.finish();
 }
 
-Score score_as(const AuditInput& input, const SessionReader& session, const AuditScore& known, bool as_session,
-               SampleIndex upto) {
+EligibleRules session_rules(const AuditInput& input, const SessionReader& session) {
     const auto detector = Detector::make(input.settings.detector, session.provenance().about.channels, session.rate());
-    EligibleRules rules;
-    rules.settle_frames = detector.filter_settle_frames();
-    rules.blanking_ms = input.settings.detector.blanking_ms;
+    return {detector.filter_settle_frames(), input.settings.detector.blanking_ms, true,
+            input.settings.arbiter.lockout_ms};
+}
+
+Intervals eligible_as(const AuditInput& input, const SessionReader& session, const AuditScore& known, bool as_session,
+                      SampleIndex upto) {
+    auto rules = session_rules(input, session);
     rules.session = as_session;
-    rules.lockout_ms = input.settings.arbiter.lockout_ms;
     auto eligible = eligible_time(session.events(), rules, session.rate(), SampleIndex{}, upto);
-    if (known.referee) {
-        eligible = without(eligible, known.referee->artefacts.excluded);
+    return known.referee ? without(eligible, known.referee->artefacts.excluded) : eligible;
+}
+
+void score_all(const AuditInput& input, const SessionReader& session, const SessionFigures& figures, SampleIndex upto,
+               AuditScore& known) {
+    const auto score_in = [&](const Intervals& eligible) {
+        return score(known.ripples, known.detections, eligible, input.labels ? 0.0 : referee_early_ms, session.rate());
+    };
+    const auto detector = eligible_as(input, session, known, false, upto);
+    const auto as_session = eligible_as(input, session, known, true, upto);
+    known.detector = score_in(detector);
+    known.session = score_in(as_session);
+    for (const auto& epoch : figures.epochs) {
+        const Intervals there{{epoch.from, epoch.to}};
+        known.epochs.push_back({score_in(intersection(detector, there)), score_in(intersection(as_session, there))});
     }
-    return score(known.ripples, known.detections, eligible, input.labels ? 0.0 : referee_early_ms, session.rate());
+}
+
+// Without what tells of the condition, where that is sealed.
+std::vector<Event> events_to_tell(const SessionReader& session, bool blinded) {
+    auto events = session.events();
+    std::erase_if(events, [blinded](const Event& event) { return blinded && tells_of_condition(event.kind); });
+    return events;
+}
+
+void add_conditions(const AuditInput& input, const SessionReader& session, AuditResult& result) {
+    auto list = input.assignment ? input.assignment->conditions : std::vector{input.settings.arbiter.condition};
+    const auto eligible =
+        eligible_time(session.events(), session_rules(input, session), session.rate(), SampleIndex{}, result.end);
+    result.conditions = condition_figures(session.events(), list, eligible, session.rate(), result.end);
+    result.comparisons = compare_rates(result.conditions);
 }
 
 void add_score(const AuditInput& input, const SessionReader& session, AuditResult& result) {
@@ -64,8 +93,7 @@ void add_score(const AuditInput& input, const SessionReader& session, AuditResul
     known.pulses_given = result.figures.pulses > 0;
     known.pulses_scheduled = result.figures.orders[static_cast<std::size_t>(PulseOrigin::trigger)] == 0;
     const auto upto = input.labels ? result.end : std::min(result.end, SampleIndex{samples->frames()});
-    known.detector = score_as(input, session, known, false, upto);
-    known.session = score_as(input, session, known, true, upto);
+    score_all(input, session, result.figures, upto, known);
     result.score = std::move(known);
 }
 
@@ -98,9 +126,20 @@ AuditResult audit_session(const AuditInput& input) {
     if (const auto samples = session.open_samples()) {
         result.frames_stored = samples->frames();
     }
-    result.figures = session_figures(session.events());
-    result.latency = latency_rows(session.events());
-    result.rerun = rerun_session(session, input.settings, input.settings_name, progress_of(input, "re-run"));
+    result.code = input.assignment ? input.assignment->code : std::string{};
+    result.blinded = input.assignment && input.assignment->conditions.empty();
+    const auto events = events_to_tell(session, result.blinded);
+    result.figures = session_figures(events);
+    if (!result.figures.epochs.empty()) {
+        auto& last = result.figures.epochs.back();
+        last.to = std::max(last.from, result.end);
+    }
+    result.latency = latency_rows(events);
+    result.rerun =
+        rerun_session(session, input.settings, input.settings_name, progress_of(input, "re-run"), input.assignment);
+    if (!result.blinded) {
+        add_conditions(input, session, result);
+    }
     add_score(input, session, result);
     add_controls(input, session, result);
     return result;

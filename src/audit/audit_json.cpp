@@ -5,17 +5,38 @@
 namespace millpond {
 namespace {
 
+void add_summary(Json& json, const LatencySummary& figures) {
+    json["count"] = figures.count;
+    json["p50_ns"] = figures.p50;
+    json["p90_ns"] = figures.p90;
+    json["p99_ns"] = figures.p99;
+    json["p99.9_ns"] = figures.p999;
+    json["max_ns"] = figures.max;
+}
+
 Json latency_json(const AuditResult& r) {
     auto rows = Json::array();
     for (const auto& row : r.latency) {
         Json json{{"part", row.part}, {"over", row.over}, {"span", row.span}, {"measured", row.figures.has_value()}};
         if (row.figures) {
-            json["count"] = row.figures->count;
-            json["p50_ns"] = row.figures->p50;
-            json["p90_ns"] = row.figures->p90;
-            json["p99_ns"] = row.figures->p99;
-            json["p99.9_ns"] = row.figures->p999;
-            json["max_ns"] = row.figures->max;
+            add_summary(json, *row.figures);
+        }
+        rows.push_back(std::move(json));
+    }
+    return rows;
+}
+
+Json outputs_json(const AuditResult& r) {
+    auto rows = Json::array();
+    for (const auto& output : r.figures.outputs) {
+        Json json{{"output", output.output},
+                  {"name", output.name},
+                  {"marker", output.marker},
+                  {"lost", output.lost},
+                  {"ends", output.ends}};
+        if (output.width && output.late) {
+            add_summary(json["width"], *output.width);
+            add_summary(json["late"], *output.late);
         }
         rows.push_back(std::move(json));
     }
@@ -54,6 +75,17 @@ Json rerun_json(const AuditResult& r) {
             {"differences", differences}};
 }
 
+Json speed_json(const SpeedFigure& speed) {
+    if (speed.events == 0) {
+        return nullptr;
+    }
+    return {{"values", speed.values},
+            {"kept", speed.events},
+            {"least", speed.least},
+            {"median", speed.median},
+            {"most", speed.most}};
+}
+
 Json stream_json(const AuditResult& r) {
     const auto rate = r.provenance.about.rate;
     auto gaps = Json::array();
@@ -69,11 +101,12 @@ Json stream_json(const AuditResult& r) {
                           {"utc", utc_text(state.time_ns)},
                           {"before", name_of(state.before)},
                           {"after", name_of(state.after)},
-                          {"cause", name_of(state.cause)}});
+                          {"cause", name_of(state.cause)},
+                          {"by", told(state.by)}});
     }
     auto gates = Json::array();
     for (const auto& gate : r.figures.gates) {
-        gates.push_back({{"sample", gate.at.value}, {"name", gate.name}, {"open", gate.open}});
+        gates.push_back({{"sample", gate.at.value}, {"name", gate.name}, {"open", gate.open}, {"by", told(gate.by)}});
     }
     auto sites = Json::array();
     for (const auto& site : r.figures.sites) {
@@ -88,8 +121,36 @@ Json stream_json(const AuditResult& r) {
             {"packets", counts_json<PacketCause>(r.figures.packets)},
             {"states", states},
             {"gates", gates},
+            {"speed", speed_json(r.figures.speed)},
             {"sites", sites},
             {"notes", notes}};
+}
+
+Json epochs_json(const AuditResult& r) {
+    const auto rate = r.provenance.about.rate;
+    auto epochs = Json::array();
+    for (std::size_t i = 0; i < r.figures.epochs.size(); ++i) {
+        const auto& epoch = r.figures.epochs[i];
+        Json json{{"index", epoch.index},
+                  {"name", epoch.name},
+                  {"pulses_allowed", epoch.pulses_allowed},
+                  {"from_sample", epoch.from.value},
+                  {"to_sample", epoch.to.value},
+                  {"minutes", seconds_at(SampleIndex{epoch.to - epoch.from}, rate) / 60.0},
+                  {"planned_minutes", epoch.planned_frames == 0
+                                          ? Json(nullptr)
+                                          : Json(seconds_at(SampleIndex{epoch.planned_frames}, rate) / 60.0)},
+                  {"begun_by", told(epoch.by)},
+                  {"detections", epoch.detections},
+                  {"triggers", epoch.triggers},
+                  {"pulses", r.blinded ? Json(nullptr) : Json(epoch.pulses)},
+                  {"withheld", counts_json<Rule>(epoch.withheld, 1)}};
+        json["score"] = r.score ? Json{{"detector", json_of(r.score->epochs.at(i).detector)},
+                                       {"session", json_of(r.score->epochs.at(i).session)}}
+                                : Json(nullptr);
+        epochs.push_back(std::move(json));
+    }
+    return epochs;
 }
 
 Json floors_json(const AuditResult& r) {
@@ -126,6 +187,38 @@ Json score_json(const AuditResult& r) {
             {"definitions", score_definitions()}};
 }
 
+Json conditions_json(const AuditResult& r) {
+    auto all = Json::array();
+    for (const auto& c : r.conditions) {
+        const auto& intervals = c.trigger_intervals_s;
+        all.push_back({{"condition", word_for<Condition>(conditions, c.condition)},
+                       {"units", c.units},
+                       {"minutes", c.minutes},
+                       {"eligible_minutes", c.eligible_minutes},
+                       {"detections", c.detections},
+                       {"detections_per_minute", c.detections_per_minute()},
+                       {"triggers", c.triggers},
+                       {"catch_trials", c.catch_trials},
+                       {"orders", c.orders},
+                       {"pulses", c.pulses},
+                       {"trigger_interval_median_s",
+                        intervals.empty() ? Json(nullptr) : Json(intervals[(intervals.size() - 1) / 2])}});
+    }
+    return all;
+}
+
+Json comparisons_json(const AuditResult& r) {
+    auto all = Json::array();
+    for (const auto& pair : r.comparisons) {
+        all.push_back({{"one", word_for<Condition>(conditions, pair.one)},
+                       {"other", word_for<Condition>(conditions, pair.other)},
+                       {"detection_rate_ratio", pair.ratio},
+                       {"p", pair.p},
+                       {"test", "exact conditional test of two Poisson rates (Przyborowski & Wilenski 1940)"}});
+    }
+    return all;
+}
+
 Json records_json(const AuditResult& r) {
     auto damage = Json::array();
     for (const auto& place : r.damage) {
@@ -159,13 +252,19 @@ Json audit_json(const AuditResult& r) {
               {"catch_trials", r.figures.catch_trials},
               {"slots", counts_json<PulseOrigin>(r.figures.slots, 1)},
               {"omitted", counts_json<Rule>(r.figures.omitted, 1)},
-              {"orders", counts_json<PulseOrigin>(r.figures.orders, 0)},
-              {"pulses", r.figures.pulses},
-              {"pulse_ends", r.figures.pulse_ends},
+              {"orders", r.blinded ? Json(nullptr) : counts_json<PulseOrigin>(r.figures.orders, 0)},
+              {"pulses", r.blinded ? Json(nullptr) : Json(r.figures.pulses)},
+              {"pulse_ends", r.blinded ? Json(nullptr) : Json(r.figures.pulse_ends)},
               {"withheld", counts_json<Rule>(r.figures.withheld, 1)}}},
-            {"controls", control_json(r.controls)},
+            {"assignment_code", r.code.empty() ? Json(nullptr) : Json(r.code)},
+            {"blinded", r.blinded},
+            {"conditions", conditions_json(r)},
+            {"rate_comparisons", comparisons_json(r)},
+            {"controls", r.blinded ? Json(nullptr) : control_json(r.controls)},
             {"score", score_json(r)},
+            {"epochs", epochs_json(r)},
             {"latency", latency_json(r)},
+            {"outputs", outputs_json(r)},
             {"stream", stream_json(r)},
             {"floors", floors_json(r)}};
 }

@@ -89,7 +89,7 @@ void write_audit(const AuditResult& r, const std::filesystem::path& folder, bool
         throw Refusal(folder.string(), trouble.message(), "a folder that can be made and written");
     }
     const SessionReader session(r.session);
-    write_session_tables(session, folder);
+    write_session_tables(session, folder, r.blinded);
     if (r.score) {
         write_ripples(r, folder / "ripples.tsv");
     }

@@ -73,6 +73,24 @@ std::string head(const AuditResult& r) {
     return text;
 }
 
+// What the settings said of the stimulus and of the speed's delay.
+std::string stated_text(const AuditResult& r) {
+    const auto& more = r.provenance.about.more;
+    std::string text;
+    if (more.contains("stimulus")) {
+        text += "\nStimulus, as stated in the settings\n  " + more.at("stimulus").value("text", "") + "\n";
+        for (const auto& warning : more.at("stimulus").value("warnings", std::vector<std::string>{})) {
+            text += "  caution: " + warning + "\n";
+        }
+    }
+    if (more.contains("speed_gate_delay_ms")) {
+        text += fmt::format("\nSpeed gate\n  its speeds were {:g} ms late, as stated in the settings; nothing was "
+                            "corrected for that\n",
+                            more.value("speed_gate_delay_ms", 0.0));
+    }
+    return text;
+}
+
 std::string rerun_text(const AuditResult& r) {
     if (!r.rerun.done) {
         return fmt::format("\nRe-run\n  not done: {}\n", r.rerun.why_not);
@@ -145,9 +163,11 @@ template <std::size_t N, class Code> std::string counted(const std::array<std::u
 
 std::string decisions_text(const AuditResult& r) {
     const auto& f = r.figures;
-    auto text = fmt::format("\nDecisions\n  {} detections, {} triggers ({} catch trials), {} pulses, {} pulse ends\n",
-                            f.detections, f.triggers, f.catch_trials, f.pulses, f.pulse_ends);
-    text += fmt::format("  orders at triggers {}, delayed {}, scheduled {}\n", f.orders[0], f.orders[2], f.orders[1]);
+    auto text = fmt::format("\nDecisions\n  {} detections, {} triggers ({} catch trials)\n", f.detections, f.triggers,
+                            f.catch_trials);
+    text += r.blinded ? std::string("  pulses are not told: the condition is sealed (millpond unblind)\n")
+                      : fmt::format("  {} pulses, {} pulse ends\n  orders at triggers {}, delayed {}, scheduled {}\n",
+                                    f.pulses, f.pulse_ends, f.orders[0], f.orders[2], f.orders[1]);
     if (f.slots[1] + f.slots[2] > 0) {
         text += fmt::format("  moments for delayed pulses {}, for scheduled ones {}\n", f.slots[2], f.slots[1]);
     }
@@ -155,6 +175,43 @@ std::string decisions_text(const AuditResult& r) {
     text += "\nMoments omitted by rule\n" + counted<rule_count, Rule>(f.omitted);
     text += "\nPackets by cause\n" + counted<packet_cause_count, PacketCause>(f.packets);
     return text;
+}
+
+std::string conditions_text(const AuditResult& r) {
+    auto text = fmt::format("\nConditions{}\n", r.code.empty() ? "" : ", session " + r.code + " of its list");
+    if (r.blinded) {
+        return text + "  sealed\n";
+    }
+    text += fmt::format("  {:<13} {:>6} {:>9} {:>9} {:>11} {:>11} {:>9} {:>7} {:>7}\n", "condition", "units", "minutes",
+                        "eligible", "detections", "per minute", "triggers", "catch", "pulses");
+    for (const auto& c : r.conditions) {
+        text += fmt::format("  {:<13} {:>6} {:>9.2f} {:>9.2f} {:>11} {:>11} {:>9} {:>7} {:>7}\n",
+                            word_for<Condition>(conditions, c.condition), c.units, c.minutes, c.eligible_minutes,
+                            c.detections, figure(c.detections_per_minute()), c.triggers, c.catch_trials, c.pulses);
+    }
+    for (const auto& pair : r.comparisons) {
+        text +=
+            fmt::format("  {} over {}: {} times as many detections an eligible minute, p = {:.3f} (exact conditional "
+                        "test of two Poisson rates)\n",
+                        word_for<Condition>(conditions, pair.one), word_for<Condition>(conditions, pair.other),
+                        figure(pair.ratio), pair.p);
+    }
+    return text;
+}
+
+std::string outputs_text(const AuditResult& r) {
+    std::string text = "\nOutputs, us by this computer's clock\n";
+    for (const auto& output : r.figures.outputs) {
+        text += fmt::format("  {} ({}): {} {} ended, device lost {} times", output.name, output.output, output.ends,
+                            output.marker ? "markers" : "pulses", output.lost);
+        if (output.width && output.late) {
+            text += fmt::format("; width median {}, most {}; fall late by median {}, p99 {}, most {}",
+                                micros(output.width->p50), micros(output.width->max), micros(output.late->p50),
+                                micros(output.late->p99), micros(output.late->max));
+        }
+        text += "\n";
+    }
+    return r.figures.outputs.empty() ? text + "  none\n" : text;
 }
 
 std::string stream_text(const AuditResult& r) {
@@ -168,10 +225,12 @@ std::string stream_text(const AuditResult& r) {
     text += fmt::format("\nStates: {}, gates: {}\n", f.states.size(), f.gates.size());
     text += listed(f.states, [rate](const StateFigure& state) {
         return fmt::format("{}: {} to {} ({}), {}", at_text(state.at, rate), name_of(state.before),
-                           name_of(state.after), name_of(state.cause), utc_text(state.time_ns));
+                           name_of(state.after), name_of(state.cause), utc_text(state.time_ns)) +
+               (state.by.source == ChangeSource::unknown ? "" : ", by " + told(state.by));
     });
     text += listed(f.gates, [rate](const GateFigure& gate) {
-        return fmt::format("{}: gate {} {}", at_text(gate.at, rate), gate.name, gate.open ? "open" : "closed");
+        return fmt::format("{}: gate {} {}", at_text(gate.at, rate), gate.name, gate.open ? "open" : "closed") +
+               (gate.by.source == ChangeSource::unknown ? "" : ", by " + told(gate.by));
     });
     if (!f.sites.empty()) {
         text += fmt::format("\nSites left out of the evidence, and back: {}\n", f.sites.size());
@@ -183,6 +242,41 @@ std::string stream_text(const AuditResult& r) {
     text += listed(f.notes,
                    [rate](const Note& note) { return fmt::format("{}: {}", at_text(note.sample, rate), note.text); });
     return text;
+}
+
+std::string epoch_score_text(const char* reading, const Score& s) {
+    return fmt::format("    {}: {:.2f} eligible minutes, hits {}, misses {}, false {} ({} per minute), hit rate {}\n",
+                       reading, s.eligible_minutes, s.hits, s.misses, s.false_detections, figure(s.false_per_minute),
+                       share(s.hit_rate));
+}
+
+std::string epochs_text(const AuditResult& r) {
+    if (r.figures.epochs.empty()) {
+        return {};
+    }
+    const auto rate = r.provenance.about.rate;
+    std::string text = "\nEpochs\n";
+    for (std::size_t i = 0; i < r.figures.epochs.size(); ++i) {
+        const auto& epoch = r.figures.epochs[i];
+        text += fmt::format("  {}: from {}, {:.2f} minutes, pulses {}, begun by {}\n", epoch.name,
+                            at_text(epoch.from, rate), seconds_at(SampleIndex{epoch.to - epoch.from}, rate) / 60.0,
+                            epoch.pulses_allowed ? "allowed" : "not allowed", told(epoch.by));
+        text += fmt::format("    {} detections, {} triggers{}\n", epoch.detections, epoch.triggers,
+                            r.blinded ? std::string{} : fmt::format(", {} pulses", epoch.pulses));
+        if (r.score) {
+            text += epoch_score_text("detector", r.score->epochs.at(i).detector);
+            text += epoch_score_text("session", r.score->epochs.at(i).session);
+        }
+    }
+    return text;
+}
+
+std::string speed_text(const AuditResult& r) {
+    const auto& speed = r.figures.speed;
+    return speed.events == 0
+               ? std::string{}
+               : fmt::format("\nSpeed\n  {} values received; of {} kept: least {:.3g}, median {:.3g}, most {:.3g}\n",
+                             speed.values, speed.events, speed.least, speed.median, speed.most);
 }
 
 std::string floor_text(const AuditResult& r) {
@@ -216,8 +310,10 @@ std::string verdict_text(const AuditResult& r) {
 } // namespace
 
 std::string audit_text(const AuditResult& r) {
-    return head(r) + rerun_text(r) + decisions_text(r) + control_text(r.controls) + score_text(r) + latency_text(r) +
-           stream_text(r) + floor_text(r) + verdict_text(r);
+    return head(r) + stated_text(r) + rerun_text(r) + decisions_text(r) + conditions_text(r) +
+           (r.blinded ? std::string{} : control_text(r.controls)) + score_text(r) + epochs_text(r) + latency_text(r) +
+           (r.blinded ? std::string{} : outputs_text(r)) + stream_text(r) + speed_text(r) + floor_text(r) +
+           verdict_text(r);
 }
 
 } // namespace millpond

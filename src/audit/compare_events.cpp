@@ -75,6 +75,10 @@ std::string told(const Event& event) {
         const auto gate = event.as<GateDetail>();
         return fmt::format("{} at {} ({} {})", name, at, gate_name(gate), gate.open != 0 ? "open" : "closed");
     }
+    case EventKind::epoch: {
+        const auto epoch = event.as<EpochDetail>();
+        return fmt::format("{} at {} ({})", name, at, epoch_name(epoch));
+    }
     case EventKind::floor:
         return fmt::format("{} at {} (site {})", name, at, event.as<FloorDetail>().site);
     case EventKind::site:

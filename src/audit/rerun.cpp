@@ -15,11 +15,13 @@ bool decided_by_the_engine(const Event& event) {
     case EventKind::slot:
     case EventKind::omitted:
     case EventKind::order:
+    case EventKind::trial:
     case EventKind::gap:
     case EventKind::state:
     case EventKind::gate:
     case EventKind::floor:
     case EventKind::site:
+    case EventKind::epoch:
         return true;
     default:
         return false;
@@ -40,6 +42,12 @@ class Collector final : public EventSink {
     }
     std::vector<Event> events;
 };
+
+// Faults that the engine finds by itself.
+bool found_again(StateCause cause) {
+    return cause == StateCause::runaway || cause == StateCause::too_many_gaps ||
+           cause == StateCause::floor_out_of_range;
+}
 
 bool is_start(const Event& event) {
     return event.kind == EventKind::state &&
@@ -96,9 +104,10 @@ void limit(const SessionReader& session, std::uint64_t stored_frames, Rerun& rer
 /// Feeds the stored samples, and what came from outside where it came.
 class Feed {
   public:
-    Feed(SampleFileReader& samples, Engine& engine, const Rerun& rerun, const ShareDone& progress)
-        : samples_(samples), engine_(engine), rerun_(rerun), progress_(progress), next_(rerun.from),
-          buffer_(4096 * samples.channels()) {
+    Feed(SampleFileReader& samples, Engine& engine, const Rerun& rerun, bool trials_by_command,
+         const ShareDone& progress)
+        : samples_(samples), engine_(engine), rerun_(rerun), trials_by_command_(trials_by_command), progress_(progress),
+          next_(rerun.from), buffer_(4096 * samples.channels()) {
         samples_.seek(next_);
     }
 
@@ -119,17 +128,33 @@ class Feed {
 
     void event(const Event& event) {
         switch (event.kind) {
-        case EventKind::state:
+        case EventKind::state: {
             frames_upto(event.sample);
-            engine_.set_state(static_cast<ArmState>(event.code),
-                              static_cast<StateCause>(event.as<StateDetail>().cause));
+            const auto state = event.as<StateDetail>();
+            if (const auto cause = static_cast<StateCause>(state.cause); !found_again(cause)) {
+                engine_.set_state(static_cast<ArmState>(event.code), cause, by_of(state));
+            }
+            break;
+        }
+        case EventKind::epoch:
+            // One that had its length is found again, at its place.
+            if (const auto by = by_of(event.as<EpochDetail>()); by.source != ChangeSource::plan) {
+                frames_upto(event.sample);
+                engine_.next_epoch(by);
+            }
             break;
         case EventKind::gate: {
             frames_upto(event.sample);
             const auto gate = event.as<GateDetail>();
-            engine_.set_gate(gate_name(gate), gate.open != 0);
+            engine_.set_gate(gate_name(gate), gate.open != 0, by_of(gate));
             break;
         }
+        case EventKind::trial:
+            if (trials_by_command_) {
+                frames_upto(event.sample);
+                engine_.next_trial();
+            }
+            break;
         case EventKind::gap:
             frames_upto(event.sample);
             gap(event.sample + event.as<GapDetail>().frames, static_cast<GapCause>(event.code));
@@ -162,6 +187,7 @@ class Feed {
     SampleFileReader& samples_;
     Engine& engine_;
     const Rerun& rerun_;
+    bool trials_by_command_;
     const ShareDone& progress_;
     SampleIndex next_;
     GapCause cause_ = GapCause::packet_loss;
@@ -169,13 +195,24 @@ class Feed {
     std::uint64_t blocks_ = 0;
 };
 
+void assign(Engine& engine, const SessionAssignment& assignment, Hertz rate) {
+    const bool blocks = assignment.unit == AssignmentUnit::block;
+    const std::vector<Condition> unknown(assignment.units, Condition::none);
+    engine.assign(assignment.conditions.empty() ? unknown : assignment.conditions,
+                  blocks ? frames_in_ms(assignment.block_minutes * 60000.0, rate) : 0);
+}
+
 void run(const SessionReader& session, SampleFileReader& samples, const EngineSettings& settings,
-         const std::string& where, Rerun& rerun, Collector& sink, const ShareDone& progress) {
+         const std::optional<SessionAssignment>& assignment, const std::string& where, Rerun& rerun, Collector& sink,
+         const ShareDone& progress) {
     NoPulsePort port;
     Engine engine(make_detector(session, settings, where), settings.arbiter, schedule_of(session), session.rate(), sink,
                   port);
+    if (assignment) {
+        assign(engine, *assignment, session.rate());
+    }
     engine.start(rerun.from, settings.arbiter.start_armed);
-    Feed feed(samples, engine, rerun, progress);
+    Feed feed(samples, engine, rerun, assignment && assignment->unit == AssignmentUnit::trial, progress);
     const auto& events = session.events();
     // Gates and state as they were at the start are the engine's own words, not commands.
     auto from = std::find_if(events.begin(), events.end(), is_start);
@@ -187,10 +224,11 @@ void run(const SessionReader& session, SampleFileReader& samples, const EngineSe
     engine.finish();
 }
 
-std::vector<Event> compared_part(const std::vector<Event>& events, const Rerun& rerun) {
+std::vector<Event> compared_part(const std::vector<Event>& events, const Rerun& rerun, bool sealed) {
     std::vector<Event> part;
-    std::copy_if(events.begin(), events.end(), std::back_inserter(part),
-                 [&rerun](const Event& event) { return decided_by_the_engine(event) && event.sample < rerun.upto; });
+    std::copy_if(events.begin(), events.end(), std::back_inserter(part), [&](const Event& event) {
+        return decided_by_the_engine(event) && event.sample < rerun.upto && !(sealed && tells_of_condition(event.kind));
+    });
     std::stable_sort(part.begin(), part.end(), [](const Event& a, const Event& b) { return a.sample < b.sample; });
     return part;
 }
@@ -198,7 +236,7 @@ std::vector<Event> compared_part(const std::vector<Event>& events, const Rerun& 
 } // namespace
 
 Rerun rerun_session(const SessionReader& session, const EngineSettings& settings, const std::string& where,
-                    const ShareDone& progress) {
+                    const ShareDone& progress, const std::optional<SessionAssignment>& assignment) {
     Rerun rerun;
     auto samples = session.open_samples();
     if (!samples) {
@@ -217,9 +255,10 @@ Rerun rerun_session(const SessionReader& session, const EngineSettings& settings
         return rerun;
     }
     Collector sink;
-    run(session, *samples, settings, where, rerun, sink, progress);
-    const auto journaled = compared_part(session.events(), rerun);
-    rerun.differences = compare_events(journaled, compared_part(sink.events, rerun));
+    run(session, *samples, settings, assignment, where, rerun, sink, progress);
+    const bool sealed = assignment && assignment->conditions.empty();
+    const auto journaled = compared_part(session.events(), rerun, sealed);
+    rerun.differences = compare_events(journaled, compared_part(sink.events, rerun, sealed));
     rerun.compared = journaled.size();
     rerun.decisions = static_cast<std::uint64_t>(
         std::count_if(journaled.begin(), journaled.end(), [](const Event& event) { return is_decision(event.kind); }));

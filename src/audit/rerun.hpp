@@ -7,6 +7,7 @@
 // gates.
 #pragma once
 
+#include "assignment/unblinding.hpp"
 #include "base/channels.hpp"
 #include "engine/engine.hpp"
 #include "journal/session_reader.hpp"
@@ -32,7 +33,7 @@ struct Rerun {
     SampleIndex from, upto;      ///< events in [from, upto) were compared
     std::string upto_why;        ///< what ended the comparison
     std::uint64_t compared = 0;  ///< journaled events that were looked at
-    std::uint64_t decisions = 0; ///< of them detections, triggers and withheld
+    std::uint64_t decisions = 0; ///< of them detections, triggers, withheld, slots, omitted and orders
     std::vector<Difference> differences;
 
     [[nodiscard]] bool reproduced() const noexcept { return done && differences.empty(); }
@@ -41,9 +42,11 @@ struct Rerun {
 /// Told the share that is done, 0 to 1, now and then.
 using ShareDone = std::function<void(double share)>;
 
-/// `where` names the settings for messages. Refuses settings that the session's stream cannot have.
+/// `where` names the settings for messages. Refuses settings that the session's stream cannot have. Of a session whose
+/// assignment is sealed all is compared but the orders: they alone depend on its condition.
 [[nodiscard]] Rerun rerun_session(const SessionReader& session, const EngineSettings& settings,
-                                  const std::string& where, const ShareDone& progress = {});
+                                  const std::string& where, const ShareDone& progress = {},
+                                  const std::optional<SessionAssignment>& assignment = {});
 
 /// Compares two lists of events, each ascending by sample; time stamps and sequence numbers do not count.
 [[nodiscard]] std::vector<Difference> compare_events(const std::vector<Event>& journaled,

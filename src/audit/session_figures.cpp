@@ -40,9 +40,6 @@ void count(SessionFigures& figures, const Event& event) {
     case EventKind::pulse:
         ++figures.pulses;
         break;
-    case EventKind::pulse_end:
-        ++figures.pulse_ends;
-        break;
     case EventKind::packet_count:
         add(figures.packets, event.code, event.as<CountDetail>().count);
         break;
@@ -60,13 +57,78 @@ void list(SessionFigures& figures, const Event& event) {
     } else if (event.kind == EventKind::state) {
         const auto state = event.as<StateDetail>();
         figures.states.push_back({event.sample, event.time_ns, static_cast<ArmState>(state.before),
-                                  static_cast<ArmState>(event.code), static_cast<StateCause>(state.cause)});
+                                  static_cast<ArmState>(event.code), static_cast<StateCause>(state.cause),
+                                  by_of(state)});
     } else if (event.kind == EventKind::gate) {
         const auto gate = event.as<GateDetail>();
-        figures.gates.push_back({event.sample, gate_name(gate), gate.open != 0});
+        figures.gates.push_back({event.sample, gate_name(gate), gate.open != 0, by_of(gate)});
     } else if (event.kind == EventKind::site) {
         figures.sites.push_back({event.sample, event.as<SiteDetail>().channel, static_cast<SiteState>(event.code)});
     }
+}
+
+std::vector<EpochFigure> epochs_in(std::span<const Event> events) {
+    std::vector<EpochFigure> epochs;
+    for (const auto& event : events) {
+        if (event.kind == EventKind::epoch) {
+            const auto epoch = event.as<EpochDetail>();
+            if (!epochs.empty()) {
+                epochs.back().to = event.sample;
+            }
+            epochs.push_back({event.sample,
+                              SampleIndex{UINT64_MAX},
+                              epoch.index,
+                              epoch_name(epoch),
+                              epoch.frames,
+                              epoch.pulses != 0,
+                              by_of(epoch),
+                              0,
+                              0,
+                              0,
+                              {}});
+        }
+    }
+    return epochs;
+}
+
+void count_in_epoch(EpochFigure& epoch, const Event& event) {
+    epoch.detections += event.kind == EventKind::detection ? 1 : 0;
+    epoch.triggers += event.kind == EventKind::trigger ? 1 : 0;
+    epoch.pulses += event.kind == EventKind::pulse ? 1 : 0;
+    if (event.kind == EventKind::withheld) {
+        add(epoch.withheld, event.code, 1);
+    }
+}
+
+// By sample, not by order of writing: a pulse of the last frame is written after the next epoch began.
+void count_by_epoch(std::vector<EpochFigure>& epochs, std::span<const Event> events) {
+    for (const auto& event : events) {
+        const auto after = std::upper_bound(epochs.begin(), epochs.end(), event.sample,
+                                            [](SampleIndex at, const EpochFigure& epoch) { return at < epoch.from; });
+        if (after != epochs.begin()) {
+            count_in_epoch(*std::prev(after), event);
+        }
+    }
+}
+
+SpeedFigure speed_in(std::span<const Event> events) {
+    SpeedFigure figure;
+    std::vector<double> speeds;
+    for (const auto& event : events) {
+        if (event.kind == EventKind::speed) {
+            const auto speed = event.as<SpeedDetail>();
+            figure.values += speed.values;
+            speeds.push_back(speed.value);
+        }
+    }
+    figure.events = speeds.size();
+    if (!speeds.empty()) {
+        std::sort(speeds.begin(), speeds.end());
+        figure.least = speeds.front();
+        figure.median = speeds[(speeds.size() - 1) / 2];
+        figure.most = speeds.back();
+    }
+    return figure;
 }
 
 FloorFigure figure_of(const std::vector<Event>& floors) {
@@ -118,6 +180,13 @@ SessionFigures session_figures(std::span<const Event> events) {
         figures.floors.push_back(figure_of(of_site));
     }
     figures.notes = notes_in(events);
+    figures.epochs = epochs_in(events);
+    count_by_epoch(figures.epochs, events);
+    figures.speed = speed_in(events);
+    figures.outputs = output_figures(events);
+    const auto& outputs = figures.outputs;
+    const auto first = std::find_if(outputs.begin(), outputs.end(), [](const auto& output) { return !output.marker; });
+    figures.pulse_ends = first != outputs.end() ? first->ends : 0;
     return figures;
 }
 

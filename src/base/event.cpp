@@ -14,14 +14,14 @@ std::string_view name_of(EventKind kind) noexcept {
     static constexpr std::array<std::string_view, 24> names{
         "unknown", "session start", "session end",  "detection", "trigger", "withheld", "pulse",        "pulse end",
         "gap",     "floor",         "latency bins", "note",      "state",   "gate",     "packet count", "dropped",
-        "site",    "unknown",       "unknown",      "order",     "unknown", "unknown",  "slot",         "omitted"};
+        "site",    "epoch",         "trial",        "order",     "speed",   "device",  "slot",         "omitted"};
     return pick(names, static_cast<std::uint8_t>(kind));
 }
 
 std::string_view name_of(Rule rule) noexcept {
-    static constexpr std::array<std::string_view, rule_count> names{"none",     "gap",          "unsettled",    "veto",
-                                                                    "faulted",  "not armed",    "gate",         "held",
-                                                                    "lock-out", "second limit", "session limit"};
+    static constexpr std::array<std::string_view, rule_count> names{
+        "none", "gap",      "unsettled",    "veto",          "faulted",      "not armed",   "gate",
+        "held", "lock-out", "second limit", "session limit", "minute limit", "epoch limit", "interval"};
     return pick(names, static_cast<std::uint8_t>(rule));
 }
 
@@ -46,9 +46,21 @@ std::string_view name_of(SiteState state) noexcept {
 }
 
 std::string_view name_of(StateCause cause) noexcept {
-    static constexpr std::array<std::string_view, 6> names{"start",         "command",        "stale stream",
-                                                           "output failed", "journal failed", "session end"};
+    static constexpr std::array<std::string_view, 12> names{
+        "start",       "command",        "stale stream", "output failed", "journal failed",
+        "session end", "emergency stop", "runaway",      "too many gaps", "floor out of range", "line held", "watchdog lost"};
     return pick(names, static_cast<std::uint8_t>(cause));
+}
+
+std::string_view name_of(ChangeSource source) noexcept {
+    static constexpr std::array<std::string_view, 8> names{"unknown",   "settings", "command", "signal",
+                                                           "LFP state", "speed",    "plan",    "program"};
+    return pick(names, static_cast<std::uint8_t>(source));
+}
+
+std::string_view name_of(DeviceState state) noexcept {
+    static constexpr std::array<std::string_view, 3> names{"ready", "lost", "back"};
+    return pick(names, static_cast<std::uint8_t>(state));
 }
 
 std::string_view name_of(LatencyPart part) noexcept {

@@ -29,7 +29,11 @@ enum class EventKind : std::uint8_t {
     packet_count = 14, ///< packets counted by cause since the last such event; `code` is the PacketCause
     dropped = 15,      ///< events or frames that the journal had to drop because its ring was full
     site = 16,         ///< a channel was left out of the evidence's mixes, or taken in again; `code` is the SiteState
+    epoch = 17,        ///< an epoch of the session's plan begins
+    trial = 18,        ///< a session, block or trial of the assignment begins
     order = 19, ///< a pulse was ordered: at a trigger, or at a slot; the one kind here that tells of the condition
+    speed = 20, ///< the speed that moved the speed gate, or that it had grown stale at
+    device = 21, ///< an output stands ready, was lost or is back; `code` is the DeviceState
     slot = 22,  ///< a moment for a delayed or scheduled pulse; blanked in every condition, whether one is given or not
     omitted = 23, ///< such a moment, at which no condition may give a pulse; `code` is the Rule
 };
@@ -43,13 +47,16 @@ enum class Rule : std::uint8_t {
     veto = 3,           ///< the reference rose too, or the signal jumped: most likely not a ripple
     faulted = 4,        ///< an output, the journal or the stream failed: mend it, then arm again
     not_armed = 5,      ///< pulses are not allowed: arm when the protocol says so
-    gate = 6,           ///< a gate is closed
+    gate = 6,           ///< a gate is closed, or the plan's epoch allows no pulses
     held = 7,           ///< a moment for a pulse was held off by ripples for as long as it may be
     lock_out = 8,       ///< too soon after the trigger before it
     second_limit = 9,   ///< as many pulses as allowed in one second
     session_limit = 10, ///< as many pulses as allowed in one session: end it
+    minute_limit = 11,  ///< as many pulses as allowed in one minute
+    epoch_limit = 12,   ///< as many pulses as allowed in one epoch of the plan
+    interval = 13,      ///< nearer to the pulse before it than allowed
 };
-inline constexpr std::size_t rule_count = 11;
+inline constexpr std::size_t rule_count = 14;
 
 enum class GapCause : std::uint8_t {
     packet_loss = 1,    ///< packets never arrived, or too late: check the network and the sender
@@ -73,12 +80,45 @@ enum class SiteState : std::uint8_t {
 
 /// What moved the state. Values are part of the session format.
 enum class StateCause : std::uint8_t {
-    start = 0,          ///< as the settings say
-    command = 1,        ///< a command by OSC
-    stale_stream = 2,   ///< no packet for longer than stream.stale_after_ms
-    output_failed = 3,  ///< the output refused an order
-    journal_failed = 4, ///< disk full, or the journal could not keep up
-    session_end = 5,    ///< the session is ending
+    start = 0,              ///< as the settings say
+    command = 1,            ///< a command by OSC
+    stale_stream = 2,       ///< no packet for longer than stream.stale_after_ms
+    output_failed = 3,      ///< the output refused an order
+    journal_failed = 4,     ///< disk full, or the journal could not keep up
+    session_end = 5,        ///< the session is ending
+    emergency_stop = 6,     ///< somebody stopped it: /clear when all is safe, then arm
+    runaway = 7,            ///< far more triggers than expected, or each one a fixed time after the one before: look at
+                            ///< artefacts and threshold, then arm
+    too_many_gaps = 8,      ///< too many gaps or lost frames within a minute: mend the stream, then arm
+    floor_out_of_range = 9, ///< a floor left its range: look at electrodes and amplifier, then arm
+    line_held = 10,         ///< a line was high for longer than its longest_high_ms, and was lowered by the watchdog
+    watchdog_lost = 11,     ///< the process that lowers the lines when this one cannot was gone or stood still
+};
+
+/// Who moved a gate, the state or the plan. Values are part of the session format.
+enum class ChangeSource : std::uint8_t {
+    unknown = 0,   ///< written before sources were kept
+    settings = 1,  ///< as the settings say
+    command = 2,   ///< a command by OSC; its sender's address stands beside
+    signal = 3,    ///< a signal of the operating system to the program
+    lfp_state = 4, ///< the animal's state, by the signal itself
+    speed = 5,     ///< the animal's speed
+    plan = 6,      ///< the session's plan
+    program = 7,   ///< the program itself: a limit, a fault, the session's end
+};
+
+/// A source and, for a command, its sender.
+struct ChangedBy {
+    ChangeSource source = ChangeSource::unknown;
+    std::uint16_t port = 0;    ///< UDP port of the sender
+    std::uint32_t address = 0; ///< IPv4 address of the sender, the first number highest
+};
+
+/// An output as the control thread sees it. Values are part of the session format.
+enum class DeviceState : std::uint8_t {
+    ready = 0, ///< at the start
+    lost = 1,  ///< it no longer answers: look at cable and power; it is tried again every second
+    back = 2,  ///< it takes orders again, and its line was ordered low; arming is the operator's
 };
 
 /// Parts of the closed loop, each with its own histogram. Values are part of the session format.
@@ -143,8 +183,10 @@ struct PulseDetail {
 };
 
 struct PulseEndDetail {
-    std::int64_t width_ns; ///< order to rise until order to fall, by this computer's clock
-    std::int64_t late_ns;  ///< order to fall after the time planned for it
+    std::int64_t width_ns;    ///< order to rise until order to fall, by this computer's clock
+    std::int64_t late_ns;     ///< order to fall after the time planned for it
+    std::uint16_t output = 0; ///< its place in settings, from 0
+    std::uint16_t marker = 0; ///< 1 where the output follows triggers, not pulses
 };
 
 struct GapDetail {
@@ -173,18 +215,63 @@ struct NoteDetail {
     std::array<char, 38> text;
 };
 
+// The three that follow have no padding: audits compare them byte by byte. Source, port and address are a ChangedBy.
 struct StateDetail {
-    std::uint8_t before; ///< ArmState
-    std::uint8_t cause;  ///< StateCause
+    std::uint8_t before;     ///< ArmState
+    std::uint8_t cause;      ///< StateCause
+    std::uint8_t source = 0; ///< ChangeSource
+    std::uint8_t unused = 0;
+    std::uint16_t port = 0, unused_too = 0;
+    std::uint32_t address = 0;
 };
 
 struct GateDetail {
     std::uint8_t open;
     std::array<char, 32> name; ///< zero-terminated
+    std::uint8_t source = 0;   ///< ChangeSource
+    std::uint16_t port = 0;
+    std::uint32_t address = 0;
+};
+
+struct EpochDetail {
+    std::uint64_t frames;  ///< planned length; 0: until told to go on
+    std::uint32_t address; ///< of whoever told it
+    std::uint16_t port;
+    std::uint16_t index;       ///< in the plan, from 0; as many as the plan has: after its last one
+    std::uint8_t source;       ///< ChangeSource
+    std::uint8_t pulses;       ///< 1 where pulses are allowed
+    std::array<char, 22> name; ///< zero-terminated
+};
+
+/// Fills, and reads, the three of a detail.
+template <class Detail> void set_by(Detail& detail, const ChangedBy& by) noexcept {
+    detail.source = static_cast<std::uint8_t>(by.source);
+    detail.port = by.port;
+    detail.address = by.address;
+}
+template <class Detail> [[nodiscard]] ChangedBy by_of(const Detail& detail) noexcept {
+    return {static_cast<ChangeSource>(detail.source), detail.port, detail.address};
+}
+
+struct SpeedDetail {
+    double value;         ///< in the unit of the settings
+    std::int64_t age_ns;  ///< since it came
+    std::uint64_t values; ///< received since the event before
+};
+
+struct TrialDetail {
+    std::uint32_t number; ///< from 1
+    std::uint32_t listed; ///< 1 where the assignment's list has it; 0 beyond its end: no pulses
 };
 
 struct SiteDetail {
     std::uint16_t channel; ///< in the stream
+};
+
+struct DeviceDetail {
+    std::uint16_t output;      ///< its place in settings, from 0
+    std::uint16_t marker;      ///< 1 where the output follows triggers, not pulses
+    std::array<char, 32> name; ///< zero-terminated
 };
 
 struct CountDetail {
@@ -194,7 +281,7 @@ struct CountDetail {
 /// Trivially copyable, 64 bytes, no padding left unset by the factories below.
 struct Event {
     EventKind kind{};
-    std::uint8_t code = 0; ///< Rule, GapCause, ArmState, SiteState, LatencyPart or PacketCause, by kind
+    std::uint8_t code = 0; ///< Rule, GapCause, ArmState, SiteState, DeviceState, LatencyPart or PacketCause, by kind
     std::uint16_t reserved = 0;
     std::uint32_t sequence = 0; ///< set by the journal: counts the session's events from 0
     SampleIndex sample;         ///< where in the stream
@@ -231,6 +318,11 @@ class EventSink {
     virtual void take(const Event& event) noexcept = 0;
 };
 
+/// Whether events of that kind tell what a trigger became of: the only ones that differ between conditions.
+[[nodiscard]] constexpr bool tells_of_condition(EventKind kind) noexcept {
+    return kind == EventKind::order || kind == EventKind::pulse || kind == EventKind::pulse_end;
+}
+
 // One word for one thing: what every table, report and log line calls them.
 [[nodiscard]] std::string_view name_of(EventKind kind) noexcept;
 [[nodiscard]] std::string_view name_of(Rule rule) noexcept;
@@ -239,6 +331,8 @@ class EventSink {
 [[nodiscard]] std::string_view name_of(ArmState state) noexcept;
 [[nodiscard]] std::string_view name_of(SiteState state) noexcept;
 [[nodiscard]] std::string_view name_of(StateCause cause) noexcept;
+[[nodiscard]] std::string_view name_of(ChangeSource source) noexcept;
+[[nodiscard]] std::string_view name_of(DeviceState state) noexcept;
 [[nodiscard]] std::string_view name_of(LatencyPart part) noexcept;
 [[nodiscard]] std::string_view name_of(PacketCause cause) noexcept;
 

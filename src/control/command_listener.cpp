@@ -1,5 +1,6 @@
 #include "control/command_listener.hpp"
 
+#include "base/clock.hpp"
 #include "base/refusal.hpp"
 
 #include <boost/asio/buffer.hpp>
@@ -33,9 +34,9 @@ void check_control(const ControlSettings& settings, const std::string& where) {
 }
 
 CommandListener::CommandListener(boost::asio::io_context& context, const ControlSettings& settings,
-                                 std::vector<std::string> gates, CommandRing& commands,
+                                 OscCommands vocabulary, CommandRing& commands, StopDoor door,
                                  std::function<void(const std::string&)> refused)
-    : osc_(settings.secret, std::move(gates)), commands_(commands), refused_(std::move(refused)),
+    : osc_(std::move(vocabulary)), commands_(commands), door_(std::move(door)), refused_(std::move(refused)),
       socket_(context, udp::v4()) {
     check_control(settings, "");
     boost::system::error_code trouble;
@@ -49,21 +50,44 @@ CommandListener::CommandListener(boost::asio::io_context& context, const Control
 }
 
 void CommandListener::listen() {
-    socket_.async_receive_from(
-        boost::asio::buffer(packet_), from_, [this](const boost::system::error_code& trouble, std::size_t size) {
-            if (trouble == boost::asio::error::operation_aborted) {
-                return;
-            }
-            if (!trouble) {
-                const auto verdict = osc_.read({packet_.data(), size});
-                if (!verdict.refusal.empty()) {
-                    refused_(verdict.refusal);
-                } else if (verdict.command && commands_.push(*verdict.command) != PushOutcome::stored) {
-                    refused_("OSC command: found more commands than the loop takes; allowed: fewer at a time");
-                }
-            }
-            listen();
-        });
+    socket_.async_receive_from(boost::asio::buffer(packet_), from_,
+                               [this](const boost::system::error_code& trouble, std::size_t size) {
+                                   if (trouble == boost::asio::error::operation_aborted) {
+                                       return;
+                                   }
+                                   if (!trouble) {
+                                       take({packet_.data(), size});
+                                   }
+                                   listen();
+                               });
+}
+
+void CommandListener::take(std::span<const std::uint8_t> packet) {
+    auto verdict = osc_.read(packet);
+    if (!verdict.refusal.empty()) {
+        refused_(verdict.refusal);
+    } else if (verdict.command) {
+        verdict.command->came = monotonic_now();
+        verdict.command->by = {ChangeSource::command, from_.port(), from_.address().to_v4().to_uint()};
+        obey(*verdict.command);
+    }
+}
+
+void CommandListener::obey(Command command) {
+    if (command.kind == CommandKind::stop) {
+        door_.stop(command.by);
+        return;
+    }
+    if (command.kind == CommandKind::arm && door_.stopped()) {
+        refused_("OSC /arm: found an emergency stop; allowed: /clear first, when all is safe");
+        return;
+    }
+    if (command.kind == CommandKind::clear) {
+        door_.clear();
+    }
+    if (commands_.push(command) != PushOutcome::stored) {
+        refused_("OSC command: found more commands than the loop takes; allowed: fewer at a time");
+    }
 }
 
 } // namespace millpond

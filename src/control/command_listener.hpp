@@ -19,18 +19,28 @@ namespace millpond {
 /// Control to loop; the loop empties it before each packet.
 using CommandRing = SpscRing<Command>;
 
+/// The short way past the ring, for what must not wait for the loop. Thread: control.
+struct StopDoor {
+    std::function<void(const ChangedBy&)> stop; ///< orders the line low, at once
+    std::function<bool()> stopped;              ///< and nobody has cleared it yet
+    std::function<void()> clear;
+};
+
 class CommandListener {
   public:
     /// Binds the socket. Refuses a port that is taken, an address that others can reach without allow_other_hosts and a
     /// secret, and a secret that is too short. `refused` takes the line that says why a packet was not taken.
-    CommandListener(boost::asio::io_context& context, const ControlSettings& settings, std::vector<std::string> gates,
-                    CommandRing& commands, std::function<void(const std::string&)> refused);
+    CommandListener(boost::asio::io_context& context, const ControlSettings& settings, OscCommands vocabulary,
+                    CommandRing& commands, StopDoor door, std::function<void(const std::string&)> refused);
 
   private:
     void listen();
+    void take(std::span<const std::uint8_t> packet);
+    void obey(Command command);
 
     OscCommands osc_;
     CommandRing& commands_;
+    StopDoor door_;
     std::function<void(const std::string&)> refused_;
     boost::asio::ip::udp::socket socket_;
     boost::asio::ip::udp::endpoint from_;

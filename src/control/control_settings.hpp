@@ -20,7 +20,8 @@ struct ControlSettings {
 
 template <class Visitor> void describe(Visitor& visit, ControlSettings& control) {
     visit.flag("listen", control.listen,
-               "whether OSC commands are taken: /arm, /disarm, /mark TEXT, /gate NAME 1 or 0");
+               "whether OSC commands are taken: /arm, /disarm, /stop, /clear, /mark TEXT, /gate NAME 1 or 0, /epoch, "
+               "/speed NUMBER, /trial");
     visit.text("listen_address", control.listen_address, "IPv4 address that commands are taken on");
     visit.whole("port", control.port, {1, 65535}, "UDP port that commands are taken on");
     visit.flag("allow_other_hosts", control.allow_other_hosts,

@@ -4,6 +4,9 @@
 #include "base/refusal.hpp"
 
 #include <algorithm>
+#include <cmath>
+#include <iterator>
+#include <utility>
 
 namespace millpond {
 namespace {
@@ -49,12 +52,45 @@ OscVerdict read_gate(const OscMessage& message, std::span<const Value> values, c
     return {Command::make(*switch_of(values[1]) ? CommandKind::open_gate : CommandKind::close_gate, name), {}};
 }
 
+OscVerdict read_speed(const OscMessage& message, std::span<const Value> values, bool wanted) {
+    if (!wanted) {
+        return refused(message, "a session without a speed gate", "speed_gate.on: true in the settings");
+    }
+    if (values.size() != 1 || (values[0].type != 'f' && values[0].type != 'i')) {
+        return refused(message, "other arguments", "one number, a float32 or an int32");
+    }
+    const double speed = values[0].type == 'f' ? static_cast<double>(values[0].number) : values[0].whole;
+    if (!std::isfinite(speed) || speed < 0.0) {
+        return refused(message, std::isfinite(speed) ? "a speed below 0" : "a speed that is no finite number",
+                       "0 or more, in the unit of speed_gate.unit");
+    }
+    auto command = Command::make(CommandKind::speed);
+    command.number = speed;
+    return {command, {}};
+}
+
+/// Commands that a button can give.
+std::optional<CommandKind> pressed_command(std::string_view address) {
+    static constexpr std::pair<std::string_view, CommandKind> buttons[] = {{"/arm", CommandKind::arm},
+                                                                           {"/disarm", CommandKind::disarm},
+                                                                           {"/clear", CommandKind::clear},
+                                                                           {"/epoch", CommandKind::next_epoch},
+                                                                           {"/trial", CommandKind::trial}};
+    const auto* const found =
+        std::find_if(std::begin(buttons), std::end(buttons), [&](const auto& each) { return each.first == address; });
+    return found == std::end(buttons) ? std::nullopt : std::optional(found->second);
+}
+
 } // namespace
 
 OscVerdict OscCommands::read(std::span<const std::uint8_t> packet) const {
     OscMessage message;
     if (const auto trouble = decode_osc(packet, message); trouble != OscTrouble::none) {
         return {{}, "OSC packet: found " + std::string(name_of(trouble)) + "; allowed: one OSC 1.0 message"};
+    }
+    // Whatever else it carries, the secret or not: it can only make things safer.
+    if (message.address == "/stop") {
+        return {Command::make(CommandKind::stop), {}};
     }
     std::span<const Value> values(message.values.data(), message.count);
     if (!secret_.empty()) {
@@ -71,8 +107,19 @@ OscVerdict OscCommands::read(std::span<const std::uint8_t> packet) const {
         return form ? OscVerdict{Command::make(CommandKind::mark, values[0].text), {}}
                     : refused(message, "other arguments", "one text");
     }
-    if (message.address != "/arm" && message.address != "/disarm") {
-        return refused(message, "an unknown address", "/arm, /disarm, /mark, /gate");
+    if (message.address == "/speed") {
+        return read_speed(message, values, more_.speed);
+    }
+    const auto kind = pressed_command(message.address);
+    if (!kind) {
+        return refused(message, "an unknown address",
+                       "/arm, /disarm, /stop, /clear, /mark, /gate, /epoch, /speed, /trial");
+    }
+    if (*kind == CommandKind::next_epoch && !more_.epoch) {
+        return refused(message, "a session without a plan", "epochs in plan.epochs of the settings");
+    }
+    if (*kind == CommandKind::trial && !more_.trials) {
+        return refused(message, "a session without trials", "/trial where assignment.file names a list of trials");
     }
     // A switch that sends 1 when pressed and 0 when let go is common on control surfaces: 0 does nothing.
     if (values.size() > 1 || (values.size() == 1 && !switch_of(values[0]))) {
@@ -81,7 +128,7 @@ OscVerdict OscCommands::read(std::span<const std::uint8_t> packet) const {
     if (values.size() == 1 && !*switch_of(values[0])) {
         return {{}, {}};
     }
-    return {Command::make(message.address == "/arm" ? CommandKind::arm : CommandKind::disarm), {}};
+    return {Command::make(*kind), {}};
 }
 
 } // namespace millpond

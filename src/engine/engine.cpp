@@ -12,6 +12,7 @@ Engine::Engine(Detector detector, const ArbiterSettings& arbiter, std::vector<Sa
     if (detector_.has_state_gate()) {
         arbiter_.add_gate(std::string(state_gate_name), detector_.state_gate_open());
     }
+    arbiter_.watch().expect_floors(detector_.floor_count());
 }
 
 void Engine::start(SampleIndex at, bool armed) noexcept {
@@ -20,7 +21,15 @@ void Engine::start(SampleIndex at, bool armed) noexcept {
     detector_.gap(at);
     detector_.use_memory(arbiter_.gates_open());
     for (std::size_t i = 0; i < arbiter_.gate_count(); ++i) {
-        journal_gate(arbiter_.gate_name(i), arbiter_.gate_open(i));
+        journal_gate(arbiter_.gate_name(i), arbiter_.gate_open(i), {ChangeSource::settings});
+    }
+    if (arbiter_.plan().present()) {
+        arbiter_.start_plan(at);
+        sink_.take(Event::make(EventKind::epoch, 0, at, arbiter_.plan().detail({ChangeSource::plan})));
+    }
+    if (plan_.is_assigned()) {
+        next_block_ = block_frames_ > 0 ? at : SampleIndex{UINT64_MAX};
+        block_frames_ > 0 ? begin_blocks() : begin_unit();
     }
     set_state(armed ? ArmState::armed : ArmState::not_armed, StateCause::start);
 }
@@ -53,22 +62,53 @@ std::size_t Engine::broken_frames(const FrameBlock& block, std::size_t from) con
     return broken;
 }
 
-// Stops at every place where something is due by the clock of samples: a slot, the floor's journal entry.
+// Stops at every place where something is due by the clock of samples: an epoch, a slot, the floor's journal entry.
 void Engine::run_finite(FrameBlock block) noexcept {
     if (block.frames() > 0) {
         close_gap();
+        follow_watch();
     }
     while (block.frames() > 0) {
         const SampleIndex end = block.first + block.frames();
+        follow_plan(next_);
+        begin_blocks();
         while (plan_.next_due() <= next_) {
             meet_slot();
         }
-        const SampleIndex stop = std::min({end, plan_.next_due(), next_floor_});
+        const SampleIndex stop =
+            std::min({end, plan_.next_due(), next_floor_, next_block_, arbiter_.plan().next_start()});
         const std::size_t frames = run_detector(block.part(0, static_cast<std::size_t>(stop - block.first)));
         block = block.part(frames, block.frames() - frames);
         if (next_ >= next_floor_) {
             journal_floors();
         }
+        follow_watch();
+    }
+}
+
+// Epochs that are due up to `upto`, each at its own place.
+void Engine::follow_plan(SampleIndex upto) noexcept {
+    while (arbiter_.plan().next_start() <= upto) {
+        begin_epoch(arbiter_.plan().next_start(), {ChangeSource::plan});
+    }
+}
+
+void Engine::begin_epoch(SampleIndex at, const ChangedBy& by) noexcept {
+    arbiter_.next_epoch(at);
+    sink_.take(Event::make(EventKind::epoch, 0, at, arbiter_.plan().detail(by)));
+}
+
+void Engine::next_epoch(const ChangedBy& by) noexcept {
+    if (arbiter_.plan().present() && !arbiter_.plan().over()) {
+        begin_epoch(next_, by);
+    }
+}
+
+// A session that is not armed has nothing to give up.
+void Engine::follow_watch() noexcept {
+    const auto cause = arbiter_.watch().take();
+    if (cause && arbiter_.state() == ArmState::armed) {
+        set_state(ArmState::faulted, *cause);
     }
 }
 
@@ -89,7 +129,7 @@ std::size_t Engine::run_detector(const FrameBlock& block) noexcept {
 
 void Engine::follow_state() noexcept {
     if (const auto open = detector_.state_gate_change()) {
-        move_gate(state_gate_name, *open);
+        move_gate(state_gate_name, *open, {ChangeSource::lfp_state});
     }
 }
 
@@ -118,6 +158,17 @@ void Engine::on_crossing(const Crossing& crossing) noexcept {
     }
 }
 
+void Engine::begin_unit() noexcept {
+    const auto [number, listed] = plan_.begin_unit();
+    sink_.take(Event::make(EventKind::trial, 0, next_, TrialDetail{number, listed ? 1U : 0U}));
+}
+
+void Engine::begin_blocks() noexcept {
+    for (; next_block_ <= next_; next_block_ = next_block_ + block_frames_) {
+        begin_unit();
+    }
+}
+
 // The moment of a delayed or scheduled pulse. All but the order is the same in every condition.
 void Engine::meet_slot() noexcept {
     const PulseSlot slot = plan_.next();
@@ -126,7 +177,8 @@ void Engine::meet_slot() noexcept {
     if (!plan_.waits_for_quiet(slot.origin) || detector_.quiet_frames() >= plan_.quiet_frames()) {
         rule = arbiter_.judge_slot({next_, detector_.settling(), !detector_.settled()}, slot.origin);
     }
-    const bool may_pass = rule == Rule::held || rule == Rule::lock_out || rule == Rule::second_limit;
+    const bool may_pass =
+        rule == Rule::held || rule == Rule::lock_out || rule == Rule::second_limit || rule == Rule::interval;
     if (may_pass && plan_.hold(next_)) {
         return;
     }
@@ -166,6 +218,7 @@ void Engine::skip(std::uint64_t frames, GapCause cause) noexcept {
     gap_frames_ += frames;
     next_ = next_ + frames;
     detector_.gap(next_);
+    follow_plan(next_);
     miss_slots(next_);
     // Floors stand still in a gap: those due in it are left out.
     if (next_ >= next_floor_) {
@@ -177,41 +230,50 @@ void Engine::close_gap() noexcept {
     if (gap_frames_ > 0) {
         sink_.take(
             Event::make(EventKind::gap, static_cast<std::uint8_t>(gap_cause_), gap_from_, GapDetail{gap_frames_}));
+        arbiter_.watch().gap(gap_from_, gap_frames_);
         gap_frames_ = 0;
     }
 }
 
 void Engine::journal_floors() noexcept {
     for (std::size_t i = 0; i < detector_.floor_count(); ++i) {
-        sink_.take(Event::make(EventKind::floor, 0, next_, detector_.floor(i)));
+        const auto floor = detector_.floor(i);
+        sink_.take(Event::make(EventKind::floor, 0, next_, floor));
+        arbiter_.watch().floor(i, floor);
     }
     next_floor_ = next_ + second_frames_;
 }
 
-void Engine::set_state(ArmState state, StateCause cause) noexcept {
-    const StateDetail detail{static_cast<std::uint8_t>(arbiter_.state()), static_cast<std::uint8_t>(cause)};
+void Engine::set_state(ArmState state, StateCause cause, const ChangedBy& by) noexcept {
+    StateDetail detail{static_cast<std::uint8_t>(arbiter_.state()), static_cast<std::uint8_t>(cause)};
+    const bool told = by.source != ChangeSource::unknown;
+    const auto source = cause == StateCause::start     ? ChangeSource::settings
+                        : cause == StateCause::command ? ChangeSource::command
+                                                       : ChangeSource::program;
+    set_by(detail, told ? by : ChangedBy{source});
     arbiter_.set_state(state);
     sink_.take(Event::make(EventKind::state, static_cast<std::uint8_t>(state), next_, detail));
 }
 
-bool Engine::set_gate(std::string_view name, bool open) noexcept {
+bool Engine::set_gate(std::string_view name, bool open, const ChangedBy& by) noexcept {
     const bool own = detector_.has_state_gate() && name == state_gate_name;
     const bool known = !own && arbiter_.has_gate(name);
     if (known) {
-        move_gate(name, open);
+        move_gate(name, open, by);
     }
     return known;
 }
 
-void Engine::move_gate(std::string_view name, bool open) noexcept {
+void Engine::move_gate(std::string_view name, bool open, const ChangedBy& by) noexcept {
     arbiter_.set_gate(name, open);
     detector_.use_memory(arbiter_.gates_open());
-    journal_gate(name, open);
+    journal_gate(name, open, by);
 }
 
-void Engine::journal_gate(std::string_view name, bool open) noexcept {
+void Engine::journal_gate(std::string_view name, bool open, const ChangedBy& by) noexcept {
     GateDetail detail{};
     detail.open = open ? 1 : 0;
+    set_by(detail, by);
     std::copy_n(name.begin(), std::min(name.size(), detail.name.size() - 1), detail.name.begin());
     sink_.take(Event::make(EventKind::gate, 0, next_, detail));
 }

@@ -46,6 +46,13 @@ class Engine {
     Engine(Detector detector, const ArbiterSettings& arbiter, std::vector<SampleIndex> schedule, Hertz rate,
            EventSink& sink, PulsePort& port);
 
+    /// Conditions by an assignment; `block_frames`: a block begins each time, 0: units begin with `next_trial`. Before
+    /// `start`. Allocates.
+    void assign(std::vector<Condition> list, std::uint64_t block_frames) {
+        plan_.assign(std::move(list));
+        block_frames_ = block_frames;
+    }
+
     /// First call of a session or run: emits the starting state and the gates. `armed`: start armed.
     void start(SampleIndex at, bool armed) noexcept;
 
@@ -57,14 +64,20 @@ class Engine {
     void finish() noexcept { close_gap(); }
 
     /// Commands take effect before the next frame, `next_sample()`, and are journaled there.
-    void set_state(ArmState state, StateCause cause) noexcept;
+    /// `by` says who; where it does not, the cause does.
+    void set_state(ArmState state, StateCause cause, const ChangedBy& by = {}) noexcept;
     /// False, and nothing happens, where no gate has that name that commands may move: the detector's own is not one.
-    bool set_gate(std::string_view name, bool open) noexcept;
+    bool set_gate(std::string_view name, bool open, const ChangedBy& by = {ChangeSource::command}) noexcept;
+    /// The plan's next epoch begins, whether or not the present one has a length. Nothing happens after the last one.
+    void next_epoch(const ChangedBy& by) noexcept;
+    /// The next trial of the assignment begins with the next frame.
+    void next_trial() noexcept { begin_unit(); }
     /// The operator's text into the journal, cut into as many note events as it needs.
     void note(std::string_view text) noexcept;
 
     [[nodiscard]] SampleIndex next_sample() const noexcept { return next_; }
     [[nodiscard]] Detector& detector() noexcept { return detector_; }
+    [[nodiscard]] const Detector& detector() const noexcept { return detector_; }
     [[nodiscard]] const Arbiter& arbiter() const noexcept { return arbiter_; }
     [[nodiscard]] const PulsePlan& plan() const noexcept { return plan_; }
     [[nodiscard]] std::uint64_t detections() const noexcept { return detections_; }
@@ -74,14 +87,19 @@ class Engine {
     std::size_t run_detector(const FrameBlock& block) noexcept;
     [[nodiscard]] std::size_t broken_frames(const FrameBlock& block, std::size_t from) const noexcept;
     void on_crossing(const Crossing& crossing) noexcept;
+    void begin_unit() noexcept;
+    void begin_blocks() noexcept;
     void meet_slot() noexcept;
     void miss_slots(SampleIndex before) noexcept;
     void skip(std::uint64_t frames, GapCause cause) noexcept;
     void close_gap() noexcept;
     void journal_floors() noexcept;
     void follow_state() noexcept;
-    void move_gate(std::string_view name, bool open) noexcept;
-    void journal_gate(std::string_view name, bool open) noexcept;
+    void follow_plan(SampleIndex upto) noexcept;
+    void follow_watch() noexcept;
+    void begin_epoch(SampleIndex at, const ChangedBy& by) noexcept;
+    void move_gate(std::string_view name, bool open, const ChangedBy& by) noexcept;
+    void journal_gate(std::string_view name, bool open, const ChangedBy& by) noexcept;
 
     Detector detector_;
     Arbiter arbiter_;
@@ -89,6 +107,8 @@ class Engine {
     EventSink& sink_;
     PulsePort& port_;
     std::uint64_t second_frames_;
+    std::uint64_t block_frames_ = 0;
+    SampleIndex next_block_{UINT64_MAX};
     SampleIndex next_{};
     SampleIndex next_floor_{};
     // Missing frames in a row are one gap however they came in: it is emitted when the next good frame comes.

@@ -3,6 +3,14 @@
 #include <algorithm>
 
 namespace millpond {
+namespace {
+
+// Up to its zero.
+template <std::size_t N> std::string text_in(const std::array<char, N>& characters) {
+    return {characters.begin(), std::find(characters.begin(), characters.end(), '\0')};
+}
+
+} // namespace
 
 void LiveCounters::count(const std::vector<Event>& events, const std::vector<PacketTiming>& timings, Nanos now) {
     const std::lock_guard lock(mutex_);
@@ -46,6 +54,23 @@ void LiveCounters::count_one(const Event& event) {
         f.state = static_cast<ArmState>(event.code);
         f.state_cause = static_cast<StateCause>(event.as<StateDetail>().cause);
         break;
+    case EventKind::epoch: {
+        const auto epoch = event.as<EpochDetail>();
+        f.epoch = {epoch.index, text_in(epoch.name), event.sample, epoch.frames, epoch.pulses != 0};
+        break;
+    }
+    case EventKind::speed:
+        f.speed = event.as<SpeedDetail>().value;
+        break;
+    case EventKind::gate: {
+        const auto gate = event.as<GateDetail>();
+        const auto name = text_in(gate.name);
+        std::erase(f.gates_closed, name);
+        if (gate.open == 0) {
+            f.gates_closed.push_back(name);
+        }
+        break;
+    }
     case EventKind::site: {
         const auto channel = event.as<SiteDetail>().channel;
         const auto state = static_cast<SiteState>(event.code);

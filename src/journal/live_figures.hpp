@@ -14,6 +14,15 @@
 
 namespace millpond {
 
+/// An epoch of the plan, as its event said it.
+struct LiveEpoch {
+    std::uint16_t index = 0;
+    std::string name;
+    SampleIndex from;
+    std::uint64_t frames = 0; ///< 0: until told
+    bool pulses = false;
+};
+
 struct LiveFigures {
     std::uint64_t detections = 0, triggers = 0, pulses = 0, notes = 0;
     std::array<std::uint64_t, rule_count> withheld{}; ///< by Rule
@@ -22,6 +31,9 @@ struct LiveFigures {
     std::uint64_t events_dropped = 0, frames_dropped = 0;    ///< rings were full, or the disk did not take them
     ArmState state = ArmState::not_armed;
     StateCause state_cause = StateCause::start;                 ///< what moved it there
+    std::optional<LiveEpoch> epoch;                             ///< empty: no plan
+    std::optional<double> speed;                                ///< newest told; in the unit of the settings
+    std::vector<std::string> gates_closed;                      ///< by name
     SampleIndex upto;                                           ///< last place that an event or a stored frame spoke of
     std::vector<std::pair<std::uint16_t, SiteState>> sites_out; ///< channels left out of the evidence now, and why
     std::vector<FloorDetail> floors;                            ///< newest of each site, in order of first appearance

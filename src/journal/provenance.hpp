@@ -24,7 +24,8 @@ struct SessionAbout {
     double filter_delay_samples = 0.0; ///< group delay of the band-pass at the band's centre
     double delay_samples = 0.0;        ///< the same and the smoother's delay
     std::vector<FloorDetail>
-        warm_start; ///< floors that the session started from, as given to the detector; empty: none
+        warm_start;       ///< floors that the session started from, as given to the detector; empty: none
+    bool blinded = false; ///< tables that are made when the session closes do not tell of its pulses; not kept
     nlohmann::json more = nlohmann::json::object(); ///< anything else worth keeping, written as it is
     std::string settings_text;                      ///< the settings as used, YAML
 };

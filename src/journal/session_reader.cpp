@@ -25,7 +25,7 @@ const std::filesystem::path& checked(const std::filesystem::path& folder) {
 bool said_by_the_engine(EventKind kind) {
     return kind == EventKind::detection || kind == EventKind::trigger || kind == EventKind::withheld ||
            kind == EventKind::gap || kind == EventKind::floor || kind == EventKind::state || kind == EventKind::gate ||
-           kind == EventKind::site || kind == EventKind::note;
+           kind == EventKind::site || kind == EventKind::note || kind == EventKind::epoch;
 }
 
 SampleIndex end_of(const ReadRecords& records) {
@@ -77,6 +77,19 @@ std::vector<FloorDetail> last_floors(std::span<const Event> events) {
 
 std::string gate_name(const GateDetail& gate) {
     return {gate.name.begin(), std::find(gate.name.begin(), gate.name.end(), '\0')};
+}
+
+std::string epoch_name(const EpochDetail& epoch) {
+    return {epoch.name.begin(), std::find(epoch.name.begin(), epoch.name.end(), '\0')};
+}
+
+std::string told(const ChangedBy& by) {
+    std::string text(name_of(by.source));
+    if (by.source == ChangeSource::command && by.port != 0) {
+        const auto part = [&by](int shift) { return std::to_string(by.address >> shift & 255U); };
+        text += " from " + part(24) + "." + part(16) + "." + part(8) + "." + part(0) + ":" + std::to_string(by.port);
+    }
+    return text;
 }
 
 std::vector<Note> notes_in(std::span<const Event> events) {

@@ -50,6 +50,11 @@ class SessionReader {
 /// Up to its zero, or all 32 characters.
 [[nodiscard]] std::string gate_name(const GateDetail& gate);
 
+/// The same of an epoch.
+[[nodiscard]] std::string epoch_name(const EpochDetail& epoch);
+/// "command from 127.0.0.1:50123", or the source alone.
+[[nodiscard]] std::string told(const ChangedBy& by);
+
 /// A note's whole text and where it stood, put together again.
 struct Note {
     SampleIndex sample;

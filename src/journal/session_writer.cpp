@@ -23,7 +23,7 @@ struct SessionWriter::State {
     std::unique_ptr<JournalDrain> drain;
     std::mutex mutex;
     std::condition_variable wake;
-    bool stopping = false, closed = false;
+    bool stopping = false, closed = false, blinded = false;
     std::thread thread;
 
     void run() {
@@ -64,6 +64,7 @@ std::unique_ptr<SessionWriter> SessionWriter::open(const SessionSettings& settin
     }
     auto state = std::make_unique<State>();
     state->drain = std::make_unique<JournalDrain>(folder.working(), settings, about, start_ns);
+    state->blinded = about.blinded;
     state->folder = folder.commit();
     state->drain->watch_disk(state->folder, settings.min_free_mb);
     state->thread = std::thread([raw = state.get()] { raw->run(); });
@@ -115,7 +116,7 @@ void SessionWriter::close(SampleIndex end) {
     state_->stop();
     state_->closed = true;
     state_->drain->finish(end);
-    write_session_tables(SessionReader(state_->folder), state_->folder);
+    write_session_tables(SessionReader(state_->folder), state_->folder, state_->blinded);
 }
 
 } // namespace millpond

@@ -18,7 +18,9 @@ void LiveLoop::run() noexcept {
         Arrival arrival;
         const auto received = source_.receive(settings_.spin ? Nanos{0} : patience, arrival);
         const Nanos began = monotonic_now();
+        take_stop();
         take_commands();
+        follow_speed(began);
         look_for_trouble();
         if (received == Received::frames) {
             on_frames(arrival, began);
@@ -29,7 +31,7 @@ void LiveLoop::run() noexcept {
     }
     engine_.finish();
     engine_.set_state(ArmState::not_armed, StateCause::session_end);
-    line_.fall_now();
+    lines_.fall_now();
     journal_counts();
     auto running = LoopEnd::running;
     end_.compare_exchange_strong(running, LoopEnd::stopped, std::memory_order_release);
@@ -38,6 +40,10 @@ void LiveLoop::run() noexcept {
 bool LiveLoop::keep_on(Received received) noexcept {
     if (received == Received::ended || received == Received::failed) {
         end_.store(received == Received::ended ? LoopEnd::ended : LoopEnd::failed, std::memory_order_release);
+        return false;
+    }
+    if (engine_.arbiter().plan().ends_session()) {
+        end_.store(LoopEnd::planned, std::memory_order_release);
         return false;
     }
     return true;
@@ -53,7 +59,11 @@ void LiveLoop::on_frames(const Arrival& arrival, Nanos began) noexcept {
     wake_ns_ = arrival.arrived_ns != 0 ? begun_utc - arrival.arrived_ns : PulseDetail::not_measured;
     transport_ns_ = arrival.arrived_ns != 0 && arrival.sent_ns != 0 ? arrival.arrived_ns - arrival.sent_ns
                                                                     : PulseDetail::not_measured;
+    const auto before = engine_.arbiter().state();
     engine_.process(arrival.block, arrival.gap_cause);
+    if (engine_.arbiter().state() == ArmState::faulted && before != ArmState::faulted) {
+        lines_.fall_now(); // a limit was passed
+    }
     const std::int64_t worked_ns = (monotonic_now() - began).count();
     // Stored after the pulse: copying the block must not make it late.
     journal_.store(arrival.block);
@@ -65,13 +75,20 @@ void LiveLoop::on_frames(const Arrival& arrival, Nanos began) noexcept {
     if (output_failed_) {
         output_failed_ = false;
         engine_.set_state(ArmState::faulted, StateCause::output_failed);
+        lines_.fall_now();
     }
 }
 
 void LiveLoop::fire(const Event& trigger) noexcept {
+    if (stop_.stopped()) {
+        return; // between the stop and the place where it is journaled
+    }
     const Nanos decided = monotonic_now();
-    if (!line_.rise(trigger.sample)) {
+    if (!lines_.rise(Follows::pulse, trigger.sample)) {
         output_failed_ = true;
+    }
+    if (stop_.stopped()) {
+        lines_.fall_now(); // it came while the line was being raised
     }
     const Nanos written = monotonic_now();
     const double frames_after =
@@ -85,6 +102,12 @@ void LiveLoop::fire(const Event& trigger) noexcept {
     journal_.take(Event::make(EventKind::pulse, 0, trigger.sample, detail));
 }
 
+void LiveLoop::mark(const Event& trigger) noexcept {
+    if (!lines_.rise(Follows::trigger, trigger.sample)) {
+        output_failed_ = true;
+    }
+}
+
 void LiveLoop::take_commands() noexcept {
     for (Command command; commands_.pop(command);) {
         obey(command);
@@ -94,21 +117,73 @@ void LiveLoop::take_commands() noexcept {
 void LiveLoop::obey(const Command& command) noexcept {
     switch (command.kind) {
     case CommandKind::arm:
-        line_.mended();
-        engine_.set_state(ArmState::armed, StateCause::command);
+        if (!stop_.stopped()) {
+            lines_.mended();
+            engine_.set_state(ArmState::armed, StateCause::command, command.by);
+        }
         break;
     case CommandKind::disarm:
-        engine_.set_state(ArmState::not_armed, StateCause::command);
-        line_.fall_now();
+        // A fault stays one: it is cleared, or armed away, and not by somebody who switches pulses off.
+        if (engine_.arbiter().state() != ArmState::faulted) {
+            engine_.set_state(ArmState::not_armed, StateCause::command, command.by);
+        }
+        lines_.fall_now();
         break;
+    case CommandKind::clear:
+        if (engine_.arbiter().state() == ArmState::faulted && !stop_.stopped()) {
+            lines_.mended();
+            engine_.set_state(ArmState::not_armed, StateCause::command, command.by);
+        }
+        break;
+    case CommandKind::next_epoch:
+        engine_.next_epoch(command.by);
+        break;
+    case CommandKind::speed:
+        ++speeds_;
+        speed_.take(command.number, command.came);
+        break;
+    case CommandKind::stop:
+        break; // never comes this way
     case CommandKind::mark:
         engine_.note(command.words());
         break;
+    case CommandKind::trial:
+        engine_.next_trial();
+        break;
     case CommandKind::open_gate:
     case CommandKind::close_gate:
-        engine_.set_gate(command.words(), command.kind == CommandKind::open_gate);
+        engine_.set_gate(command.words(), command.kind == CommandKind::open_gate, command.by);
         break;
     }
+}
+
+void LiveLoop::take_stop() noexcept {
+    if (const auto by = stop_.take()) {
+        engine_.set_state(ArmState::faulted, StateCause::emergency_stop, *by);
+        lines_.fall_now();
+    }
+}
+
+void LiveLoop::follow_speed(Nanos now) noexcept {
+    if (!settings_.speed_gate.on) {
+        return;
+    }
+    if (const bool open = speed_.open_at(now); open != speed_open_) {
+        speed_open_ = open;
+        engine_.set_gate(speed_gate_name, open, {ChangeSource::speed});
+        journal_speed(now);
+    } else if (speeds_ > 0 && engine_.next_sample() >= next_speed_) {
+        journal_speed(now);
+    }
+}
+
+// With every move of the gate, and once a second of the stream while speeds come.
+void LiveLoop::journal_speed(Nanos now) noexcept {
+    const SampleIndex at = engine_.next_sample();
+    next_speed_ = at + static_cast<std::uint64_t>(source_.rate().value);
+    journal_.take(
+        Event::make(EventKind::speed, 0, at, SpeedDetail{speed_.newest(), (now - speed_.came()).count(), speeds_}));
+    speeds_ = 0;
 }
 
 void LiveLoop::look_for_trouble() noexcept {
@@ -117,10 +192,10 @@ void LiveLoop::look_for_trouble() noexcept {
     }
     if (journal_.failed()) {
         engine_.set_state(ArmState::faulted, StateCause::journal_failed);
-        line_.fall_now();
-    } else if (line_.failed()) {
-        engine_.set_state(ArmState::faulted, StateCause::output_failed);
-        line_.fall_now();
+        lines_.fall_now();
+    } else if (const auto trouble = lines_.trouble()) {
+        engine_.set_state(ArmState::faulted, *trouble);
+        lines_.fall_now();
     }
 }
 
@@ -132,7 +207,7 @@ void LiveLoop::on_silence() noexcept {
     // Also where somebody arms while nothing comes in.
     if (engine_.arbiter().state() == ArmState::armed) {
         engine_.set_state(ArmState::not_armed, StateCause::stale_stream);
-        line_.fall_now();
+        lines_.fall_now();
     }
     if (!stale_) {
         stale_ = true;

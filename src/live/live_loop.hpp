@@ -2,11 +2,13 @@
 // on. One thread from packet to pulse. Allocates, locks, throws and formats nothing once it runs.
 #pragma once
 
+#include "arbiter/speed_gate.hpp"
 #include "base/spsc_ring.hpp"
 #include "control/command.hpp"
 #include "engine/engine.hpp"
 #include "intake/sample_source.hpp"
-#include "outputs/pulse_line.hpp"
+#include "live/emergency_stop.hpp"
+#include "outputs/pulse_lines.hpp"
 
 #include <array>
 #include <atomic>
@@ -28,6 +30,7 @@ struct LiveLoopSettings {
     Nanos stale_after{500'000'000};
     bool spin = false;
     bool start_armed = false;
+    SpeedGateSettings speed_gate{};
 };
 
 /// Why the loop ended.
@@ -35,33 +38,48 @@ enum class LoopEnd : std::uint8_t {
     running, ///< it has not
     stopped, ///< somebody asked it to
     ended,   ///< the source has no more samples
-    failed   ///< the source broke
+    failed,  ///< the source broke
+    planned  ///< the plan's last epoch has ended
 };
 
 class LiveLoop : private PulsePort {
   public:
     /// Everything outlives the loop. The engine is made by `make_engine(sink, port)`, since it reports to the loop.
     template <class MakeEngine>
-    LiveLoop(LiveLoopSettings settings, SampleSource& source, PulseLine& line, LoopJournal& journal,
+    LiveLoop(LiveLoopSettings settings, SampleSource& source, PulseLines& lines, LoopJournal& journal,
              SpscRing<Command>& commands, MakeEngine&& make_engine)
-        : settings_(settings), source_(source), line_(line), journal_(journal), commands_(commands),
+        : settings_(settings), source_(source), lines_(lines), journal_(journal), commands_(commands),
+          speed_(settings.speed_gate),
           engine_(make_engine(static_cast<EventSink&>(journal), static_cast<PulsePort&>(*this))) {}
 
-    /// Runs until stopped or the source ends, then disarms and lets the line fall. Thread: loop.
+    /// Runs until stopped or the source ends, then disarms and lets the lines fall. Thread: loop.
     void run() noexcept;
 
     /// Thread: any, and signal handlers.
     void stop() noexcept { stopping_.store(true, std::memory_order_relaxed); }
     [[nodiscard]] LoopEnd end() const noexcept { return end_.load(std::memory_order_acquire); }
 
+    /// Orders the line low at once, by the calling thread; the session is faulted. Thread: control.
+    void emergency_stop(const ChangedBy& by) noexcept {
+        stop_.stop(by);
+        lines_.fall_now();
+    }
+    [[nodiscard]] bool emergency_stopped() const noexcept { return stop_.stopped(); }
+    /// The emergency is over; a command `clear` to the loop follows. Thread: control.
+    void clear_emergency_stop() noexcept { stop_.clear(); }
+
     /// After `run`.
     [[nodiscard]] Engine& engine() noexcept { return engine_; }
 
   private:
     void fire(const Event& trigger) noexcept override;
+    void mark(const Event& trigger) noexcept override;
     void take_commands() noexcept;
     void obey(const Command& command) noexcept;
     void look_for_trouble() noexcept;
+    void take_stop() noexcept;
+    void follow_speed(Nanos now) noexcept;
+    void journal_speed(Nanos now) noexcept;
     void on_frames(const Arrival& arrival, Nanos began) noexcept;
     void on_silence() noexcept;
     void journal_counts() noexcept;
@@ -69,9 +87,14 @@ class LiveLoop : private PulsePort {
 
     LiveLoopSettings settings_;
     SampleSource& source_;
-    PulseLine& line_;
+    PulseLines& lines_;
     LoopJournal& journal_;
     SpscRing<Command>& commands_;
+    EmergencyStop stop_;
+    SpeedGate speed_;
+    bool speed_open_ = false;
+    std::uint64_t speeds_ = 0; // since the last event
+    SampleIndex next_speed_{};
     Engine engine_;
     PacketCounts counted_{};
     std::uint64_t packets_ = 0;

@@ -16,10 +16,10 @@ udp::endpoint endpoint_of(const OutputSettings& settings) {
     boost::system::error_code trouble;
     const auto address = boost::asio::ip::make_address_v4(settings.host.c_str(), trouble);
     if (trouble) {
-        throw Refusal("output.host", "'" + settings.host + "'", "a dotted IPv4 address");
+        throw Refusal(settings.where("host"), "'" + settings.host + "'", "a dotted IPv4 address");
     }
     if (!address.is_loopback() && !settings.allow_other_hosts) {
-        throw Refusal("output.host", settings.host, "127.0.0.1, or output.allow_other_hosts: true");
+        throw Refusal(settings.where("host"), settings.host, "127.0.0.1, or allow_other_hosts: true");
     }
     return {address, settings.port};
 }
@@ -28,12 +28,13 @@ udp::endpoint endpoint_of(const OutputSettings& settings) {
 
 OscOutput::OscOutput(const OutputSettings& settings)
     : socket_(context_, udp::v4()),
-      high_(encode_osc(settings.address, osc_arguments(settings.high_arguments), "output.address")),
-      low_(encode_osc(settings.address, osc_arguments(settings.low_arguments), "output.address")) {
+      high_(encode_osc(settings.address, osc_arguments(settings.high_arguments), settings.where("address"))),
+      low_(encode_osc(settings.address, osc_arguments(settings.low_arguments), settings.where("address"))) {
     boost::system::error_code trouble;
     socket_.connect(endpoint_of(settings), trouble);
     if (trouble) {
-        throw Refusal("output.host", settings.host + " (" + trouble.message() + ")", "an address with a route to it");
+        throw Refusal(settings.where("host"), settings.host + " (" + trouble.message() + ")",
+                      "an address with a route to it");
     }
     descriptor_ = socket_.native_handle();
 }

@@ -67,7 +67,8 @@ std::string gate_name(const GateDetail& gate) {
 class Walk {
   public:
     Walk(const EligibleRules& rules, Hertz rate, SampleIndex from)
-        : rules_(rules), rate_(rate), settled_(false, from), armed_(!rules.session, from), gates_(true, from) {
+        : rules_(rules), rate_(rate), settled_(false, from), armed_(!rules.session, from), gates_(true, from),
+          plan_(true, from) {
         obstacles_.add(from, from + rules.settle_frames);
     }
 
@@ -92,6 +93,9 @@ class Walk {
         case EventKind::gate:
             take_gate(event.as<GateDetail>(), event.sample);
             break;
+        case EventKind::epoch:
+            plan_.set(!rules_.session || event.as<EpochDetail>().pulses != 0, event.sample, obstacles_);
+            break;
         default:
             break;
         }
@@ -101,6 +105,7 @@ class Walk {
         settled_.set(true, std::max(from, to), obstacles_);
         armed_.set(true, std::max(from, to), obstacles_);
         gates_.set(true, std::max(from, to), obstacles_);
+        plan_.set(true, std::max(from, to), obstacles_);
         return obstacles_.outside(from, to);
     }
 
@@ -130,7 +135,7 @@ class Walk {
     EligibleRules rules_;
     Hertz rate_;
     Obstacles obstacles_;
-    Switch settled_, armed_, gates_;
+    Switch settled_, armed_, gates_, plan_;
     std::map<std::uint16_t, bool> site_settled_;
     std::map<std::string, bool> gate_open_;
 };

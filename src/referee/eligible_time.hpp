@@ -3,7 +3,7 @@
 // Two readings, by who is being scored:
 //   detector  statistics settled, no gap and filters settled after it, not blanked after a trigger. What the arbiter
 //             allowed does not count: a detector is scored on every crossing that it did not refuse itself.
-//   session   the same, and armed, all gates open, not in lock-out after a trigger.
+//   session   the same, and armed, all gates open, pulses allowed by the plan, not in lock-out after a trigger.
 // `settled` is known once a second, from the floor events: eligible time begins with the first one in which every site
 // had settled, so at most one second of it is given away.
 #pragma once

@@ -12,8 +12,10 @@ OfflineEngine OfflineEngine::make(const EngineSettings& settings, const Channels
     if (!floors.empty()) {
         detector.warm_start(floors);
     }
-    offline.engine_ = std::make_unique<Engine>(std::move(detector), settings.arbiter, std::move(schedule), rate,
-                                               *offline.kept_, *offline.kept_);
+    auto arbiter = settings.arbiter;
+    arbiter.speed_gate.on = false; // a recording has no speed: the gate would stay closed
+    offline.engine_ = std::make_unique<Engine>(std::move(detector), arbiter, std::move(schedule), rate, *offline.kept_,
+                                               *offline.kept_);
     return offline;
 }
 

@@ -12,6 +12,7 @@ namespace millpond {
 
 class OfflineEngine {
   public:
+    /// The speed gate is left out: nobody tells a speed here.
     /// `schedule`: places of a control schedule; `floors`: those of an earlier session, empty for a start from nothing.
     static OfflineEngine make(const EngineSettings& settings, const Channels& channels, Hertz rate,
                               std::vector<SampleIndex> schedule = {}, const std::vector<FloorState>& floors = {});

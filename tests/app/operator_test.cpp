@@ -87,7 +87,9 @@ TEST_F(Commands, ArmDisarmMarkAndGateAreObeyedInTheirOrderAndJournaled) {
 
 TEST_F(Commands, WhatIsNoCommandIsRefusedInOneLineEachAndChangesNothing) {
     begin();
-    send_and_read("/arms", "OSC /arms: found an unknown address; allowed: /arm, /disarm, /mark, /gate\n");
+    send_and_read("/arms",
+                  "OSC /arms: found an unknown address; allowed: /arm, /disarm, /stop, /clear, /mark, /gate, /epoch, "
+                  "/speed, /trial\n");
     send_and_read("/arm i 2", "OSC /arm: found other arguments; allowed: none, or 1\n");
     send_and_read("/gate si immobil 0", "OSC /gate: found no gate 'immobil'; allowed: did you mean 'immobile'?\n");
     send_and_read("/gate s immobile",

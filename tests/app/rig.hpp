@@ -21,14 +21,17 @@ struct RigSettings {
     std::string stream;            ///< lines under `stream:`; empty: RTP L16 of 5 channels as `feed` sends it
     std::string channels;          ///< lines under `channels:`; empty: four ripple sites and a reference
     std::string output = "silent"; ///< or osc
+    std::string more_outputs;      ///< lines under `outputs:`
     double width_ms = 1.0;
-    double lockout_ms = 500.0; ///< long against a pulse even at several times real pace
+    double longest_high_ms = 5000.0; ///< a busy machine must not look like a line that hangs
+    double lockout_ms = 500.0;       ///< long against a pulse even at several times real pace
     bool armed = true;
     bool control = false;
     std::string secret;
     double stale_after_ms = 5000.0; ///< a busy machine must not look like a silent sender
     double min_free_mb = 1.0;
     std::string folder = "sessions";
+    std::string more; ///< further sections, as they stand in the file
 };
 
 class Rig {
@@ -72,12 +75,14 @@ class Rig {
         text += "arbiter:\n  start_armed: " + std::string(want.armed ? "true" : "false") +
                 "\n  lockout_ms: " + std::to_string(want.lockout_ms) +
                 "\n  gates:\n    - {name: immobile, starts_open: true}\n";
-        text += "output: {kind: " + want.output + ", port: " + std::to_string(pulse_port_) +
-                ", width_ms: " + std::to_string(want.width_ms) + "}\n";
+        text += "outputs:\n  - {name: pulse, kind: " + want.output + ", port: " + std::to_string(pulse_port_) +
+                ", width_ms: " + std::to_string(want.width_ms) +
+                ", longest_high_ms: " + std::to_string(want.longest_high_ms) + "}\n" + want.more_outputs;
         text += "control: {listen: " + std::string(want.control ? "true" : "false") +
                 ", port: " + std::to_string(control_port_) + ", secret: '" + want.secret + "'}\n";
         text += "session: {folder: " + want.folder +
-                ", name: rig, store_samples: rf64, min_free_mb: " + std::to_string(want.min_free_mb) + "}\n";
+                ", name: rig, store_samples: rf64, min_free_mb: " + std::to_string(want.min_free_mb) + "}\n" +
+                want.more;
         return scratch_.file(name, text).string();
     }
 

@@ -10,8 +10,8 @@ constexpr Hertz rate{1000.0}; // one frame a millisecond
 ArbiterSettings settings_with(double lockout_ms, std::uint32_t per_second, std::uint32_t per_session) {
     ArbiterSettings settings;
     settings.lockout_ms = lockout_ms;
-    settings.max_pulses_per_second = per_second;
-    settings.max_pulses_per_session = per_session;
+    settings.limits.max_pulses_per_second = per_second;
+    settings.limits.max_pulses_per_session = per_session;
     return settings;
 }
 

@@ -3,6 +3,8 @@
 
 #include <gtest/gtest.h>
 
+#include <limits>
+
 namespace millpond {
 namespace {
 
@@ -43,12 +45,48 @@ TEST(OscCommands, WithASecretNothingIsTakenWithoutIt) {
 TEST(OscCommands, AnythingElseIsRefusedInOneLine) {
     const OscCommands osc("", {});
     for (const auto& packet :
-         {message("/fire"), message("/mark"), message("/arm", {std::int32_t{2}}), std::vector<std::uint8_t>{'x'}}) {
+         {message("/fire"), message("/mark"), message("/arm", {std::int32_t{2}}), std::vector<std::uint8_t>{'x'},
+          message("/clear", {std::string("all")}), message("/epoch"), message("/speed", {3.0F})}) {
         const auto verdict = osc.read(packet);
         EXPECT_FALSE(verdict.command);
         EXPECT_NE(verdict.refusal.find("allowed:"), std::string::npos);
         EXPECT_EQ(verdict.refusal.find('\n'), std::string::npos);
     }
+}
+
+TEST(OscCommands, TakesEpochAndSpeedWhereTheSettingsAskForThem) {
+    const OscCommands osc("", {}, {false, true, true});
+    EXPECT_EQ(osc.read(message("/epoch")).command->kind, CommandKind::next_epoch);
+    EXPECT_EQ(osc.read(message("/epoch", {std::int32_t{1}})).command->kind, CommandKind::next_epoch);
+    const auto speed = osc.read(message("/speed", {3.5F}));
+    EXPECT_EQ(speed.command->kind, CommandKind::speed);
+    EXPECT_EQ(speed.command->number, 3.5);
+    EXPECT_EQ(osc.read(message("/speed", {std::int32_t{12}})).command->number, 12.0);
+}
+
+TEST(OscCommands, ASpeedThatIsNoneIsRefusedInOneLine) {
+    const OscCommands osc("", {}, {false, true, true});
+    constexpr float infinity = std::numeric_limits<float>::infinity();
+    for (const auto& packet :
+         {message("/speed"), message("/speed", {std::string("fast")}), message("/speed", {1.0F, 2.0F}),
+          message("/speed", {-0.1F}), message("/speed", {std::numeric_limits<float>::quiet_NaN()}),
+          message("/speed", {infinity}), message("/speed", {-infinity})}) {
+        const auto verdict = osc.read(packet);
+        EXPECT_FALSE(verdict.command);
+        EXPECT_NE(verdict.refusal.find("OSC /speed: found "), std::string::npos) << verdict.refusal;
+        EXPECT_NE(verdict.refusal.find("; allowed: "), std::string::npos) << verdict.refusal;
+        EXPECT_EQ(verdict.refusal.find('\n'), std::string::npos);
+    }
+}
+
+TEST(OscCommands, StopIsTakenWhateverItCarries) {
+    const OscCommands osc("open sesame", {});
+    for (const auto& packet : {message("/stop"), message("/stop", {std::int32_t{0}}),
+                               message("/stop", {std::string("wrong secret"), 1.0F})}) {
+        EXPECT_EQ(osc.read(packet).command->kind, CommandKind::stop);
+    }
+    EXPECT_FALSE(osc.read(message("/clear")).command) << "that needs the secret";
+    EXPECT_EQ(osc.read(message("/clear", {std::string("open sesame")})).command->kind, CommandKind::clear);
 }
 
 TEST(OscCommands, LettingAButtonGoDoesNothing) {

@@ -213,7 +213,8 @@ TEST(StateGate, PulsesHardlyMoveIt) {
     pulsing.detector.method = quiet.detector.method = DetectionMethod::envelope;
     pulsing.detector.threshold.deviations = pulsing.detector.threshold.rearm_deviations = 1.0;
     pulsing.arbiter.lockout_ms = 30.0;
-    pulsing.arbiter.max_pulses_per_second = 1000;
+    pulsing.arbiter.limits = for_sweeps({});
+    pulsing.arbiter.limits.max_pulses_per_second = 1000;
     quiet.arbiter.start_armed = false; // no triggers, so nothing is blanked
     const auto with = run(hard_scene(), pulsing, 1000), without = run(hard_scene(), quiet, 1000);
     ASSERT_GT(with.of(EventKind::trigger).size(), 500U);

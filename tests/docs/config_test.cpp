@@ -123,7 +123,7 @@ TEST(Config, TuneStartsFromTheStreamOfLive) {
     const auto tune = load_settings(config / "tune.yaml");
     EXPECT_EQ(tune.stream, live.stream);
     EXPECT_EQ(tune.channels, live.channels);
-    EXPECT_EQ(tune.output, live.output);
+    EXPECT_EQ(tune.outputs, live.outputs);
 }
 
 } // namespace

@@ -1,5 +1,5 @@
+#include "base/clock.hpp"
 #include "live/live_loop.hpp"
-#include "outputs/silent_output.hpp"
 #include "support/allocation_guard.hpp"
 #include "support/signals.hpp"
 
@@ -48,7 +48,11 @@ struct KeptJournal : LoopJournal {
     std::size_t stored_frames = 0, timed = 0;
     bool broken = false;
     KeptJournal() { events.reserve(100000); }
-    void take(const Event& event) noexcept override { events.push_back(event); }
+    std::function<void(const Event&)> on_take = [](const Event&) {};
+    void take(const Event& event) noexcept override {
+        events.push_back(event);
+        on_take(event);
+    }
     void store(const FrameBlock& block) noexcept override { stored_frames += block.frames(); }
     void time_packet(std::int64_t, std::int64_t, std::int64_t) noexcept override { ++timed; }
     [[nodiscard]] bool failed() const noexcept override { return broken; }
@@ -65,28 +69,40 @@ struct NoEnds : EventSink {
 };
 
 struct FailingOutput : Output {
-    std::atomic<bool> works{true};
-    bool set_line(bool /*high*/) noexcept override { return works; }
+    std::atomic<bool> works{true}, high{false};
+    std::atomic<int> rises{0};
+    bool set_line(bool to) noexcept override {
+        rises += to ? 1 : 0;
+        high = to && works;
+        return works;
+    }
 };
 
 /// A whole loop without a device: settle 2 s, a burst a second from 5 s on.
 struct Rig {
     ScriptedSource source{bursts(), 2};
-    FailingOutput output;
+    FailingOutput output, marker;
     NoEnds ends;
-    PulseLine line{output, {1ms, 1, 10ms}, ends};
+    LineBoard board;
+    PulseLines lines{std::vector<PulseLinePlan>{{&output, {1ms, 1, 10ms}, Follows::pulse},
+                                                {&marker, {1ms, 1, 10ms}, Follows::trigger}},
+                     board, ends};
     KeptJournal journal;
     SpscRing<Command> commands{64};
     LiveLoop loop;
 
     explicit Rig(LiveLoopSettings settings, ArbiterSettings arbiter = {})
-        : loop(settings, source, line, journal, commands, [&](EventSink& sink, PulsePort& port) {
-              DetectorSettings detector;
-              detector.method = DetectionMethod::envelope;
-              detector.floor.settle_s = 2.0;
-              detector.threshold.deviations = 6.0;
-              return Engine(Detector::make(detector, ripple_channels(2), rate), arbiter, {}, rate, sink, port);
-          }) {}
+        : loop(settings, source, lines, journal, commands, make_engine(std::move(arbiter))) {}
+
+    static std::function<Engine(EventSink&, PulsePort&)> make_engine(ArbiterSettings arbiter = {}) {
+        return [arbiter = std::move(arbiter)](EventSink& sink, PulsePort& port) {
+            DetectorSettings detector;
+            detector.method = DetectionMethod::envelope;
+            detector.floor.settle_s = 2.0;
+            detector.threshold.deviations = 6.0;
+            return Engine(Detector::make(detector, ripple_channels(2), rate), arbiter, {}, rate, sink, port);
+        };
+    }
 
     static std::vector<float> bursts() {
         auto data = test::white_noise(20 * 1250, 2, 20.0, 7);
@@ -118,6 +134,56 @@ TEST(LiveLoop, PulsesOnceForEachBurstAndStoresEveryFrame) {
         EXPECT_LE(detail.packing_ns, 9 * 800'000); // ten frames of 0.8 ms a packet
         EXPECT_GE(detail.compute_ns, 0);
     }
+}
+
+TEST(LiveLoop, MarkerLinesRiseAtEveryTriggerPulseLinesAtEveryPulse) {
+    Rig rig(armed());
+    rig.loop.run();
+    EXPECT_EQ(rig.output.rises, 15);
+    EXPECT_EQ(rig.marker.rises, 15);
+    EXPECT_FALSE(rig.output.high);
+    EXPECT_FALSE(rig.marker.high);
+}
+
+/// Runs with trouble made by `make` from the eighth second on and armed again in the twelfth; gives the state's causes
+/// and the seconds in which there were pulses.
+std::pair<std::vector<std::string>, std::vector<std::uint64_t>> with_trouble(const std::function<void(Rig&)>& make) {
+    Rig rig(armed());
+    rig.source.before = [&](std::size_t frame) {
+        if (frame == 8 * 1250) {
+            make(rig);
+        } else if (frame == 12 * 1250) {
+            rig.commands.push(Command::make(CommandKind::arm));
+        }
+        return Received::frames;
+    };
+    rig.loop.run();
+    std::pair<std::vector<std::string>, std::vector<std::uint64_t>> found;
+    for (const auto& state : rig.journal.of(EventKind::state)) {
+        found.first.emplace_back(name_of(static_cast<StateCause>(state.as<StateDetail>().cause)));
+    }
+    for (const auto& pulse : rig.journal.of(EventKind::pulse)) {
+        found.second.push_back(pulse.sample.value / 1250);
+    }
+    return found;
+}
+
+TEST(LiveLoop, ALineThatTheWatchdogLoweredFaultsUntilSomebodyArms) {
+    const auto [causes, pulses] = with_trouble([](Rig& rig) { rig.board.lowered(0, 1); });
+    EXPECT_EQ(causes, (std::vector<std::string>{"start", "line held", "command", "session end"}));
+    EXPECT_EQ(pulses, (std::vector<std::uint64_t>{5, 6, 7, 12, 13, 14, 15, 16, 17, 18, 19}));
+}
+
+TEST(LiveLoop, ALostWatchdogFaultsAndArmingWithoutAnotherFaultsAgain) {
+    const auto [causes, pulses] = with_trouble([](Rig& rig) { rig.lines.set_watched(false); });
+    EXPECT_EQ(causes, (std::vector<std::string>{"start", "watchdog lost", "command", "watchdog lost", "session end"}));
+    EXPECT_EQ(pulses, (std::vector<std::uint64_t>{5, 6, 7}));
+}
+
+TEST(LiveLoop, ALostDeviceFaultsBeforeAnyPulseIsOrdered) {
+    const auto [causes, pulses] = with_trouble([](Rig& rig) { rig.lines.set_lost(1, true); });
+    EXPECT_EQ(causes, (std::vector<std::string>{"start", "output failed", "command", "output failed", "session end"}));
+    EXPECT_EQ(pulses, (std::vector<std::uint64_t>{5, 6, 7}));
 }
 
 TEST(LiveLoop, StartsNotArmedUnlessToldAndArmsByCommand) {
@@ -220,6 +286,228 @@ TEST(LiveLoop, StopEndsItDisarmed) {
     rig.loop.run();
     EXPECT_EQ(rig.loop.end(), LoopEnd::stopped);
     EXPECT_EQ(rig.loop.engine().arbiter().state(), ArmState::not_armed);
+}
+
+Command speed_of(double speed) {
+    auto command = Command::make(CommandKind::speed);
+    command.number = speed;
+    command.came = monotonic_now();
+    return command;
+}
+
+/// Remembers what it was last told.
+struct LevelOutput : Output {
+    std::atomic<bool> high{false};
+    std::atomic<int> rises{0};
+    bool set_line(bool level) noexcept override {
+        high = level;
+        rises += level ? 1 : 0;
+        return true;
+    }
+};
+
+TEST(EmergencyStop, LowersTheLineFromTheCallingThreadAtOnce) {
+    Rig rig(armed());
+    LevelOutput output;
+    PulseLine line(output, {10s, 1, 20s}, rig.ends);
+    LiveLoop loop(armed(), rig.source, line, rig.journal, rig.commands, rig.make_engine());
+    line.rise(SampleIndex{0});
+    ASSERT_TRUE(output.high);
+    loop.emergency_stop({ChangeSource::command}); // the loop does not even run
+    EXPECT_FALSE(output.high);
+    EXPECT_TRUE(loop.emergency_stopped());
+}
+
+TEST(EmergencyStop, FaultsAndNeitherArmingNorDisarmingEndsItBeforeItIsCleared) {
+    Rig rig(armed());
+    rig.source.before = [&](std::size_t frame) {
+        const auto at = [frame](std::size_t second) { return frame == second * 1250; };
+        if (at(8)) {
+            rig.loop.emergency_stop({ChangeSource::command, 4711, 0x7F000001});
+        } else if (at(10) || at(15)) {
+            rig.commands.push(Command::make(CommandKind::arm));
+        } else if (at(11)) {
+            rig.commands.push(Command::make(CommandKind::disarm));
+        } else if (at(13)) {
+            rig.loop.clear_emergency_stop();
+            rig.commands.push(Command::make(CommandKind::clear));
+        }
+        return Received::frames;
+    };
+    rig.loop.run();
+    std::vector<std::uint64_t> seconds;
+    for (const auto& pulse : rig.journal.of(EventKind::pulse)) {
+        seconds.push_back(pulse.sample.value / 1250);
+    }
+    EXPECT_EQ(seconds, (std::vector<std::uint64_t>{5, 6, 7, 15, 16, 17, 18, 19}));
+    const auto states = rig.journal.of(EventKind::state);
+    ASSERT_EQ(states.size(), 5U); // start, stop, clear, arm, end
+    EXPECT_EQ(states[1].code, static_cast<std::uint8_t>(ArmState::faulted));
+    EXPECT_EQ(states[1].as<StateDetail>().cause, static_cast<std::uint8_t>(StateCause::emergency_stop));
+    EXPECT_EQ(by_of(states[1].as<StateDetail>()).port, 4711) << "who stopped it is kept";
+    EXPECT_EQ(states[2].code, static_cast<std::uint8_t>(ArmState::not_armed));
+    EXPECT_EQ(states[2].sample, SampleIndex{13 * 1250});
+}
+
+TEST(EmergencyStop, AStopAfterAClearStandsEvenWhereTheLoopSeesBothAtOnce) {
+    Rig rig(armed());
+    rig.source.before = [&](std::size_t frame) {
+        if (frame == 6 * 1250) {
+            rig.loop.emergency_stop({ChangeSource::signal});
+            rig.loop.clear_emergency_stop();
+            rig.commands.push(Command::make(CommandKind::clear));
+            rig.commands.push(Command::make(CommandKind::arm));
+            rig.loop.emergency_stop({ChangeSource::signal});
+        }
+        return Received::frames;
+    };
+    rig.loop.run();
+    EXPECT_EQ(rig.journal.of(EventKind::pulse).size(), 1U);
+    EXPECT_EQ(rig.journal.of(EventKind::state)[1].code, static_cast<std::uint8_t>(ArmState::faulted));
+    EXPECT_TRUE(rig.loop.emergency_stopped());
+}
+
+TEST(EmergencyStop, AStopThatIsClearedBeforeTheLoopLooksIsJournaledAndDisarmsAllTheSame) {
+    Rig rig(armed());
+    rig.source.before = [&](std::size_t frame) {
+        if (frame == 6 * 1250) {
+            rig.loop.emergency_stop({ChangeSource::signal});
+            rig.loop.clear_emergency_stop();
+            rig.commands.push(Command::make(CommandKind::clear));
+        }
+        return Received::frames;
+    };
+    rig.loop.run();
+    EXPECT_EQ(rig.journal.of(EventKind::pulse).size(), 1U);
+    const auto states = rig.journal.of(EventKind::state);
+    ASSERT_EQ(states.size(), 4U);
+    EXPECT_EQ(states[1].as<StateDetail>().cause, static_cast<std::uint8_t>(StateCause::emergency_stop));
+    EXPECT_EQ(states[2].code, static_cast<std::uint8_t>(ArmState::not_armed));
+}
+
+TEST(EmergencyStop, BetweenItAndItsPlaceInTheJournalNoLineIsRaised) {
+    Rig rig(armed());
+    LevelOutput output;
+    PulseLine line(output, {1ms, 1, 10ms}, rig.ends);
+    rig.source.packet_frames = 5 * 1250; // the whole of what follows is one packet
+    LiveLoop loop(armed(), rig.source, line, rig.journal, rig.commands, rig.make_engine());
+    rig.journal.on_take = [&](const Event& event) {
+        if (event.kind == EventKind::trigger && rig.journal.of(EventKind::trigger).size() == 2) {
+            loop.emergency_stop({ChangeSource::command});
+        }
+    };
+    loop.run();
+    EXPECT_EQ(output.rises, 2);
+    EXPECT_EQ(rig.journal.of(EventKind::pulse).size(), 2U);
+    EXPECT_GT(rig.journal.of(EventKind::trigger).size(), 2U) << "decided within the packet, and not given";
+}
+
+LiveLoopSettings with_speed_gate() {
+    auto settings = armed();
+    settings.speed_gate.on = true;
+    settings.speed_gate.hold_ms = 0.0;
+    settings.speed_gate.stale_after_ms = 600'000.0;
+    return settings;
+}
+
+ArbiterSettings speed_gated() {
+    ArbiterSettings arbiter;
+    arbiter.speed_gate.on = true;
+    return arbiter;
+}
+
+TEST(SpeedGateInTheLoop, IsClosedUntilASpeedComesAndFollowsIt) {
+    Rig rig(with_speed_gate(), speed_gated());
+    rig.source.before = [&](std::size_t frame) {
+        if (frame == 8 * 1250) {
+            rig.commands.push(speed_of(1.0));
+        } else if (frame == 12 * 1250) {
+            rig.commands.push(speed_of(20.0));
+        }
+        return Received::frames;
+    };
+    rig.loop.run();
+    EXPECT_EQ(rig.journal.of(EventKind::pulse).size(), 4U);
+    const auto gates = rig.journal.of(EventKind::gate);
+    ASSERT_EQ(gates.size(), 3U); // as it starts, open, closed
+    EXPECT_STREQ(gates[1].as<GateDetail>().name.data(), "speed");
+    EXPECT_EQ(gates[1].sample, SampleIndex{8 * 1250});
+    EXPECT_EQ(gates[2].sample, SampleIndex{12 * 1250});
+    EXPECT_EQ(by_of(gates[0].as<GateDetail>()).source, ChangeSource::settings);
+    EXPECT_EQ(by_of(gates[2].as<GateDetail>()).source, ChangeSource::speed);
+    const auto speeds = rig.journal.of(EventKind::speed);
+    ASSERT_EQ(speeds.size(), 2U);
+    EXPECT_EQ(speeds[1].as<SpeedDetail>().value, 20.0);
+    EXPECT_EQ(speeds[1].as<SpeedDetail>().values, 1U);
+}
+
+TEST(SpeedGateInTheLoop, AStaleSpeedClosesIt) {
+    auto settings = with_speed_gate();
+    settings.speed_gate.stale_after_ms = 50.0;
+    Rig rig(settings, speed_gated());
+    rig.source.before = [&](std::size_t frame) {
+        if (frame % 1250 == 0 && frame <= 8 * 1250) {
+            rig.commands.push(speed_of(0.0));
+        } else if (frame == 10 * 1250) {
+            std::this_thread::sleep_for(60ms); // the camera has stopped
+        }
+        return Received::frames;
+    };
+    rig.loop.run();
+    const auto gates = rig.journal.of(EventKind::gate);
+    ASSERT_GE(gates.size(), 3U);
+    EXPECT_EQ(gates.back().as<GateDetail>().open, 0);
+    EXPECT_LE(gates.back().sample, SampleIndex{10 * 1250});
+    for (const auto& pulse : rig.journal.of(EventKind::pulse)) {
+        EXPECT_LT(pulse.sample, SampleIndex{10 * 1250});
+    }
+}
+
+TEST(PlanInTheLoop, EndsTheSessionWhereItIsTo) {
+    ArbiterSettings arbiter;
+    arbiter.plan = {{{"a", 7.0 / 60.0, true}, {"b", 3.0 / 60.0, false}}, true};
+    Rig rig(armed(), arbiter);
+    rig.loop.run();
+    EXPECT_EQ(rig.loop.end(), LoopEnd::planned);
+    EXPECT_EQ(rig.journal.of(EventKind::pulse).size(), 2U);
+    EXPECT_EQ(rig.journal.of(EventKind::epoch).size(), 3U);
+    EXPECT_GE(rig.loop.engine().next_sample(), SampleIndex{10 * 1250});
+    EXPECT_LE(rig.loop.engine().next_sample(), SampleIndex{10 * 1250 + 10});
+}
+
+TEST(LimitsInTheLoop, ARunawayFaultsTheSession) {
+    ArbiterSettings arbiter;
+    arbiter.limits.runaway.equal_below_ms = 2'000.0; // the bursts, one a second, are what looks like one here
+    arbiter.limits.runaway.equal_within_ms = 20.0;
+    Rig rig(armed(), arbiter);
+    rig.loop.run();
+    EXPECT_EQ(rig.journal.of(EventKind::pulse).size(), 9U);
+    const auto states = rig.journal.of(EventKind::state);
+    ASSERT_GE(states.size(), 2U);
+    EXPECT_EQ(states[1].as<StateDetail>().cause, static_cast<std::uint8_t>(StateCause::runaway));
+}
+
+TEST(LimitsInTheLoop, AFaultOrdersTheLineLowAtOnce) {
+    ArbiterSettings arbiter;
+    arbiter.limits.max_pulses_per_session = 1; // so that the one long pulse is not played into
+    arbiter.limits.runaway.expected_per_s = 0.01;
+    arbiter.limits.runaway.window_s = 10.0;
+    arbiter.limits.runaway.false_alarms_per_hour = 1.0;
+    Rig rig(armed());
+    LevelOutput output;
+    PulseLine line(output, {10s, 1, 20s}, rig.ends);
+    LiveLoop loop(armed(), rig.source, line, rig.journal, rig.commands, rig.make_engine(arbiter));
+    std::vector<bool> levels; // at the start of each second
+    rig.source.before = [&](std::size_t frame) {
+        if (frame % 1250 == 0) {
+            levels.push_back(output.high);
+        }
+        return Received::frames;
+    };
+    loop.run();
+    ASSERT_EQ(levels.size(), 20U);
+    EXPECT_TRUE(levels[6] && levels[7]) << "else nothing is shown";
+    EXPECT_FALSE(levels[8]) << "the third detection, in the seventh second, was one too many";
 }
 
 TEST(LiveLoop, AllocatesNothingFromStartToEnd) {

@@ -69,11 +69,37 @@ TEST_F(SettingsFile, RoomsThatContradictEachOtherAreRefused) {
     EXPECT_NE(refusal("detector: {threshold: {deviations: 3, rearm_deviations: 4}}").find("rearm_deviations"),
               std::string::npos);
     EXPECT_NE(refusal("detector: {filter: {low_hz: 260}}").find("low_hz"), std::string::npos);
-    EXPECT_NE(refusal("{arbiter: {lockout_ms: 20}, output: {width_ms: 30}}").find("lockout_ms"), std::string::npos);
+    EXPECT_NE(refusal("{arbiter: {lockout_ms: 20}, outputs: [{width_ms: 30}]}").find("lockout_ms"), std::string::npos);
     EXPECT_NE(refusal("arbiter: {condition: schedule}").find("schedule_file"), std::string::npos);
     EXPECT_NE(refusal("arbiter: {gates: [{name: a}, {name: a}]}").find("gates[0]"), std::string::npos);
     EXPECT_NE(refusal("{detector: {state_gate: {on: true}}, arbiter: {gates: [{name: state}]}}").find("arbiter.gates"),
               std::string::npos);
+    EXPECT_NE(refusal("{speed_gate: {on: true}, arbiter: {gates: [{name: speed}]}}").find("arbiter.gates"),
+              std::string::npos);
+    EXPECT_NE(refusal("speed_gate: {closes_above: 3, opens_below: 4}").find("speed_gate.opens_below"),
+              std::string::npos);
+    EXPECT_NE(refusal("plan: {epochs: [{minutes: 3}]}").find("plan.epochs[0].name"), std::string::npos);
+    EXPECT_NE(refusal("plan: {epochs: [{name: a name of 22 letters..}]}").find("1 to 21"), std::string::npos);
+    EXPECT_NE(refusal("plan: {ends_session: true}").find("plan.ends_session"), std::string::npos);
+    EXPECT_NE(refusal("limits: {floor: {least_uv: 9, most_uv: 8}}").find("limits.floor.least_uv"), std::string::npos);
+    EXPECT_NE(refusal("limits: {floor: {channels: [{channel: 1, least_uv: 9, most_uv: 8}]}}")
+                  .find("limits.floor.channels[0].least_uv"),
+              std::string::npos);
+}
+
+TEST_F(SettingsFile, LimitsPlanSpeedGateAndStimulusStandInSectionsOfTheirOwn) {
+    const auto settings = load("limits: {max_pulses_per_minute: 30, runaway: {expected_per_s: 0.7}}\n"
+                               "plan: {epochs: [{name: rest, minutes: 20, pulses: false}, {name: track}]}\n"
+                               "speed_gate: {on: true, unit: m/s, closes_above: 0.05, opens_below: 0.04}\n"
+                               "stimulus: {current_ua: 140, phase_us: 100, diameter_um: 50, shape: hemisphere}\n");
+    EXPECT_EQ(settings.arbiter.limits.max_pulses_per_minute, 30U);
+    EXPECT_EQ(settings.arbiter.limits.runaway.expected_per_s, 0.7);
+    ASSERT_EQ(settings.arbiter.plan.epochs.size(), 2U);
+    EXPECT_FALSE(settings.arbiter.plan.epochs[0].pulses);
+    EXPECT_EQ(settings.arbiter.speed_gate.unit, SpeedUnit::m_per_s);
+    EXPECT_EQ(settings.stimulus.shape, ElectrodeShape::hemisphere);
+    EXPECT_EQ(load(settings_to_yaml(settings)).arbiter, settings.arbiter);
+    EXPECT_EQ(load(settings_to_yaml(settings)).stimulus, settings.stimulus);
 }
 
 TEST_F(SettingsFile, MissingFileIsRefused) {
