@@ -79,7 +79,7 @@ TEST_F(BadInput, OfFilesThatAreNotThere) {
     expect_dryrun_refused("good.wav", "--sidecar none.yaml", {"none.yaml"});
     expect_refused("feed none.wav", {"none.wav"});
     expect_refused("audit none", {"none"});
-    expect_refused("sham delayed none.tsv --sampling-hz 1250 --out s.tsv", {"none.tsv"});
+    expect_refused("sham yoked none.tsv --sampling-hz 1250 --out s.tsv", {"none.tsv"});
     expect_refused("sham check none.tsv --sampling-hz 1250", {"none.tsv"});
     expect_refused("synth new.wav --scene none.yaml", {"none.yaml"});
     expect_refused("tune none.wav --out tuned.yaml", {"none.wav"});
@@ -144,8 +144,8 @@ TEST_F(BadInput, InLabelsAndSchedules) {
 
     file("order.tsv", "onset\tduration\ttrial_type\tsample\n2.0\t0\tscheduled\t2500\n1.0\t0\tscheduled\t1250\n");
     file("near.tsv", "onset\tduration\ttrial_type\tsample\n1.0\t0\tscheduled\t1250\n1.02\t0\tscheduled\t1275\n");
-    settings("order.yaml", "start_armed", "condition: schedule\n  schedule_file: order.tsv\n  start_armed");
-    settings("near.yaml", "start_armed", "condition: schedule\n  schedule_file: near.tsv\n  start_armed");
+    settings("order.yaml", "start_armed", "condition: yoked\n  schedule_file: order.tsv\n  start_armed");
+    settings("near.yaml", "start_armed", "condition: yoked\n  schedule_file: near.tsv\n  start_armed");
     for (const std::string name : {"order", "near"}) {
         expect_refused("sham check " + name + ".tsv --sampling-hz 1250", {name + ".tsv"});
         expect_refused("live " + name + ".yaml", {name + ".tsv"});

@@ -122,7 +122,7 @@ TEST_F(Help, ExamplesOfSynthAndDryrunAndShamWorkOneAfterTheOther) {
     expect_examples_work("dryrun");
     expect_examples_work("sham");
     std::filesystem::remove(rig_ / "project/rate_matched.tsv"); // the next help makes the same one
-    expect_examples_work("sham delayed");
+    expect_examples_work("sham yoked");
     expect_examples_work("sham rate-matched");
     expect_examples_work("sham check");
 }

@@ -30,7 +30,7 @@ std::set<std::string> subcommands_in(const std::string& help) {
     return all_matches(between(help, "Subcommands:\n", "\n\n"), "(^|\n)  ([a-z][a-z-]*)", 2);
 }
 
-/// Help text by command; a command of two words ("sham delayed") has its own.
+/// Help text by command; a command of two words ("sham yoked") has its own.
 const std::map<std::string, std::string>& helps() {
     static const auto all = [] {
         std::map<std::string, std::string> found;
@@ -54,7 +54,7 @@ std::string joined(const std::string& text) {
     return std::regex_replace(text, std::regex("\\\\\n *"), "");
 }
 
-/// "audit" or "sham delayed" of a line that runs the program.
+/// "audit" or "sham yoked" of a line that runs the program.
 std::string command_of(const std::string& line) {
     std::smatch words;
     if (!std::regex_search(line, words, std::regex("build/millpond ([a-z]+)( [a-z-]+)?"))) {
