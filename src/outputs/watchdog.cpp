@@ -18,7 +18,9 @@ namespace millpond {
 namespace {
 
 constexpr char go_home = 'e';
-constexpr Nanos longest_stillness = std::chrono::seconds{1};
+// A busy computer may keep an ordinary process waiting for a second.
+constexpr Nanos longest_stillness = std::chrono::seconds{3};
+constexpr Nanos way_home = std::chrono::seconds{1};
 
 struct Lines {
     std::array<WatchedLine, most_outputs> lines{};
@@ -134,7 +136,7 @@ Watchdog::~Watchdog() {
     // Word first, or the end of the line would read as this program's death.
     (void)::send(life_line_, &go_home, 1, MSG_NOSIGNAL);
     ::close(life_line_);
-    const auto patience_ends = monotonic_now() + longest_stillness;
+    const auto patience_ends = monotonic_now() + way_home;
     while (!ended_) {
         ended_ = ::waitpid(process_, nullptr, WNOHANG) != 0;
         if (!ended_ && monotonic_now() > patience_ends) {

@@ -37,7 +37,7 @@ class Watchdog {
     Watchdog(const Watchdog&) = delete;
     Watchdog& operator=(const Watchdog&) = delete;
 
-    /// False once it has died, or stood still for over a second. Call every few tens of ms. Thread: control.
+    /// False once it has died, or stood still for over 3 s. Call every few tens of ms. Thread: control.
     [[nodiscard]] bool watches() noexcept;
 
     [[nodiscard]] pid_t process() const noexcept { return process_; }

@@ -111,14 +111,13 @@ TEST(LostWatchdog, FaultsTheSessionAndAnotherTakesOver) {
     const auto folder = Rig::folder_of(*session);
     const auto sender = rig.feed(rig.recording(20.0), {"--loop", "--speed", "4"});
     ASSERT_TRUE(session->says("millpond: armed (start)\n")) << session->err();
-    const auto first = watchdog_of(folder);
-    ASSERT_GT(first, 1);
+    pid_t first = -1, second = -1; // one that was just born has not given itself its name yet
+    ASSERT_TRUE(wait_until([&] { return (first = watchdog_of(folder)) > 1; }));
     ::kill(first, SIGKILL);
     EXPECT_TRUE(session->says("millpond: the watchdog of the lines was lost\n")) << session->err();
     EXPECT_TRUE(session->says("millpond: faulted (watchdog lost)\n")) << session->err();
     EXPECT_TRUE(session->says("another watchdog has taken over")) << session->err();
-    const auto second = watchdog_of(folder);
-    EXPECT_GT(second, 1);
+    ASSERT_TRUE(wait_until([&] { return (second = watchdog_of(folder)) > 1; }));
     EXPECT_NE(second, first);
     session->send(SIGTERM);
     EXPECT_EQ(session->status(), 0) << session->err();
