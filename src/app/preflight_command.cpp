@@ -52,6 +52,9 @@ std::string try_stream(const StreamSettings& stream) {
         return "samples will come on standard input";
     }
     (void)open_source(stream);
+    if (stream.source == SourceKind::daq) {
+        return fmt::format("{} samples {} channels at {} Hz", stream.device, stream.channels, stream.rate_hz);
+    }
     return fmt::format("{}:{} is free", stream.listen_address, stream.port);
 }
 
@@ -136,7 +139,8 @@ std::vector<Finding> findings_for(const std::string& file) {
     std::vector<Finding> findings{{Fitness::good, "settings", file + " is valid"}};
     const auto add = [&](std::vector<Finding> more) { findings.insert(findings.end(), more.begin(), more.end()); };
     findings.push_back(tried("engine", [&] { return try_engine(settings, stream, file); }));
-    findings.push_back(tried("stream port", [&] { return try_stream(stream); }));
+    findings.push_back(
+        tried(stream.source == SourceKind::daq ? "stream" : "stream port", [&] { return try_stream(stream); }));
     findings.push_back(tried("command port", [&] { return try_control(settings); }));
     add(check_outputs(settings));
     add(check_limits(settings));

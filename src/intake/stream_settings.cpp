@@ -29,8 +29,10 @@ class Resolver {
     void resolve() {
         if (settings_.source == SourceKind::rtp) {
             resolve_rtp();
-        } else {
+        } else if (settings_.source == SourceKind::pipe) {
             resolve_pipe();
+        } else {
+            resolve_daq();
         }
         if (!(settings_.rate_hz >= 500.0)) {
             refuse("rate_hz", shown(settings_.rate_hz), "from 500 to 50000");
@@ -38,7 +40,8 @@ class Resolver {
         if (settings_.channels == 0) {
             refuse("channels", "0", "from 1 to 256");
         }
-        if (settings_.encoding != SampleEncoding::float32 && settings_.microvolts_per_count == 0.0) {
+        if (settings_.source != SourceKind::daq && settings_.encoding != SampleEncoding::float32 &&
+            settings_.microvolts_per_count == 0.0) {
             refuse("microvolts_per_count", "0", "what one count of the sender's integers is worth");
         }
     }
@@ -113,6 +116,25 @@ class Resolver {
         }
         if (settings_.encoding != SampleEncoding::int16 && settings_.encoding != SampleEncoding::float32) {
             refuse("encoding", shown(settings_.encoding), "int16 or float32 (source: pipe)");
+        }
+    }
+
+    void resolve_daq() const {
+        if (!settings_.sdp_file.empty()) {
+            refuse("sdp_file", settings_.sdp_file, "nothing (source: daq)");
+        }
+        if (settings_.device.empty()) {
+            refuse("device", "nothing", "the path of a board, such as /dev/comedi0 (source: daq)");
+        }
+        if (settings_.encoding != SampleEncoding::from_sdp) {
+            refuse("encoding", shown(settings_.encoding), "nothing (source: daq): the board says what its counts are");
+        }
+        if (settings_.microvolts_per_count != 0.0 && settings_.microvolts_per_count != 1.0) {
+            refuse("microvolts_per_count", shown(settings_.microvolts_per_count),
+                   "nothing (source: daq): the board's range and gain say it");
+        }
+        if (settings_.gain == 0.0) {
+            refuse("gain", "0", "the gain of the amplifier before the board, 1 where there is none (source: daq)");
         }
     }
 

@@ -11,10 +11,12 @@
 namespace millpond {
 
 enum class SourceKind : std::uint8_t {
-    rtp, ///< RTP packets by UDP
-    pipe ///< raw interleaved frames on standard input
+    rtp,  ///< RTP packets by UDP
+    pipe, ///< raw interleaved frames on standard input
+    daq   ///< analogue input of a data acquisition board, through comedilib
 };
-inline constexpr Choice<SourceKind> source_kinds[] = {{SourceKind::rtp, "rtp"}, {SourceKind::pipe, "pipe"}};
+inline constexpr Choice<SourceKind> source_kinds[] = {
+    {SourceKind::rtp, "rtp"}, {SourceKind::pipe, "pipe"}, {SourceKind::daq, "daq"}};
 
 /// Zeros, empty texts and from_sdp stand for `not said here`: the SDP file says it, or `resolved` fills it in.
 struct StreamSettings {
@@ -34,12 +36,17 @@ struct StreamSettings {
     double stale_after_ms = 500.0;
     std::uint32_t max_packet_bytes = 65535;
     std::uint32_t receive_buffer_bytes = 4'194'304;
+    std::string device;
+    std::uint32_t subdevice = 0;
+    std::uint32_t range = 0;
+    double gain = 0.0;
 
     bool operator==(const StreamSettings&) const = default;
 };
 
 template <class Visitor> void describe(Visitor& visit, StreamSettings& stream) {
-    visit.choice("source", stream.source, source_kinds, "rtp: packets by UDP; pipe: raw frames on standard input");
+    visit.choice("source", stream.source, source_kinds,
+                 "rtp: packets by UDP; pipe: raw frames on standard input; daq: a data acquisition board of comedi");
     visit.text("sdp_file", stream.sdp_file,
                "session description of the RTP stream, relative to this file; says address, port, payload type, "
                "encoding, rate and channels");
@@ -67,6 +74,11 @@ template <class Visitor> void describe(Visitor& visit, StreamSettings& stream) {
     visit.whole("max_packet_bytes", stream.max_packet_bytes, {64, 65535}, "longer packets are dropped as oversized");
     visit.whole("receive_buffer_bytes", stream.receive_buffer_bytes, {4096, 268435456},
                 "what the kernel is asked to hold between two reads; it may grant less");
+    visit.text("device", stream.device, "daq: path of the board, such as /dev/comedi0");
+    visit.whole("subdevice", stream.subdevice, {0, 255}, "daq: number of the board's analogue input subdevice");
+    visit.whole("range", stream.range, {0, 255}, "daq: number of the input range, as the board counts them");
+    visit.number("gain", stream.gain, {0.0, 1e6},
+                 "daq: gain of the amplifier before the board, needed for microvolts; 1: none");
 }
 
 /// Fills in what is not said, from the SDP file (relative to the folder of `settings_file`) and the defaults, so that

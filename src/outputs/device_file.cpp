@@ -50,12 +50,16 @@ void DeviceFile::open() {
 }
 
 void DeviceFile::adopt(int descriptor) {
-    // Held by the open file itself, so that a watchdog process that has it by fork holds it too.
-    if (::flock(descriptor, LOCK_EX | LOCK_NB) != 0) {
-        ::close(descriptor);
+    descriptor_ = descriptor;
+    if (!hold()) {
         throw Refusal(where_, path_ + " (in use by another session)", "a device for this session alone");
     }
-    descriptor_ = descriptor;
+}
+
+// Held by the open file itself, so that a watchdog process that has it by fork holds it too.
+bool DeviceFile::hold() noexcept {
+    held_ = ::flock(descriptor_, LOCK_EX | LOCK_NB) == 0;
+    return held_;
 }
 
 bool DeviceFile::reopen() noexcept {
@@ -64,10 +68,16 @@ bool DeviceFile::reopen() noexcept {
     if (opened >= 0) {
         ::close(opened);
     }
-    return placed && ::flock(descriptor_, LOCK_EX | LOCK_NB) == 0;
+    if (placed) {
+        hold();
+    }
+    return placed;
 }
 
-bool DeviceFile::exists() const noexcept {
+bool DeviceFile::exists() noexcept {
+    if (!held_) {
+        hold();
+    }
     return ::access(path_.c_str(), F_OK) == 0;
 }
 

@@ -25,8 +25,9 @@ class DeviceFile {
     /// The same without a word; the new file takes the old one's number, so that nobody notices. Thread: control, while
     /// others use it.
     bool reopen() noexcept;
-    /// Whether the path still leads to a device. Thread: control.
-    [[nodiscard]] bool exists() const noexcept;
+    /// Whether the path still leads to a device; holds it again where a watchdog's old copy kept `reopen` from that.
+    /// Thread: control.
+    [[nodiscard]] bool exists() noexcept;
 
     [[nodiscard]] int descriptor() const noexcept { return descriptor_; }
     [[nodiscard]] const std::string& path() const noexcept { return path_; }
@@ -36,8 +37,11 @@ class DeviceFile {
     void adopt(int descriptor);
 
   private:
+    bool hold() noexcept;
+
     std::string path_, where_;
     int descriptor_ = -1;
+    bool held_ = false;
 };
 
 /// Refuses: this path is not such a device. Reads errno.

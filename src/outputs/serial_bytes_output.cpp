@@ -16,6 +16,7 @@ constexpr std::string_view greeting = "millpond line 1 ";
 constexpr Nanos ask_every = std::chrono::milliseconds{250};
 constexpr Nanos answer_within = std::chrono::seconds{1};
 constexpr Nanos identify_within = std::chrono::seconds{4};
+constexpr Nanos open_again_every = std::chrono::seconds{5};
 constexpr Nanos identify_again_within = std::chrono::milliseconds{50};
 
 } // namespace
@@ -97,11 +98,18 @@ bool SerialBytesOutput::answers() noexcept {
         heard.begin() + static_cast<std::ptrdiff_t>(length)) {
         answered_at_ = now;
     }
-    return there && now - answered_at_ < answer_within && port_.file().exists();
+    return there && now - answered_at_ < answer_within && port_.exists();
 }
 
 bool SerialBytesOutput::reopen() noexcept {
-    return port_.reopen() && identify(identify_again_within);
+    // A board that restarts when its port is opened is given the time for that.
+    if (monotonic_now() - reopened_at_ > open_again_every || !port_.exists() || !send('?')) {
+        reopened_at_ = monotonic_now();
+        if (!port_.reopen()) {
+            return false;
+        }
+    }
+    return identify(identify_again_within);
 }
 
 } // namespace millpond

@@ -41,7 +41,7 @@ class SerialBytesOutput : public Output {
 
     SerialPort port_;
     std::uint32_t longest_high_ms_ = 0;
-    Nanos asked_at_{}, answered_at_{};
+    Nanos asked_at_{}, answered_at_{}, reopened_at_{};
 };
 
 } // namespace millpond

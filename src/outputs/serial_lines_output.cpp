@@ -22,7 +22,7 @@ bool SerialLinesOutput::set_line(bool high) noexcept {
 
 bool SerialLinesOutput::answers() noexcept {
     int bits = 0;
-    return port_->order(TIOCMGET, &bits) && port_->file().exists();
+    return port_->order(TIOCMGET, &bits) && port_->exists();
 }
 
 bool SerialLinesOutput::reopen() noexcept {

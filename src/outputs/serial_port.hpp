@@ -25,6 +25,8 @@ class SerialPort {
     void keep_lines_at_close() noexcept;
 
     [[nodiscard]] const DeviceFile& file() const noexcept { return file_; }
+    /// Thread: control.
+    [[nodiscard]] bool exists() noexcept { return file_.exists(); }
 
   private:
     void set_lines_at_close() const noexcept;

@@ -27,7 +27,7 @@ struct Settings {
     ArbiterSettings arbiter;
     AssignmentSettings assignment;
     ScheduleSettings schedule;
-    std::vector<OutputSettings> outputs{OutputSettings{}}; ///< never empty
+    std::vector<OutputSettings> outputs = std::vector<OutputSettings>(1); ///< never empty
     StimulusSettings stimulus;
     ControlSettings control;
     SessionSettings session;

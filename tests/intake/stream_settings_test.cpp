@@ -108,5 +108,19 @@ TEST_F(StreamSettingsFile, APipeTakesItsOwnEncodingsAndNoSdpFile) {
               0U);
 }
 
+TEST_F(StreamSettingsFile, ABoardNeedsItsPathRateChannelsAndTheAmplifiersGain) {
+    const std::string board = "source: daq, device: /dev/comedi0, rate_hz: 1250, channels: 2";
+    const auto once = read("{" + board + ", gain: 1000}");
+    EXPECT_EQ(resolved(once, folder_ / "rig.yaml"), once);
+    EXPECT_EQ(refusal_of("{" + board + "}").find("rig.yaml: stream.gain: "), 0U);
+    EXPECT_EQ(refusal_of("{source: daq, gain: 1, rate_hz: 1250, channels: 2}").find("rig.yaml: stream.device: "), 0U);
+    EXPECT_EQ(refusal_of("{" + board + ", gain: 1, encoding: L16}").find("rig.yaml: stream.encoding: "), 0U);
+    EXPECT_EQ(refusal_of("{" + board + ", gain: 1, microvolts_per_count: 0.2}")
+                  .find("rig.yaml: stream.microvolts_per_count: "),
+              0U);
+    EXPECT_EQ(
+        refusal_of("{source: daq, device: /dev/comedi0, gain: 1, channels: 2}").find("rig.yaml: stream.rate_hz: "), 0U);
+}
+
 } // namespace
 } // namespace millpond

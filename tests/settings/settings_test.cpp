@@ -102,6 +102,36 @@ TEST_F(SettingsFile, LimitsPlanSpeedGateAndStimulusStandInSectionsOfTheirOwn) {
     EXPECT_EQ(load(settings_to_yaml(settings)).stimulus, settings.stimulus);
 }
 
+TEST_F(SettingsFile, OutputsThatCannotBeAreRefusedByNameAndKey) {
+    for (const auto& [text, place] : std::vector<std::pair<std::string, std::string>>{
+             {"outputs: [{name: a, kind: serial_lines}]", "outputs.a.device"},
+             {"outputs: [{name: a}, {name: a}]", "outputs.a.name"},
+             {"outputs: [{name: ''}]", "name"},
+             {"outputs: [{name: a, width_ms: 5, longest_high_ms: 5}]", "outputs.a.longest_high_ms"},
+             {"outputs: [{name: a, follows: trigger}]", "follows: pulse"},
+             {"outputs: []", "follows: pulse"},
+             {"outputs: [{name: a, kind: lamp}]", "outputs[0].kind"},
+             {"outputs: [{name: a, width_ms: 1}, {name: b, follows: trigger, width_ms: 200}]", "outputs.b lasts"},
+             {"outputs: [{name: a},{name: b},{name: c},{name: d},{name: e},{name: f},{name: g},{name: h},{name: i}]",
+              "at most 8"}}) {
+        const auto line = refusal(text);
+        EXPECT_NE(line.find(place), std::string::npos) << text << " -> " << line;
+    }
+}
+
+TEST_F(SettingsFile, OneOutputWithoutItsListIsRefusedWithTheKeyThatIsMeant) {
+    const auto line = refusal("output: {kind: osc}");
+    EXPECT_NE(line.find("rig.yaml:1: output"), std::string::npos) << line;
+    EXPECT_NE(line.find("did you mean 'outputs'?"), std::string::npos) << line;
+}
+
+TEST_F(SettingsFile, PulseOutputIsTheLongestOfThoseThatFollowPulses) {
+    const auto settings = load("outputs: [{name: a, width_ms: 1}, {name: b, width_ms: 3}, {name: c, width_ms: 9, "
+                               "follows: trigger}]");
+    EXPECT_EQ(pulse_output(settings).name, "b");
+    EXPECT_EQ(pulse_output(load("{}")).kind, OutputKind::silent);
+}
+
 TEST_F(SettingsFile, MissingFileIsRefused) {
     EXPECT_THROW((void)load_settings(folder / "none.yaml"), Refusal);
 }
