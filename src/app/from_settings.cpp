@@ -6,6 +6,8 @@
 
 #include <fmt/format.h>
 
+#include <algorithm>
+
 namespace millpond {
 
 Channels channels_for(const Settings& settings, const Channels& recorded, const std::string& where) {
@@ -47,7 +49,21 @@ void check_floor_channels(const FloorLimitSettings& limits, const Detector& dete
 }
 
 ScheduleLimits limits_of(const ArbiterSettings& arbiter) {
-    return {arbiter.lockout_ms, arbiter.limits.max_pulses_per_second, arbiter.limits.max_pulses_per_session};
+    ScheduleLimits limits;
+    limits.lockout_ms = std::max(arbiter.lockout_ms, arbiter.limits.min_interval_ms);
+    limits.max_pulses_per_second = arbiter.limits.max_pulses_per_second;
+    limits.max_pulses_per_minute = arbiter.limits.max_pulses_per_minute;
+    limits.max_pulses_per_epoch = arbiter.limits.max_pulses_per_epoch;
+    limits.max_pulses_per_session = arbiter.limits.max_pulses_per_session;
+    double start_s = 0.0;
+    for (const auto& epoch : arbiter.plan.epochs) {
+        limits.epoch_starts_s.push_back(start_s);
+        if (epoch.minutes == 0.0) {
+            break; // the operator ends it: nobody knows beforehand when the next one begins
+        }
+        start_s += epoch.minutes * 60.0;
+    }
+    return limits;
 }
 
 Schedule schedule_for(const ArbiterSettings& arbiter, Hertz rate) {

@@ -72,6 +72,7 @@ void make_yoked(YokedOptions& options) {
     plan.seed = options.seed.value_or(1);
     plan.min_interval_ms = min_interval_ms(options.min_interval, options.limits());
     plan.max_pulses_per_second = options.limits().max_pulses_per_second;
+    plan.max_pulses_per_minute = options.limits().max_pulses_per_minute;
     const auto made = yoked_schedule(source.places, plan, rate);
     const SampleIndex start{static_cast<std::uint64_t>(std::llround(plan.start_s * rate.value))};
     const auto written = options.write(made);
@@ -148,6 +149,7 @@ RateMatchedPlan plan_of(const RateMatchedOptions& options) {
     plan.seed = options.seed.value_or(said != nullptr ? said->seed : 1);
     plan.min_interval_ms = min_interval_ms(asked, options.limits());
     plan.max_pulses_per_second = options.limits().max_pulses_per_second;
+    plan.max_pulses_per_minute = options.limits().max_pulses_per_minute;
     plan.keep_away_ms = options.keep_away_ms;
     return plan;
 }

@@ -41,6 +41,7 @@ void ShamOptions::add_limits(CLI::App& command) {
         "(else that of the source, where it is a session folder, else 150)",
         CLI::Range(0.0, 60000.0));
     add("--max-pulses-per-second", max_pulses_per_second_, "likewise (else 4)", CLI::Range(1U, 1000U));
+    add("--max-pulses-per-minute", max_pulses_per_minute_, "likewise (else 120)", CLI::Range(1U, 60000U));
     add("--max-pulses-per-session", max_pulses_per_session_, "likewise (else 10000)", CLI::Range(1U, 10'000'000U));
 }
 
@@ -102,12 +103,13 @@ ScheduleLimits ShamOptions::limits() const {
         return limits_of(settings()->arbiter);
     }
     ScheduleLimits limits;
-    const bool all_given = lockout_ms_ && max_pulses_per_second_ && max_pulses_per_session_;
+    const bool all_given = lockout_ms_ && max_pulses_per_second_ && max_pulses_per_minute_ && max_pulses_per_session_;
     if (source_ && source_->session && !all_given) {
         limits = limits_of(load_settings(SessionReader(source_->name).settings_file()).arbiter);
     }
     limits.lockout_ms = lockout_ms_.value_or(limits.lockout_ms);
     limits.max_pulses_per_second = max_pulses_per_second_.value_or(limits.max_pulses_per_second);
+    limits.max_pulses_per_minute = max_pulses_per_minute_.value_or(limits.max_pulses_per_minute);
     limits.max_pulses_per_session = max_pulses_per_session_.value_or(limits.max_pulses_per_session);
     return limits;
 }

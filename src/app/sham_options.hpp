@@ -50,7 +50,7 @@ class ShamOptions {
 
     std::string settings_file_;
     std::optional<double> sampling_hz_, lockout_ms_;
-    std::optional<std::uint32_t> max_pulses_per_second_, max_pulses_per_session_;
+    std::optional<std::uint32_t> max_pulses_per_second_, max_pulses_per_minute_, max_pulses_per_session_;
     std::filesystem::path ripples_, out_;
     std::optional<double> ripple_rate_per_s_, ripple_mean_ms_;
     bool overwrite_ = false;

@@ -1,5 +1,6 @@
 #include "app/sham_source.hpp"
 
+#include "app/session_conditions.hpp"
 #include "base/refusal.hpp"
 #include "journal/session_reader.hpp"
 #include "recording/events_table.hpp"
@@ -23,6 +24,9 @@ void choose(ShamSource& source, Schedule orders, Schedule triggers) {
 }
 
 void note_moment(ShamSource& source, const Event& event) {
+    if (event.kind == EventKind::epoch) {
+        source.epochs.emplace(epoch_name(event.as<EpochDetail>()), event.sample);
+    }
     if (event.kind != EventKind::state) {
         return;
     }
@@ -44,10 +48,12 @@ ShamSource source_of_session(const std::filesystem::path& folder, std::optional<
     source.name = folder.string();
     source.session = true;
     source.rate = session.rate();
+    const auto assignment = known_assignment(session);
+    source.sealed = assignment && assignment->sealed && assignment->conditions.empty();
     Schedule orders, triggers;
     for (const auto& event : session.events()) {
         note_moment(source, event);
-        if (event.kind == EventKind::order) {
+        if (event.kind == EventKind::order && !source.sealed) {
             orders.push_back(event.sample);
         } else if (event.kind == EventKind::trigger) {
             triggers.push_back(event.sample);
@@ -96,7 +102,9 @@ std::string moments_of(const ShamSource& source) {
 
 std::string ShamSource::told() const {
     return fmt::format("{}: {} {}", name, places.size(),
-                       given ? "orders: the pulses that were given" : "triggers: no order in it, no pulse was given");
+                       given    ? "orders: the pulses that were given"
+                       : sealed ? "triggers: its condition is sealed, and so are its pulses (millpond unblind)"
+                                : "triggers: no order in it, no pulse was given");
 }
 
 ShamSource read_sham_source(const std::filesystem::path& source, std::optional<Hertz> said, const std::string& where) {

@@ -14,10 +14,11 @@ struct ShamSource {
     std::string name;     ///< folder or table, as given
     bool session = false; ///< a session folder; else an events table
     Hertz rate;
-    Schedule places;                           ///< ascending
-    bool given = false;                        ///< places are those of orders: pulses that were given; else of triggers
-    SampleIndex first;                         ///< the first sample
-    std::optional<SampleIndex> armed;          ///< when it was first armed; empty: never, or a table
+    Schedule places;                  ///< ascending
+    bool sealed = false;              ///< not unblinded: its orders would tell its condition, so triggers are taken
+    bool given = false;               ///< places are those of orders: pulses that were given; else of triggers
+    SampleIndex first;                ///< the first sample
+    std::optional<SampleIndex> armed; ///< when it was first armed; empty: never, or a table
     std::map<std::string, SampleIndex> epochs; ///< starts by name; of a name that comes twice, the first
 
     /// `27 orders: the pulses that were given`

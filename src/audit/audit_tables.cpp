@@ -96,7 +96,8 @@ void write_audit(const AuditResult& r, const std::filesystem::path& folder, bool
     write_whole_file(folder / "latency.tsv", latency_table(r));
     write_whole_file(folder / "floors.tsv", floors_table(session));
     write_whole_file(folder / "gaps.tsv", gaps_table(r));
-    write_whole_file(folder / "schedule.tsv", control_table(r.controls, r.provenance.about.rate));
+    write_whole_file(folder / "schedule.tsv",
+                     control_table(r.blinded ? ControlFigures{} : r.controls, r.provenance.about.rate));
     write_whole_file(folder / "differences.tsv", differences_table(r));
     write_whole_file(folder / "audit.json", audit_json(r).dump(2) + "\n"); // last: where it is, the rest is whole
 }

@@ -82,7 +82,7 @@ struct ControlFigures {
 /// A section of the audit's text; empty where there were no moments and nothing is wrong.
 [[nodiscard]] std::string control_text(const ControlFigures& figures);
 [[nodiscard]] Json control_json(const ControlFigures& figures);
-/// One row for each moment, as an events table.
+/// One row for each moment, as an events table. All of this tells of the condition.
 [[nodiscard]] std::string control_table(const ControlFigures& figures, Hertz rate);
 
 } // namespace millpond

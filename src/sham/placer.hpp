@@ -10,9 +10,9 @@ namespace millpond {
 
 class Placer {
   public:
-    Placer(double min_interval_ms, std::uint32_t per_second, Hertz rate)
+    Placer(double min_interval_ms, std::uint32_t per_second, std::uint32_t per_minute, Hertz rate)
         : rate_(rate), min_interval_(frames_in_ms(min_interval_ms, rate)), second_(frames_in_ms(1000.0, rate)),
-          per_second_(per_second) {}
+          minute_(frames_in_ms(60000.0, rate)), per_second_(per_second), per_minute_(per_minute) {}
 
     /// The first place from `wish` on that is far enough from those taken.
     [[nodiscard]] SampleIndex first_free(SampleIndex wish) const {
@@ -23,6 +23,9 @@ class Placer {
         }
         if (taken.size() >= per_second_) {
             at = std::max(at, taken[taken.size() - per_second_] + second_);
+        }
+        if (taken.size() >= per_minute_) {
+            at = std::max(at, taken[taken.size() - per_minute_] + minute_);
         }
         return at;
     }
@@ -40,8 +43,8 @@ class Placer {
 
   private:
     Hertz rate_;
-    std::uint64_t min_interval_, second_;
-    std::uint32_t per_second_;
+    std::uint64_t min_interval_, second_, minute_;
+    std::uint32_t per_second_, per_minute_;
     MadeSchedule made_;
 };
 

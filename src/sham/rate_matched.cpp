@@ -73,8 +73,13 @@ MadeSchedule rate_matched_schedule(const RateMatchedPlan& plan, Hertz rate) {
                                   plan.rate_per_s, mean_s, length_of(left)),
                       fmt::format("a mean interval above the minimum interval, {} s", plan.min_interval_ms / 1000.0));
     }
+    if (plan.rate_per_s * 60.0 > plan.max_pulses_per_minute) {
+        throw Refusal("rate",
+                      fmt::format("{:.3f} pulses a second, {:.0f} a minute", plan.rate_per_s, plan.rate_per_s * 60.0),
+                      fmt::format("at most {} a minute", plan.max_pulses_per_minute));
+    }
     Random random(plan.seed, places_stream);
-    Placer placer(plan.min_interval_ms, plan.max_pulses_per_second, rate);
+    Placer placer(plan.min_interval_ms, plan.max_pulses_per_second, plan.max_pulses_per_minute, rate);
     double at_s = plan.start_s;
     std::size_t stretch = 0;
     while (walk(left, stretch, at_s, plan.min_interval_ms / 1000.0 + random.exponential(rest_s))) {

@@ -13,13 +13,14 @@ struct RateMatchedPlan {
     double duration_s = 3600.0; ///< length of the schedule from there on
     double min_interval_ms = 150.0;
     std::uint32_t max_pulses_per_second = 4;
+    std::uint32_t max_pulses_per_minute = 120;
     std::uint64_t seed = 1;
     Ripples keep_away_from; ///< no place in these, nor `keep_away_ms` before or after; empty: anywhere
     double keep_away_ms = 0.0;
 };
 
 /// With ripples to keep away from, the law runs in the time that is left, faster, so that the rate over the whole
-/// duration holds. Refuses a rate that the minimum interval cannot give.
+/// duration holds. Refuses a rate that the minimum interval or the pulses per minute cannot give.
 [[nodiscard]] MadeSchedule rate_matched_schedule(const RateMatchedPlan& plan, Hertz rate);
 
 } // namespace millpond

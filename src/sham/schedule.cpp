@@ -13,6 +13,36 @@ std::string such_places(std::uint64_t count) {
     return count == 1 ? "the only such place" : fmt::format("{} such places", count);
 }
 
+/// Most places within any stretch so long that ends with a place.
+std::uint64_t most_within(const Schedule& schedule, std::uint64_t frames) {
+    std::uint64_t most = 0;
+    std::size_t oldest = 0;
+    for (std::size_t i = 0; i < schedule.size(); ++i) {
+        while (schedule[i] - schedule[oldest] >= frames) {
+            ++oldest;
+        }
+        most = std::max<std::uint64_t>(most, i - oldest + 1);
+    }
+    return most;
+}
+
+/// Most places within an epoch; before the first epoch and without a plan there is one.
+std::uint64_t most_in_epochs(const Schedule& schedule, const std::vector<double>& starts_s, Hertz rate) {
+    std::vector<std::uint64_t> counts(starts_s.size() + 1, 0);
+    for (const auto place : schedule) {
+        const auto after = std::upper_bound(starts_s.begin(), starts_s.end(), seconds_at(place, rate));
+        ++counts[static_cast<std::size_t>(after - starts_s.begin())];
+    }
+    return *std::max_element(counts.begin(), counts.end());
+}
+
+void check_most(std::uint64_t found, std::uint64_t allowed, const char* within, const std::string& where) {
+    if (found > allowed) {
+        throw Refusal(where, fmt::format("{} places within one {}", found, within),
+                      fmt::format("as many pulses as one {} may have, {}", within, allowed));
+    }
+}
+
 } // namespace
 
 Crowding crowding(const Schedule& schedule, const ScheduleLimits& limits, Hertz rate) {
@@ -33,6 +63,8 @@ Crowding crowding(const Schedule& schedule, const ScheduleLimits& limits, Hertz 
             found.first_within_lockout = i;
         }
     }
+    found.most_in_a_minute = most_within(schedule, frames_in_ms(60'000.0, rate));
+    found.most_in_an_epoch = most_in_epochs(schedule, limits.epoch_starts_s, rate);
     return found;
 }
 
@@ -54,10 +86,9 @@ void check_schedule(const Schedule& schedule, const ScheduleLimits& limits, Hert
                       fmt::format("one too many within one second, {}", such_places(found.beyond_second)),
                       fmt::format("{} a second", limits.max_pulses_per_second));
     }
-    if (schedule.size() > limits.max_pulses_per_session) {
-        throw Refusal(where, fmt::format("{} places", schedule.size()),
-                      fmt::format("as many pulses as one session may have, {}", limits.max_pulses_per_session));
-    }
+    check_most(found.most_in_a_minute, limits.max_pulses_per_minute, "minute", where);
+    check_most(found.most_in_an_epoch, limits.max_pulses_per_epoch, "epoch", where);
+    check_most(schedule.size(), limits.max_pulses_per_session, "session", where);
 }
 
 double rate_per_s_of(const Schedule& places, Hertz rate, const std::string& where) {

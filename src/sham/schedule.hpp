@@ -17,9 +17,12 @@ using Schedule = std::vector<SampleIndex>;
 
 /// What a session allows; of a schedule that asks for more some places would have no pulse there.
 struct ScheduleLimits {
-    double lockout_ms = 150.0;
+    double lockout_ms = 150.0; ///< or the least interval of the limits, where that is longer
     std::uint32_t max_pulses_per_second = 4;
     std::uint32_t max_pulses_per_session = 10000;
+    std::uint32_t max_pulses_per_minute = 120;
+    std::uint32_t max_pulses_per_epoch = 10000;
+    std::vector<double> epoch_starts_s; ///< of the plan's epochs, as far as they are known beforehand; none: no plan
 
     bool operator==(const ScheduleLimits&) const = default;
 };
@@ -36,12 +39,14 @@ struct Crowding {
     std::uint64_t within_lockout = 0;   ///< places that come within the lock-out of the one before
     std::uint64_t beyond_second = 0;    ///< places that are one too many within one second
     std::uint64_t most_in_a_second = 0; ///< places in the fullest second
+    std::uint64_t most_in_a_minute = 0; ///< places in the fullest minute
+    std::uint64_t most_in_an_epoch = 0; ///< places in the fullest epoch
     std::size_t first_within_lockout = 0, first_beyond_second = 0; ///< indices, where there are any
 };
 [[nodiscard]] Crowding crowding(const Schedule& schedule, const ScheduleLimits& limits, Hertz rate);
 
-/// Refuses a schedule with places that come within the lock-out of the one before, with more within one second or in
-/// all than a session allows; names the first such place and says how many there are.
+/// Refuses a schedule with places that come within the lock-out of the one before, with more within one second, minute,
+/// epoch or session than allowed; names the first such place and says how many there are.
 void check_schedule(const Schedule& schedule, const ScheduleLimits& limits, Hertz rate, const std::string& where);
 
 /// Places a second between the first and the last of them. Refuses fewer than two; `where` names them for the message.

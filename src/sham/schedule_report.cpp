@@ -20,9 +20,10 @@ std::string told(const Distribution& intervals) {
 
 std::string told(const Crowding& crowding, const ScheduleLimits& limits, std::uint64_t places) {
     return fmt::format("{} places within the lock-out ({} ms) of the one before; at most {} within a second ({} "
-                       "allowed), {} in all ({} allowed)",
+                       "allowed), {} within a minute ({}), {} within an epoch ({}), {} in all ({})",
                        crowding.within_lockout, limits.lockout_ms, crowding.most_in_a_second,
-                       limits.max_pulses_per_second, places, limits.max_pulses_per_session);
+                       limits.max_pulses_per_second, crowding.most_in_a_minute, limits.max_pulses_per_minute,
+                       crowding.most_in_an_epoch, limits.max_pulses_per_epoch, places, limits.max_pulses_per_session);
 }
 
 std::string inside_lines(const ScheduleReport& report) {

@@ -20,7 +20,7 @@ std::uint64_t frames_in_s(double seconds, Hertz rate) {
 // Puts places off where a delay brought them too near to each other.
 MadeSchedule placed(Schedule wishes, const YokedPlan& plan, Hertz rate) {
     std::sort(wishes.begin(), wishes.end()); // a short delay may overtake a long one
-    Placer placer(plan.min_interval_ms, plan.max_pulses_per_second, rate);
+    Placer placer(plan.min_interval_ms, plan.max_pulses_per_second, plan.max_pulses_per_minute, rate);
     for (const auto wish : wishes) {
         placer.take(placer.first_free(wish), wish);
     }

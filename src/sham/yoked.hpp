@@ -15,6 +15,7 @@ struct YokedPlan {
     // To these, places that a delay brings too near to each other are put off.
     double min_interval_ms = 150.0;
     std::uint32_t max_pulses_per_second = 4;
+    std::uint32_t max_pulses_per_minute = 120;
 };
 
 struct YokedSchedule : MadeSchedule {

@@ -230,5 +230,20 @@ TEST_F(PlayedSession, WithoutItsScheduleFileIsAuditedAllTheSame) {
     EXPECT_NE(controls["about_schedule"].get<std::string>().find("cannot be read"), std::string::npos);
 }
 
+// The list said the condition, and it is sealed: given or phantom is what nobody may know yet.
+TEST_F(PlayedSession, ThatIsSealedTellsNothingOfItsMoments) {
+    AuditInput input;
+    input.session = play(Condition::rate_matched, temp_);
+    const auto settings = load_settings(input.session / "settings.yaml");
+    input.settings = {settings.detector, settings.arbiter};
+    input.assignment = SessionAssignment{};
+    input.assignment->sealed = true;
+    const auto result = audit_session(input);
+    write_audit(result, temp_ / "audit", false);
+    EXPECT_EQ(read_events_table(temp_ / "audit/schedule.tsv", test_rate.value).size(), 0U);
+    EXPECT_EQ(audit_text(result).find("phantom"), std::string::npos);
+    EXPECT_EQ(audit_json(result)["controls"], nullptr);
+}
+
 } // namespace
 } // namespace millpond

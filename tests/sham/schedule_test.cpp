@@ -90,6 +90,12 @@ TEST(YokedSchedule, WithDelaysKeepsTheMostPulsesASecondByPuttingOff) {
     EXPECT_EQ(yoked_schedule(at({1000, 1200, 1400}), delayed_by(10.0, 10.0, 2), rate).places, at({1010, 1210, 2010}));
 }
 
+TEST(YokedSchedule, WithDelaysKeepsTheMostPulsesAMinuteByPuttingOff) {
+    auto plan = delayed_by(10.0, 10.0);
+    plan.max_pulses_per_minute = 2;
+    EXPECT_EQ(yoked_schedule(at({1000, 2000, 3000}), plan, rate).places, at({1010, 2010, 61010}));
+}
+
 TEST(YokedSchedule, RefusesDelaysThatContradictEachOther) {
     EXPECT_THROW(static_cast<void>(yoked_schedule(at({1}), delayed_by(20.0, 10.0), rate)), Refusal);
 }
@@ -115,9 +121,10 @@ TEST(RateMatchedSchedule, NeverBreaksTheLimitsItWasGiven) {
     RateMatchedPlan plan;
     plan.rate_per_s = 3.0;
     plan.duration_s = 600.0;
+    plan.max_pulses_per_minute = 190;
     const auto made = rate_matched_schedule(plan, rate);
     EXPECT_GT(made.put_off, 0U);
-    EXPECT_NO_THROW(check_schedule(made.places, {}, rate, "made"));
+    EXPECT_NO_THROW(check_schedule(made.places, {150.0, 4, 10000, 190, 10000, {}}, rate, "made"));
     EXPECT_LT(made.places.back().value, 600000U + 1000U);
 }
 
@@ -162,6 +169,11 @@ TEST(RateMatchedSchedule, IsTheSameForTheSameSeedAndAnotherForAnother) {
 TEST(RateMatchedSchedule, RefusesARateThatTheMinimumIntervalCannotGive) {
     RateMatchedPlan plan;
     plan.rate_per_s = 7.0;
+    plan.max_pulses_per_minute = 1000;
+    EXPECT_THROW(static_cast<void>(rate_matched_schedule(plan, rate)), Refusal);
+    plan.rate_per_s = 2.5;
+    EXPECT_NO_THROW(static_cast<void>(rate_matched_schedule(plan, rate)));
+    plan.max_pulses_per_minute = 149;
     EXPECT_THROW(static_cast<void>(rate_matched_schedule(plan, rate)), Refusal);
 }
 
@@ -185,12 +197,26 @@ TEST(ScheduleCheck, RefusesAPlaceWithinTheLockOutOrTooManyWithinASecondOrASessio
     expect_check(at({0, 149}), {}, "the only such place");
     expect_check(at({0, 200, 349, 498}), {}, "place 3 at 0.3490 s: found 149.0 ms after the one before, 2 such places");
     expect_check(at({0, 150, 300, 450, 999}), {}, "one too many within one second");
-    expect_check(at({0, 1000, 2000}), {150.0, 4, 3}, "");
-    expect_check(at({0, 1000, 2000}), {150.0, 4, 2}, "as many pulses as one session may have, 2");
+    expect_check(at({0, 1000, 2000}), {150.0, 4, 3, 120, 10000, {}}, "");
+    expect_check(at({0, 1000, 2000}), {150.0, 4, 2, 120, 10000, {}}, "as many pulses as one session may have, 2");
+}
+
+TEST(ScheduleCheck, RefusesTooManyWithinAMinuteOrAnEpoch) {
+    const auto places = at({0, 30'000, 59'999, 60'000, 200'000});
+    ScheduleLimits limits;
+    limits.max_pulses_per_minute = 3;
+    expect_check(places, limits, "");
+    limits.max_pulses_per_minute = 2;
+    expect_check(places, limits, "3 places within one minute; allowed: as many pulses as one minute may have, 2");
+    limits = {};
+    limits.max_pulses_per_epoch = 3;
+    expect_check(places, limits, "5 places within one epoch");
+    limits.epoch_starts_s = {0.0, 60.0}; // the place at 60 s is the second epoch's
+    expect_check(places, limits, "");
 }
 
 TEST(ScheduleCheck, CountsHowNearPlacesComeToTheLimits) {
-    const auto found = crowding(at({0, 100, 200, 999, 1000, 5000}), {150.0, 3, 100}, rate);
+    const auto found = crowding(at({0, 100, 200, 999, 1000, 5000}), {150.0, 3, 100, 120, 10000, {}}, rate);
     EXPECT_EQ(found.within_lockout, 3U);
     EXPECT_EQ(found.first_within_lockout, 1U);
     EXPECT_EQ(found.most_in_a_second, 4U); // 0 to 999, and 100 to 1000
