@@ -109,7 +109,9 @@ TEST_F(Blinding, TrialsOfAnOpenListChangeTheConditionAtTheirMarks) {
                                    rig_.path("trials.yaml"));
     ASSERT_EQ(made.status, 0) << made.err;
     const auto list = read_assignment(rig_.path("trials.yaml"));
-    const auto settings = rig_.settings({.control = true}, "trials_rig.yaml");
+    RigSettings want;
+    want.control = true;
+    const auto settings = rig_.settings(want, "trials_rig.yaml");
     const auto session = rig_.start({MILLPOND_PROGRAM, "live", settings, "--assignment", rig_.path("trials.yaml"),
                                      "--code", list.sessions[0].code});
     ASSERT_TRUE(session->says("session folder ")) << session->err();

@@ -70,7 +70,7 @@ TEST_F(SettingsFile, RoomsThatContradictEachOtherAreRefused) {
               std::string::npos);
     EXPECT_NE(refusal("detector: {filter: {low_hz: 260}}").find("low_hz"), std::string::npos);
     EXPECT_NE(refusal("{arbiter: {lockout_ms: 20}, outputs: [{width_ms: 30}]}").find("lockout_ms"), std::string::npos);
-    EXPECT_NE(refusal("arbiter: {condition: schedule}").find("schedule_file"), std::string::npos);
+    EXPECT_NE(refusal("arbiter: {condition: yoked}").find("schedule_file"), std::string::npos);
     EXPECT_NE(refusal("arbiter: {gates: [{name: a}, {name: a}]}").find("gates[0]"), std::string::npos);
     EXPECT_NE(refusal("{detector: {state_gate: {on: true}}, arbiter: {gates: [{name: state}]}}").find("arbiter.gates"),
               std::string::npos);
