@@ -19,6 +19,7 @@
 #include <map>
 #include <memory>
 #include <optional>
+#include <random>
 #include <unistd.h>
 
 namespace millpond {
@@ -222,6 +223,9 @@ void run_live(const LiveOptions& options) {
         settings.arbiter.condition = options.condition.value_or(Condition::assigned);
     }
     settings.assignment.code = options.code.empty() ? settings.assignment.code : options.code;
+    if (settings.arbiter.seed == 0) {
+        settings.arbiter.seed = std::random_device{}() + std::uint64_t{1};
+    }
     check_settings(settings, "command line");
     std::shared_ptr<spdlog::logger> log;
     LiveSession session(settings, options.settings_file, [&log](const std::string& line) { log->warn("{}", line); });

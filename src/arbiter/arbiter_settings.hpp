@@ -84,7 +84,7 @@ struct ArbiterSettings {
     DelaySettings delay;
     HoldSettings hold;
     double catch_share = 0.0;
-    std::uint64_t seed = 1;
+    std::uint64_t seed = 0;
     bool start_armed = false;
     double lockout_ms = 150.0;
     std::vector<GateSettings> gates;
@@ -105,7 +105,9 @@ template <class Visitor> void describe(Visitor& visit, ArbiterSettings& arbiter)
     visit.group("hold", arbiter.hold, "how a moment for a pulse waits until no ripple is going on");
     visit.number("catch_share", arbiter.catch_share, {0.0, 1.0},
                  "share of triggers, drawn at random, that get no pulse in any condition: catch trials");
-    visit.whole("seed", arbiter.seed, {0, 1e15}, "of the draws of delays and catch trials (xoshiro256++)");
+    visit.whole(
+        "seed", arbiter.seed, {0, 9007199254740992.0},
+        "of the draws of delays and catch trials (xoshiro256++); 0: another one in each session, kept in its settings");
     visit.flag("start_armed", arbiter.start_armed, "whether pulses are allowed from the start; else arm by command");
     visit.number("lockout_ms", arbiter.lockout_ms, {0.0, 60000.0},
                  "time after a trigger in which no other may follow, the same in every condition");

@@ -65,7 +65,8 @@ struct FloorLimitSettings {
 };
 
 template <class Visitor> void describe(Visitor& visit, FloorLimitSettings& floor) {
-    visit.number("least_uv", floor.least_uv, {0.0, 100000.0}, "no settled floor's deviation may be lower (evidence: weighted uV)");
+    visit.number("least_uv", floor.least_uv, {0.0, 100000.0},
+                 "no settled floor's deviation may be lower (evidence: weighted uV)");
     visit.number("most_uv", floor.most_uv, {0.001, 100000.0}, "nor higher");
     visit.number("least_times", floor.least_times, {0.0, 1.0},
                  "nor lower than so many times what it was when it had just settled");

@@ -24,6 +24,7 @@ PulsePlan PulsePlan::make(const ArbiterSettings& settings, Hertz rate, std::vect
     plan.quiet_frames_ = frames_in_ms(settings.hold.quiet_ms, rate);
     plan.hold_step_ = frames_in_ms(hold_step_ms, rate);
     plan.longest_hold_ = frames_in_ms(settings.hold.longest_ms, rate);
+    plan.lockout_frames_ = frames_in_ms(settings.lockout_ms, rate);
     plan.pending_.reserve(most_delayed_slots);
     plan.schedule_ = std::move(schedule);
     return plan;
@@ -35,7 +36,7 @@ bool PulsePlan::take_trigger(SampleIndex at, std::uint32_t number) noexcept {
     const double place = draws_.uniform();
     if (has_delays_ && pending_.size() < pending_.capacity()) {
         const auto delay = least_delay_ + static_cast<std::uint64_t>(place * static_cast<double>(delay_span_ + 1));
-        const PulseSlot slot{at + delay, at + delay, at, number, PulseOrigin::delay, caught};
+        const PulseSlot slot{at + delay, at + delay, at, number, PulseOrigin::delay, caught, units_begun_};
         const auto after = std::find_if(pending_.begin(), pending_.end(),
                                         [&](const PulseSlot& other) { return other.due > slot.due; });
         pending_.insert(after, slot);
@@ -45,11 +46,11 @@ bool PulsePlan::take_trigger(SampleIndex at, std::uint32_t number) noexcept {
 
 PulseSlot PulsePlan::next_of_schedule() const noexcept {
     if (next_place_ >= schedule_.size()) {
-        return {never, never, never, 0, PulseOrigin::schedule, false};
+        return {never, never, never, 0, PulseOrigin::schedule, false, units_begun_};
     }
     const SampleIndex place = schedule_[next_place_];
     const auto number = static_cast<std::uint32_t>(next_place_ + 1);
-    return {place_due_ == never ? place : place_due_, place, place, number, PulseOrigin::schedule, false};
+    return {place_due_ == never ? place : place_due_, place, place, number, PulseOrigin::schedule, false, units_begun_};
 }
 
 bool PulsePlan::schedule_first() const noexcept {
@@ -91,13 +92,21 @@ void PulsePlan::done() noexcept {
     }
 }
 
-std::pair<std::uint32_t, bool> PulsePlan::begin_unit() noexcept {
+std::pair<std::uint32_t, bool> PulsePlan::begin_unit(SampleIndex at) noexcept {
+    pause_until_ = units_begun_ > 0 ? at + lockout_frames_ : at;
     const bool listed = units_begun_ < assigned_.size();
     condition_ = listed ? assigned_[units_begun_] : Condition::none;
     return {++units_begun_, listed};
 }
 
-bool PulsePlan::gives(PulseOrigin origin) const noexcept {
+bool PulsePlan::gives(const PulseSlot& slot, SampleIndex now) const noexcept {
+    return gives(slot.origin, now) && slot.unit == units_begun_ && !slot.caught;
+}
+
+bool PulsePlan::gives(PulseOrigin origin, SampleIndex now) const noexcept {
+    if (now < pause_until_) {
+        return false;
+    }
     switch (condition_) {
     case Condition::disrupt:
         return origin == PulseOrigin::trigger;

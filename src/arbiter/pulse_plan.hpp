@@ -21,7 +21,8 @@ struct PulseSlot {
     SampleIndex from;         ///< decision sample of its trigger; the planned place of a schedule
     std::uint32_t number = 0; ///< of its trigger, or its place in the schedule, from 1
     PulseOrigin origin{};
-    bool caught = false; ///< its trigger is a catch trial
+    bool caught = false;    ///< its trigger is a catch trial
+    std::uint32_t unit = 0; ///< of the assignment, in which its trigger fell
 };
 
 /// Thread: loop for everything but make. Allocates after make: never.
@@ -50,15 +51,18 @@ class PulsePlan {
     /// Frames without a ripple before one counts as over.
     [[nodiscard]] std::uint64_t quiet_frames() const noexcept { return quiet_frames_; }
 
-    /// Whether this condition gives pulses at slots of that origin.
-    [[nodiscard]] bool gives(PulseOrigin origin) const noexcept;
+    /// Whether this condition gives pulses at moments of that origin. Never within a lock-out after a unit of an
+    /// assignment began, so that pulses of two conditions cannot meet.
+    [[nodiscard]] bool gives(PulseOrigin origin, SampleIndex now) const noexcept;
+    /// The same of a slot, and only where its trigger fell into the unit that is on.
+    [[nodiscard]] bool gives(const PulseSlot& slot, SampleIndex now) const noexcept;
 
     /// Conditions by an assignment, one for each session, block or trial in order; the first begins with
     /// `begin_unit`. After the last there are no pulses. Thread: control, before the session.
     void assign(std::vector<Condition> list) { assigned_ = std::move(list); }
     [[nodiscard]] bool is_assigned() const noexcept { return !assigned_.empty(); }
     /// The next one begins. Its number, from 1; false where the list was at its end.
-    std::pair<std::uint32_t, bool> begin_unit() noexcept;
+    std::pair<std::uint32_t, bool> begin_unit(SampleIndex at) noexcept;
 
   private:
     [[nodiscard]] PulseSlot next_of_schedule() const noexcept;
@@ -67,6 +71,8 @@ class PulsePlan {
     Condition condition_ = Condition::disrupt;
     std::vector<Condition> assigned_;
     std::uint32_t units_begun_ = 0;
+    SampleIndex pause_until_{};
+    std::uint64_t lockout_frames_ = 0;
     Random draws_{0, 0};
     double catch_share_ = 0.0;
     bool has_delays_ = false, schedule_waits_ = true;

@@ -31,8 +31,8 @@ class GapWatch {
     std::uint64_t newest_ = 0;
 };
 
-/// Deviations of floors against their range in uV, and against what they were when they had just settled. A deviation is
-/// the scale of what a site shows without ripples; a mean is not: that of the evidence may be below 0.
+/// Deviations of floors against their range in uV, and against what they were when they had just settled. A deviation
+/// is the scale of what a site shows without ripples; a mean is not: that of the evidence may be below 0.
 class FloorWatch {
   public:
     static FloorWatch make(const FloorLimitSettings& settings);

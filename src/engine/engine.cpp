@@ -142,7 +142,7 @@ void Engine::on_crossing(const Crossing& crossing) noexcept {
     if (rule == Rule::none) {
         detail.number = arbiter_.triggers();
         detail.caught = plan_.take_trigger(crossing.at, detail.number) ? 1 : 0;
-        ordered = plan_.gives(PulseOrigin::trigger) && detail.caught == 0;
+        ordered = plan_.gives(PulseOrigin::trigger, crossing.at) && detail.caught == 0;
         const Event trigger = Event::make(EventKind::trigger, 0, crossing.at, detail);
         if (ordered) {
             port_.fire(Event::make(EventKind::order, 0, crossing.at, detail));
@@ -159,7 +159,7 @@ void Engine::on_crossing(const Crossing& crossing) noexcept {
 }
 
 void Engine::begin_unit() noexcept {
-    const auto [number, listed] = plan_.begin_unit();
+    const auto [number, listed] = plan_.begin_unit(next_);
     sink_.take(Event::make(EventKind::trial, 0, next_, TrialDetail{number, listed ? 1U : 0U}));
 }
 
@@ -183,7 +183,7 @@ void Engine::meet_slot() noexcept {
         return;
     }
     plan_.done();
-    const bool ordered = rule == Rule::none && plan_.gives(slot.origin) && !slot.caught;
+    const bool ordered = rule == Rule::none && plan_.gives(slot, next_);
     const Event order = Event::make(EventKind::order, 0, next_, detail);
     if (ordered) {
         port_.fire(order);

@@ -103,6 +103,9 @@ void LiveLoop::fire(const Event& trigger) noexcept {
 }
 
 void LiveLoop::mark(const Event& trigger) noexcept {
+    if (stop_.stopped()) {
+        return;
+    }
     if (!lines_.rise(Follows::trigger, trigger.sample)) {
         output_failed_ = true;
     }

@@ -73,7 +73,7 @@ class Rig {
                                       : want.channels;
         text += "detector:\n  floor: {time_constant_s: 5, settle_s: 1}\n";
         text += "arbiter:\n  start_armed: " + std::string(want.armed ? "true" : "false") +
-                "\n  lockout_ms: " + std::to_string(want.lockout_ms) +
+                "\n  seed: 7\n  lockout_ms: " + std::to_string(want.lockout_ms) +
                 "\n  gates:\n    - {name: immobile, starts_open: true}\n";
         text += "outputs:\n  - {name: pulse, kind: " + want.output + ", port: " + std::to_string(pulse_port_) +
                 ", width_ms: " + std::to_string(want.width_ms) +

@@ -126,13 +126,33 @@ TEST(PulsePlan, HeldMomentLetsOthersPass) {
     EXPECT_EQ(plan.next_due(), SampleIndex{1300});
 }
 
+TEST(PulsePlan, PulsesOfTwoConditionsCannotMeetWhereOneTakesOverFromTheOther) {
+    auto settings = delayed(200.0, 200.0);
+    settings.lockout_ms = 150.0;
+    auto plan = PulsePlan::make(settings, rate);
+    plan.assign({Condition::delayed, Condition::delayed, Condition::disrupt});
+    EXPECT_EQ(plan.begin_unit(SampleIndex{0}), (std::pair{1U, true}));
+    EXPECT_TRUE(plan.gives(PulseOrigin::delay, SampleIndex{0})) << "the first has nothing before it";
+    plan.take_trigger(SampleIndex{1000}, 1);
+    plan.begin_unit(SampleIndex{1010});
+    EXPECT_FALSE(plan.gives(plan.next(), SampleIndex{1200})) << "its trigger was another unit's";
+    plan.done();
+    plan.take_trigger(SampleIndex{1100}, 2);
+    EXPECT_TRUE(plan.gives(plan.next(), SampleIndex{1300}));
+    plan.begin_unit(SampleIndex{2000});
+    EXPECT_FALSE(plan.gives(PulseOrigin::trigger, SampleIndex{2149}));
+    EXPECT_TRUE(plan.gives(PulseOrigin::trigger, SampleIndex{2150}));
+    EXPECT_EQ(plan.begin_unit(SampleIndex{3000}), (std::pair{4U, false})) << "beyond the list";
+    EXPECT_FALSE(plan.gives(PulseOrigin::trigger, SampleIndex{4000}));
+}
+
 TEST(PulsePlan, EachConditionGivesPulsesAtMomentsOfOneOrigin) {
     const auto gives = [](Condition condition) {
         ArbiterSettings settings;
         settings.condition = condition;
         const auto plan = PulsePlan::make(settings, rate);
-        return std::vector{plan.gives(PulseOrigin::trigger), plan.gives(PulseOrigin::delay),
-                           plan.gives(PulseOrigin::schedule)};
+        return std::vector{plan.gives(PulseOrigin::trigger, {}), plan.gives(PulseOrigin::delay, {}),
+                           plan.gives(PulseOrigin::schedule, {})};
     };
     EXPECT_EQ(gives(Condition::disrupt), (std::vector{true, false, false}));
     EXPECT_EQ(gives(Condition::delayed), (std::vector{false, true, false}));

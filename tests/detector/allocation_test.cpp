@@ -33,7 +33,7 @@ TEST(Allocation, EvidenceADyingSiteTheStateGateAndMainsRemovalAllocateNothingInT
     settings.state_gate.on = true;
     settings.mains.method = MainsMethod::adaptive;
     Counted counted;
-    Engine engine(Detector::make(settings, scene.channels(), scene.rate()), ArbiterSettings{}, Schedule{}, scene.rate(),
+    Engine engine(Detector::make(settings, scene.channels(), scene.rate()), ArbiterSettings{}, {}, scene.rate(),
                   counted, counted);
     const test::AllocationGuard guard;
     engine.start(SampleIndex{0}, true);

@@ -84,8 +84,8 @@ const std::vector<float>& flat_for_a_while() {
 std::vector<Event> events_of(const DetectorSettings& detector, std::size_t block, KernelWidth width) {
     auto scene = Scene::make(four_sites(1.0));
     Kept kept;
-    Engine engine(Detector::make(detector, scene.channels(), scene.rate(), width), ArbiterSettings{}, Schedule{},
-                  scene.rate(), kept, kept);
+    Engine engine(Detector::make(detector, scene.channels(), scene.rate(), width), ArbiterSettings{}, {}, scene.rate(),
+                  kept, kept);
     engine.start(SampleIndex{0}, true);
     const FrameBlock whole{SampleIndex{0}, 5, flat_for_a_while()};
     for (std::size_t at = 0; at < whole.frames(); at += block) {

@@ -45,7 +45,7 @@ TEST(Session, ClosedSessionHasFirstAndLastEventTablesAndProvenance) {
     auto writer = SessionWriter::open(session_in(temp), about);
     writer->loop_sink().take(detection_at(500));
     writer->loop_sink().take(
-        Event::make(EventKind::trigger, 0, SampleIndex{500}, TriggerDetail{SampleIndex{500}.value, 1, 0}));
+        Event::make(EventKind::trigger, 0, SampleIndex{500}, TriggerDetail{500, 1, PulseOrigin::trigger, 0, 0}));
     writer->pulse_sink().take(Event::make(EventKind::pulse, 0, SampleIndex{500},
                                           PulseDetail{1000, PulseDetail::not_measured, 2000, 3000, 4000}));
     writer->pulse_sink().take(Event::make(EventKind::pulse_end, 0, SampleIndex{500}, PulseEndDetail{5'000'000, 100}));

@@ -309,9 +309,10 @@ struct LevelOutput : Output {
 TEST(EmergencyStop, LowersTheLineFromTheCallingThreadAtOnce) {
     Rig rig(armed());
     LevelOutput output;
-    PulseLine line(output, {10s, 1, 20s}, rig.ends);
-    LiveLoop loop(armed(), rig.source, line, rig.journal, rig.commands, rig.make_engine());
-    line.rise(SampleIndex{0});
+    LineBoard board;
+    PulseLines lines(std::vector<PulseLinePlan>{{&output, {10s, 1, 20s}, Follows::pulse}}, board, rig.ends);
+    LiveLoop loop(armed(), rig.source, lines, rig.journal, rig.commands, rig.make_engine());
+    lines.rise(Follows::pulse, SampleIndex{0});
     ASSERT_TRUE(output.high);
     loop.emergency_stop({ChangeSource::command}); // the loop does not even run
     EXPECT_FALSE(output.high);
@@ -388,9 +389,10 @@ TEST(EmergencyStop, AStopThatIsClearedBeforeTheLoopLooksIsJournaledAndDisarmsAll
 TEST(EmergencyStop, BetweenItAndItsPlaceInTheJournalNoLineIsRaised) {
     Rig rig(armed());
     LevelOutput output;
-    PulseLine line(output, {1ms, 1, 10ms}, rig.ends);
+    LineBoard board;
+    PulseLines lines(std::vector<PulseLinePlan>{{&output, {1ms, 1, 10ms}, Follows::pulse}}, board, rig.ends);
     rig.source.packet_frames = 5 * 1250; // the whole of what follows is one packet
-    LiveLoop loop(armed(), rig.source, line, rig.journal, rig.commands, rig.make_engine());
+    LiveLoop loop(armed(), rig.source, lines, rig.journal, rig.commands, rig.make_engine());
     rig.journal.on_take = [&](const Event& event) {
         if (event.kind == EventKind::trigger && rig.journal.of(EventKind::trigger).size() == 2) {
             loop.emergency_stop({ChangeSource::command});
@@ -495,8 +497,9 @@ TEST(LimitsInTheLoop, AFaultOrdersTheLineLowAtOnce) {
     arbiter.limits.runaway.false_alarms_per_hour = 1.0;
     Rig rig(armed());
     LevelOutput output;
-    PulseLine line(output, {10s, 1, 20s}, rig.ends);
-    LiveLoop loop(armed(), rig.source, line, rig.journal, rig.commands, rig.make_engine(arbiter));
+    LineBoard board;
+    PulseLines lines(std::vector<PulseLinePlan>{{&output, {10s, 1, 20s}, Follows::pulse}}, board, rig.ends);
+    LiveLoop loop(armed(), rig.source, lines, rig.journal, rig.commands, rig.make_engine(arbiter));
     std::vector<bool> levels; // at the start of each second
     rig.source.before = [&](std::size_t frame) {
         if (frame % 1250 == 0) {
