@@ -46,7 +46,7 @@ TEST(CountSource, GivesMicrovoltsOfEachChannelsOwnScale) {
     ASSERT_EQ(source.receive(1s, arrival), Received::frames);
     EXPECT_EQ(arrival.block.frames(), 3U);
     EXPECT_EQ(
-        std::vector<float>(arrival.block.samples.begin(), arrival.block.samples.end()),
+        std::vector<float>(arrival.block.data.begin(), arrival.block.data.end()),
         (std::vector<float>{-5000.0F, 100.0F, 0.0F, 120.0F, -5000.0F + 4095.0F * (10000.0F / 4096.0F), 131170.0F}));
 }
 
@@ -56,7 +56,7 @@ TEST(CountSource, ReadsFourByteCounts) {
     board.write<std::uint32_t>({0, 0x0100'0000, 0x0200'0000});
     Arrival arrival;
     ASSERT_EQ(source.receive(1s, arrival), Received::frames);
-    EXPECT_EQ(std::vector<float>(arrival.block.samples.begin(), arrival.block.samples.end()),
+    EXPECT_EQ(std::vector<float>(arrival.block.data.begin(), arrival.block.data.end()),
               (std::vector<float>{-1.0F, 0.0F, 1.0F}));
 }
 
