@@ -98,7 +98,7 @@ TEST_F(Help, EveryCommandShowsAnExample) {
     const auto top = run_millpond("--help");
     const auto commands = commands_in(top.out);
     EXPECT_EQ(commands,
-              (std::vector<std::string>{"preflight", "dryrun", "tune", "sham", "live", "audit", "synth", "feed"}));
+              (std::vector<std::string>{"preflight", "dryrun", "tune", "sham", "assign", "live", "unblind", "audit", "synth", "feed"}));
     for (const auto& command : commands) {
         examples_of(command);
     }

@@ -71,7 +71,7 @@ std::string texts_of_scripts() {
             continue;
         }
         for (const auto& entry : std::filesystem::directory_iterator(source_folder / folder)) {
-            texts += text_of(entry.path());
+            texts += entry.is_regular_file() ? text_of(entry.path()) : std::string{};
         }
     }
     return texts;
