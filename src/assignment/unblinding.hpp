@@ -25,7 +25,7 @@ struct SessionAssignment {
 /// As text of one JSON object; `conditions` is left out of a sealed one.
 [[nodiscard]] std::string to_json_text(const SessionAssignment& assignment);
 /// Refuses what `to_json_text` does not make. `where` names the file.
-[[nodiscard]] SessionAssignment read_session_assignment(const std::string& json, const std::string& where);
+[[nodiscard]] SessionAssignment read_session_assignment(const std::string& text, const std::string& where);
 
 /// Why somebody wants to know.
 struct Unblinding {

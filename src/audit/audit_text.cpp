@@ -169,7 +169,8 @@ std::string decisions_text(const AuditResult& r) {
                       : fmt::format("  {} pulses, {} pulse ends\n  orders at triggers {}, delayed {}, scheduled {}\n",
                                     f.pulses, f.pulse_ends, f.orders[0], f.orders[2], f.orders[1]);
     if (f.slots[1] + f.slots[2] > 0) {
-        text += fmt::format("  moments for pulses a while after triggers {}, of a schedule {}\n", f.slots[2], f.slots[1]);
+        text +=
+            fmt::format("  moments for pulses a while after triggers {}, of a schedule {}\n", f.slots[2], f.slots[1]);
     }
     text += "\nWithheld by rule\n" + counted<rule_count, Rule>(f.withheld);
     text += "\nMoments omitted by rule\n" + counted<rule_count, Rule>(f.omitted);

@@ -14,7 +14,7 @@ std::string_view name_of(EventKind kind) noexcept {
     static constexpr std::array<std::string_view, 24> names{
         "unknown", "session start", "session end",  "detection", "trigger", "withheld", "pulse",        "pulse end",
         "gap",     "floor",         "latency bins", "note",      "state",   "gate",     "packet count", "dropped",
-        "site",    "epoch",         "trial",        "order",     "speed",   "device",  "slot",         "omitted"};
+        "site",    "epoch",         "trial",        "order",     "speed",   "device",   "slot",         "omitted"};
     return pick(names, static_cast<std::uint8_t>(kind));
 }
 
@@ -47,8 +47,8 @@ std::string_view name_of(SiteState state) noexcept {
 
 std::string_view name_of(StateCause cause) noexcept {
     static constexpr std::array<std::string_view, 12> names{
-        "start",       "command",        "stale stream", "output failed", "journal failed",
-        "session end", "emergency stop", "runaway",      "too many gaps", "floor out of range", "line held", "watchdog lost"};
+        "start",          "command", "stale stream",  "output failed",      "journal failed", "session end",
+        "emergency stop", "runaway", "too many gaps", "floor out of range", "line held",      "watchdog lost"};
     return pick(names, static_cast<std::uint8_t>(cause));
 }
 

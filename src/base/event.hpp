@@ -31,10 +31,10 @@ enum class EventKind : std::uint8_t {
     site = 16,         ///< a channel was left out of the evidence's mixes, or taken in again; `code` is the SiteState
     epoch = 17,        ///< an epoch of the session's plan begins
     trial = 18,        ///< a session, block or trial of the assignment begins
-    order = 19, ///< a pulse was ordered: at a trigger, or at a slot; the one kind here that tells of the condition
-    speed = 20, ///< the speed that moved the speed gate, or that it had grown stale at
+    order = 19,  ///< a pulse was ordered: at a trigger, or at a slot; the one kind here that tells of the condition
+    speed = 20,  ///< the speed that moved the speed gate, or that it had grown stale at
     device = 21, ///< an output stands ready, was lost or is back; `code` is the DeviceState
-    slot = 22,  ///< a moment for a delayed or scheduled pulse; blanked in every condition, whether one is given or not
+    slot = 22,   ///< a moment for a delayed or scheduled pulse; blanked in every condition, whether one is given or not
     omitted = 23, ///< such a moment, at which no condition may give a pulse; `code` is the Rule
 };
 

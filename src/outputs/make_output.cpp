@@ -59,6 +59,7 @@ std::unique_ptr<Output> make_output(const OutputSettings& settings, Ports& ports
 
 std::vector<std::unique_ptr<Output>> make_outputs(const std::vector<OutputSettings>& settings) {
     std::vector<std::unique_ptr<Output>> outputs;
+    outputs.reserve(settings.size());
     Ports ports;
     for (const auto& each : settings) {
         outputs.push_back(make_output(each, ports));

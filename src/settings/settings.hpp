@@ -11,8 +11,8 @@
 #include "journal/session_settings.hpp"
 #include "outputs/output_settings.hpp"
 #include "realtime/realtime_settings.hpp"
-#include "stimulus/stimulus_settings.hpp"
 #include "sham/schedule_settings.hpp"
+#include "stimulus/stimulus_settings.hpp"
 
 #include <filesystem>
 #include <string>

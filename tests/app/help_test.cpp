@@ -97,8 +97,8 @@ class Help : public ::testing::Test {
 TEST_F(Help, EveryCommandShowsAnExample) {
     const auto top = run_millpond("--help");
     const auto commands = commands_in(top.out);
-    EXPECT_EQ(commands,
-              (std::vector<std::string>{"preflight", "dryrun", "tune", "sham", "assign", "live", "unblind", "audit", "synth", "feed"}));
+    EXPECT_EQ(commands, (std::vector<std::string>{"preflight", "dryrun", "tune", "sham", "assign", "live", "unblind",
+                                                  "audit", "synth", "feed"}));
     for (const auto& command : commands) {
         examples_of(command);
     }

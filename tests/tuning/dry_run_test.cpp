@@ -95,7 +95,8 @@ TEST(DryRun, LeavesTimeWithoutSignalOutOfEligibleTime) {
 }
 
 TEST(DryRun, PlaysAControlScheduleInsteadOfTheDetections) {
-    const Bench bench(InventedRecording(45.0), "arbiter: {condition: yoked, schedule_file: plan.tsv, hold: {schedule: false}}\n");
+    const Bench bench(InventedRecording(45.0),
+                      "arbiter: {condition: yoked, schedule_file: plan.tsv, hold: {schedule: false}}\n");
     write_schedule(bench.folder / "plan.tsv", {SampleIndex{25000}, SampleIndex{30000}}, Hertz{1250.0});
     const auto run = dry_run(bench.plan);
     ASSERT_EQ(run.orders.size(), 2U);
