@@ -85,6 +85,12 @@ std::optional<Assigned> assigned_for(Settings& settings, Hertz rate, const std::
         throw Refusal(where + ": arbiter.schedule_file", "none",
                       "a control schedule: some sessions of " + settings.assignment.file + " play one");
     }
+    for (const auto& output : settings.outputs) {
+        if (list.sealed && !output.condition.empty()) {
+            throw Refusal(where + ": " + output.where("condition"), output.condition,
+                          "nothing: " + settings.assignment.file + " is sealed, and the line would tell");
+        }
+    }
     settings.arbiter.delay.in_every_condition =
         settings.arbiter.delay.in_every_condition || list.has(Condition::delayed);
     Assigned assigned{session_assignment(list, session), session.conditions, 0};

@@ -39,6 +39,8 @@ std::string try_engine(const Settings& settings, const StreamSettings& stream, c
     const Hertz rate{stream.rate_hz};
     const auto detector = make_detector(settings, channels, rate);
     (void)schedule_for(settings.arbiter, rate);
+    auto assigned_settings = settings;
+    (void)assigned_for(assigned_settings, rate, file);
     for (const auto& output : settings.outputs) {
         (void)pulse_shape(output);
     }

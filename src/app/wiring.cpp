@@ -87,11 +87,22 @@ std::vector<std::string> gate_names(const ArbiterSettings& arbiter) {
     return names;
 }
 
+// As an order names it; the word was checked with the settings.
+std::uint8_t condition_number(const std::string& word) {
+    for (const auto& choice : conditions) {
+        if (choice.word == word) {
+            return static_cast<std::uint8_t>(choice.value);
+        }
+    }
+    return any_condition;
+}
+
 std::vector<PulseLinePlan> line_plans(const std::vector<OutputSettings>& settings,
                                       const std::vector<std::unique_ptr<Output>>& outputs) {
     std::vector<PulseLinePlan> plans;
     for (std::size_t i = 0; i < outputs.size(); ++i) {
-        plans.push_back({outputs[i].get(), pulse_shape(settings[i]), settings[i].follows});
+        plans.push_back(
+            {outputs[i].get(), pulse_shape(settings[i]), settings[i].follows, condition_number(settings[i].condition)});
     }
     return plans;
 }

@@ -57,6 +57,8 @@ class PulsePlan {
     /// The same of a slot, and only where its trigger fell into the unit that is on.
     [[nodiscard]] bool gives(const PulseSlot& slot, SampleIndex now) const noexcept;
 
+    [[nodiscard]] Condition condition() const noexcept { return condition_; }
+
     /// Conditions by an assignment, one for each session, block or trial in order; the first begins with
     /// `begin_unit`. After the last there are no pulses. Thread: control, before the session.
     void assign(std::vector<Condition> list) { assigned_ = std::move(list); }

@@ -172,8 +172,8 @@ struct TriggerDetail {
     std::uint64_t from;   ///< decision sample of the trigger; the planned place of a schedule
     std::uint32_t number; ///< of the session's trigger, from 1 (0: withheld); of the place in the schedule, from 1
     PulseOrigin origin;
-    std::uint32_t caught;   ///< 1 where the trigger is a catch trial, drawn in every condition
-    std::uint32_t reserved; ///< 0
+    std::uint32_t caught;    ///< 1 where the trigger is a catch trial, drawn in every condition
+    std::uint32_t condition; ///< of an order: the condition that gave it; else 0
 };
 
 /// Parts in ns; a part that was not measured is `not_measured`, never 0.

@@ -145,7 +145,7 @@ void Engine::on_crossing(const Crossing& crossing) noexcept {
         ordered = plan_.gives(PulseOrigin::trigger, crossing.at) && detail.caught == 0;
         const Event trigger = Event::make(EventKind::trigger, 0, crossing.at, detail);
         if (ordered) {
-            port_.fire(Event::make(EventKind::order, 0, crossing.at, detail));
+            port_.fire(order_event(crossing.at, detail));
         }
         port_.mark(trigger);
         detector_.blank(crossing.at + 1); // in every condition
@@ -154,8 +154,13 @@ void Engine::on_crossing(const Crossing& crossing) noexcept {
     const auto verdict = rule == Rule::none ? EventKind::trigger : EventKind::withheld;
     sink_.take(Event::make(verdict, static_cast<std::uint8_t>(rule), crossing.at, detail));
     if (ordered) {
-        sink_.take(Event::make(EventKind::order, 0, crossing.at, detail));
+        sink_.take(order_event(crossing.at, detail));
     }
+}
+
+Event Engine::order_event(SampleIndex at, TriggerDetail detail) const noexcept {
+    detail.condition = static_cast<std::uint32_t>(plan_.condition());
+    return Event::make(EventKind::order, 0, at, detail);
 }
 
 void Engine::begin_unit() noexcept {
@@ -184,7 +189,7 @@ void Engine::meet_slot() noexcept {
     }
     plan_.done();
     const bool ordered = rule == Rule::none && plan_.gives(slot, next_);
-    const Event order = Event::make(EventKind::order, 0, next_, detail);
+    const Event order = order_event(next_, detail);
     if (ordered) {
         port_.fire(order);
     }

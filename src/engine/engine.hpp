@@ -87,6 +87,7 @@ class Engine {
     std::size_t run_detector(const FrameBlock& block) noexcept;
     [[nodiscard]] std::size_t broken_frames(const FrameBlock& block, std::size_t from) const noexcept;
     void on_crossing(const Crossing& crossing) noexcept;
+    [[nodiscard]] Event order_event(SampleIndex at, TriggerDetail detail) const noexcept;
     void begin_unit() noexcept;
     void begin_blocks() noexcept;
     void meet_slot() noexcept;

@@ -79,12 +79,12 @@ void LiveLoop::on_frames(const Arrival& arrival, Nanos began) noexcept {
     }
 }
 
-void LiveLoop::fire(const Event& trigger) noexcept {
+void LiveLoop::fire(const Event& order) noexcept {
     if (stop_.stopped()) {
         return; // between the stop and the place where it is journaled
     }
     const Nanos decided = monotonic_now();
-    if (!lines_.rise(Follows::pulse, trigger.sample)) {
+    if (!lines_.rise(Follows::pulse, order.sample, static_cast<std::uint8_t>(order.as<TriggerDetail>().condition))) {
         output_failed_ = true;
     }
     if (stop_.stopped()) {
@@ -92,14 +92,14 @@ void LiveLoop::fire(const Event& trigger) noexcept {
     }
     const Nanos written = monotonic_now();
     const double frames_after =
-        static_cast<double>(arrival_->block.first + arrival_->block.frames() - trigger.sample - 1);
+        static_cast<double>(arrival_->block.first + arrival_->block.frames() - order.sample - 1);
     PulseDetail detail{};
     detail.packing_ns = static_cast<std::int64_t>(frames_after / source_.rate().value * 1e9);
     detail.transport_ns = transport_ns_;
     detail.wake_ns = wake_ns_;
     detail.compute_ns = (decided - began_).count();
     detail.output_ns = (written - decided).count();
-    journal_.take(Event::make(EventKind::pulse, 0, trigger.sample, detail));
+    journal_.take(Event::make(EventKind::pulse, 0, order.sample, detail));
 }
 
 void LiveLoop::mark(const Event& trigger) noexcept {

@@ -72,7 +72,7 @@ class LiveLoop : private PulsePort {
     [[nodiscard]] Engine& engine() noexcept { return engine_; }
 
   private:
-    void fire(const Event& trigger) noexcept override;
+    void fire(const Event& order) noexcept override;
     void mark(const Event& trigger) noexcept override;
     void take_commands() noexcept;
     void obey(const Command& command) noexcept;

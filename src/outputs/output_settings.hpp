@@ -68,6 +68,7 @@ struct OutputSettings {
     std::uint16_t data_bits = 1;
     std::uint32_t subdevice = 0;
     std::uint32_t channel = 0;
+    std::string condition;
 
     bool operator==(const OutputSettings&) const = default;
 
@@ -88,6 +89,9 @@ template <class Visitor> void describe(Visitor& visit, OutputSettings& output) {
     visit.choice("follows", output.follows, follows_words,
                  "pulse: rises with every pulse; trigger: marks every trigger in every condition, also where no pulse "
                  "is given");
+    visit.text("condition", output.condition,
+               "follows pulse: only pulses of this condition raise the line, so that each may have one of its own; "
+               "nothing: those of all. Not in blinded sessions");
     visit.number("width_ms", output.width_ms, {0.05, 1000.0}, "how long the line is high in one pulse");
     visit.number("longest_high_ms", output.longest_high_ms, {0.0, 10000.0},
                  "a line that is high for longer is lowered by the watchdog, and the session faults; longer than "

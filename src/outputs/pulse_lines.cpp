@@ -28,6 +28,7 @@ PulseLines::PulseLines(std::span<const PulseLinePlan> plans, LineBoard& board, E
         line.output = plan.output;
         line.shape = plan.shape;
         line.follows = plan.follows;
+        line.only = plan.only;
         line.number = static_cast<std::uint16_t>(lines_.size() - 1);
         line.output->set_line(false);
     }
@@ -49,10 +50,10 @@ PulseLines::~PulseLines() {
     }
 }
 
-bool PulseLines::rise(Follows what, SampleIndex trigger) noexcept {
+bool PulseLines::rise(Follows what, SampleIndex trigger, std::uint8_t condition) noexcept {
     bool written = true;
     for (auto& line : lines_) {
-        if (line.follows == what) {
+        if (line.follows == what && (line.only == any_condition || line.only == condition)) {
             written = order(line, true) && written;
             line.trigger.store(trigger.value, std::memory_order_relaxed);
             line.start_ns.store(monotonic_now().count(), std::memory_order_relaxed);

@@ -16,10 +16,14 @@
 
 namespace millpond {
 
+/// In place of a number of a condition.
+inline constexpr std::uint8_t any_condition = 255;
+
 struct PulseLinePlan {
     Output* output = nullptr;
     PulseShape shape;
     Follows follows = Follows::pulse;
+    std::uint8_t only = any_condition; ///< of follows pulse: the one condition whose pulses raise it
 };
 
 class PulseLines {
@@ -32,10 +36,10 @@ class PulseLines {
     PulseLines(const PulseLines&) = delete;
     PulseLines& operator=(const PulseLines&) = delete;
 
-    /// Orders every line that follows `what` high now, in the order of settings, and their falls on time. Must not be
-    /// called while such a line plays a train: the arbiter's lock-out is longer. False: an output refused.
-    /// Thread: loop; one system call a line, and one to wake.
-    bool rise(Follows what, SampleIndex trigger) noexcept;
+    /// `condition`: that of the pulse. Orders every line that follows `what` high now, in the order of settings, and
+    /// their falls on time. Must not be called while such a line plays a train: the arbiter's lock-out is longer.
+    /// False: an output refused. Thread: loop; one system call a line, and one to wake.
+    bool rise(Follows what, SampleIndex trigger, std::uint8_t condition = any_condition) noexcept;
 
     /// Orders every line low at once and plays no more of any train. Thread: any.
     void fall_now() noexcept;
@@ -55,6 +59,7 @@ class PulseLines {
         Output* output = nullptr;
         PulseShape shape;
         Follows follows{};
+        std::uint8_t only = any_condition;
         std::uint16_t number = 0;
 
         // The loop writes the two places, then counts `trains` up with release; the pulse thread meets it with acquire.

@@ -78,6 +78,17 @@ void check_output(const OutputSettings& output, double lockout_ms, const std::st
                       "the path of a device (kind: " + std::string(word_for<OutputKind>(output_kinds, output.kind)) +
                           ")");
     }
+    const auto gives_pulses = [&output](const auto& choice) {
+        return choice.word == output.condition && choice.value != Condition::none &&
+               choice.value != Condition::assigned;
+    };
+    if (!output.condition.empty() && std::none_of(std::begin(conditions), std::end(conditions), gives_pulses)) {
+        throw Refusal(where("condition"), "'" + output.condition + "'",
+                      "disrupt, delayed, yoked, rate_matched, or nothing");
+    }
+    if (!output.condition.empty() && output.follows != Follows::pulse) {
+        throw Refusal(where("condition"), output.condition, "nothing: a marker rises in every condition");
+    }
     if (output.longest_high() <= output.width_ms) {
         throw Refusal(where("longest_high_ms"), shortest(output.longest_high_ms),
                       "more than width_ms, " + shortest(output.width_ms));

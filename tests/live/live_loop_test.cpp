@@ -513,6 +513,44 @@ TEST(LimitsInTheLoop, AFaultOrdersTheLineLowAtOnce) {
     EXPECT_FALSE(levels[8]) << "the third detection, in the seventh second, was one too many";
 }
 
+TEST(LiveLoop, AJournalThatFailsInAPulseOrdersTheLineLow) {
+    ArbiterSettings arbiter;
+    arbiter.limits.max_pulses_per_session = 1;
+    Rig rig(armed());
+    LevelOutput output;
+    LineBoard board;
+    PulseLines lines(std::vector<PulseLinePlan>{{&output, {10s, 1, 20s}, Follows::pulse}}, board, rig.ends);
+    LiveLoop loop(armed(), rig.source, lines, rig.journal, rig.commands, rig.make_engine(arbiter));
+    std::vector<bool> levels; // at the start of each second
+    rig.source.before = [&](std::size_t frame) {
+        if (frame % 1250 == 0) {
+            levels.push_back(output.high);
+            rig.journal.broken = frame == 8 * 1250; // as on a full disk
+        }
+        return Received::frames;
+    };
+    loop.run();
+    ASSERT_GT(levels.size(), 9U);
+    EXPECT_TRUE(levels[7] && levels[8]) << "else nothing is shown";
+    EXPECT_FALSE(levels[9]);
+}
+
+TEST(LiveLoop, APulseRaisesTheLineOfItsConditionAndThoseOfAll) {
+    Rig rig(armed());
+    FailingOutput disrupt, delayed, any;
+    const auto only = [](Condition condition) { return static_cast<std::uint8_t>(condition); };
+    LineBoard board;
+    PulseLines lines(std::vector<PulseLinePlan>{{&disrupt, {1ms, 1, 10ms}, Follows::pulse, only(Condition::disrupt)},
+                                                {&delayed, {1ms, 1, 10ms}, Follows::pulse, only(Condition::delayed)},
+                                                {&any, {1ms, 1, 10ms}, Follows::pulse}},
+                     board, rig.ends);
+    LiveLoop loop(armed(), rig.source, lines, rig.journal, rig.commands, rig.make_engine());
+    loop.run();
+    EXPECT_EQ(disrupt.rises, 15);
+    EXPECT_EQ(delayed.rises, 0);
+    EXPECT_EQ(any.rises, 15);
+}
+
 TEST(LiveLoop, AllocatesNothingFromStartToEnd) {
     Rig rig(armed());
     rig.source.before = [&](std::size_t frame) {

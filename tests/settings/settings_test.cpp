@@ -110,6 +110,8 @@ TEST_F(SettingsFile, OutputsThatCannotBeAreRefusedByNameAndKey) {
              {"outputs: [{name: a, width_ms: 5, longest_high_ms: 5}]", "outputs.a.longest_high_ms"},
              {"outputs: [{name: a, follows: trigger}]", "follows: pulse"},
              {"outputs: []", "follows: pulse"},
+             {"outputs: [{name: a, condition: sham}]", "outputs.a.condition"},
+             {"outputs: [{name: a}, {name: b, follows: trigger, condition: delayed}]", "outputs.b.condition"},
              {"outputs: [{name: a, kind: lamp}]", "outputs[0].kind"},
              {"outputs: [{name: a, width_ms: 1}, {name: b, follows: trigger, width_ms: 200}]", "outputs.b lasts"},
              {"outputs: [{name: a},{name: b},{name: c},{name: d},{name: e},{name: f},{name: g},{name: h},{name: i}]",
