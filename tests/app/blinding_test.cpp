@@ -11,22 +11,10 @@ const std::vector<std::string> telling{"disrupt", "delayed", "yoked", "rate_matc
 
 class Blinding : public ::testing::Test {
   protected:
-    struct Played {
-        std::filesystem::path folder;
-        std::string shown; ///< on the terminal
-    };
-
-    Played play(const std::vector<std::string>& more) {
+    Rig::Played play(const std::vector<std::string>& more) {
         std::vector<std::string> words{MILLPOND_PROGRAM, "live", settings_, "--status-every-s", "0.2"};
         words.insert(words.end(), more.begin(), more.end());
-        const auto session = rig_.start(words);
-        EXPECT_TRUE(session->says("session folder ")) << session->err();
-        const auto folder = Rig::folder_of(*session);
-        EXPECT_EQ(rig_.feed(recording_, {"--speed", "8"})->status(), 0);
-        EXPECT_TRUE(wait_until([&] { return Rig::frames_stored(folder) >= frames; }));
-        session->send(SIGINT);
-        EXPECT_EQ(session->status(), 0) << session->err();
-        return {folder, session->out() + session->err()};
+        return rig_.play(std::move(words), recording_, frames);
     }
 
     /// A sealed list with one session of each condition; its codes in the order of `conditions`.

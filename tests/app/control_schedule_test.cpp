@@ -11,14 +11,7 @@ class ControlSchedule : public ::testing::Test {
     std::filesystem::path play(const std::vector<std::string>& more = {}) {
         std::vector<std::string> words{MILLPOND_PROGRAM, "live", settings_};
         words.insert(words.end(), more.begin(), more.end());
-        const auto session = rig_.start(words);
-        EXPECT_TRUE(session->says("session folder ")) << session->err();
-        const auto folder = Rig::folder_of(*session);
-        EXPECT_EQ(rig_.feed(recording_, {"--speed", "8"})->status(), 0);
-        EXPECT_TRUE(wait_until([&] { return Rig::frames_stored(folder) >= frames; }));
-        session->send(SIGINT);
-        EXPECT_EQ(session->status(), 0) << session->err();
-        return folder;
+        return rig_.play(std::move(words), recording_, frames).folder;
     }
     static std::vector<std::string> samples_of(const std::filesystem::path& table, const std::string& trial_type) {
         std::vector<std::string> samples;

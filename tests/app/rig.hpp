@@ -125,6 +125,24 @@ class Rig {
         }
     }
 
+    /// What a session over a whole recording left, and what it showed on the terminal.
+    struct Played {
+        std::filesystem::path folder;
+        std::string shown;
+    };
+    /// A session with `words` as its command line, streamed at eight times real pace to its last frame and ended by
+    /// Ctrl-C.
+    Played play(std::vector<std::string> words, const std::string& recording_file, std::uint64_t frames) {
+        const auto session = start(std::move(words));
+        EXPECT_TRUE(session->says("session folder ")) << session->err();
+        const auto folder = folder_of(*session);
+        EXPECT_EQ(feed(recording_file, {"--speed", "8"})->status(), 0);
+        EXPECT_TRUE(wait_until([&] { return frames_stored(folder) >= frames; }));
+        session->send(SIGINT);
+        EXPECT_EQ(session->status(), 0) << session->err();
+        return {folder, session->out() + session->err()};
+    }
+
     nlohmann::json audit(const std::filesystem::path& session, int expected_status = 0) {
         const auto ran = run_millpond("audit " + session.string() + " --json");
         EXPECT_EQ(ran.status, expected_status) << ran.err << ran.out.substr(0, 2000);

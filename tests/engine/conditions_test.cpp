@@ -1,5 +1,6 @@
 // Conditions differ in their pulses alone: everything else about them is the same, sample for sample.
 #include "engine/engine.hpp"
+#include "support/kept_decisions.hpp"
 #include "support/signals.hpp"
 
 #include <gtest/gtest.h>
@@ -13,17 +14,7 @@ constexpr Hertz rate{1250.0};
 constexpr Condition all_conditions[] = {Condition::disrupt, Condition::delayed, Condition::yoked,
                                         Condition::rate_matched, Condition::none};
 
-struct Kept : EventSink, PulsePort {
-    std::vector<Event> events, orders, marks;
-    void take(const Event& event) noexcept override { events.push_back(event); }
-    void fire(const Event& order) noexcept override { orders.push_back(order); }
-    void mark(const Event& trigger) noexcept override { marks.push_back(trigger); }
-    [[nodiscard]] std::vector<Event> of(EventKind kind) const {
-        std::vector<Event> found;
-        std::copy_if(events.begin(), events.end(), std::back_inserter(found),
-                     [kind](const auto& event) { return event.kind == kind; });
-        return found;
-    }
+struct Kept : test::KeptDecisions {
     [[nodiscard]] std::vector<std::uint64_t> places(EventKind kind) const {
         std::vector<std::uint64_t> found;
         for (const auto& event : of(kind)) {
@@ -34,11 +25,7 @@ struct Kept : EventSink, PulsePort {
 };
 
 EngineSettings settings_for(Condition condition) {
-    EngineSettings settings;
-    settings.detector.method = DetectionMethod::envelope;
-    settings.detector.floor.settle_s = 2.0;
-    settings.detector.floor.time_constant_s = 5.0;
-    settings.detector.threshold.deviations = 6.0;
+    auto settings = test::quick_settings();
     settings.arbiter.condition = condition;
     settings.arbiter.delay.in_every_condition = true;
     return settings;

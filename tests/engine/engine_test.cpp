@@ -1,4 +1,5 @@
 #include "engine/engine.hpp"
+#include "support/kept_decisions.hpp"
 #include "support/signals.hpp"
 
 #include <gtest/gtest.h>
@@ -11,27 +12,8 @@ namespace {
 
 constexpr Hertz rate{1250.0};
 
-struct Kept : EventSink, PulsePort {
-    std::vector<Event> events;
-    std::vector<std::uint64_t> pulses;
-    void take(const Event& event) noexcept override { events.push_back(event); }
-    void fire(const Event& order) noexcept override { pulses.push_back(order.sample.value); }
-    [[nodiscard]] std::vector<Event> of(EventKind kind) const {
-        std::vector<Event> found;
-        std::copy_if(events.begin(), events.end(), std::back_inserter(found),
-                     [kind](const auto& event) { return event.kind == kind; });
-        return found;
-    }
-};
-
-EngineSettings quick_settings() {
-    EngineSettings settings;
-    settings.detector.method = DetectionMethod::envelope;
-    settings.detector.floor.settle_s = 2.0;
-    settings.detector.floor.time_constant_s = 5.0;
-    settings.detector.threshold.deviations = 6.0;
-    return settings;
-}
+using Kept = test::KeptDecisions;
+using test::quick_settings;
 
 Engine engine_of(const EngineSettings& settings, std::size_t channels, Kept& kept,
                  std::vector<SampleIndex> schedule = {}) {

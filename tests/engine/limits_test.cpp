@@ -1,5 +1,6 @@
 // Limits, guards and the session's plan, through the whole engine.
 #include "engine/engine.hpp"
+#include "support/kept_decisions.hpp"
 #include "support/signals.hpp"
 
 #include <gtest/gtest.h>
@@ -13,17 +14,7 @@ namespace {
 constexpr Hertz rate{1250.0};
 constexpr std::size_t second = 1250;
 
-struct Kept : EventSink, PulsePort {
-    std::vector<Event> events;
-    std::vector<std::uint64_t> pulses;
-    void take(const Event& event) noexcept override { events.push_back(event); }
-    void fire(const Event& order) noexcept override { pulses.push_back(order.sample.value); }
-    [[nodiscard]] std::vector<Event> of(EventKind kind) const {
-        std::vector<Event> found;
-        std::copy_if(events.begin(), events.end(), std::back_inserter(found),
-                     [kind](const auto& event) { return event.kind == kind; });
-        return found;
-    }
+struct Kept : test::KeptDecisions {
     [[nodiscard]] std::size_t withheld(Rule rule) const {
         const auto all = of(EventKind::withheld);
         return static_cast<std::size_t>(std::count_if(all.begin(), all.end(), [rule](const auto& event) {
@@ -41,14 +32,7 @@ struct Kept : EventSink, PulsePort {
     }
 };
 
-EngineSettings quick_settings() {
-    EngineSettings settings;
-    settings.detector.method = DetectionMethod::envelope;
-    settings.detector.floor.settle_s = 2.0;
-    settings.detector.floor.time_constant_s = 5.0;
-    settings.detector.threshold.deviations = 6.0;
-    return settings;
-}
+using test::quick_settings;
 
 Engine engine_of(const EngineSettings& settings, Kept& kept) {
     return {Detector::make(settings.detector, ripple_channels(2), rate), settings.arbiter, {}, rate, kept, kept};
